@@ -132,3 +132,19 @@ func (t *Toleranced[D]) UnmarshalText(b []byte) error {
 	*t = out
 	return nil
 }
+
+// Toleranced values in use.
+type (
+	TolVoltage         = Toleranced[volt]
+	TolCurrent         = Toleranced[ampere]
+	TolResistance      = Toleranced[ohm]
+	TolCapacitance     = Toleranced[farad]
+	TolInductance      = Toleranced[henry]
+	TolTime            = Toleranced[second]
+	TolRatio           = Toleranced[one]
+	TolTorqueConstant  = Toleranced[voltSecPerRad]
+	TolTorque          = Toleranced[newtonMetre]
+	TolViscousTorque   = Toleranced[newtonMetreSec]
+	TolQuadraticTorque = Toleranced[newtonMetreSq]
+	TolInertia         = Toleranced[kilogramMetre2]
+)
