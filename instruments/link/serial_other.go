@@ -1,0 +1,12 @@
+//go:build !linux
+
+package link
+
+import (
+	"fmt"
+	"io"
+)
+
+func openSerial(Address) (io.ReadWriteCloser, error) {
+	return nil, fmt.Errorf("a serial line on this system is %w; Linux only", ErrUnsupported)
+}

@@ -1,0 +1,206 @@
+package link
+
+import (
+	"bytes"
+	"context"
+	"errors"
+	"fmt"
+	"io"
+	"time"
+)
+
+// abandonAfter bounds the closing of a stream. A write that is stuck in the
+// system survives the closing of its descriptor, so the pumps are then left
+// behind rather than waited for.
+const abandonAfter = 2 * time.Second
+
+// wire is one open stream and its two pumps: one goroutine reads, one writes,
+// so that neither a blocked read nor a blocked write can hold up a caller.
+type wire struct {
+	rw     io.ReadWriteCloser
+	opt    *Options
+	in     chan []byte   // received, in order; closed by the reader at the end
+	out    chan parcel   // lines to send; unbuffered, so what is taken is being written
+	stop   chan struct{} // closed by shut
+	shutAt chan struct{} // one token: who takes it shuts
+	quit   chan struct{} // closed by the writer at its end
+	err    error         // why the reader ended; read only after in is closed
+}
+
+// parcel is one line to write and where to say how it went.
+type parcel struct {
+	data []byte
+	done chan error // room for one
+}
+
+func newWire(rw io.ReadWriteCloser, opt *Options) *wire {
+	w := &wire{
+		rw: rw, opt: opt,
+		in: make(chan []byte, 64), out: make(chan parcel),
+		stop: make(chan struct{}), shutAt: make(chan struct{}, 1), quit: make(chan struct{}),
+	}
+	w.shutAt <- struct{}{}
+	go w.read()
+	go w.write()
+	return w
+}
+
+// read pumps received bytes until the stream ends or is shut. Streams may
+// report a time-out of their own as (0, nil): that is no data yet, not an
+// end, and is answered by a short pause so that it can't spin.
+func (w *wire) read() {
+	defer close(w.in)
+	buf := make([]byte, 4096)
+	for {
+		n, err := w.rw.Read(buf)
+		if n > 0 && !w.deliver(bytes.Clone(buf[:n])) {
+			return
+		}
+		if err != nil {
+			w.err = lost(err)
+			if w.isShut() {
+				w.err = errShut
+			}
+			return
+		}
+		if n == 0 && !w.pause(time.Millisecond) {
+			return
+		}
+	}
+}
+
+// deliver hands a chunk on; false when the wire was shut meanwhile.
+func (w *wire) deliver(chunk []byte) bool {
+	w.trace(In, chunk)
+	select {
+	case w.in <- chunk:
+		return true
+	case <-w.stop:
+		w.err = errShut
+		return false
+	}
+}
+
+func (w *wire) isShut() bool {
+	select {
+	case <-w.stop:
+		return true
+	default:
+		return false
+	}
+}
+
+func (w *wire) pause(d time.Duration) bool {
+	select {
+	case <-time.After(d):
+		return true
+	case <-w.stop:
+		w.err = errShut
+		return false
+	}
+}
+
+// write pumps lines until the wire is shut.
+func (w *wire) write() {
+	defer close(w.quit)
+	for {
+		select {
+		case p := <-w.out:
+			n, err := w.rw.Write(p.data)
+			if err == nil && n < len(p.data) {
+				err = io.ErrShortWrite
+			}
+			if err == nil {
+				w.trace(Out, p.data)
+			}
+			p.done <- err
+		case <-w.stop:
+			return
+		}
+	}
+}
+
+func (w *wire) trace(dir Direction, data []byte) {
+	if w.opt.Trace != nil {
+		w.opt.Trace(Event{Time: w.opt.Now(), Dir: dir, Data: data})
+	}
+}
+
+// errStuck marks a write that was begun and not finished in time: part of the
+// line may have left.
+var errStuck = errors.New("the line was not taken; flow control may be holding it back")
+
+// errShut marks a stream that was shut on this side, by Close or to be opened
+// anew.
+var errShut = errors.New("the stream was shut on this side")
+
+// send hands data to the writer and waits until it has left, at most the
+// write time-out.
+func (w *wire) send(ctx context.Context, data []byte) error {
+	late := time.NewTimer(w.opt.WriteTimeout)
+	defer late.Stop()
+	p := parcel{data: data, done: make(chan error, 1)}
+	select {
+	case w.out <- p:
+	case <-w.stop:
+		return errShut
+	case <-ctx.Done():
+		return ended(ctx)
+	case <-late.C:
+		return fmt.Errorf("%w: an earlier line is still being sent", ErrTimeout)
+	}
+	select {
+	case err := <-p.done:
+		return lost(err)
+	case <-w.stop:
+		return fmt.Errorf("%w: %w", errShut, errStuck)
+	case <-ctx.Done():
+		return fmt.Errorf("%w: %w", ended(ctx), errStuck)
+	case <-late.C:
+		return fmt.Errorf("%w: %w", ErrTimeout, errStuck)
+	}
+}
+
+// ended says why a context ended; its deadline counts as a time-out too.
+func ended(ctx context.Context) error {
+	if errors.Is(ctx.Err(), context.DeadlineExceeded) {
+		return fmt.Errorf("%w: %w", ErrTimeout, context.Cause(ctx))
+	}
+	return context.Cause(ctx)
+}
+
+// shut ends both pumps and closes the stream, waiting a bounded time. Calls
+// after the first wait for the same end.
+func (w *wire) shut() error {
+	select {
+	case <-w.shutAt:
+	default:
+		return w.gone(nil)
+	}
+	close(w.stop)
+	closed := make(chan error, 1)
+	go func() { closed <- w.rw.Close() }()
+	return w.gone(closed)
+}
+
+// gone waits until the pumps are back, and the closing if it is given one.
+func (w *wire) gone(closed <-chan error) (err error) {
+	limit := time.NewTimer(abandonAfter)
+	defer limit.Stop()
+	in, quit := w.in, w.quit
+	for in != nil || quit != nil || closed != nil {
+		select {
+		case _, more := <-in:
+			if !more {
+				in = nil
+			}
+		case <-quit:
+			quit = nil
+		case err = <-closed:
+			closed = nil
+		case <-limit.C:
+			return fmt.Errorf("%w: the stream would not end and was abandoned", ErrTimeout)
+		}
+	}
+	return err
+}
