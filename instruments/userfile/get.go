@@ -1,0 +1,285 @@
+package userfile
+
+import (
+	"encoding"
+	"math"
+	"strconv"
+	"strings"
+	"time"
+
+	"github.com/pelletier/go-toml/v2/unstable"
+)
+
+const missing = "is missing"
+
+// Text reads a value that reads itself: quantities above all. A bare number is
+// passed as its digits; whether that will do is the value's business.
+func (t *Table) Text(key string, v encoding.TextUnmarshaler) bool {
+	n, ok := t.find(key, missing)
+	if !ok {
+		return false
+	}
+	if !n.textual() {
+		return t.wrong(key, n, "text in quotes")
+	}
+	return t.unmarshal(key, n, v)
+}
+
+// Texts reads a list of values that read themselves, at least one.
+func Texts[T any, P interface {
+	*T
+	encoding.TextUnmarshaler
+}](t *Table, key string, v *[]T) bool {
+	items, ok := t.items(key)
+	if !ok {
+		return false
+	}
+	out := make([]T, len(items))
+	for i, n := range items {
+		if !n.textual() {
+			return t.wrong(key, n, "text in quotes")
+		}
+		if !t.unmarshal(key, n, P(&out[i])) {
+			return false
+		}
+	}
+	*v = out
+	return true
+}
+
+// Pairs reads a list of pairs of values that read themselves: [["100 mA", "1.7 V"], …].
+func Pairs[A, B any, PA interface {
+	*A
+	encoding.TextUnmarshaler
+}, PB interface {
+	*B
+	encoding.TextUnmarshaler
+}](t *Table, key string, add func(A, B)) bool {
+	items, ok := t.items(key)
+	if !ok {
+		return false
+	}
+	for _, n := range items {
+		if n.kind != unstable.Array || len(n.items) != 2 || !n.items[0].textual() || !n.items[1].textual() {
+			return t.wrong(key, n, `a list of pairs, like [["10 mA", "1.4 V"], ["100 mA", "1.7 V"]]`)
+		}
+		var a A
+		var b B
+		if !t.unmarshal(key, n.items[0], PA(&a)) || !t.unmarshal(key, n.items[1], PB(&b)) {
+			return false
+		}
+		add(a, b)
+	}
+	return true
+}
+
+// String reads text that is not empty.
+func (t *Table) String(key string, v *string) bool {
+	n, ok := t.find(key, missing)
+	switch {
+	case !ok:
+		return false
+	case n.kind == unstable.Integer || n.kind == unstable.Float:
+		t.Correct(key, strconv.Quote(n.text), "give text in quotes")
+		return false
+	case n.kind != unstable.String:
+		return t.wrong(key, n, "text in quotes")
+	case strings.TrimSpace(n.text) == "":
+		t.Fail(key, "is empty")
+		return false
+	}
+	*v = n.text
+	return true
+}
+
+// Strings reads a list of texts, at least one.
+func (t *Table) Strings(key string, v *[]string) bool {
+	items, ok := t.items(key)
+	if !ok {
+		return false
+	}
+	var out []string
+	for _, n := range items {
+		if n.kind != unstable.String {
+			return t.wrong(key, n, "text in quotes")
+		}
+		out = append(out, n.text)
+	}
+	*v = out
+	return true
+}
+
+// Word reads one of the accepted words.
+func Word[T ~string](t *Table, key string, v *T, accepted ...T) bool {
+	var s string
+	if !t.String(key, &s) {
+		return false
+	}
+	words := make([]string, len(accepted))
+	for i, a := range accepted {
+		if words[i] = string(a); words[i] == s {
+			*v = a
+			return true
+		}
+	}
+	want := "use " + list(words)
+	if near := Nearest(s, words); near != "" {
+		t.Correct(key, strconv.Quote(near), want)
+	} else {
+		t.Fail(key, want)
+	}
+	return false
+}
+
+// Int reads a whole number from low to high.
+func (t *Table) Int(key string, v *int, low, high int) bool {
+	n, ok := t.find(key, missing)
+	if !ok {
+		return false
+	}
+	x, good := n.integer()
+	if !good || x < low || x > high {
+		return t.wrong(key, n, "a whole number from "+strconv.Itoa(low)+" to "+strconv.Itoa(high))
+	}
+	*v = x
+	return true
+}
+
+// Ints reads a list of whole numbers from low to high, at least one.
+func (t *Table) Ints(key string, v *[]int, low, high int) bool {
+	items, ok := t.items(key)
+	if !ok {
+		return false
+	}
+	var out []int
+	for _, n := range items {
+		x, good := n.integer()
+		if !good || x < low || x > high {
+			return t.wrong(key, n, "whole numbers from "+strconv.Itoa(low)+" to "+strconv.Itoa(high))
+		}
+		out = append(out, x)
+	}
+	*v = out
+	return true
+}
+
+// Number reads a finite number, whole or not, whose key gives the unit.
+func (t *Table) Number(key string, v *float64) bool {
+	n, ok := t.find(key, missing)
+	if !ok {
+		return false
+	}
+	x, err := strconv.ParseFloat(strings.ReplaceAll(n.text, "_", ""), 64)
+	if (n.kind != unstable.Integer && n.kind != unstable.Float) || err != nil || math.IsNaN(x) || math.IsInf(x, 0) {
+		return t.wrong(key, n, "a number without quotes")
+	}
+	*v = x
+	return true
+}
+
+// Bool reads true or false.
+func (t *Table) Bool(key string, v *bool) bool {
+	n, ok := t.find(key, missing)
+	if !ok {
+		return false
+	}
+	if n.kind != unstable.Bool {
+		return t.wrong(key, n, "true or false, without quotes")
+	}
+	*v = n.text == "true"
+	return true
+}
+
+// Date reads a calendar date, with or without quotes, as ISO 8601 writes it: 2026-03-01.
+func (t *Table) Date(key string, v *string) bool {
+	n, ok := t.find(key, missing)
+	if !ok {
+		return false
+	}
+	if _, err := time.Parse(time.DateOnly, n.text); err != nil || (n.kind != unstable.String && n.kind != unstable.LocalDate) {
+		return t.wrong(key, n, `a date like "2026-03-01"`)
+	}
+	*v = n.text
+	return true
+}
+
+// items are the elements of a list, at least one.
+func (t *Table) items(key string) ([]*node, bool) {
+	n, ok := t.find(key, missing)
+	if !ok {
+		return nil, false
+	}
+	if n.kind != unstable.Array {
+		return nil, t.wrong(key, n, "a list in square brackets")
+	}
+	if len(n.items) == 0 {
+		t.Fail(key, "the list is empty; give at least one")
+		return nil, false
+	}
+	return n.items, true
+}
+
+// textual tells whether Text may pass the node on.
+func (n *node) textual() bool {
+	return n.kind == unstable.String || n.kind == unstable.Integer || n.kind == unstable.Float
+}
+
+func (n *node) integer() (int, bool) {
+	if n.kind != unstable.Integer {
+		return 0, false
+	}
+	x, err := strconv.ParseInt(strings.ReplaceAll(n.text, "_", ""), 0, 64)
+	return int(x), err == nil
+}
+
+// wrong notes a value of the wrong kind. It is always false.
+func (t *Table) wrong(key string, n *node, want string) bool {
+	t.fail(t.at(key, n, "give "+want))
+	return false
+}
+
+// at is a mistake at an element of a key's value.
+func (t *Table) at(key string, n *node, want string) Error {
+	e := t.mistake(key, want)
+	e.Line = n.line
+	if n.raw != "" {
+		e.Found = shown(n.raw)
+	}
+	return e
+}
+
+// unmarshal lets a value read itself and puts its complaint at the key.
+func (t *Table) unmarshal(key string, n *node, v encoding.TextUnmarshaler) bool {
+	text := n.text
+	if n.kind != unstable.String {
+		text = strings.ReplaceAll(text, "_", "")
+	}
+	err := v.UnmarshalText([]byte(text))
+	if err == nil {
+		return true
+	}
+	e := t.at(key, n, err.Error())
+	e.Err = err
+	if n == t.node.under[key] {
+		e.Fix = withUnit(key, text, v)
+	}
+	t.fail(e)
+	return false
+}
+
+// units are tried behind a bare number, the commonest of each kind of quantity first.
+var units = []string{" V", " A", " s", " Hz", " degC", " %", " mN m", " mV s/rad", " uN m s", " nN m s2", " g cm2"}
+
+// withUnit is the line with the unit that a bare number lacks, or empty.
+func withUnit(key, text string, v encoding.TextUnmarshaler) string {
+	if _, err := strconv.ParseFloat(strings.TrimSpace(text), 64); err != nil {
+		return ""
+	}
+	for _, u := range units {
+		fixed := strings.TrimSpace(text) + u
+		if v.UnmarshalText([]byte(fixed)) == nil {
+			return key + " = " + strconv.Quote(fixed)
+		}
+	}
+	return ""
+}
