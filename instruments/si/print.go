@@ -89,3 +89,13 @@ func round(x float64, n int) float64 {
 
 // tidy writes a true minus sign.
 func tidy(s string) string { return strings.Replace(s, "-", "−", 1) }
+
+// Short prints a resistance as people write it in a sentence, figures and prefix only: "22 k", "470".
+func Short(ohms float64) string {
+	p, f := prefixFor(ohms, Ohm)
+	s := tidy(strconv.FormatFloat(round(ohms/f, 3), 'f', -1, 64))
+	if p == "" {
+		return s
+	}
+	return s + nbsp + p
+}

@@ -1,0 +1,181 @@
+package runner
+
+import (
+	"context"
+	"fmt"
+	"math"
+	"math/rand/v2"
+
+	"nightbench/instruments"
+	"nightbench/instruments/si"
+	"nightbench/sweeps"
+
+	"golang.org/x/sync/errgroup"
+)
+
+// Raw is everything the instruments answered at one setpoint.
+type Raw struct {
+	Setpoint sweeps.Setpoint
+	Supply   []instruments.SupplyState // one a repeat
+	Meters   [][]instruments.Sample    // by meter, in the order of the wiring; one a repeat
+	Records  [][]instruments.Waveform  // one a repeat; by channel
+}
+
+// supplyVoltage is the mean of the supply's own readings, or what was set where there is none.
+func (raw Raw) supplyVoltage(set float64) float64 {
+	sum, n := 0.0, 0
+	for _, s := range raw.Supply {
+		if s.Voltage.Outcome == instruments.Measured {
+			sum += s.Voltage.Value
+			n++
+		}
+	}
+	if n == 0 {
+		return set
+	}
+	return sum / float64(n)
+}
+
+// records are the newest record's waveforms, as kept with a point.
+func (raw Raw) records(w instruments.Wiring) []sweeps.Record {
+	if len(raw.Records) == 0 || w.Scope == nil {
+		return nil
+	}
+	var kept []sweeps.Record
+	for _, f := range raw.Records[len(raw.Records)-1] {
+		for _, c := range w.Scope.Channels {
+			if c.Number == f.Channel {
+				kept = append(kept, sweeps.Record{
+					Node: string(c.Between[0]) + " less " + string(c.Between[1]), Channel: f.Channel, Start: f.Start, Interval: f.Interval,
+					VoltsPerCode: f.VoltsPerCode, VoltsAtZero: f.VoltsAtZero, Codes: f.Codes,
+				})
+			}
+		}
+	}
+	return kept
+}
+
+// measure takes all repeats of a setpoint, every instrument in a goroutine of its own.
+func (r *Runner) measure(ctx context.Context, at sweeps.Setpoint) (Raw, error) {
+	raw := Raw{Setpoint: at, Meters: make([][]instruments.Sample, len(r.o.Bench.Meters))}
+	repeats := r.o.Plan.Measure.Repeats
+	period := r.expect(at).period
+	g, ctx := errgroup.WithContext(ctx)
+	var c crew
+	each := func(where string, take func() error) {
+		g.Go(func() error {
+			return c.guard(where, func() error { return r.repeat(ctx, repeats, period, take) })
+		})
+	}
+	each("supply", func() error {
+		s, err := r.o.Bench.Supply.State(ctx)
+		raw.Supply = append(raw.Supply, s)
+		return err
+	})
+	for i := range r.o.Bench.Meters {
+		each(r.o.Bench.Wiring.Meters[i].Name, func() error {
+			s, err := r.read(ctx, i)
+			raw.Meters[i] = append(raw.Meters[i], s)
+			if i == 0 && err == nil {
+				r.tell(func(v *sweeps.Vitals) { v.Repeat = len(raw.Meters[i]) })
+			}
+			return err
+		})
+	}
+	if r.o.Bench.Wiring.Scope != nil {
+		each("scope", func() error { return r.capture(ctx, &raw) })
+	}
+	err := g.Wait()
+	if cause := context.Cause(ctx); err != nil && cause != nil {
+		err = cause
+	}
+	return raw, err
+}
+
+// repeat takes n readings, each begun at a random fraction of the period: begun in
+// step with the wave they would beat with it and their scatter would lie.
+func (r *Runner) repeat(ctx context.Context, n int, period float64, take func() error) error {
+	for range n {
+		if err := r.o.Clock.Sleep(ctx, seconds(rand.Float64()*period)); err != nil {
+			return err
+		}
+		if err := take(); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+func (r *Runner) capture(ctx context.Context, raw *Raw) error {
+	var f []instruments.Waveform
+	err := again(ctx, r.o.Clock, func() (err error) {
+		f, err = r.o.Bench.Scope.Capture(ctx)
+		return err
+	})
+	raw.Records = append(raw.Records, f)
+	return err
+}
+
+// expected is what the prediction says of a setpoint, as far as settings need it.
+type expected struct{ period, duty float64 }
+
+// expect predicts period and duty. Where the schematic predicts none, a board of 100 Hz is assumed: slow enough for every road.
+func (r *Runner) expect(at sweeps.Setpoint) expected {
+	p, _ := r.o.Predict.At(at.Supply, at.Pot)
+	e := expected{period: p[sweeps.Period].Value, duty: p[sweeps.Duty].Value}
+	if !(e.period > 0) || !(e.duty > 0 && e.duty < 1) {
+		return expected{period: 0.01, duty: 0.5}
+	}
+	return e
+}
+
+// Settings of the measuring instruments (BENCH-PRACTICE's rules: range by peak, aperture
+// from the period, record of ten periods and fifty samples in the shorter phase).
+const (
+	headroom      = 1.2  // of the range over the supply or the stall current
+	apertureShare = 1e-3 // wanted of the aperture term, as a share of the swing
+	leastAperture = 0.1  // s
+	mostAperture  = 2.0  // s
+	periods       = 12
+	samplesAPhase = 50
+	mostPoints    = 20000
+)
+
+// setUpMeasuring tells meters and scope what the setpoint needs.
+func (r *Runner) setUpMeasuring(ctx context.Context, at sweeps.Setpoint) error {
+	e := r.expect(at)
+	aperture := math.Min(math.Max(e.duty*(1-e.duty)*e.period/apertureShare, leastAperture), mostAperture)
+	for i, m := range r.o.Bench.Meters {
+		s := instruments.MeterSettings{Unit: sweeps.Quantity(r.o.Bench.Wiring.Meters[i].Reads).Unit(), Aperture: aperture}
+		switch s.Unit {
+		case si.Ampere:
+			s.Range = headroom * r.o.Predict.Peak(at.Supply)
+		default:
+			s.Range = headroom * at.Supply
+		}
+		if _, err := m.Configure(ctx, s); err != nil {
+			return fmt.Errorf("meter %q: %w", r.o.Bench.Wiring.Meters[i].Name, err)
+		}
+	}
+	return r.setUpScope(ctx, at, e)
+}
+
+func (r *Runner) setUpScope(ctx context.Context, at sweeps.Setpoint, e expected) error {
+	w := r.o.Bench.Wiring.Scope
+	if w == nil {
+		return nil
+	}
+	short := math.Min(e.duty, 1-e.duty) * e.period
+	s := instruments.ScopeSettings{Duration: periods * e.period}
+	s.Points = int(math.Min(math.Ceil(s.Duration/(short/samplesAPhase)), mostPoints))
+	for _, c := range w.Channels {
+		s.Channels = append(s.Channels, instruments.ScopeChannel{Number: c.Number, Low: -0.1 * at.Supply, High: headroom * at.Supply, Probe: c.Probe})
+	}
+	if len(w.Channels) > 0 {
+		s.Trigger = instruments.ScopeTrigger{Channel: w.Channels[0].Number, Level: at.Supply / 2}
+	}
+	if _, err := r.o.Bench.Scope.Configure(ctx, s); err != nil {
+		return fmt.Errorf("scope: %w", err)
+	}
+	return nil
+}

@@ -1,0 +1,158 @@
+// Package runner conducts a run: set, settle, measure, derive, check, append,
+// next. One goroutine conducts, one watches the supply, one notices when nobody
+// sees it any more. Whatever happens, there is one way to safe: the run's
+// context is cancelled with a cause, and the conductor's last act makes the
+// bench safe in a context of its own.
+package runner
+
+import (
+	"context"
+	"log/slog"
+	"sync"
+	"time"
+
+	"nightbench/instruments"
+	"nightbench/sweeps"
+)
+
+// Journal is where a run writes. Append is durable when it returns.
+type Journal interface {
+	Append(ctx context.Context, e sweeps.Entry) (sweeps.Entry, error)
+}
+
+// Mark is the tiny durable record, outside the journal, that the bench is about
+// to be energised. It is set before the output goes on and cleared only when off is confirmed.
+type Mark interface {
+	Set(run int64) error
+	Clear() error
+}
+
+// Predictor gives what the schematic predicts at a point: at the measured supply
+// voltage (V) and the actual pot resistance (Ω).
+type Predictor interface {
+	At(supply, pot float64) (map[sweeps.Quantity]sweeps.Prediction, []sweeps.Flag)
+	Curves(order []sweeps.Setpoint) []sweeps.Curve
+	// Tau is the largest time constant of the board, s: the motor's.
+	Tau() float64
+	// Peak is the largest current the load can draw at a supply voltage, A: a locked rotor's.
+	Peak(supply float64) float64
+}
+
+// Deriver turns raw replies and waveforms into readings. It is pure.
+type Deriver func(w instruments.Wiring, raw Raw, wanted []sweeps.Quantity) []sweeps.Reading
+
+// Options are what a run needs. All fields but Done and Changed are required.
+type Options struct {
+	Bench   instruments.Bench
+	Clock   instruments.Clock
+	Journal Journal
+	Mark    Mark
+	Predict Predictor
+	Derive  Deriver
+	Plan    sweeps.Plan
+	Run     sweeps.Run
+	Order   []sweeps.Setpoint
+	Done    []sweeps.Point // measured before, on a resumed run
+	SafeBy  time.Time      // wall time the plan must be safe by; zero: none
+	Below   float64        // V: read back below this, the output counts as off
+	Changed func()         // rung when the vitals changed in a way worth showing at once
+	Log     *slog.Logger
+}
+
+// Runner is one run, from preparing to its end. Use it once.
+type Runner struct {
+	o      Options
+	order  []sweeps.Setpoint
+	points []sweeps.Point
+	begun  time.Duration // bench time at which the run began
+	limits *limits
+	hold   chan struct{} // one slot: a person asked for a hold
+	goOn   chan struct{} // one slot: a person asked to continue
+	cancel context.CancelCauseFunc
+	ready  chan struct{} // closed when Conduct has begun
+
+	mu     sync.Mutex // guards state and vitals; never held over I/O
+	state  sweeps.State
+	vitals sweeps.Vitals
+}
+
+// New makes a run ready to be conducted.
+func New(o Options) *Runner {
+	r := &Runner{
+		o: o, order: o.Order, points: append([]sweeps.Point(nil), o.Done...),
+		limits: newLimits(o.Plan.Trips), state: sweeps.Preparing,
+		hold: make(chan struct{}, 1), goOn: make(chan struct{}, 1), ready: make(chan struct{}),
+	}
+	r.vitals = sweeps.Vitals{
+		Energised: sweeps.EnergisedNo, Run: o.Run.ID, State: sweeps.Preparing, Doing: "Preparing",
+		Planned: len(o.Order), Measured: len(o.Done), Flagged: countFlagged(o.Done), Repeats: o.Plan.Measure.Repeats,
+	}
+	return r
+}
+
+// Outcome is how a run ended.
+type Outcome struct {
+	State  sweeps.State
+	Reason string
+	Off    sweeps.Off
+}
+
+// Conduct carries the run out and returns when the bench is safe, or when last
+// ends with off unconfirmed. ctx ends the run (its cause is the reason); last
+// bounds only the making safe, which otherwise goes on until off is confirmed.
+func (r *Runner) Conduct(ctx, last context.Context) Outcome {
+	ctx, cancel := context.WithCancelCause(ctx)
+	r.cancel = cancel
+	r.begun = r.o.Clock.Elapsed()
+	close(r.ready)
+	g := crew{cancel: cancel}
+	g.Go("watch", func() { r.watch(ctx) })
+	g.Go("blind", func() { r.guardBlind(ctx) })
+	cancel(g.guard("conductor", func() error { return r.conduct(ctx) }))
+	cause := context.Cause(ctx)
+	end := ending(cause)
+	r.setState(sweeps.MakingSafe)
+	g.Go("note", func() { r.note(end) })
+	off := r.makeSafe(last)
+	g.wg.Wait()
+	return r.close(end, off)
+}
+
+// close writes the run's last entry.
+func (r *Runner) close(end Outcome, off sweeps.Off) Outcome {
+	end.Off = off
+	r.setState(end.State)
+	if _, err := r.append(sweeps.Entry{Kind: sweeps.KindEnded, State: end.State, Words: end.Reason}); err != nil {
+		r.o.Log.Error("the run's end could not be written", "run", r.o.Run.ID, "err", err)
+	}
+	return end
+}
+
+// append writes to the journal in a bounded context of its own: the run's may be over.
+func (r *Runner) append(e sweeps.Entry) (sweeps.Entry, error) {
+	ctx, cancel := context.WithTimeout(context.Background(), journalBudget)
+	defer cancel()
+	e.Run = r.o.Run.ID
+	e.At = r.o.Clock.Now()
+	e.Elapsed = (r.o.Clock.Elapsed() - r.begun).Seconds()
+	return r.o.Journal.Append(ctx, e)
+}
+
+// say writes a sentence to the log of the run. A journal that fails ends the run.
+func (r *Runner) say(words string) {
+	if _, err := r.append(sweeps.Entry{Kind: sweeps.KindLog, Words: words}); err != nil {
+		r.cancel(&journalFailed{err})
+	}
+}
+
+// journalBudget bounds one write; a disk that takes longer is as good as failed.
+const journalBudget = 10 * time.Second
+
+func countFlagged(points []sweeps.Point) (n int) {
+	for _, p := range points {
+		if p.Flagged() {
+			n++
+		}
+	}
+	return n
+}
