@@ -1,0 +1,95 @@
+package dialect
+
+import "nightbench/instruments/si"
+
+// spec says what a line of a role must be.
+type spec struct {
+	does     string // for messages: "this dialect can't switch the output off"
+	needs    shape
+	unit     si.Unit
+	required bool
+	channel  bool // {channel} may stand in it
+}
+
+// shape is which halves a line must have.
+type shape int
+
+const (
+	sends   shape = iota // send only
+	asks                 // ask only
+	setting              // both
+	anyHalf              // send, or both
+)
+
+var common = map[string]spec{
+	"identify":     {does: "say who it is", needs: asks, required: true},
+	"clear_status": {does: "clear its status", needs: sends},
+	"reset":        {does: "reset itself", needs: sends},
+}
+
+var lines = map[Role]map[string]spec{
+	RoleSupply: {
+		"off":                  {does: "switch its output off", needs: sends, required: true, channel: true},
+		"on":                   {does: "switch its output on", needs: sends, required: true, channel: true},
+		"output":               {does: "say whether its output is on", needs: asks, required: true, channel: true},
+		"voltage":              {does: "set a voltage", needs: setting, unit: si.Volt, required: true, channel: true},
+		"current_limit":        {does: "set a current limit", needs: setting, unit: si.Ampere, required: true, channel: true},
+		"over_voltage":         {does: "set an over-voltage level", needs: setting, unit: si.Volt, channel: true},
+		"over_voltage_arm":     {does: "arm its over-voltage protection", needs: setting, channel: true},
+		"over_voltage_tripped": {does: "say whether over-voltage tripped it", needs: asks, channel: true},
+		"over_voltage_clear":   {does: "clear an over-voltage trip", needs: sends, channel: true},
+		"over_current_tripped": {does: "say whether over-current tripped it", needs: asks, channel: true},
+		"measure_voltage":      {does: "measure its voltage", needs: asks, unit: si.Volt, required: true, channel: true},
+		"measure_current":      {does: "measure its current", needs: asks, unit: si.Ampere, required: true, channel: true},
+		"limiting":             {does: "say whether it limits the current", needs: asks, channel: true},
+	},
+	RoleMeter: {
+		"voltage_function": {does: "measure DC volts", needs: anyHalf},
+		"voltage_range":    {does: "set a voltage range", needs: setting, unit: si.Volt},
+		"voltage_speed":    {does: "set the speed of voltage readings", needs: setting},
+		"current_function": {does: "measure DC current", needs: anyHalf},
+		"current_range":    {does: "set a current range", needs: setting, unit: si.Ampere},
+		"current_speed":    {does: "set the speed of current readings", needs: setting},
+		"read":             {does: "take a new reading", needs: asks, required: true},
+	},
+	RoleScope: {
+		"format":         {does: "set the format of its records", needs: anyHalf},
+		"byte_order":     {does: "set the byte order of its records", needs: anyHalf},
+		"coupling":       {does: "couple a channel DC", needs: anyHalf, channel: true},
+		"probe":          {does: "be told a probe's factor", needs: setting, unit: si.One, channel: true},
+		"range_high":     {does: "set the top of the screen", needs: setting, unit: si.Volt, required: true, channel: true},
+		"range_low":      {does: "set the bottom of the screen", needs: setting, unit: si.Volt, required: true, channel: true},
+		"points":         {does: "set the count of samples", needs: setting, unit: si.One, required: true},
+		"duration":       {does: "set the duration of a record", needs: setting, unit: si.Second, required: true},
+		"trigger_source": {does: "trigger on a channel", needs: anyHalf, required: true, channel: true},
+		"trigger_level":  {does: "set a trigger level", needs: setting, unit: si.Volt, required: true, channel: true},
+		"trigger_slope":  {does: "set the trigger's direction", needs: anyHalf},
+		"trigger_none":   {does: "record without a trigger", needs: anyHalf, required: true},
+		"start":          {does: "start a record", needs: sends, required: true},
+		"abort":          {does: "give up a record", needs: sends, required: true},
+		"scaling":        {does: "say how its codes are scaled", needs: asks, required: true, channel: true},
+		"record":         {does: "hand over a record", needs: asks, required: true, channel: true},
+	},
+	RolePot: {
+		"code":           {does: "set a code and read it back", needs: setting, unit: si.One, required: true},
+		"highest_code":   {does: "say its highest code", needs: asks},
+		"power_on_count": {does: "count its power-ons", needs: asks},
+	},
+}
+
+// specOf finds what a line of a role must be.
+func specOf(role Role, name string) (spec, bool) {
+	if s, ok := common[name]; ok {
+		return s, true
+	}
+	s, ok := lines[role][name]
+	return s, ok
+}
+
+// figures are the quantities a role's [[accuracy]] may be of, with their units.
+var figures = map[Role]map[string]si.Unit{
+	RoleSupply: {"measure_voltage": si.Volt, "measure_current": si.Ampere},
+	RoleMeter:  {"voltage": si.Volt, "current": si.Ampere},
+	RoleScope:  {"voltage": si.Volt},
+	RolePot:    {},
+}
