@@ -16,7 +16,7 @@ func (l *Link) Blind(ctx context.Context, line string) (interjected bool, err er
 	case <-l.life.Done():
 		return false, l.fault("send", ErrClosed)
 	case <-l.turn:
-		t := &Turn{l: l}
+		t := &Turn{Timeout: l.opt.Timeout, l: l}
 		defer t.Release()
 		return false, t.insist(ctx, line)
 	default:

@@ -95,7 +95,7 @@ func (l *Link) Acquire(ctx context.Context) (*Turn, error) {
 	}
 	select {
 	case <-l.turn:
-		return &Turn{l: l}, nil
+		return &Turn{Timeout: l.opt.Timeout, l: l}, nil
 	case <-l.life.Done():
 		return nil, l.fault("wait for", ErrClosed)
 	case <-ctx.Done():

@@ -12,6 +12,10 @@ import (
 // Turn is the right to talk on a link. It belongs to one goroutine and ends
 // with Release.
 type Turn struct {
+	// Timeout bounds one reply line, and the gap between the bytes of a
+	// block. It starts as the link's.
+	Timeout time.Duration
+
 	l    *Link
 	over bool
 }
@@ -98,7 +102,7 @@ func (t *Turn) skipBlanks() { t.l.buf = bytes.TrimLeft(t.l.buf, blanks) }
 // ErrTooLong; ErrLost; ErrClosed; or the context's cause. After any error the
 // reply may still come.
 func (t *Turn) ReadLine(ctx context.Context) (string, error) {
-	late := time.NewTimer(t.l.opt.Timeout)
+	late := time.NewTimer(t.Timeout)
 	defer late.Stop()
 	for {
 		t.skipBlanks()
@@ -124,14 +128,14 @@ func (t *Turn) ReadLine(ctx context.Context) (string, error) {
 // minutes; the context bounds the whole. On an error the bytes that did come
 // are returned beside it.
 func (t *Turn) ReadFull(ctx context.Context, n int) ([]byte, error) {
-	late := time.NewTimer(t.l.opt.Timeout)
+	late := time.NewTimer(t.Timeout)
 	defer late.Stop()
 	for len(t.l.buf) < n {
 		if err := t.more(ctx, late.C); err != nil {
 			got := t.take(len(t.l.buf))
 			return got, t.spoilt("read", fmt.Errorf("%w: got %d of %d bytes", err, len(got), n))
 		}
-		late.Reset(t.l.opt.Timeout)
+		late.Reset(t.Timeout)
 	}
 	return t.take(n), nil
 }
@@ -162,6 +166,27 @@ func (t *Turn) more(ctx context.Context, late <-chan time.Time) error {
 	case <-late:
 		return ErrTimeout
 	}
+}
+
+// Listen waits until the instrument has been quiet for d, and returns what it
+// said meanwhile other than blanks; it returns at once when there is such a
+// thing. The bytes stay to be read.
+func (t *Turn) Listen(ctx context.Context, d time.Duration) ([]byte, error) {
+	for range 16 { // blanks that never end are no silence
+		if said := t.Waiting(); len(said) > 0 {
+			return said, nil
+		}
+		quiet := time.NewTimer(d)
+		err := t.more(ctx, quiet.C)
+		quiet.Stop()
+		switch {
+		case errors.Is(err, ErrTimeout) && ctx.Err() == nil:
+			return t.Waiting(), nil
+		case err != nil:
+			return nil, t.spoilt("read", err)
+		}
+	}
+	return nil, t.spoilt("read", fmt.Errorf("%w: nothing but terminators", ErrBabble))
 }
 
 // spoilt notes that a reply may still be on its way.

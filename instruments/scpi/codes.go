@@ -1,0 +1,3 @@
+package scpi
+
+const QueueOverflow = -350

@@ -1,0 +1,330 @@
+// Package scpi speaks and understands IEEE 488.2 messages with SCPI headers.
+//
+// The speaking side is Conn: commands and queries over a link, with the rule
+// that a reply which may belong to an earlier question is never used. The
+// listening side, for simulated instruments, is Device: it splits a stream
+// into messages, parses them by the standard's grammar, dispatches them
+// through a Tree of headers, and keeps the status registers and error queue.
+package scpi
+
+import (
+	"cmp"
+	"context"
+	"errors"
+	"fmt"
+	"sync/atomic"
+	"time"
+
+	"nightbench/instruments"
+	"nightbench/instruments/link"
+)
+
+// Options say how one instrument family behaves as far as messages go. The
+// zero value of a field means its default, which is the standard's.
+type Options struct {
+	// Identity is the reply to the identity query that must come back; empty
+	// when it is not known yet, then the first one is remembered.
+	Identity string
+	// IdentityQuery; default *IDN?.
+	IdentityQuery string
+	// Marker is a second query whose reply is known beforehand; default
+	// *OPC? with the reply 1.
+	Marker Marker
+	// NoMarker says that there is no such query; the identity alone is then
+	// the proof of being in step.
+	NoMarker bool
+	// ErrorQuery; default SYST:ERR?. ErrorDepth is how many errors the queue
+	// can hold; default 30.
+	ErrorQuery string
+	ErrorDepth int
+	// Numbers says what a numeric reply may look like besides the standard's.
+	Numbers NumberForm
+	// Bools are the words of a boolean reply in capitals; default 0, 1, OFF, ON.
+	Bools map[string]bool
+	// Echo says that each line sent comes back before the reply.
+	Echo bool
+	// Gap is the shortest time between the end of one exchange and the start
+	// of the next.
+	Gap time.Duration
+	// BlockLead is text that may stand before the # of a block.
+	BlockLead string
+	// ResyncLimit bounds the regaining of step as a whole; default 20 s.
+	ResyncLimit time.Duration
+	// OnExchange, when set, sees every exchange when it has ended, also those
+	// that regain step. It is called while the link is held: it must be quick
+	// and not use the Conn.
+	OnExchange func(Exchange)
+	// Now stamps exchanges; default time.Now.
+	Now func() time.Time
+}
+
+// Marker is a query whose right replies are known beforehand.
+type Marker struct {
+	Query   string
+	Replies []string
+}
+
+// Exchange is one command and its reply, for logs and figures of latency.
+type Exchange struct {
+	Start   time.Time
+	Elapsed time.Duration
+	Command string
+	Reply   string // text, or the size of a block in words
+	Err     error
+	// Strays is what was waiting before the question: replies to questions
+	// not asked.
+	Strays string
+	// Proof marks the exchanges that regain step.
+	Proof bool
+}
+
+func (o Options) withDefaults() Options {
+	o.IdentityQuery = cmp.Or(o.IdentityQuery, "*IDN?")
+	if o.Marker.Query == "" {
+		o.Marker = Marker{Query: "*OPC?", Replies: []string{"1", "+1"}}
+	}
+	o.ErrorQuery = cmp.Or(o.ErrorQuery, "SYST:ERR?")
+	o.ErrorDepth = cmp.Or(o.ErrorDepth, 30)
+	o.ResyncLimit = cmp.Or(o.ResyncLimit, 20*time.Second)
+	if o.Bools == nil {
+		o.Bools = map[string]bool{"0": false, "1": true, "OFF": false, "ON": true}
+	}
+	if o.Now == nil {
+		o.Now = time.Now
+	}
+	return o
+}
+
+// Conn talks to one instrument. All methods may be called from any goroutine;
+// exchanges take turns. A new Conn is out of step, since an earlier program
+// may have left replies behind: its first exchange proves it in step.
+type Conn struct {
+	*talk
+	timeout time.Duration
+}
+
+// talk is what the handles of one connection share. Fields below link belong
+// to the holder of the turn, doubts apart.
+type talk struct {
+	link *link.Link
+	opt  Options
+
+	doubts   atomic.Int64 // how often step was put in doubt since it was proven
+	identity string       // the remembered reply to the identity query
+	unsure   int          // markers sent by the longest proof that failed
+	last     time.Time    // end of the latest exchange, for the gap
+	strays   string       // waiting before the question in hand
+}
+
+// New makes a connection over a link, which stays the caller's to close.
+func New(l *link.Link, opt Options) *Conn {
+	t := &talk{link: l, opt: opt.withDefaults(), identity: opt.Identity}
+	t.doubts.Store(1)
+	return &Conn{talk: t, timeout: l.Timeout()}
+}
+
+// Within is the same connection with another time-out for a reply: long
+// enough for a slow reading, say.
+func (c *Conn) Within(d time.Duration) *Conn { return &Conn{talk: c.talk, timeout: d} }
+
+// InStep says whether replies are known to belong to their questions.
+func (c *Conn) InStep() bool { return c.doubts.Load() == 0 }
+
+// doubt puts the step in doubt: the next exchange proves it first.
+func (t *talk) doubt() { t.doubts.Add(1) }
+
+// Write sends one command that has no reply. That it was sent is not that it
+// was understood: read it back, or read Errors.
+func (c *Conn) Write(ctx context.Context, command string) error {
+	if err := checkMessage(command, false); err != nil {
+		return err
+	}
+	return c.exchange(ctx, command, func(*link.Turn) (string, error) { return "", nil })
+}
+
+// Query sends one query and returns its reply without the terminator. After
+// any error the connection is out of step, and the next exchange mends that
+// first. Outcomes: the reply; link.ErrTimeout; link.ErrLost; ErrOutOfStep
+// when step could not be proven, and then nothing was asked; ErrFraming when
+// more than one line came back; ErrInterrupted; the context's cause.
+func (c *Conn) Query(ctx context.Context, query string) (reply string, err error) {
+	if err := checkMessage(query, true); err != nil {
+		return "", err
+	}
+	err = c.exchange(ctx, query, func(t *link.Turn) (string, error) {
+		reply, err = t.ReadLine(ctx)
+		return reply, err
+	})
+	if err != nil {
+		return "", err
+	}
+	return reply, nil
+}
+
+// Blind sends one command at once: between the parts of another exchange if
+// need be, out of step or not, on a new stream if the old one is stuck or
+// lost. It waits for no reply and proves nothing. It is for switching an
+// output off; whether that worked is another question.
+func (c *Conn) Blind(ctx context.Context, command string) error {
+	if err := checkMessage(command, false); err != nil {
+		return err
+	}
+	start := c.opt.Now()
+	between, err := c.link.Blind(ctx, command)
+	if between || err != nil || c.opt.Echo {
+		c.doubt()
+	}
+	c.report(Exchange{Start: start, Command: command, Err: err})
+	return c.wrap(command, err)
+}
+
+// Identify throws away what is waiting and asks who is there, twice: both
+// answers must be the same printable text. It needs to know nothing of the
+// instrument and remembers nothing; it is how a dialect is found.
+func (c *Conn) Identify(ctx context.Context) (instruments.Identity, error) {
+	t, err := c.link.Acquire(ctx)
+	if err != nil {
+		return instruments.Identity{}, err
+	}
+	defer t.Release()
+	t.Timeout = c.timeout
+	c.doubt()
+	if _, err := t.Clear(ctx); err != nil {
+		return instruments.Identity{}, err
+	}
+	first, err := c.ask(ctx, t, c.opt.IdentityQuery)
+	if err != nil {
+		return instruments.Identity{}, err
+	}
+	again, err := c.ask(ctx, t, c.opt.IdentityQuery)
+	switch {
+	case err != nil:
+		return instruments.Identity{}, err
+	case first != again || !printable(first):
+		return instruments.Identity{}, c.wrap(c.opt.IdentityQuery,
+			fmt.Errorf("%w: it answered %q and then %q; are baud rate, parity and stop bits right?", ErrFraming, first, again))
+	}
+	return ParseIdentity(first), nil
+}
+
+// Reopen opens the stream anew and proves it in step with the instrument that
+// was there before. Settings may be lost: the caller reads them back.
+func (c *Conn) Reopen(ctx context.Context) error {
+	t, err := c.link.Acquire(ctx)
+	if err != nil {
+		return err
+	}
+	defer t.Release()
+	t.Timeout = c.timeout
+	c.doubt()
+	if err := t.Reopen(ctx); err != nil {
+		return err
+	}
+	return c.resync(ctx, t)
+}
+
+// Resync proves the connection in step, mending it first where needed.
+func (c *Conn) Resync(ctx context.Context) error {
+	t, err := c.link.Acquire(ctx)
+	if err != nil {
+		return err
+	}
+	defer t.Release()
+	t.Timeout = c.timeout
+	return c.ready(ctx, t)
+}
+
+// exchange sends one message and lets read take the reply, all in one turn
+// and in step, or not at all.
+func (c *Conn) exchange(ctx context.Context, message string, read func(*link.Turn) (string, error)) error {
+	t, err := c.link.Acquire(ctx)
+	if err != nil {
+		return c.wrap(message, err)
+	}
+	defer t.Release()
+	t.Timeout = c.timeout
+	if err := c.ready(ctx, t); err != nil {
+		return c.wrap(message, err)
+	}
+	if err := c.wait(ctx); err != nil {
+		return c.wrap(message, err)
+	}
+	e := Exchange{Start: c.opt.Now(), Command: message, Strays: c.strays}
+	e.Reply, e.Err = c.round(ctx, t, message, read)
+	if e.Err != nil {
+		c.doubt()
+	}
+	c.end(e)
+	return c.wrap(message, e.Err)
+}
+
+// round is the exchange proper.
+func (c *Conn) round(ctx context.Context, t *link.Turn, message string, read func(*link.Turn) (string, error)) (string, error) {
+	if err := t.Send(ctx, message); err != nil {
+		return "", err
+	}
+	if err := c.echo(ctx, t, message); err != nil {
+		return "", err
+	}
+	reply, err := read(t)
+	if err != nil {
+		return reply, err
+	}
+	if more := t.Waiting(); len(more) > 0 {
+		return reply, fmt.Errorf("%w: %q came, and then %q", ErrFraming, reply, clip(more))
+	}
+	if c.doubts.Load() != 0 {
+		return reply, ErrInterrupted
+	}
+	return reply, nil
+}
+
+// echo takes the line back that an echoing instrument returns.
+func (t *talk) echo(ctx context.Context, turn *link.Turn, message string) error {
+	if !t.opt.Echo {
+		return nil
+	}
+	back, err := turn.ReadLine(ctx)
+	if err == nil && back != message {
+		err = fmt.Errorf("%w: the echo was %q", ErrFraming, back)
+	}
+	return err
+}
+
+// wait keeps the instrument's gap.
+func (t *talk) wait(ctx context.Context) error {
+	d := t.opt.Gap - t.opt.Now().Sub(t.last)
+	if t.opt.Gap <= 0 || d <= 0 {
+		return nil
+	}
+	timer := time.NewTimer(min(d, t.opt.Gap))
+	defer timer.Stop()
+	select {
+	case <-timer.C:
+		return nil
+	case <-ctx.Done():
+		return context.Cause(ctx)
+	}
+}
+
+// end closes the books on one exchange.
+func (t *talk) end(e Exchange) {
+	t.last, t.strays = t.opt.Now(), ""
+	t.report(e)
+}
+
+func (t *talk) report(e Exchange) {
+	if t.opt.OnExchange != nil {
+		e.Elapsed = t.opt.Now().Sub(e.Start)
+		t.opt.OnExchange(e)
+	}
+}
+
+// wrap names the message beside the cause.
+func (t *talk) wrap(message string, err error) error {
+	var e *Error
+	if err == nil || errors.As(err, &e) {
+		return err
+	}
+	return &Error{Message: message, Address: t.link.Address().String(), Err: err}
+}
