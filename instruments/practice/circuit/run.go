@@ -1,0 +1,63 @@
+package circuit
+
+import (
+	"fmt"
+	"math"
+)
+
+// Watch lets an observer look at its window whoever advances the time. A
+// window that begins in the past is refused: the past is not kept.
+func (s *Sim) Watch(o Observer) error {
+	from, to := o.Window()
+	if !(from >= s.x.Time) || !(to >= from) || math.IsInf(to, 0) {
+		return fmt.Errorf("circuit: can't look from %.9g s to %.9g s: the board is at %.9g s; watch before advancing", from, to, s.x.Time)
+	}
+	s.watchers = append(s.watchers, watcher{o, from, to})
+	return nil
+}
+
+// Advance takes the board to a simulated time. Where nobody looks and the
+// board repeats itself it leaps over whole periods. An earlier time than Now
+// does nothing.
+func (s *Sim) Advance(until float64) {
+	for s.x.Time < until {
+		s.drop()
+		end := until
+		watched := false
+		for _, w := range s.watchers {
+			if w.from > s.x.Time {
+				end = math.Min(end, w.from)
+			} else {
+				watched = true
+			}
+		}
+		if !watched && s.leap(end) {
+			continue
+		}
+		s.step(end)
+	}
+	s.drop()
+}
+
+// Run advances to a time with observers looking.
+func (s *Sim) Run(until float64, observers ...Observer) error {
+	for _, o := range observers {
+		if err := s.Watch(o); err != nil {
+			return err
+		}
+	}
+	s.Advance(until)
+	return nil
+}
+
+// drop lets go of observers whose window is over.
+func (s *Sim) drop() {
+	keep := s.watchers[:0]
+	for _, w := range s.watchers {
+		if w.to > s.x.Time {
+			keep = append(keep, w)
+		}
+	}
+	clear(s.watchers[len(keep):])
+	s.watchers = keep
+}
