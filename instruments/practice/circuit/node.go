@@ -42,7 +42,8 @@ func ParseNode(name string) (Node, error) {
 	return 0, fmt.Errorf("circuit: unknown node %q; use one of %s", name, strings.Join(nodeNames[:], ", "))
 }
 
-// A Probe is what an instrument sees: a voltage between two nodes or a current.
+// A Probe is what an instrument sees: a voltage between two nodes, a current,
+// or the rotor's speed.
 type Probe struct {
 	hi, lo  Node
 	current Current
@@ -59,6 +60,7 @@ const (
 	SupplyCurrent
 	// OutputCurrent is what the timer's output sources, A; negative when it sinks.
 	OutputCurrent
+	rotor
 )
 
 // Between is the voltage from lo up to hi, in V.
@@ -66,3 +68,6 @@ func Between(hi, lo Node) Probe { return Probe{hi: hi, lo: lo} }
 
 // Through is a current, in A.
 func Through(c Current) Probe { return Probe{current: c} }
+
+// RotorSpeed is the motor's speed, in rad/s.
+func RotorSpeed() Probe { return Probe{current: rotor} }

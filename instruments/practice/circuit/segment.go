@@ -12,7 +12,6 @@ type Segment struct {
 	supply, cap, load, speed arc
 	pin0, pin1               float64 // pin 7 at start and end, V
 	fed0, fed1               float64 // into the network from the output, A
-	region                   region
 }
 
 // An edge is the finite duration of a node's switching: it shapes what probes
@@ -113,7 +112,7 @@ func (p Probe) linear() bool {
 	switch p.current {
 	case noCurrent:
 		return plain(p.hi) && plain(p.lo)
-	case LoadCurrent:
+	case LoadCurrent, rotor:
 		return true
 	}
 	return false
@@ -123,6 +122,8 @@ func (g *Segment) see(p Probe, x *State) float64 {
 	switch p.current {
 	case LoadCurrent:
 		return x.Current
+	case rotor:
+		return x.Speed
 	case SupplyCurrent:
 		return g.delivered(x.Supply)
 	case OutputCurrent:

@@ -103,7 +103,7 @@ func (s *Sim) draw(load, pin float64) float64 {
 
 // delivered is the source's own current at a supply voltage, A.
 func (g *Segment) delivered(vs float64) float64 {
-	switch g.region {
+	switch g.sim.region {
 	case voltage:
 		return math.Min(math.Max((g.sim.set-vs)/g.sim.b.Source.Resistance, 0), g.sim.limit)
 	case current:
