@@ -55,6 +55,19 @@ func (t *Table) IsTable(key string) bool {
 	return ok && n.kind == unstable.Table
 }
 
+// IsNumber tells whether a key holds a bare number.
+func (t *Table) IsNumber(key string) bool {
+	n, ok := t.node.under[key]
+	return ok && (n.kind == unstable.Integer || n.kind == unstable.Float)
+}
+
+// Known marks keys as known without reading them: where another mistake decides whether they make sense.
+func (t *Table) Known(keys ...string) {
+	for _, k := range keys {
+		t.asked[k] = true
+	}
+}
+
 // Table is the table under a key: [key], or key = { … }. It is never nil.
 func (t *Table) Table(key string) *Table {
 	n, ok := t.find(key, "the table ["+dotted(t.path, key)+"] is missing")
@@ -133,7 +146,7 @@ func (t *Table) find(key, missing string) (*node, bool) {
 
 // mistake is an error at a key, with what was found there.
 func (t *Table) mistake(key, want string) Error {
-	e := Error{File: t.file.Name, Line: t.node.line, Key: t.path, Want: want}
+	e := Error{File: t.file.Name, Line: t.node.line, Key: t.path, Want: plain(want)}
 	if key != "" {
 		e.Key = dotted(t.path, key)
 	}
@@ -171,6 +184,9 @@ func (t *Table) NotYet(key, instead string) bool {
 }
 
 func (t *Table) fail(e Error) { t.file.errs = append(t.file.errs, &failure{Error: e}) }
+
+// plain has ordinary spaces between numbers and units, so that a person can search for them and type them.
+func plain(s string) string { return strings.ReplaceAll(s, "\u00a0", " ") }
 
 // list joins words for a message: "a, b or c".
 func list(words []string) string {
