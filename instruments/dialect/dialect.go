@@ -22,7 +22,8 @@
 // reply says what the answer is: number (the default), bool (yes, no: the
 // words for it), bit (of the number: which in bit, base decimal or hex), text
 // (want: the answers that will do), numbers (fields: their names in order) or
-// block. step and within say by how much a setting read back may differ.
+// block. A number may have unit (a suffix behind it), scale (to SI), overload and
+// no_value (whole replies), infinity (what 9.9E37 means). step and within say by how much a setting read back may differ.
 package dialect
 
 import (

@@ -18,11 +18,12 @@ type Line struct {
 	Base     string
 	Want     []string
 	Fields   []string
-	Unit     string  // a unit the reply carries behind its number
-	Scale    float64 // factor from the reply to SI; 0 means 1
-	Overload []string
-	NoValue  []string
-	Within   float64 // likewise, as a share of it
+	Unit     string   // a unit the reply carries behind its number
+	Scale    float64  // factor from the reply to SI; 0 means 1
+	Overload []string // whole replies that mean overload, beside 9.9E37
+	NoValue  []string // whole replies that mean that there is no value, beside 9.91E37
+	Infinity string   // what 9.9E37 means: overload, or "no measurement"
+	Within   float64  // likewise, as a share of it
 	Source   string
 	Note     string
 

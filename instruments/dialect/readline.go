@@ -85,7 +85,8 @@ func (r *reader) reply(o *userfile.Table, l *Line) {
 		o.String("unit", &l.Unit)
 		o.Strings("overload", &l.Overload)
 		o.Strings("no_value", &l.NoValue)
-		l.Scale = 1
+		l.Scale, l.Infinity = 1, "overload"
+		userfile.Word(o, "infinity", &l.Infinity, "overload", "no measurement")
 		if o.Number("scale", &l.Scale) && l.Scale == 0 {
 			o.Fail("scale", "a factor of 0 leaves nothing; give what a reply is multiplied by")
 		}

@@ -1,0 +1,152 @@
+// Package driver keeps the promises of the roles: it speaks SCPI messages over
+// a connection, in the words of a dialect. It holds no knowledge of any maker.
+//
+// Every setter reads back what took effect and fails when it differs. A reply
+// is a number only when it is one: overload and "no value" are outcomes. After
+// a connection was out of step the settings are read back before they are
+// relied on, since the instrument may have been switched off and on meanwhile.
+package driver
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"time"
+
+	"nightbench/instruments"
+	"nightbench/instruments/dialect"
+	"nightbench/instruments/scpi"
+)
+
+// Options are what every driver is told.
+type Options struct {
+	Name    string // for messages: "supply", "meter average"
+	Channel int    // 0 means 1
+	Clock   instruments.Clock
+}
+
+// instrument is what all roles share: a connection and the words for it.
+type instrument struct {
+	name    string
+	channel int
+	clock   instruments.Clock
+	conn    *scpi.Conn
+	d       *dialect.Dialect
+}
+
+func newInstrument(conn *scpi.Conn, d *dialect.Dialect, o Options) instrument {
+	return instrument{name: o.Name, channel: max(o.Channel, 1), clock: o.Clock, conn: conn, d: d}
+}
+
+// Settings gives the scpi options that a dialect asks for.
+func Settings(d *dialect.Dialect) scpi.Options {
+	o := scpi.Options{ErrorQuery: d.Errors.Ask, ErrorDepth: d.Errors.Depth, ResyncLimit: resyncLimit}
+	if l, ok := d.Commands["identify"]; ok {
+		o.IdentityQuery = l.Ask
+	}
+	return o
+}
+
+// resyncLimit bounds the regaining of step: an instrument that has not come
+// back by then is treated as lost.
+const resyncLimit = 10 * time.Second
+
+// Identify asks who answers.
+func (i *instrument) Identify(ctx context.Context) (instruments.Identity, error) {
+	l, err := i.line("identify")
+	if err != nil {
+		return instruments.Identity{}, err
+	}
+	reply, err := i.conn.Query(ctx, l.Ask)
+	if err != nil {
+		return instruments.Identity{}, i.fault(l.Ask, err)
+	}
+	return scpi.ParseIdentity(reply), nil
+}
+
+// open drains the error queue, which belongs to whoever was there before, and
+// sends the opening lines. What the queue held is returned in words.
+func (i *instrument) open(ctx context.Context) (notes []string, err error) {
+	old, err := i.errors(ctx)
+	if err != nil {
+		return nil, err
+	}
+	for _, f := range old {
+		notes = append(notes, fmt.Sprintf("its error queue held %v from before", f))
+	}
+	for _, l := range i.d.Open {
+		if err := i.say(ctx, l, i.put(0)); err != nil {
+			return notes, err
+		}
+	}
+	return notes, nil
+}
+
+// reset brings an instrument that feeds nothing to a known state.
+func (i *instrument) reset(ctx context.Context) error {
+	for _, name := range []string{"reset", "clear_status"} {
+		l, ok := i.d.Commands[name]
+		if !ok {
+			continue
+		}
+		if err := i.say(ctx, l, i.put(0)); err != nil {
+			return err
+		}
+		if err := i.within(resetTime).done(ctx); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+// resetTime is allowed for *RST: relays settle and memories are cleared
+// (common practice, no source).
+const resetTime = 8 * time.Second
+
+// Close sends the closing lines of the dialect, best effort, all of them.
+func (i *instrument) Close(ctx context.Context) error {
+	var errs []error
+	for _, l := range i.d.Close {
+		errs = append(errs, i.say(ctx, l, i.put(0)))
+	}
+	return errors.Join(errs...)
+}
+
+// line finds a line of the dialect, or says what the instrument can't do.
+func (i *instrument) line(name string) (dialect.Line, error) {
+	l, err := i.d.Line(name)
+	if err != nil {
+		return l, fmt.Errorf("%s: %w", i.name, err)
+	}
+	return l, nil
+}
+
+func (i *instrument) has(name string) bool { _, ok := i.d.Commands[name]; return ok }
+
+// put is a value on the instrument's own channel.
+func (i *instrument) put(v float64) dialect.Put { return dialect.Put{Value: v, Channel: i.channel} }
+
+// within is the same instrument with a longer time-out. The time is added to
+// the time of a reply, so that a fast clock never makes it shorter than a link needs.
+func (i *instrument) within(more time.Duration) *instrument {
+	slow := *i
+	slow.conn = i.conn.Within(i.base() + more)
+	return &slow
+}
+
+// base is the time allowed for a plain reply.
+func (i *instrument) base() time.Duration {
+	if i.d.Link.Timeout > 0 {
+		return i.d.Link.Timeout
+	}
+	return defaultTimeout
+}
+
+// defaultTimeout is for dialects that state none; instruments are known that
+// take 0.4 s for a state query.
+const defaultTimeout = 3 * time.Second
+
+// bench is the wall time that s seconds of bench time take.
+func (i *instrument) bench(s float64) time.Duration {
+	return time.Duration(s / i.clock.Pace() * float64(time.Second))
+}
