@@ -1,0 +1,50 @@
+// The margin: the log, newest first, times hanging beside sentences.
+import type { ComponentChildren } from "preact";
+import { clock, clockSeconds } from "../data/format";
+import type { Line } from "../data/night";
+import { flagged } from "../data/nouns";
+import { flagsOf, named, pointWords } from "../data/words";
+
+export interface LogProps { lines: readonly Line[]; now?: string; nowAt?: string; most: number; all?: string }
+
+export function Log({ lines, now, nowAt, most, all }: LogProps) {
+  const shown = lines.slice(-most).reverse();
+  return (
+    <>
+      <h2>Log</h2>
+      <ol class="log" reversed>
+        {now && <li class="now"><time>{nowAt ? clock(nowAt) : ""}</time><span>{now}</span></li>}
+        {shown.map((l) => <LogLine key={l.seq} l={l} />)}
+      </ol>
+      {lines.length > most && all && <p class="noprint"><a href={all}>The whole log</a></p>}
+      {!lines.length && !now && <p class="sub">Nothing yet.</p>}
+    </>
+  );
+}
+
+const evidence = new Set(["off", "trip", "energising", "ended"]);
+
+function LogLine({ l }: { l: Line }) {
+  return (
+    <li>
+      <time dateTime={l.at}>{evidence.has(l.kind) ? clockSeconds(l.at) : clock(l.at)}</time>
+      <span>{l.point ? <PointLine l={l} /> : l.words}</span>
+    </li>
+  );
+}
+
+function PointLine({ l }: { l: Line }) {
+  const p = l.point!;
+  if (!flagged(p)) return <>{pointWords(p)}</>;
+  // One flag on several readings is said once, with the quantities it stands on.
+  const byName = new Map<string, { words: string; on: string[] }>();
+  for (const f of flagsOf(p)) {
+    const g = byName.get(f.name) ?? { words: f.words, on: [] };
+    if (f.quantity) g.on.push(named(f.quantity));
+    byName.set(f.name, g);
+  }
+  const said: ComponentChildren[] = [...byName].map(([name, g], i) => (
+    <>{i > 0 && "; "}<i>{name}</i>{g.words ? `: ${g.words.replace(/\.$/, "")}` : g.on.length ? ` (${g.on.join(", ")})` : ""}</>
+  ));
+  return <>{pointWords(p)}{said}.</>;
+}

@@ -1,0 +1,19 @@
+import { defineConfig } from "vitest/config";
+
+// The page is served under a strict policy (style-src 'self', script-src 'self'):
+// nothing is inlined, neither as data: addresses nor as a preload helper.
+export default defineConfig({
+  oxc: { jsx: { runtime: "automatic", importSource: "preact" } },
+  build: {
+    target: "es2022",
+    assetsInlineLimit: 0,
+    modulePreload: { polyfill: false },
+    emptyOutDir: true,
+  },
+  test: {
+    environment: "happy-dom",
+    include: ["src/**/*.test.{ts,tsx}"],
+    env: { TZ: "UTC" },
+    restoreMocks: true,
+  },
+});
