@@ -9,55 +9,14 @@ import (
 	"nightbench/instruments"
 	"nightbench/instruments/si"
 	"nightbench/sweeps"
+	"nightbench/sweeps/derive"
 
 	"golang.org/x/sync/errgroup"
 )
 
-// Raw is everything the instruments answered at one setpoint.
-type Raw struct {
-	Setpoint sweeps.Setpoint
-	Supply   []instruments.SupplyState // one a repeat
-	Meters   [][]instruments.Sample    // by meter, in the order of the wiring; one a repeat
-	Records  [][]instruments.Waveform  // one a repeat; by channel
-}
-
-// supplyVoltage is the mean of the supply's own readings, or what was set where there is none.
-func (raw Raw) supplyVoltage(set float64) float64 {
-	sum, n := 0.0, 0
-	for _, s := range raw.Supply {
-		if s.Voltage.Outcome == instruments.Measured {
-			sum += s.Voltage.Value
-			n++
-		}
-	}
-	if n == 0 {
-		return set
-	}
-	return sum / float64(n)
-}
-
-// records are the newest record's waveforms, as kept with a point.
-func (raw Raw) records(w instruments.Wiring) []sweeps.Record {
-	if len(raw.Records) == 0 || w.Scope == nil {
-		return nil
-	}
-	var kept []sweeps.Record
-	for _, f := range raw.Records[len(raw.Records)-1] {
-		for _, c := range w.Scope.Channels {
-			if c.Number == f.Channel {
-				kept = append(kept, sweeps.Record{
-					Node: string(c.Between[0]) + " less " + string(c.Between[1]), Channel: f.Channel, Start: f.Start, Interval: f.Interval,
-					VoltsPerCode: f.VoltsPerCode, VoltsAtZero: f.VoltsAtZero, Codes: f.Codes,
-				})
-			}
-		}
-	}
-	return kept
-}
-
 // measure takes all repeats of a setpoint, every instrument in a goroutine of its own.
-func (r *Runner) measure(ctx context.Context, at sweeps.Setpoint) (Raw, error) {
-	raw := Raw{Setpoint: at, Meters: make([][]instruments.Sample, len(r.o.Bench.Meters))}
+func (r *Runner) measure(ctx context.Context, at sweeps.Setpoint) (derive.Raw, error) {
+	raw := derive.Raw{Setpoint: at, Meters: make([][]instruments.Sample, len(r.o.Bench.Meters))}
 	repeats := r.o.Plan.Measure.Repeats
 	period := r.expect(at).period
 	g, ctx := errgroup.WithContext(ctx)
@@ -106,7 +65,7 @@ func (r *Runner) repeat(ctx context.Context, n int, period float64, take func() 
 	return nil
 }
 
-func (r *Runner) capture(ctx context.Context, raw *Raw) error {
+func (r *Runner) capture(ctx context.Context, raw *derive.Raw) error {
 	var f []instruments.Waveform
 	err := again(ctx, r.o.Clock, func() (err error) {
 		f, err = r.o.Bench.Scope.Capture(ctx)

@@ -38,9 +38,6 @@ type Predictor interface {
 	Peak(supply float64) float64
 }
 
-// Deriver turns raw replies and waveforms into readings. It is pure.
-type Deriver func(w instruments.Wiring, raw Raw, wanted []sweeps.Quantity) []sweeps.Reading
-
 // Options are what a run needs. All fields but Done and Changed are required.
 type Options struct {
 	Bench   instruments.Bench
@@ -48,7 +45,7 @@ type Options struct {
 	Journal Journal
 	Mark    Mark
 	Predict Predictor
-	Derive  Deriver
+	Board   sweeps.Board
 	Plan    sweeps.Plan
 	Run     sweeps.Run
 	Order   []sweeps.Setpoint

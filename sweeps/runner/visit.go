@@ -8,6 +8,7 @@ import (
 	"nightbench/instruments"
 	"nightbench/instruments/si"
 	"nightbench/sweeps"
+	"nightbench/sweeps/derive"
 )
 
 // visit sets a setpoint coming from another, lets it settle, measures it and
@@ -60,20 +61,20 @@ func (r *Runner) set(ctx context.Context, from, to sweeps.Setpoint) error {
 }
 
 // point turns what was measured into a point: readings, predictions at the measured supply, flags.
-func (r *Runner) point(at sweeps.Setpoint, raw Raw, unsettled *sweeps.Flag) sweeps.Point {
-	readings := r.o.Derive(r.o.Bench.Wiring, raw, r.o.Plan.Measure.Quantities)
+func (r *Runner) point(at sweeps.Setpoint, raw derive.Raw, unsettled *sweeps.Flag) sweeps.Point {
+	readings := derive.Readings(r.o.Bench.Wiring, r.o.Board, raw, r.o.Plan.Measure.Quantities)
 	if unsettled != nil {
 		for i := range readings {
 			readings[i].Flags = append(readings[i].Flags, *unsettled)
 		}
 	}
-	predictions, flags := r.o.Predict.At(raw.supplyVoltage(at.Supply), at.Pot)
+	predictions, flags := r.o.Predict.At(raw.SupplyVoltage(), at.Pot)
 	p := sweeps.Point{
 		Setpoint: at, At: r.o.Clock.Now(), Elapsed: (r.o.Clock.Elapsed() - r.begun).Seconds(),
 		Readings: readings, Predictions: predictions, Flags: flags,
 	}
 	if keep := r.o.Plan.Measure.KeepWaveform; keep > 0 && at.Index%keep == 0 {
-		p.Records = raw.records(r.o.Bench.Wiring)
+		p.Records = raw.Kept(r.o.Bench.Wiring)
 	}
 	return p
 }

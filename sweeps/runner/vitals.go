@@ -40,13 +40,13 @@ func (r *Runner) sawSupply(s instruments.SupplyState) {
 	now := r.o.Clock.Now()
 	r.tell(func(v *sweeps.Vitals) {
 		v.ReadAt = &now
-		v.Voltage, v.VoltageU = sampleValue(s.Voltage)
-		v.Current, v.CurrentU = sampleValue(s.Current)
+		v.Voltage, v.VoltageU = SampleValue(s.Voltage)
+		v.Current, v.CurrentU = SampleValue(s.Current)
 	})
 }
 
-// sampleValue is a sample's value with the standard uncertainty of its accuracy figure (rectangular: a/√3, GUM 4.3.7).
-func sampleValue(s instruments.Sample) (value, u *float64) {
+// SampleValue is a sample's value with the standard uncertainty of its accuracy figure (rectangular: a/√3, GUM 4.3.7).
+func SampleValue(s instruments.Sample) (value, u *float64) {
 	if s.Outcome != instruments.Measured {
 		return nil, nil
 	}
