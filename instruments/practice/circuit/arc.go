@@ -13,11 +13,36 @@ import "math"
 type arc struct {
 	X, F, J float64 // start value, its slope (1/s), the slope's derivative (1/s)
 	Fix     float64 // correction reached at the step's end
-	H       float64 // length of the step, s
+	H       float64 // length of the step, s; 0 until it is known
+
+	end, avg float64 // value at H, mean over the step; kept because asked often
+}
+
+// span fixes the step's length.
+func (a *arc) span(h float64) {
+	a.H = h
+	z := h * a.J
+	p := phi1(z)
+	q := (p - 1) / z
+	if math.Abs(z) < 0.02 {
+		q = phi2(z)
+	}
+	a.end = a.X + h*p*a.F
+	a.avg = a.X + h*q*a.F
+}
+
+// correct adds what the linearisation missed, reached at the step's end.
+func (a *arc) correct(fix float64) {
+	a.Fix = fix
+	a.end += fix
+	a.avg += fix / 4
 }
 
 // at gives the value t seconds into the step.
 func (a *arc) at(t float64) float64 {
+	if t == a.H {
+		return a.end
+	}
 	x := a.X + t*phi1(t*a.J)*a.F
 	if a.Fix != 0 {
 		r := t / a.H
@@ -28,13 +53,19 @@ func (a *arc) at(t float64) float64 {
 
 // mean gives the mean value between ta and tb seconds into the step.
 func (a *arc) mean(ta, tb float64) float64 {
-	if tb <= ta {
+	switch {
+	case tb <= ta:
 		return a.at(ta)
+	case ta == 0 && tb == a.H:
+		return a.avg
 	}
 	return (a.integral(tb) - a.integral(ta)) / (tb - ta)
 }
 
 func (a *arc) integral(t float64) float64 {
+	if t == 0 {
+		return 0
+	}
 	s := a.X*t + t*t*phi2(t*a.J)*a.F
 	if a.Fix != 0 {
 		r := t / a.H

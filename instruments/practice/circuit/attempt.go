@@ -8,12 +8,15 @@ import "math"
 // speed at mid-step, the rotor the mean current.
 func (s *Sim) attempt(h float64) {
 	g := &s.seg
-	mean := g.supply.mean(0, h)
-	if math.Abs(mean-s.reference) > 1e-7*(math.Abs(mean)+0.01) {
+	if h != g.supply.H {
+		g.supply.span(h)
+	}
+	if mean := g.supply.avg; math.Abs(mean-s.reference) > sameSupply*(math.Abs(mean)+0.01) {
 		s.refer(mean)
 	}
+	g.cap.span(h)
 	if s.b.Timing.Network != Clocked {
-		fix(&g.cap, h, func(v float64) float64 {
+		fix(&g.cap, func(v float64) float64 {
 			f, _ := s.charge(v, s.reference)
 			return f
 		})
@@ -23,29 +26,30 @@ func (s *Sim) attempt(h float64) {
 	if s.b.Load.Kind == Motor {
 		s.wind(h)
 		s.spin(h)
-		load = g.load.mean(0, h)
+		load = g.load.avg
 	}
 	g.supply, _ = s.sourceArc(s.draw(load, (g.pin0+g.pin1)/2))
+	g.supply.span(h)
 }
 
 // fix completes an arc by the third-order exponential Rosenbrock method
 // exprb32 (Hochbruck, Ostermann and Schweitzer, SIAM J. Numer. Anal. 47, 2009):
 // x1 = U + 2 h φ3(hJ) (g(U) − g(x0)), with U the linearised end and g what the
 // linearisation leaves of f. The correction also estimates the error.
-func fix(a *arc, h float64, f func(float64) float64) {
-	a.H, a.Fix = h, 0
-	d := h * phi1(h*a.J) * a.F
-	left := f(a.X+d) - a.F - a.J*d
-	if math.Abs(left) > 1e-13*math.Abs(a.F) {
-		a.Fix = 2 * h * phi3(h*a.J) * left
+func fix(a *arc, f func(float64) float64) {
+	a.Fix = 0
+	left := f(a.end) - a.F - a.J*(a.end-a.X)
+	if math.Abs(left) > 1e-12*math.Abs(a.F) {
+		a.correct(2 * a.H * phi3(a.H*a.J) * left)
 	}
 }
 
 // wind makes the winding's arc: L di/dt = u(i) − R i − E − brush.
 func (s *Sim) wind(h float64) {
 	g, l := &s.seg, &s.b.Load
-	g.load = arc{X: s.x.Current, H: h}
+	g.load = arc{X: s.x.Current}
 	if s.way == 0 {
+		g.load.span(h)
 		return
 	}
 	r, back := s.winding(), s.emf(s.x.Speed+h/2*s.acceleration(s.x.Current))
@@ -58,7 +62,8 @@ func (s *Sim) wind(h float64) {
 	if h == 0 {
 		return
 	}
-	fix(&g.load, h, func(i float64) float64 {
+	g.load.span(h)
+	fix(&g.load, func(i float64) float64 {
 		if i*float64(s.way) < 0 {
 			i = 0
 		}
@@ -75,10 +80,16 @@ func (s *Sim) acceleration(current float64) float64 {
 	return (l.constant(s.x.Angle)*current - l.drag(s.x.Speed, s.x.Angle)) / l.Inertia
 }
 
-// spin makes the speed's arc from the mean current.
+// spin makes the speed's arc from the mean current. A step longer than the
+// rotor's time constant is only made where nothing changes any more; what is
+// left then dies out instead of growing with the step.
 func (s *Sim) spin(h float64) {
 	g := &s.seg
-	g.speed = arc{X: s.x.Speed, F: s.acceleration(g.load.mean(0, h)), H: h}
+	g.speed = arc{X: s.x.Speed, F: s.acceleration(g.load.avg)}
+	if tau := s.b.Load.mechanical(s.x.Speed, s.b.Load.Resistance); h > tau {
+		g.speed.J = -1 / tau
+	}
+	g.speed.span(h)
 }
 
 // judge gives the longest step, at most h, that the attempt of length h says
@@ -86,35 +97,44 @@ func (s *Sim) spin(h float64) {
 // current passed by more than a trace.
 func (s *Sim) judge(h float64) float64 {
 	g, next := &s.seg, h
-	vs := g.supply.at(h)
+	vs := g.supply.end
 	scale := s.fineness * s.fineness * math.Max(vs, 0.1)
-	worst := math.Abs(g.cap.Fix) / (maxFix * scale)
+	next = math.Min(next, s.stride.after(h, math.Abs(g.cap.Fix)/(maxFix*scale)))
 	if s.way != 0 {
-		amps := math.Abs(g.load.X) + 0.02*scale/s.b.Load.Resistance
-		worst = math.Max(worst, math.Abs(g.load.Fix)/(maxFixAmps*amps))
+		amps := maxFixAmps * (math.Abs(g.load.X) + 0.2*scale/s.b.Load.Resistance)
+		next = math.Min(next, s.loadStride.after(h, math.Abs(g.load.Fix)/amps))
 	}
-	if worst > 1 {
-		next = h * math.Max(0.2, 0.9*math.Pow(worst, -1./3))
-		s.h = next
+	if next < h {
 		return next
 	}
 	if level, ok := s.target(vs); ok {
-		next = math.Min(next, back(h, g.cap.X, g.cap.at(h), level, levelShare*scale, s.high))
+		next = math.Min(next, back(h, g.cap.X, g.cap.end, level, levelShare*scale, s.high))
 	}
 	if s.way != 0 {
-		next = math.Min(next, back(h, g.load.X, g.load.at(h), 0, s.trace(), s.way < 0))
-	}
-	if next >= h {
-		s.h = math.Max(s.longer(h, worst), s.h)
-		if h >= s.h {
-			s.h = s.longer(h, worst)
-		}
+		next = math.Min(next, back(h, g.load.X, g.load.end, 0, s.trace(), s.way < 0))
 	}
 	return next
 }
 
-func (s *Sim) longer(h, worst float64) float64 {
-	return h * math.Min(4, 0.9*math.Pow(math.Max(worst, 1e-3), -1./3))
+// A stride is the step length one state variable allows, s.
+type stride float64
+
+// after learns from a step of length h whose correction was a share of what
+// is allowed, and returns the length that would have been right, at most h.
+func (d *stride) after(h, share float64) float64 {
+	if share > 1 {
+		h *= math.Max(0.2, 0.9/math.Cbrt(share))
+		*d = stride(h)
+		return h
+	}
+	longer := stride(4 * h)
+	if share > 0.01 {
+		longer = stride(h * 0.9 / math.Cbrt(share))
+	}
+	if stride(h) >= *d || longer > *d {
+		*d = longer
+	}
+	return h
 }
 
 // trace is a load current not worth following, A.
@@ -142,7 +162,7 @@ func (s *Sim) finish(h, end float64) {
 	if math.Abs(g.T1-end) <= s.tick() {
 		g.T1 = end
 	}
-	x.Time, x.Supply, x.Capacitor, x.Discharge = g.T1, math.Max(g.supply.at(h), 0), g.cap.at(h), g.pin1
+	x.Time, x.Supply, x.Capacitor, x.Discharge = g.T1, math.Max(g.supply.end, 0), g.cap.end, g.pin1
 	if s.b.Load.Kind == Motor {
 		s.coast(h)
 	} else {
@@ -153,17 +173,17 @@ func (s *Sim) finish(h, end float64) {
 // coast takes current, speed, angle and winding temperature to the step's end.
 func (s *Sim) coast(h float64) {
 	g, x, l := &s.seg, &s.x, &s.b.Load
-	x.Current = g.load.at(h)
+	x.Current = g.load.end
 	if s.way != 0 && float64(s.way)*x.Current <= s.trace() && float64(s.way)*g.load.F <= 0 {
 		x.Current = 0
 	}
 	if l.ThermalResistance > 0 {
-		rms := g.load.mean(0, h)
-		heat := rms * rms * s.winding()
-		x.Winding += h * (heat - (x.Winding-s.ambient)/l.ThermalResistance) / l.ThermalCapacity
+		tau := l.ThermalResistance * l.ThermalCapacity
+		heat := (g.load.X*g.load.X + 4*g.load.avg*g.load.avg + g.load.end*g.load.end) / 6 * s.winding()
+		x.Winding += relax((heat*l.ThermalResistance-(x.Winding-s.ambient))/tau, tau, h)
 	}
-	x.Angle = math.Mod(x.Angle+h*g.speed.at(h/2), 2*math.Pi)
-	x.Speed = g.speed.at(h)
+	x.Angle = math.Mod(x.Angle+h*g.speed.avg, 2*math.Pi)
+	x.Speed = g.speed.end
 	switch {
 	case s.turning && x.Speed <= 1e-6 && g.speed.F <= 0:
 		x.Speed, s.turning = 0, false

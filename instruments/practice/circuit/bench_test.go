@@ -7,7 +7,7 @@ import "testing"
 func BenchmarkWatched(b *testing.B) {
 	s := spinning(b, 5e3)
 	from := s.Now()
-	var steps counter
+	steps := counter{from: from}
 	b.ResetTimer()
 	for range b.N {
 		v := NewMean(Between(LoadHi, LoadLo), s.Now(), s.Now()+0.1)

@@ -63,8 +63,8 @@ func (n *network) solve(vth, rth, v float64) (i, di float64) {
 		d := n.w - v
 		i = a1 + g1*d - a2 + g2*d
 		di = -gs * g / (gs + g)
-		if math.Max(n.up.move(d), n.down.move(-d)) < 1e-6 {
-			break
+		if math.Max(n.up.move(d), n.down.move(-d)) < 1e-4 {
+			break // i, linear in the last move, is good to its square
 		}
 	}
 	n.source = (vth - n.w) * gs

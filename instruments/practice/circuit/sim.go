@@ -43,11 +43,11 @@ type Sim struct {
 	on, base             float64 // the switch's resistance; the base current
 	reference            float64 // supply voltage on and base were found at
 
-	seg      Segment // the step being made, reused
-	h        float64 // step to try next, s
-	fineness float64 // 1; a half halves every limit on the step
-	watchers []watcher
-	cycle    cycle
+	seg                Segment // the step being made, reused
+	stride, loadStride stride  // steps to try next
+	fineness           float64 // 1; a half halves every limit on the step
+	watchers           []watcher
+	cycle              cycle
 }
 
 // A mode is what stays as it is during a step.
@@ -70,7 +70,7 @@ var never = event{at: math.Inf(1)}
 
 // New starts a simulation of a board, or says what is wrong with it.
 func New(b Board) (*Sim, error) {
-	s := &Sim{turn: never, release: never, fineness: 1, h: 1e-6}
+	s := &Sim{turn: never, release: never, fineness: 1, stride: 1e-6, loadStride: 1e-6}
 	s.seg.sim = s
 	s.cycle.reset()
 	if err := s.adopt(b); err != nil {

@@ -6,11 +6,12 @@ import "math"
 // in a step, and the correction of a step, a bound on its error, is kept
 // below a share of the supply (of a typical load current for the winding).
 const (
-	maxMove      = 1. / 15
-	maxFix       = 2e-5
-	maxFixAmps   = 2e-4
-	maxSag       = 0.02 // of the supply in a step, outside constant voltage
-	levelShare   = 1e-7 // a level counts as reached this near, of the supply
+	maxMove    = 1. / 15
+	maxFix     = 1e-4
+	maxFixAmps = 2e-4
+	maxSag     = 0.02 // of the supply in a step, outside constant voltage
+	levelShare = 1e-7 // a level counts as reached this near, of the supply
+	sameSupply = 1e-5 // the supply has not changed enough to linearise anew
 )
 
 // tick is the shortest step, s: small against any circuit, well above the
@@ -44,7 +45,7 @@ func (s *Sim) power() {
 		return
 	}
 	s.powered, s.turn, s.release = alive, never, never
-	s.disturb()
+	s.reference, s.cycle.n = math.NaN(), 0
 	if !alive {
 		s.high, s.driven = false, false
 		return
@@ -68,7 +69,10 @@ func (s *Sim) begin(end float64) float64 {
 	s.region = s.locate(load)
 	var ends float64
 	g.supply, ends = s.sourceArc(load)
-	h := math.Min(s.h, ends)
+	h := math.Min(float64(s.stride), ends)
+	if s.way != 0 {
+		h = math.Min(h, float64(s.loadStride))
+	}
 	for _, at := range [...]float64{end, s.turn.at, s.release.at, s.outEdge.end(t), s.loadEdge.end(t)} {
 		h = math.Min(h, at-t)
 	}
@@ -77,7 +81,8 @@ func (s *Sim) begin(end float64) float64 {
 	}
 	h = math.Min(h, s.rotorLimit())
 	h = math.Max(h, s.tick())
-	s.refer(g.supply.mean(0, h))
+	g.supply.span(h)
+	s.refer(g.supply.avg)
 	if f := math.Abs(g.cap.F); f > 0 {
 		h = math.Min(h, s.fineness*maxMove*math.Max(s.x.Supply, 0.1)/f)
 	}
@@ -92,11 +97,15 @@ func (s *Sim) rotorLimit() float64 {
 	if l.Kind != Motor || !s.turning {
 		return math.Inf(1)
 	}
-	h := 0.1 * l.mechanical(s.x.Speed, l.Resistance)
+	tau := l.mechanical(s.x.Speed, l.Resistance)
+	h := s.fineness * 0.1 * tau
 	if per := l.unevenness(); per > 0 {
-		h = math.Min(h, 0.3/(per*math.Max(s.x.Speed, 1)))
+		return math.Min(h, s.fineness*0.3/(per*math.Max(s.x.Speed, 1)))
 	}
-	return s.fineness * h
+	if math.Abs(s.acceleration(s.x.Current))*tau < 1e-8*s.x.Speed {
+		return math.Inf(1) // nothing drives it any more; spin keeps this stable
+	}
+	return h
 }
 
 // direct settles which way the load current goes when it is at zero.
@@ -104,6 +113,9 @@ func (s *Sim) direct() {
 	if s.b.Load.Kind != Motor {
 		s.x.Current = s.resistorCurrent(s.x.Supply)
 		return
+	}
+	if s.x.Current == 0 {
+		s.loadStride = stride(math.Inf(1))
 	}
 	switch i := s.x.Current; {
 	case i > 0:
