@@ -1,0 +1,259 @@
+package pulse
+
+import (
+	"fmt"
+	"math"
+)
+
+// analysis carries one record through the steps of the standard: state levels,
+// transitions, whole periods, parameters.
+type analysis struct {
+	trace
+	options   Options
+	h         histogram
+	q         float64 // codes between values that occur
+	noise     float64 // variance of white noise, codes²
+	pairs     int     // neighbour pairs it was estimated from
+	low, high state
+	rest      state // of three levels
+	driven    scanner
+	freewheel scanner // of three levels: transitions between freewheel and rest
+	three     bool
+	result    Result
+}
+
+func (a *analysis) run() {
+	a.h = newHistogram(a.codes)
+	a.q = float64(a.h.step)
+	a.result.Flags = append(a.result.Flags, a.flags...)
+	a.checkClipping()
+	g := guessLevels(a.codes, a.h)
+	if a.flat(g) {
+		a.constant()
+		return
+	}
+	if !g.three || !a.threeLevels(g) {
+		a.twoLevels(g.low, g.high, g.noise)
+	}
+	a.result.Middle = a.volts((a.driven.low + a.driven.high) / 2)
+	a.judgeLevels()
+	if len(a.driven.edges) < 3 || a.slow() {
+		a.notPulses()
+		return
+	}
+	a.instants()
+	a.measure()
+}
+
+func (a *analysis) flag(name, format string, args ...any) Flag {
+	f := Flag{name, fmt.Sprintf(format, args...)}
+	if !a.result.Flagged(name) {
+		a.result.Flags = append(a.result.Flags, f)
+	}
+	return f
+}
+
+// flat tells whether the record shows one level only: the two halves of its range
+// are no farther apart than their own spread explains. For Gaussian noise the
+// ratio is 2.65, for a triangle 3.5, for a sine 4.1.
+func (a *analysis) flat(g guess) bool {
+	if g.high-g.low < 1.5*a.q {
+		return true
+	}
+	split := (g.low + g.high) / 2
+	n0, m0, v0 := a.h.moments(float64(a.h.low), split)
+	n1, m1, v1 := a.h.moments(split+1e-9, float64(a.h.high()))
+	within := math.Sqrt((float64(n0)*v0 + float64(n1)*v1) / float64(n0+n1))
+	limit := 3.2
+	if n0+n1 < 60 {
+		limit = 4.5
+	}
+	return m1-m0 < limit*within
+}
+
+// moments returns count, mean and variance of the codes within [from, to].
+func (h histogram) moments(from, to float64) (n int, mean, variance float64) {
+	n, sum := h.within(from, to)
+	if n == 0 {
+		return 0, from, 0
+	}
+	mean = sum / float64(n)
+	a, b := max(0, int(math.Ceil(from))-h.low), min(len(h.count)-1, int(math.Floor(to))-h.low)
+	for i := a; i <= b; i++ {
+		d := float64(i+h.low) - mean
+		variance += float64(h.count[i]) * d * d
+	}
+	return n, mean, variance / float64(n)
+}
+
+// bound is the distance of the state boundaries from the levels: 2 % of the
+// amplitude, or as much as noise and rounding need, but never a third of it.
+func (a *analysis) bound(low, high, noise float64) float64 {
+	return min(0.3*(high-low), max(0.02*(high-low), 3.5*noise+0.5*a.q))
+}
+
+// twoLevels finds the transitions between two levels and refines the levels from
+// the settled part of each state, as the transitions delimit it.
+func (a *analysis) twoLevels(low, high, noise float64) {
+	loose := false
+	for range 3 {
+		bound := a.bound(low, high, noise)
+		if loose {
+			bound = 0.3 * (high - low)
+		}
+		a.driven = scanner{codes: a.codes, low: low, high: high, bound: bound}
+		a.driven.scan()
+		if !loose && (len(a.driven.edges) < 3 || a.driven.runts > len(a.driven.edges)) {
+			loose = true
+			a.driven = scanner{codes: a.codes, low: low, high: high, bound: 0.3 * (high - low)}
+			a.driven.scan()
+		}
+		a.measureTwo(low, high)
+		moved := max(math.Abs(a.low.level-low), math.Abs(a.high.level-high))
+		low, high, noise = a.low.level, a.high.level, math.Sqrt(a.noise)
+		if moved < 0.002*(high-low) || moved < 0.1*a.q {
+			break
+		}
+	}
+	a.driven.low, a.driven.high = low, high
+	a.tidy(&a.driven)
+	a.measureTwo(low, high)
+}
+
+// tidy locates the instants, removes notches and flags notches and runts.
+func (a *analysis) tidy(s *scanner) {
+	s.locate()
+	if n := s.removeNotches(); n > 0 {
+		a.flag(Notch, "%d short excursions to the other state were taken for disturbances and left out", n)
+	}
+	if s.runts > 0 {
+		a.flag(Runt, "%d pulses passed the middle without reaching the other state; they were not counted", s.runts)
+	}
+}
+
+func (a *analysis) measureTwo(low, high float64) {
+	edges, n := a.driven.edges, len(a.codes)
+	if len(edges) == 0 {
+		a.low, a.high = state{level: low, dof: 1, uRound: a.q}, state{level: high, dof: 1, uRound: a.q}
+		return
+	}
+	a.low = a.settled(spans(edges, false, n), low, high-low)
+	a.high = a.settled(spans(edges, true, n), high, high-low)
+	a.pool(&a.low, &a.high)
+}
+
+// settled measures a state over its last three fifths, spikes left out.
+func (a *analysis) settled(occ []span, about, amplitude float64) state {
+	st := measureState(a.codes, occ, about, 0.35*amplitude, 0.4, a.h.step)
+	reach := max(4.5*math.Sqrt(st.spread), 1.5*a.q)
+	if reach < 0.35*amplitude {
+		st = measureState(a.codes, occ, st.level, reach, 0.4, a.h.step)
+	}
+	return st
+}
+
+// pool shares the noise among states: the scope's is the same in all, and with
+// few samples no state can tell it alone. Rounding follows from it.
+func (a *analysis) pool(states ...*state) {
+	var sum float64
+	a.pairs = 0
+	for _, s := range states {
+		sum += s.noise * float64(s.pairs)
+		a.pairs += s.pairs
+	}
+	a.noise = 0
+	if a.pairs > 0 {
+		a.noise = sum / float64(a.pairs)
+	}
+	for _, s := range states {
+		if s.pairs < 30 && s.n > 0 {
+			s.noise = a.noise
+			s.uRandom = max(s.uRandom, math.Sqrt(a.noise/float64(s.n)))
+			s.dof = max(s.dof, float64(a.pairs-1), 1)
+		}
+		s.rounding(a.h)
+	}
+}
+
+// threeLevels tries the record as freewheel and rest: every period must go from
+// rest to driven, fall to freewheel and come back to rest. False: it does not.
+func (a *analysis) threeLevels(g guess) bool {
+	low, mid, high := g.low, g.third, g.high
+	n := len(a.codes)
+	for range 2 {
+		a.driven = scanner{codes: a.codes, low: mid, high: high, bound: a.bound(mid, high, g.noise)}
+		a.freewheel = scanner{codes: a.codes, low: low, high: mid, bound: a.bound(low, mid, g.noise)}
+		a.driven.scan()
+		a.freewheel.scan()
+		if !follows(a.driven.edges, a.freewheel.edges) {
+			return false
+		}
+		a.high = a.settled(spans(a.driven.edges, true, n), high, high-mid)
+		a.low = a.settled(spans(a.freewheel.edges, false, n), low, mid-low)
+		a.rest = a.settled(restSpans(a.driven.edges, a.freewheel.edges), mid, min(high-mid, mid-low))
+		if a.rest.n == 0 {
+			return false
+		}
+		low, mid, high = a.low.level, a.rest.level, a.high.level
+	}
+	a.pool(&a.low, &a.high, &a.rest)
+	a.driven.low, a.driven.high = mid, high
+	a.freewheel.low, a.freewheel.high = low, mid
+	a.tidy(&a.driven)
+	a.tidy(&a.freewheel)
+	a.three = true
+	return true
+}
+
+// follows tells whether nearly every driven pulse is followed by one freewheel pulse and a rest.
+func follows(driven, freewheel []edge) bool {
+	ups := risings(driven)
+	ends := risings(freewheel)
+	if len(ups) < 2 || len(ends) < 1 {
+		return false
+	}
+	good, k := 0, 0
+	for i := 0; i+1 < len(ups); i++ {
+		for k < len(ends) && ends[k].to <= ups[i].to {
+			k++
+		}
+		if k < len(ends) && ends[k].to+2 < ups[i+1].from && (k+1 == len(ends) || ends[k+1].to >= ups[i+1].from) {
+			good++
+		}
+	}
+	return good*10 >= 8*(len(ups)-1)
+}
+
+func risings(edges []edge) []edge {
+	var out []edge
+	for _, e := range edges {
+		if e.rising {
+			out = append(out, e)
+		}
+	}
+	return out
+}
+
+// restSpans lists the stretches from the end of freewheel to the next driven pulse.
+func restSpans(driven, freewheel []edge) []span {
+	var out []span
+	ups := risings(driven)
+	k := 0
+	for _, e := range risings(freewheel) {
+		for k < len(ups) && ups[k].from < e.to {
+			k++
+		}
+		if k == len(ups) {
+			break
+		}
+		out = append(out, span{e.to, ups[k].from})
+	}
+	return out
+}
+
+func (a *analysis) instants() {
+	a.result.Instants = make([]Instant, len(a.driven.edges))
+	for i, e := range a.driven.edges {
+		a.result.Instants[i] = Instant{a.at(e.mid), e.rising}
+	}
+}

@@ -1,0 +1,208 @@
+package pulse
+
+import (
+	"math"
+
+	"nightbench/sweeps/uncertainty"
+)
+
+// measure fills in the parameters of a record with at least one whole period.
+func (a *analysis) measure() {
+	c := a.cycles()
+	a.result.Periods = c.n()
+	a.result.Class = TwoLevel
+	if a.three {
+		a.result.Class = FreewheelRest
+	}
+	sag := a.sag(c)
+	a.judgePeriods(c)
+	a.timing(c)
+	average, rms := a.wholePeriodMeans(c)
+	a.add(average)
+	a.levels(sag)
+	a.add(rms)
+	a.add(a.ripple())
+	a.transitions(c)
+	a.aberrations(c)
+	if a.three {
+		a.freewheelAndRest(c)
+	}
+	a.attach()
+}
+
+// judgePeriods flags too few, irregular or undersampled periods.
+func (a *analysis) judgePeriods(c cycles) {
+	if c.n() < 2 {
+		a.flag(FewPeriods, "one whole period only: nothing tells whether the next is the same; take a longer record")
+	}
+	high, low, whole := c.durations()
+	shortest := min(median(high), median(low)) / a.cell
+	if shortest < 2.5 {
+		a.flag(Undersampled, "the shorter phase lasts about %.1f sample intervals; take a faster time base", shortest)
+	}
+	if a.high.n < 4 || a.low.n < 4 || a.pairs < 6 {
+		a.flag(FewSamples, "only %d samples in the high and %d in the low state; noise is poorly known", a.high.n, a.low.n)
+	}
+	spread := deviation(whole) / mean(whole)
+	if spread > 0.25 && c.n() >= 3 {
+		a.flag(Irregular, "periods scatter by %.0f %%: pulses are missing, or it is no steady pulse train", 100*spread)
+	}
+	if spread > 0.5 && c.n() >= 4 {
+		a.result.Class = NotPulses
+	}
+}
+
+// sag tells by how much (codes) the high level falls through its state; 0 when not significantly.
+func (a *analysis) sag(c cycles) float64 {
+	amplitude := a.high.level - a.low.level
+	// Halves of the last three fifths are 0.3 of the state apart.
+	fall := a.high.droop / 0.3
+	if fall < 0.04*amplitude || a.high.droop < 5*a.high.uDroop || fall < 2*a.q {
+		return 0
+	}
+	a.flag(Sagging, "the high level falls by about %.3g V through the high state; the level given is its mean, and no drop can be had from average and duty", fall*a.volt)
+	a.result.Class = SaggingTop
+	return fall
+}
+
+// levels adds high and low level and the amplitude.
+func (a *analysis) levels(sag float64) {
+	own := func(s state, sign float64) []uncertainty.Component {
+		return []uncertainty.Component{
+			uncertainty.Scatter("noise", uncertainty.Value{U: a.volt * s.uRandom, DOF: s.dof}).Times(sign),
+			uncertainty.Known("converter steps", a.volt*s.uRound).Times(sign),
+			uncertainty.Known("settling", a.volt*s.uSettle).Times(sign),
+		}
+	}
+	if sag > 0 {
+		a.high.uSettle = sag / math.Sqrt(12)
+	}
+	high := a.voltage("high_level", a.high.level, own(a.high, 1)...)
+	low := a.voltage("low_level", a.low.level, own(a.low, 1)...)
+	a.add(high)
+	a.add(low)
+	swing := (a.high.level - a.low.level) * a.volt
+	a.add(a.quantity("amplitude", "V", swing, 0, swing, 0, append(own(a.high, 1), own(a.low, -1)...)...))
+}
+
+// ripple is the slow variation of the high level, peak to peak of the sine of the
+// same rms value: what the samples of the settled high state spread more than neighbours do.
+func (a *analysis) ripple() Quantity {
+	s := a.high
+	slow := max(0, s.spread-s.noise)
+	n := float64(max(2, s.n))
+	// Variances of spread and noise from n samples; rounding adds its own when noise does not cover it.
+	uv := math.Sqrt(sq(s.spread)+1.5*sq(s.noise))*math.Sqrt(2/n) + sq(s.uRound)
+	rms := math.Sqrt(slow)
+	u := min(math.Sqrt(uv), uv/2/max(rms, 1e-300))
+	k := 2 * math.Sqrt2 * a.volt
+	return a.quantity("ripple", "V", k*rms, 0, k*rms, 0,
+		uncertainty.Scatter("few samples", uncertainty.Value{U: k * u, DOF: max(1, n-1)}))
+}
+
+// transitions adds rise and fall time (first and second transition durations, 10 %
+// to 90 %) where the samples resolve them.
+func (a *analysis) transitions(c cycles) {
+	for _, d := range []struct {
+		name, words string
+		rising      bool
+	}{{"rise_time", "rising", true}, {"fall_time", "falling", false}} {
+		m := a.modelInstants(&a.driven, d.rising)
+		if m.n == 0 {
+			continue
+		}
+		tau := m.duration / a.cell
+		if tau < 3 || a.driven.bound > 0.09*(a.driven.high-a.driven.low) {
+			a.flag(EdgeTooFast, "transitions have fewer than three samples between 10 %% and 90 %%: only their durations are lost (below about %.2g s); instants keep their place within a sample", 3*a.cell)
+			continue
+		}
+		a.add(a.transition(d.name, d.rising, m))
+	}
+}
+
+func (a *analysis) transition(name string, rising bool, m instantModel) Quantity {
+	var values []float64
+	for _, e := range a.driven.edges {
+		if e.rising == rising {
+			values = append(values, math.Abs(a.at(e.ninth)-a.at(e.tenth)))
+		}
+	}
+	n := float64(len(values))
+	x := mean(values)
+	w := a.driven.high - a.driven.low
+	// An exponential transition is at its end a fifth as steep as at the middle, a straight one as steep.
+	noise := (crossingVariance(math.Sqrt(a.noise)/(0.5*m.slope*a.cell)) + crossingVariance(math.Sqrt(a.noise)/(m.slope*a.cell))) * sq(a.cell)
+	level := x * math.Hypot(a.uLevel(a.high), a.uLevel(a.low)) / w
+	tau := x / a.cell
+	e := scatterBeyond(values, noise+sq(0.3*a.cell/tau))
+	return a.quantity(name, "s", x, 0, 0, x,
+		uncertainty.Scatter("noise", uncertainty.Value{U: math.Sqrt(noise / n), DOF: max(1, float64(a.pairs-1))}),
+		uncertainty.Known("sample interval", 0.3*a.cell/tau),
+		uncertainty.Known("state levels", level),
+		uncertainty.Scatter("scatter of transitions", uncertainty.Value{U: e.mean, DOF: e.dof}))
+}
+
+// freewheelAndRest adds the rest level, which is the motor's back-EMF, and the share of
+// the period in which current flows.
+func (a *analysis) freewheelAndRest(c cycles) {
+	s := a.rest
+	a.add(a.voltage("back_emf", s.level,
+		uncertainty.Scatter("noise", uncertainty.Value{U: a.volt * s.uRandom, DOF: s.dof}),
+		uncertainty.Known("converter steps", a.volt*s.uRound),
+		uncertainty.Known("settling", a.volt*s.uSettle)))
+
+	if !c.rising {
+		return
+	}
+	end := a.modelInstants(&a.freewheel, true)
+	ends := risings(a.freewheel.edges)
+	var flow []float64
+	k := 0
+	for i := range c.n() {
+		for k < len(ends) && a.at(ends[k].mid) <= c.bounds[i] {
+			k++
+		}
+		if k < len(ends) && a.at(ends[k].mid) < c.bounds[i+1] {
+			flow = append(flow, (a.at(ends[k].mid)-c.bounds[i])/(c.bounds[i+1]-c.bounds[i]))
+		}
+	}
+	if len(flow) == 0 {
+		return
+	}
+	n := float64(len(flow))
+	x := mean(flow)
+	grid := c.keep*(c.limit.grid+end.grid) + 2*(x*x-x)*c.limit.grid/(n*n)
+	noise := (c.limit.noise+end.noise)/n + 2*(x*x-x)*c.limit.noise/(n*n)
+	level := math.Hypot(a.uLevel(a.low)/end.slope, a.uLevel(a.high)/c.limit.slope) / 2
+	level = math.Hypot(level, a.uLevel(a.rest)/2*(1/end.slope+1/c.limit.slope))
+	e := scatterBeyond(flow, (c.limit.noise+end.noise+(c.limit.grid+end.grid)*(1-c.keep+1/n))*(1+2*x*x)/sq(c.period))
+	a.add(a.quantity("conduction", "1", x, 0, 0, 0,
+		uncertainty.Known("sample interval", math.Sqrt(max(0, grid))/c.period),
+		uncertainty.Scatter("noise", uncertainty.Value{U: math.Sqrt(max(0, noise)) / c.period, DOF: max(1, float64(a.pairs-1))}),
+		uncertainty.Known("state levels", level/c.period),
+		uncertainty.Known("bend of transitions", math.Hypot(end.shape, c.limit.shape)/c.period),
+		uncertainty.Scatter("scatter of periods", uncertainty.Value{U: e.mean, DOF: e.dof})))
+}
+
+// bears says which quantities a flag bears on; flags not listed bear on all.
+var bears = map[string][]string{
+	EdgeTooFast: {},
+	Clipped:     {"average_voltage", "high_level", "low_level", "amplitude", "rms", "ripple", "overshoot", "undershoot", "back_emf"},
+	Sagging:     {"high_level", "amplitude", "ripple"},
+	FewCodes:    {"average_voltage", "high_level", "low_level", "amplitude", "rms", "ripple", "overshoot", "undershoot", "back_emf"},
+	Scale:       {"average_voltage", "high_level", "low_level", "amplitude", "rms", "ripple", "back_emf"},
+	CoarseTime:  {"duty", "frequency", "period", "t_high", "t_low", "rise_time", "fall_time", "jitter", "conduction"},
+}
+
+// attach puts the record's flags on the quantities they bear on.
+func (a *analysis) attach() {
+	for i := range a.result.Quantities {
+		q := &a.result.Quantities[i]
+		for _, f := range a.result.Flags {
+			names, listed := bears[f.Name]
+			if !listed || contains(names, q.Name) {
+				q.Flags = append(q.Flags, f)
+			}
+		}
+	}
+}

@@ -1,0 +1,205 @@
+package pulse
+
+import "math"
+
+// span is a stretch of samples within one state, ends included.
+type span struct{ from, to int }
+
+// spans lists the occurrences of the high or the low state between the edges,
+// with the cut ones at the ends of the record.
+func spans(edges []edge, high bool, n int) []span {
+	var out []span
+	for k, e := range edges {
+		if k == 0 && e.rising != high {
+			out = append(out, span{0, e.from})
+		}
+		if e.rising != high {
+			continue
+		}
+		end := n - 1
+		if k+1 < len(edges) {
+			end = edges[k+1].from
+		}
+		out = append(out, span{e.to, end})
+	}
+	return out
+}
+
+// state is what the samples within one state say about its level, in codes.
+type state struct {
+	level   float64
+	n       int     // samples used
+	noise   float64 // variance between neighbouring samples: white noise and rounding
+	pairs   int     // neighbour pairs the noise came from
+	spread  float64 // variance of all samples used
+	uRandom float64 // standard uncertainty of level from scatter
+	dof     float64
+	uRound  float64 // … from the converter's steps
+	uSettle float64 // … from a level still moving
+	droop   float64 // level early in the state less level late in it
+	uDroop  float64
+}
+
+const (
+	mostSpans   = 256  // occurrences looked at, spread over the record
+	mostSamples = 4096 // samples looked at in one occurrence, spread over it
+)
+
+// sums gathers what one pass over a stretch of samples needs.
+type sums struct {
+	n, pairs      int
+	y, yy, diff   float64
+	early, late   float64
+	nEarly, nLate int
+}
+
+// measureState averages the settled part of the occurrences: the first share
+// skip of each is left out, as are samples farther than reach codes from about
+// (spikes). step is the distance between codes that occur.
+func measureState(codes []int16, occ []span, about, reach, skip float64, step int) state {
+	st := state{level: about, dof: math.Inf(1)}
+	var means, weights []float64
+	var total sums
+	stride := (len(occ) + mostSpans - 1) / mostSpans
+	for k := 0; k < len(occ); k += max(1, stride) {
+		s := sumSpan(codes, occ[k], about, reach, skip)
+		if s.n == 0 {
+			continue
+		}
+		total.add(s)
+		means, weights = append(means, s.y/float64(s.n)), append(weights, float64(s.n))
+	}
+	if total.n == 0 {
+		st.uRandom, st.dof, st.uRound = reach/math.Sqrt(3), 1, float64(step)/math.Sqrt(12)
+		return st
+	}
+	n := float64(total.n)
+	off := total.y / n
+	st.n, st.pairs, st.level = total.n, total.pairs, about+off
+	st.spread = max(0, total.yy/n-off*off)
+	if total.pairs > 0 {
+		st.noise = total.diff / (2 * float64(total.pairs))
+	}
+	st.scatter(means, weights)
+	st.trend(total)
+	return st
+}
+
+func sumSpan(codes []int16, o span, about, reach, skip float64) sums {
+	var s sums
+	length := o.to - o.from + 1
+	from := o.from + int(skip*float64(length))
+	stride := (o.to - from + mostSamples) / mostSamples
+	half := from + (o.to-from)/2
+	for i := from; i <= o.to; i += max(1, stride) {
+		y := float64(codes[i]) - about
+		if math.Abs(y) > reach {
+			continue
+		}
+		s.n++
+		s.y += y
+		s.yy += y * y
+		if i <= half {
+			s.early += y
+			s.nEarly++
+		} else {
+			s.late += y
+			s.nLate++
+		}
+		if i < o.to {
+			if d := float64(codes[i+1]) - about - y; math.Abs(d) <= 2*reach {
+				s.diff += d * d
+				s.pairs++
+			}
+		}
+	}
+	return s
+}
+
+func (s *sums) add(o sums) {
+	s.n += o.n
+	s.pairs += o.pairs
+	s.y += o.y
+	s.yy += o.yy
+	s.diff += o.diff
+	s.early += o.early
+	s.late += o.late
+	s.nEarly += o.nEarly
+	s.nLate += o.nLate
+}
+
+// scatter sets the random uncertainty: that of white noise over all samples, or,
+// when the occurrences scatter more than white noise would let them, that of their means.
+func (st *state) scatter(means, weights []float64) {
+	n, j := float64(st.n), float64(len(means))
+	white := st.noise / n
+	st.uRandom, st.dof = math.Sqrt(white), max(1, float64(st.pairs-1))
+	slow := st.spread - st.noise
+	if slow > st.noise*3*math.Sqrt(2/n) && len(means) < 8 {
+		// Too few occurrences to see their scatter; each is one draw of the slow part.
+		st.uRandom = math.Hypot(st.uRandom, math.Sqrt(slow/j)/2)
+		return
+	}
+	if len(means) < 8 {
+		return
+	}
+	mean := st.meanOf(means, weights)
+	var between float64
+	for i, m := range means {
+		between += weights[i] * weights[i] * (m - mean) * (m - mean)
+	}
+	between /= n * n
+	if between > white*(1+3*math.Sqrt(2/j)) {
+		st.uRandom, st.dof = math.Sqrt(between*j/(j-1)), j-1
+	}
+}
+
+func (st *state) meanOf(means, weights []float64) float64 {
+	var s, w float64
+	for i, m := range means {
+		s += m * weights[i]
+		w += weights[i]
+	}
+	return s / w
+}
+
+// trend compares the earlier with the later half of the settled part.
+func (st *state) trend(t sums) {
+	if t.nEarly == 0 || t.nLate == 0 {
+		return
+	}
+	d := t.early/float64(t.nEarly) - t.late/float64(t.nLate)
+	u2 := st.noise * (1/float64(t.nEarly) + 1/float64(t.nLate))
+	st.droop, st.uDroop = d, math.Sqrt(u2)
+	// A level still approaching its end value lies beyond the later half by up to the same again.
+	st.uSettle = math.Sqrt(max(0, d*d-2*u2)) / math.Sqrt(3)
+}
+
+// rounding sets the uncertainty left by the converter's steps: step/√12 without
+// noise, vanishing once noise spreads the samples over several codes.
+func (st *state) rounding(h histogram) {
+	q := float64(h.step)
+	st.uRound = q * sawtooth(max(0, st.noise/q/q-1.0/12))
+	// Two codes alone may be a little noise astride a threshold, which rounds the mean towards it.
+	a := float64(h.low) + math.Floor((st.level-float64(h.low))/q)*q
+	inTwo, _ := h.within(a-0.5, a+q+0.5)
+	inFour, _ := h.within(a-q-0.5, a+2*q+0.5)
+	if inFour-inTwo <= inFour/300 {
+		st.uRound = max(st.uRound, 0.2*q)
+	}
+}
+
+// sawtooth is the rms error, in steps, of the mean of readings rounded to whole
+// steps when Gaussian noise of the given variance (steps²) precedes the rounding:
+// the Fourier series of the sawtooth, each harmonic damped by the noise.
+func sawtooth(variance float64) float64 {
+	var sum float64
+	for m := 1.0; m <= 40; m++ {
+		damp := math.Exp(-4 * math.Pi * math.Pi * m * m * variance)
+		sum += damp / (2 * math.Pi * math.Pi * m * m)
+		if damp < 1e-9 {
+			break
+		}
+	}
+	return math.Sqrt(sum)
+}

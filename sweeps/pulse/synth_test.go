@@ -1,0 +1,228 @@
+package pulse
+
+import (
+	"math"
+	"math/rand/v2"
+)
+
+// synth is a waveform whose parameters are exactly known: a rectangular drive through
+// a linear step response of unit gain, so that duty, period and mean of the
+// drive are those of the waveform.
+type synth struct {
+	low, high float64 // V
+	period    float64 // s
+	duty      float64
+	start     float64                 // s, first rising transition of the drive
+	response  func(t float64) float64 // 0 before 0, 1 long after
+	memory    float64                 // s after which response is 1
+	jitter    float64                 // s, standard deviation of each transition
+	sag       float64                 // share of the amplitude lost at the end of the high state
+	notches   int                     // samples forced low in the middle of every fifth high state
+	freewheel float64                 // V; three levels when conduct > duty: driven, freewheel, low as rest
+	conduct   float64
+}
+
+func step(t float64) float64 {
+	if t < 0 {
+		return 0
+	}
+	return 1
+}
+
+// responses by name; d is the 10 % to 90 % duration, s.
+func ramp(d float64) func(float64) float64 {
+	w := d / 0.8
+	return func(t float64) float64 { return min(1, max(0, t/w)) }
+}
+
+func exponential(d float64) func(float64) float64 {
+	tau := d / math.Log(9)
+	return func(t float64) float64 {
+		if t < 0 {
+			return 0
+		}
+		return 1 - math.Exp(-t/tau)
+	}
+}
+
+func gaussian(d float64) func(float64) float64 {
+	s := d / 2.5631
+	return func(t float64) float64 { return 0.5 * math.Erfc(-(t-3*s)/s/math.Sqrt2) }
+}
+
+// ringing overshoots by exp(−half period/decay) and rings with the given period, s.
+func ringing(period, decay float64) func(float64) float64 {
+	return func(t float64) float64 {
+		if t < 0 {
+			return 0
+		}
+		return 1 - math.Exp(-t/decay)*math.Cos(2*math.Pi*t/period)
+	}
+}
+
+// wave evaluates the waveform at rising times; jitter moves each transition for good.
+func (s *synth) wave(times []float64, rng *rand.Rand) []float64 {
+	first := int(math.Floor((times[0]-s.start-s.memory)/s.period)) - 1
+	last := int(math.Ceil((times[len(times)-1]-s.start)/s.period)) + 1
+	type change struct{ at, height float64 }
+	var changes []change
+	shake := func() float64 {
+		if s.jitter == 0 {
+			return 0
+		}
+		return s.jitter * rng.NormFloat64()
+	}
+	for k := first; k <= last; k++ {
+		t := s.start + float64(k)*s.period
+		changes = append(changes, change{t + shake(), s.high - s.low})
+		if s.conduct > s.duty {
+			changes = append(changes, change{t + s.duty*s.period + shake(), s.freewheel - s.high},
+				change{t + s.conduct*s.period + shake(), s.low - s.freewheel})
+			continue
+		}
+		changes = append(changes, change{t + s.duty*s.period + shake(), s.low - s.high})
+	}
+	y := make([]float64, len(times))
+	settled, done := s.low, 0
+	for i, t := range times {
+		for done < len(changes) && t-changes[done].at > s.memory {
+			settled += changes[done].height
+			done++
+		}
+		v := settled
+		for k := done; k < len(changes) && changes[k].at <= t; k++ {
+			v += changes[k].height * s.response(t-changes[k].at)
+		}
+		y[i] = v - s.sagAt(t)
+	}
+	return y
+}
+
+func (s *synth) sagAt(t float64) float64 {
+	x := math.Mod(t-s.start, s.period) / s.period
+	if x < 0 {
+		x++
+	}
+	if s.sag == 0 || x >= s.duty {
+		return 0
+	}
+	return s.sag * (s.high - s.low) * x / s.duty
+}
+
+func (s *synth) mean() float64 {
+	if s.conduct > s.duty {
+		return s.duty*s.high + (s.conduct-s.duty)*s.freewheel + (1-s.conduct)*s.low
+	}
+	return s.low + s.duty*(s.high-s.low)*(1-s.sag/2)
+}
+
+// converter digitises volts: bits over a range, with noise, gain and offset errors.
+type converter struct {
+	bits         int
+	bottom, span float64 // V
+	noise        float64 // V
+	gain, offset float64 // actual errors: relative, V
+}
+
+func (c converter) perCode() float64 { return c.span / float64(int(1)<<c.bits) }
+
+func (c converter) digitise(volts []float64, rng *rand.Rand) []int16 {
+	codes := make([]int16, len(volts))
+	most := float64(int(1)<<c.bits) - 1
+	for i, v := range volts {
+		v = v*(1+c.gain) + c.offset
+		if c.noise > 0 {
+			v += c.noise * rng.NormFloat64()
+		}
+		x := math.Round((v - c.bottom) / c.perCode())
+		codes[i] = int16(min(most, max(0, x)))
+	}
+	return codes
+}
+
+func (c converter) record(codes []int16, start, interval float64) Record {
+	low, high := int16(0), int16(int(1)<<c.bits-1)
+	return Record{Codes: codes, Zero: c.bottom, PerCode: c.perCode(), Start: start, Interval: interval, ClipLow: &low, ClipHigh: &high}
+}
+
+func grid0(n int, start, interval float64) []float64 {
+	t := make([]float64, n)
+	for i := range t {
+		t[i] = start + float64(i)*interval
+	}
+	return t
+}
+
+// specimen is one generated case: waveform, converter, sampling.
+type specimen struct {
+	synth
+	converter
+	n        int
+	interval float64
+	shape    string
+}
+
+func uniform(rng *rand.Rand, a, b float64) float64 { return a + (b-a)*rng.Float64() }
+
+func logUniform(rng *rand.Rand, a, b float64) float64 { return a * math.Pow(b/a, rng.Float64()) }
+
+// draw makes a case of a pulse train: duty 1 to 99 %, 4 to 12 bits, 2 to 60 whole
+// periods, from three samples in the shorter phase, noise to 2 % of the swing.
+func draw(rng *rand.Rand, most int) specimen {
+	var s specimen
+	s.duty = uniform(rng, 0.01, 0.99)
+	s.period = logUniform(rng, 1e-5, 1e-1)
+	short := min(s.duty, 1-s.duty)
+	perPeriod := logUniform(rng, 3.2/short, max(8/short, 600))
+	s.interval = s.period / perPeriod
+	periods := logUniform(rng, 3.05, 60)
+	s.n = max(8, min(most, int(periods*perPeriod)))
+	s.n = max(s.n, int(3.05*perPeriod)+1)
+	s.start = uniform(rng, 0, 1) * s.period
+	s.low = uniform(rng, -0.5, 0.5)
+	s.high = s.low + uniform(rng, 3, 12)
+	s.shapeOf(rng, short*s.period)
+	swing := s.high - s.low
+	s.bits = 4 + rng.IntN(9)
+	s.span = swing / uniform(rng, 0.4, 0.8)
+	if s.shape == "ringing" {
+		s.span = swing / uniform(rng, 0.3, 0.4)
+	}
+	s.bottom = s.low - uniform(rng, 0.42, 0.58)*(s.span-swing)
+	if rng.IntN(4) > 0 {
+		s.noise = uniform(rng, 0, 0.02) * swing
+	}
+	return s
+}
+
+// shapeOf chooses how the transitions look, within the shorter phase (s).
+func (s *specimen) shapeOf(rng *rand.Rand, short float64) {
+	d := logUniform(rng, 0.01, 0.2) * short
+	switch rng.IntN(5) {
+	case 0:
+		s.shape, s.response, s.memory = "step", step, 0
+	case 1:
+		s.shape, s.response, s.memory = "ramp", ramp(d), 2*d
+	case 2:
+		s.shape, s.response, s.memory = "exponential", exponential(d), 8*d
+	case 3:
+		s.shape, s.response, s.memory = "gaussian", gaussian(d), 4*d
+	case 4:
+		p := logUniform(rng, 0.02, 0.15) * short
+		decay := p * uniform(rng, 0.3, 0.8)
+		s.shape, s.response, s.memory = "ringing", ringing(p, decay), 20*decay
+	}
+}
+
+func (s *specimen) capture(rng *rand.Rand) Record {
+	codes := s.digitise(s.wave(grid0(s.n, 0, s.interval), rng), rng)
+	return s.record(codes, 0, s.interval)
+}
+
+func (s *specimen) truth() map[string]float64 {
+	t := map[string]float64{
+		"duty": s.duty, "period": s.period, "frequency": 1 / s.period, "t_high": s.duty * s.period, "t_low": (1 - s.duty) * s.period,
+		"average_voltage": s.mean(), "high_level": s.high, "low_level": s.low, "amplitude": s.high - s.low,
+	}
+	return t
+}
