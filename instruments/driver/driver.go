@@ -35,7 +35,9 @@ type instrument struct {
 }
 
 func newInstrument(conn *scpi.Conn, d *dialect.Dialect, o Options) instrument {
-	return instrument{name: o.Name, channel: max(o.Channel, 1), clock: o.Clock, conn: conn, d: d}
+	i := instrument{name: o.Name, channel: max(o.Channel, 1), clock: o.Clock, d: d}
+	i.conn = conn.Within(i.base())
+	return i
 }
 
 // Settings gives the scpi options that a dialect asks for.
