@@ -33,14 +33,22 @@ func axis(t *userfile.Table) Axis {
 
 // settable reads what the axis sets, as far as this version can set it.
 func settable(t *userfile.Table, s *Setting) bool {
-	if !userfile.Word(t, "set", s, SetSupplyVoltage, SetPotResistance, SetPotCode, SetPotPosition, SetTimerOutput) {
+	var word string
+	if !t.String("set", &word) {
 		return false
 	}
-	if *s == SetPotPosition || *s == SetTimerOutput {
+	*s = Setting(word)
+	switch *s {
+	case SetSupplyVoltage, SetPotResistance, SetPotCode:
+		return true
+	case SetPotPosition, SetTimerOutput:
 		t.Fail("set", "not supported yet by this version; use supply_voltage, pot_resistance or pot_code")
-		return false
+	default:
+		t.Suggest("set", word, []string{string(SetSupplyVoltage), string(SetPotResistance), string(SetPotCode)},
+			"nothing on a bench sets that; use supply_voltage, pot_resistance or pot_code")
 	}
-	return true
+	*s = ""
+	return false
 }
 
 // listed reads the values of an axis.
@@ -92,7 +100,7 @@ func values[T interface{ SI() float64 }, P interface {
 func spread(t *userfile.Table, a *Axis) {
 	if !t.Has("from") && !t.Has("to") && !t.Has("points") {
 		t.Known("from", "to", "points", "spacing")
-		t.Optional().Known("values")
+		t.Known("values")
 		t.Fail("", "give values, or from, to and points")
 		return
 	}

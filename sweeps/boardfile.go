@@ -18,15 +18,15 @@ func ReadBoard(path string) (Board, error) {
 }
 
 func boardOf(f *userfile.File) (Board, error) {
-	b := Board{Path: f.Name, Text: f.Text}
-	t := f.Table.Table("board")
+	b := Board{Path: f.Name, Text: f.Source}
+	t := f.Table("board")
 	t.String("name", &b.Name)
 	t.Optional().String("revision", &b.Revision)
 	rated(t, &b.RatedSupply)
-	timer(f.Table.Table("timer"), &b.Timer)
-	timing(f.Table.Table("timing"), &b.Timing)
-	driver(f.Table.Table("driver"), &b.Driver)
-	load(f.Table.Table("load"), &b.Load, b.Driver.Stage)
+	timer(f.Table("timer"), &b.Timer)
+	timing(f.Table("timing"), &b.Timing)
+	driver(f.Table("driver"), &b.Driver)
+	load(f.Table("load"), &b.Load, b.Driver.Stage)
 	if d := f.Look("driver"); b.Load.Kind == Motor && d.Present() && !d.Has("flyback") {
 		d.Fail("flyback", `is missing; a motor needs a flyback diode like "1N5819", or say that it has "none"`)
 	}

@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"io/fs"
 	"math"
+	"os"
 	"path/filepath"
 	"strconv"
 	"strings"
@@ -37,23 +38,43 @@ func boardBeside(f *userfile.File, p *Plan) (Board, error) {
 	}
 	b, err := ReadBoard(p.BoardPath)
 	if errors.Is(err, fs.ErrNotExist) {
-		f.Look("plan").Fail("board", fmt.Sprintf("no such file: %s; the path counts from the plan's folder", p.BoardPath))
+		there := beside(p.BoardPath)
+		want := fmt.Sprintf("no such file: %s; the path counts from the plan's folder", p.BoardPath)
+		if len(there) > 0 {
+			want += "; in that folder are: " + strings.Join(there, ", ")
+		}
+		f.Look("plan").Suggest("board", filepath.Base(p.BoardPath), there, want)
 		return Board{}, nil
 	}
 	return b, err
 }
 
+// beside are the first TOML files in the folder of a path; none where it can't be read.
+func beside(path string) []string {
+	entries, err := os.ReadDir(filepath.Dir(path))
+	if err != nil {
+		return nil
+	}
+	var found []string
+	for _, e := range entries {
+		if filepath.Ext(e.Name()) == ".toml" && len(found) < 8 {
+			found = append(found, e.Name())
+		}
+	}
+	return found
+}
+
 // planOf reads everything but the board.
 func planOf(f *userfile.File) Plan {
-	p := Plan{Path: f.Name, Text: f.Text}
-	head(f.Table.Table("plan"), &p)
+	p := Plan{Path: f.Name, Text: f.Source}
+	head(f.Table("plan"), &p)
 	for _, t := range f.Tables("axis") {
 		p.Axes = append(p.Axes, axis(t))
 	}
 	noAxisTwice(f, p.Axes)
 	warmUp(f.Optional().Table("warm_up"), &p)
-	settle(f.Table.Table("settle"), &p.Settle)
-	measure(f.Table.Table("measure"), &p.Measure)
+	settle(f.Table("settle"), &p.Settle)
+	measure(f.Table("measure"), &p.Measure)
 	p.Trips = trips(f.Optional().Table("trip"))
 	p.Accept = accept(f.Optional().Table("accept"))
 	f.NotYet("recheck", "leave it out, and step the axis in both directions to see drift")
@@ -115,7 +136,7 @@ func measure(t *userfile.Table, m *Measure) {
 		for _, n := range names {
 			switch q := Quantity(n); {
 			case !q.Known():
-				t.Fail("quantities", unknownQuantity(n))
+				unknownQuantity(t, "quantities", n)
 			case seen[n]:
 				t.Fail("quantities", fmt.Sprintf("%q is there twice", n))
 			default:
@@ -167,7 +188,7 @@ func quantityWord(t *userfile.Table, key string, q *Quantity) bool {
 		return false
 	}
 	if !Quantity(name).Known() {
-		t.Fail(key, unknownQuantity(name))
+		unknownQuantity(t, key, name)
 		return false
 	}
 	*q = Quantity(name)
@@ -175,14 +196,10 @@ func quantityWord(t *userfile.Table, key string, q *Quantity) bool {
 }
 
 // unknownQuantity says which quantities there are.
-func unknownQuantity(name string) string {
-	var names []string
-	for _, q := range Quantities {
-		names = append(names, string(q.Name))
+func unknownQuantity(t *userfile.Table, key, name string) {
+	names := make([]string, len(Quantities))
+	for i, q := range Quantities {
+		names[i] = string(q.Name)
 	}
-	s := fmt.Sprintf("%q is no quantity", name)
-	if near := userfile.Nearest(name, names); near != "" {
-		s += fmt.Sprintf("; did you mean %q?", near)
-	}
-	return s + " (there are: " + strings.Join(names, ", ") + ")"
+	t.Suggest(key, name, names, fmt.Sprintf("%q is no quantity; there are: %s", name, strings.Join(names, ", ")))
 }

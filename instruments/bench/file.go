@@ -44,9 +44,9 @@ func Read(path string) (*File, error) {
 	if err != nil {
 		return nil, err
 	}
-	r := reader{file: f, out: &File{Path: f.Name, Text: f.Text, Pace: 1}}
-	r.bench(f.Table.Table("bench"))
-	r.supply(f.Table.Table("supply"))
+	r := reader{file: f, out: &File{Path: f.Name, Text: f.Source, Pace: 1}}
+	r.bench(f.Table("bench"))
+	r.supply(f.Table("supply"))
 	for _, t := range f.Optional().Tables("meter") {
 		r.meter(t)
 	}
@@ -141,7 +141,7 @@ func between(t *userfile.Table, v *instruments.Between) bool {
 	}
 	for i, n := range nodes {
 		if !slices.Contains(instruments.Nodes, instruments.Node(n)) {
-			t.Fail("between", unknownNode(n))
+			unknownNode(t, n)
 			return false
 		}
 		v[i] = instruments.Node(n)
@@ -153,16 +153,12 @@ func between(t *userfile.Table, v *instruments.Between) bool {
 	return true
 }
 
-func unknownNode(name string) string {
-	var names []string
-	for _, n := range instruments.Nodes {
-		names = append(names, string(n))
+func unknownNode(t *userfile.Table, name string) {
+	names := make([]string, len(instruments.Nodes))
+	for i, n := range instruments.Nodes {
+		names[i] = string(n)
 	}
-	s := fmt.Sprintf("%q is no node", name)
-	if near := userfile.Nearest(name, names); near != "" {
-		s += fmt.Sprintf("; did you mean %q?", near)
-	}
-	return s + " (nodes are: " + strings.Join(names, ", ") + ")"
+	t.Suggest("between", name, names, fmt.Sprintf("%q is no node; nodes are: %s", name, strings.Join(names, ", ")))
 }
 
 // number is a quantity that is read from text.

@@ -42,12 +42,8 @@ func (r *reader) reads(t *userfile.Table, m *instruments.MeterWiring) (si.Unit, 
 	}
 	unit, ok := readable[m.Reads]
 	if !ok {
-		want := `use "average_voltage" or "motor_current"; nothing else is supported yet by this version`
-		if near := userfile.Nearest(m.Reads, []string{"average_voltage", "motor_current"}); near != "" {
-			t.Correct("reads", `"`+near+`"`, want)
-		} else {
-			t.Fail("reads", want)
-		}
+		t.Suggest("reads", m.Reads, []string{"average_voltage", "motor_current"},
+			"use average_voltage or motor_current; nothing else is supported yet by this version")
 		return "", false
 	}
 	for _, other := range r.out.Wiring.Meters {

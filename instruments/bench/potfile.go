@@ -2,6 +2,7 @@ package bench
 
 import (
 	"fmt"
+	"strconv"
 
 	"nightbench/instruments"
 	"nightbench/instruments/si"
@@ -31,7 +32,7 @@ func (r *reader) pot(t *userfile.Table) {
 	// 65,537 codes would be a part of 16 bits; none of more is made (common practice, no source).
 	codes := t.Int("codes", &w.Codes, 2, 65_537)
 	if t.Int("park", &w.Park, 0, 65_536) && codes && w.Park >= w.Codes {
-		t.Fail("park", fmt.Sprintf("the codes of this pot are 0 to %d", w.Codes-1))
+		t.Correct("park", strconv.Itoa(w.Codes-1), fmt.Sprintf("the codes of this pot are 0 to %d", w.Codes-1))
 	}
 	// The bridge of an earthed pot ties the board's common to earth.
 	if earthedOf(t, false) {

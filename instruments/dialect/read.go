@@ -21,18 +21,18 @@ func Parse(name string, text []byte) (*Dialect, error) {
 
 // read takes a dialect out of a file whose form is right.
 func read(f *userfile.File) (*Dialect, error) {
-	sum := sha256.Sum256([]byte(f.Text))
-	r := &reader{d: &Dialect{Text: f.Text, Hash: hex.EncodeToString(sum[:]), Sources: map[string]string{}, Commands: map[string]Line{}}}
-	if !r.head(f.Table.Table("dialect")) {
+	sum := sha256.Sum256([]byte(f.Source))
+	r := &reader{d: &Dialect{Text: f.Source, Hash: hex.EncodeToString(sum[:]), Sources: map[string]string{}, Commands: map[string]Line{}}}
+	if !r.head(f.Table("dialect")) {
 		return nil, f.Failed() // without a role no other key can be judged
 	}
 	r.sources(f.Optional().Table("sources"))
 	r.identities(f.Optional())
 	r.link(f.Optional().Table("link"))
-	r.errors(f.Table.Table("errors"))
+	r.errors(f.Table("errors"))
 	r.completion(f.Optional().Table("completion"))
 	r.channel(f.Optional().Table("channel"))
-	r.commands(f.Table.Table("command"))
+	r.commands(f.Table("command"))
 	r.sequences(f.Optional())
 	r.figures(f.Optional())
 	switch r.d.Head.Role {
@@ -41,7 +41,7 @@ func read(f *userfile.File) (*Dialect, error) {
 	case RoleMeter:
 		r.meter(f)
 	case RoleScope:
-		r.waveform(f.Table.Table("waveform"))
+		r.waveform(f.Table("waveform"))
 	}
 	if err := f.Err(); err != nil {
 		return nil, err

@@ -19,12 +19,18 @@ const maxLines = 20_000
 // File is a file whose form is right. Ask it for its tables and keys; Err then
 // tells what was wrong with them and which keys nobody asked for.
 type File struct {
-	*Table        // the keys outside of any table, and the tables themselves
+	*root         // the keys outside of any table, and the tables themselves
 	Name   string // as given
-	Text   string // verbatim
+	Source string // verbatim
 
 	errs []*failure
 }
+
+// root is embedded, so that a file has the getters of its outermost table.
+type root = Table
+
+// Root is the outermost table.
+func (f *File) Root() *Table { return f.root }
 
 // failure is a mistake; missing is the key that was not there.
 type failure struct {
@@ -91,8 +97,8 @@ func Reopen(name, text string) *File {
 }
 
 func newFile(name, text string, root *node) *File {
-	f := &File{Name: name, Text: text}
-	f.Table = &Table{file: f, node: root, asked: map[string]bool{}, tables: map[string][]*Table{}}
+	f := &File{Name: name, Source: text}
+	f.root = &Table{file: f, node: root, asked: map[string]bool{}, tables: map[string][]*Table{}}
 	return f
 }
 

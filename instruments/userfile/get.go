@@ -122,12 +122,7 @@ func Word[T ~string](t *Table, key string, v *T, accepted ...T) bool {
 			return true
 		}
 	}
-	want := "use " + list(words)
-	if near := Nearest(s, words); near != "" {
-		t.Correct(key, strconv.Quote(near), want)
-	} else {
-		t.Fail(key, want)
-	}
+	t.Suggest(key, s, words, "use "+list(words))
 	return false
 }
 
@@ -260,25 +255,36 @@ func (t *Table) unmarshal(key string, n *node, v encoding.TextUnmarshaler) bool 
 	}
 	e := t.at(key, n, err.Error())
 	e.Err = err
-	if n == t.node.under[key] {
-		e.Fix = withUnit(key, text, v)
+	if fixed := withUnit(text, v); fixed != "" {
+		e.Fix = t.replaced(key, n.raw, strconv.Quote(fixed))
 	}
 	t.fail(e)
 	return false
 }
 
-// units are tried behind a bare number, the commonest of each kind of quantity first.
-var units = []string{" V", " A", " s", " Hz", " degC", " %", " mN m", " mV s/rad", " uN m s", " nN m s2", " g cm2"}
+// replaced is the line of a key with one part of its value replaced; empty
+// where the value has several lines or the part stands in it more than once.
+func (t *Table) replaced(key, old, new string) string {
+	raw := t.node.under[key].raw
+	if old == "" || strings.Contains(raw, "\n") || strings.Count(raw, old) != 1 {
+		return ""
+	}
+	return key + " = " + strings.Replace(raw, old, new, 1)
+}
 
-// withUnit is the line with the unit that a bare number lacks, or empty.
-func withUnit(key, text string, v encoding.TextUnmarshaler) string {
-	if _, err := strconv.ParseFloat(strings.TrimSpace(text), 64); err != nil {
+// units are tried behind a bare number, the commonest of each kind of quantity
+// first; % stands in front for limits, which take several.
+var units = []string{" %", " V", " A", " s", " Hz", " degC", " mN m", " mV s/rad", " uN m s", " nN m s2", " g cm2"}
+
+// withUnit is a bare number with the unit that it lacks, or empty.
+func withUnit(text string, v encoding.TextUnmarshaler) string {
+	text = strings.TrimSpace(text)
+	if _, err := strconv.ParseFloat(text, 64); err != nil {
 		return ""
 	}
 	for _, u := range units {
-		fixed := strings.TrimSpace(text) + u
-		if v.UnmarshalText([]byte(fixed)) == nil {
-			return key + " = " + strconv.Quote(fixed)
+		if v.UnmarshalText([]byte(text+u)) == nil {
+			return text + u
 		}
 	}
 	return ""

@@ -119,7 +119,9 @@ func (t *tree) keyValue(at *node, path string, e *unstable.Node, depth int) *Err
 	last := keys[len(keys)-1]
 	path = dotted(path, string(last.Data))
 	if old, ok := at.under[string(last.Data)]; ok {
-		return t.again(path, line, old.line)
+		err := t.again(path, line, old.line)
+		err.Found = shown(t.written(e, last))
+		return err
 	}
 	v, err := t.value(e.Value(), path, line, depth)
 	if err != nil {

@@ -2,6 +2,7 @@ package userfile
 
 import (
 	"fmt"
+	"strconv"
 	"strings"
 
 	"github.com/pelletier/go-toml/v2/unstable"
@@ -76,7 +77,7 @@ func (t *Table) Table(key string) *Table {
 		ok = false
 	}
 	if !ok {
-		return t.stub(key)
+		return t.stub(dotted(t.path, key))
 	}
 	return t.handOut(key, n, dotted(t.path, key))
 }
@@ -110,7 +111,7 @@ func (t *Table) Look(key string, i ...int) *Table {
 		}
 	}
 	if !ok || n.kind != unstable.Table {
-		return t.stub(key)
+		return t.stub(path)
 	}
 	return &Table{file: t.file, node: n, path: path, asked: map[string]bool{}, tables: map[string][]*Table{}}
 }
@@ -128,8 +129,8 @@ func (t *Table) handOut(key string, n *node, path string) *Table {
 }
 
 // stub stands for a table that is not there.
-func (t *Table) stub(key string) *Table {
-	return &Table{file: t.file, node: newTable(t.node.line, byHeader), path: dotted(t.path, key),
+func (t *Table) stub(path string) *Table {
+	return &Table{file: t.file, node: newTable(t.node.line, byHeader), path: path,
 		asked: map[string]bool{}, tables: map[string][]*Table{}, optional: true, absent: true}
 }
 
@@ -165,6 +166,18 @@ func (t *Table) Fail(key, want string) { t.fail(t.mistake(key, want)) }
 func (t *Table) Correct(key, value, want string) {
 	e := t.mistake(key, want)
 	e.Fix = key + " = " + value
+	t.fail(e)
+}
+
+// Suggest notes a mistake in one word of a key's value, text or list, and
+// offers the nearest of the accepted words where there is one.
+func (t *Table) Suggest(key, word string, accepted []string, want string) {
+	e := t.mistake(key, want)
+	if near := Nearest(word, accepted); near != "" {
+		if e.Fix = t.replaced(key, strconv.Quote(word), strconv.Quote(near)); e.Fix == "" {
+			e.Fix = t.replaced(key, word, near)
+		}
+	}
 	t.fail(e)
 }
 

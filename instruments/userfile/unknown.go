@@ -10,7 +10,7 @@ import (
 // unknown is a failure for every key that nobody asked for. Its missing is the key that was probably meant.
 func (f *File) unknown() []*failure {
 	var out []*failure
-	f.Table.unasked(&out)
+	f.root.unasked(&out)
 	return out
 }
 
@@ -64,12 +64,16 @@ func tableOrKey(n *node) string {
 }
 
 // Nearest is the word of accepted that word is most likely a misspelling of;
-// empty where none is near: at most a third of its letters wrong.
+// empty where none is near (at most a third of its letters wrong) or two are equally near.
 func Nearest(word string, accepted []string) string {
 	best, least := "", 1+(len([]rune(word))+1)/3
 	for _, a := range accepted {
-		if d := distance(strings.ToLower(word), strings.ToLower(a)); d < least && a != word {
+		switch d := distance(strings.ToLower(word), strings.ToLower(a)); {
+		case a == word:
+		case d < least:
 			best, least = a, d
+		case d == least:
+			best = ""
 		}
 	}
 	return best
