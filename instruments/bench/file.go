@@ -94,6 +94,7 @@ func (r *reader) bench(t *userfile.Table) {
 func (r *reader) port(t *userfile.Table) Port {
 	p := Port{Dialect: Auto}
 	t.Optional().String("dialect", &p.Dialect)
+	r.dialect(t, p.Dialect)
 	var text string
 	if !t.String("address", &text) {
 		return p

@@ -4,6 +4,7 @@ import (
 	"context"
 	"errors"
 	"fmt"
+	"time"
 
 	"nightbench/instruments"
 	"nightbench/instruments/dialect"
@@ -11,39 +12,35 @@ import (
 	"nightbench/instruments/link"
 )
 
-// SupplyAt is all that has to be remembered of a supply to switch it off again.
-type SupplyAt struct {
-	Address string `json:"address"`
-	Dialect string `json:"dialect"` // Info.From
-	Channel int    `json:"channel"`
-}
-
-// SupplyAt is what to remember before the output goes on.
-func (b *Opened) SupplyAt() SupplyAt {
-	i := b.Info[0]
-	return SupplyAt{Address: i.Address, Dialect: i.From, Channel: b.open[0].port.Channel}
-}
-
-// OpenSupply opens nothing but the supply, and says no word to it: enough to
-// make safe when the rest of the bench, its file or the store is broken. A
-// dialect that can't be found any more is replaced by the standard one, and
+// OpenSupply opens nothing but the supply: enough to make safe when the rest
+// of the bench, its file or the store is broken. Named is what found its
+// dialect (Info.From); channel 0 means 1. With a dialect that is named no word
+// is said to the instrument here. With auto it is asked who it is; where that,
+// or the dialect itself, can't be had any more, the standard one is used and
 // that is logged: an output-off that is not understood does no harm.
-func OpenSupply(ctx context.Context, at SupplyAt, o Options) (*Opened, error) {
-	addr, err := link.Parse(at.Address)
+func OpenSupply(ctx context.Context, address, named string, channel int, o Options) (*Opened, error) {
+	addr, err := link.Parse(address)
 	if err != nil {
 		return nil, fmt.Errorf("supply: %w", err)
 	}
-	i := &instrument{slot: slot{name: "supply", role: dialect.RoleSupply, from: at.Dialect,
-		port: Port{Address: addr, Dialect: at.Dialect, Channel: at.Channel}}}
-	if i.d, err = supplyDialect(at.Dialect, o); err != nil {
-		return nil, err
+	i := &instrument{slot: slot{name: "supply", role: dialect.RoleSupply, from: named, port: Port{Address: addr, Dialect: named, Channel: channel}}}
+	if named != "" && named != Auto {
+		if err := i.useOrFallBack(o); err != nil {
+			return nil, err
+		}
 	}
 	if err := i.dial(ctx, o); err != nil {
-		return nil, fmt.Errorf("supply at %s: %w", at.Address, err)
+		return nil, fmt.Errorf("supply at %s: %w", address, err)
 	}
-	s := driver.BareSupply(i.conn, i.d, driver.SupplyOptions{Options: i.options(o)})
+	if i.d == nil {
+		if err := i.findOrFallBack(ctx, o); err != nil {
+			return nil, errors.Join(err, i.link.Close())
+		}
+	}
+	s := driver.BareSupply(i.conn, i.d, i.supplyOptions(instruments.SupplyWiring{}, o))
 	i.stop = s.Close
-	i.info = Info{Name: i.name, Role: string(i.role), Address: at.Address, Dialect: i.d.Head.Name, Hash: i.d.Hash, From: at.Dialect}
+	i.info.Name, i.info.Role, i.info.Address = i.name, string(i.role), address
+	i.info.Dialect, i.info.Hash, i.info.From = i.d.Head.Name, i.d.Hash, i.from
 	return &Opened{
 		Bench: instruments.Bench{Supply: s, Scope: instruments.NoScope, Pot: instruments.NoPot, Cutoff: instruments.NoCutoff},
 		Info:  []Info{i.info}, open: []*instrument{i},
@@ -53,14 +50,38 @@ func OpenSupply(ctx context.Context, at SupplyAt, o Options) (*Opened, error) {
 // lastResort is the dialect of a supply whose own can't be found.
 const lastResort = "standard-supply"
 
-func supplyDialect(name string, o Options) (*dialect.Dialect, error) {
-	d, err := dialect.Find(dialect.RoleSupply, name)
+// useOrFallBack takes the dialect that is named, or the last resort.
+func (i *instrument) useOrFallBack(o Options) (err error) {
+	if i.d, err = dialect.Find(dialect.RoleSupply, i.from); err == nil {
+		return nil
+	}
+	return i.fallBack(o, err)
+}
+
+// findOrFallBack takes the dialect that the supply's identity asks for, or the last resort.
+func (i *instrument) findOrFallBack(ctx context.Context, o Options) error {
+	ctx, cancel := context.WithTimeout(ctx, askWithin)
+	defer cancel()
+	id, err := i.conn.Identify(ctx)
 	if err == nil {
-		return d, nil
+		i.info.Identity = id
+		err = i.recognise(id)
 	}
+	if err != nil {
+		err = i.fallBack(o, err)
+	}
+	i.connect(id.Raw, o)
+	return err
+}
+
+// askWithin bounds the question who it is, while the output may be on.
+const askWithin = 3 * time.Second
+
+func (i *instrument) fallBack(o Options, why error) (err error) {
 	if o.Log != nil {
-		o.Log(fmt.Sprintf("supply: dialect %q: %v; going on with %s", name, err, lastResort))
+		o.Log(fmt.Sprintf("supply: %v; going on with %s to switch it off", why, lastResort))
 	}
-	d, again := dialect.Find(dialect.RoleSupply, lastResort)
-	return d, errors.Join(again)
+	i.from = lastResort
+	i.d, err = dialect.Find(dialect.RoleSupply, lastResort)
+	return err
 }
