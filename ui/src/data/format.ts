@@ -59,6 +59,11 @@ export function setting(s: { supply_voltage: number; pot_resistance: number }): 
   return `${format(s.supply_voltage, "V", 3)}, ${ohms(s.pot_resistance)}`;
 }
 
+/** Ties numbers to the units behind them in words that came from elsewhere. */
+export function bound(words: string): string {
+  return words.replace(/(\d\)?) (?=(?:[GMkmµn]?(?:V|A|Ω|s|Hz|W)|k|M|h|min|%|°C|×)(?![\p{L}\d]))/gu, `$1${nbsp}`);
+}
+
 const two = (n: number) => String(n).padStart(2, "0");
 
 /** 24-hour clock: "22:24". */

@@ -1,5 +1,5 @@
 // Sentences. Present for now, past for what happened; no exclamations.
-import { clock, clockSeconds, count, duration, format, formatU, nbsp, setting } from "./format";
+import { clock, clockSeconds, count, duration, format, formatU, nbsp, ohms, setting } from "./format";
 import { ended, flagged, type Flag, type Off, type Point, type Quantity, reading, type Run, type Status, type Vitals } from "./nouns";
 
 const titles: Record<Quantity, string> = {
@@ -127,15 +127,15 @@ export function flagsOf(p: Point): (Flag & { quantity: string })[] {
   ];
 }
 
-/** "9 V, 18 k: 6.21(6) V, duty 0.353(2). Good." without its last word. */
-export function pointWords(p: Point): string {
+/** "9 V, 18 k: 6.21(6) V, duty 0.353(2). Good."; the supply is left out where the line before has it. A flagged point ends "flagged ". */
+export function pointWords(p: Point, sameSupply = false): string {
   const said: string[] = [];
   for (const q of ["average_voltage", "duty"]) {
     const r = reading(p, q);
     if (!r || r.value === null) continue;
     said.push((q === "average_voltage" ? "" : named(q) + " ") + formatU(r.value, r.u, r.unit));
   }
-  return `${p.setpoint.recheck ? "Recheck at " : ""}${setting(p.setpoint)}${said.length ? ": " + said.join(", ") : ""}${flagged(p) ? ", flagged " : ". Good."}`;
+  return `${p.setpoint.recheck ? "Recheck at " : ""}${sameSupply ? ohms(p.setpoint.pot_resistance) : setting(p.setpoint)}${said.length ? ": " + said.join(", ") : ""}${flagged(p) ? ", flagged " : ". Good."}`;
 }
 
 /** The headline when no run is open. */

@@ -2,7 +2,7 @@
 import { useEffect, useState } from "preact/hooks";
 import { underWay } from "../data/bench";
 import type { Client, NewestRecord } from "../data/client";
-import { clockSeconds, date, format, nbsp } from "../data/format";
+import { bound, clockSeconds, date, format, nbsp } from "../data/format";
 import { quantitiesOf } from "../data/night";
 import { headline, tallied } from "../data/words";
 import { Alarm } from "../parts/alarm";
@@ -14,7 +14,7 @@ import { Trace } from "../parts/trace";
 import type { Views } from "./page";
 
 /** Lines of the log shown beside the figure; the rest is on the run's page. */
-const linesShown = 24;
+const linesShown = 18;
 
 export function NowView({ bench, client, place }: Views) {
   const v = bench.vitals.value;
@@ -44,7 +44,7 @@ function Headline({ bench }: Views) {
   const link = bench.link.value;
   const run = bench.run.value;
   if (link.state === "lost") {
-    const was = v?.doing ? `: ${lower(v.doing)}` : "";
+    const was = v?.doing ? `: ${bound(lower(v.doing))}` : "";
     return (
       <>
         <h1 tabIndex={-1}>{v ? `Last heard at ${clockSeconds(link.since)}${was}` : "The bench does not answer"}</h1>
@@ -52,7 +52,7 @@ function Headline({ bench }: Views) {
       </>
     );
   }
-  if (v && underWay(v)) return <><h1 tabIndex={-1}>{v.doing || "Preparing"}</h1><p class="sub">{v.detail}</p></>;
+  if (v && underWay(v)) return <><h1 tabIndex={-1}>{bound(v.doing || "Preparing")}</h1><p class="sub">{bound(v.detail)}</p></>;
   if (!v || (!bench.caughtUp.value && !run)) return <><h1 tabIndex={-1}>Waiting for the bench</h1><p class="sub">It says at once where it stands.</p></>;
   if (!run) return <><h1 tabIndex={-1}>{headline(null)}</h1><p class="sub">A run is started with <span class="q">nightbench start PLAN</span>; it appears here by itself.</p></>;
   return (

@@ -2,8 +2,8 @@
 import type { BenchModel } from "../data/bench";
 import type { Client } from "../data/client";
 import { date, duration } from "../data/format";
-import { apply, type Night, noNight, quantitiesOf } from "../data/night";
-import { ended, type Run } from "../data/nouns";
+import { apply, countFlagged, type Line, type Night, noNight, quantitiesOf } from "../data/night";
+import { ended, flagged, type Run } from "../data/nouns";
 import { headline, named, sentenceCase, tallied } from "../data/words";
 import { Figure } from "../parts/figure";
 import { Log } from "../parts/margin";
@@ -29,16 +29,22 @@ export function RunView({ id, bench, client, place }: Views & { id: number }) {
         <h1 tabIndex={-1}>{headline(run)}</h1>
         <p class="sub">{facts(run)}</p>
         {run.note && <p class="note">“{run.note}” {run.operator}</p>}
-        <Tally setpoints={night.setpoints} points={night.points} now={null} over={ended(run.state)} />
+        {ended(run.state) && <Tally setpoints={night.setpoints} points={night.points} now={null} over />}
         {chosen && <Picker quantities={quantities} chosen={chosen} at={`/runs/${id}`} />}
         {chosen && <Figure quantity={chosen} points={night.points} curves={night.curves} setpoints={night.setpoints} now={null} />}
         <h2>Points, in order of measurement</h2>
         <PointsTable points={night.points} quantities={quantities} />
         <Identity run={run} />
       </main>
-      <aside class="margin" aria-label="Log"><Log lines={night.log} most={2000} /></aside>
+      <aside class="margin" aria-label="Log"><Log lines={withFlagged(night)} most={2000} /></aside>
     </div>
   );
+}
+
+/** The log without the good points (the table has them), flagged ones at their time. */
+function withFlagged(n: Night): Line[] {
+  const flags = n.points.filter(flagged).map((p): Line => ({ seq: -1 - p.setpoint.index, at: p.at, kind: "point", words: "", point: p }));
+  return [...n.log.filter((l) => !l.point), ...flags].sort((a, b) => Date.parse(a.at) - Date.parse(b.at));
 }
 
 function facts(r: Run): string {
@@ -57,8 +63,10 @@ function useStory(id: number, bench: BenchModel, client: Client): { story: Story
   const got = answer.value;
   if (!got) return { story: null, failed: answer.failed };
   if (!live || live.points.length < got.night.points.length) return { story: got, failed: answer.failed };
-  const log = [...got.night.log, ...live.log].filter((l, i, all) => all.findIndex((m) => m.seq === l.seq) === i).sort((a, b) => a.seq - b.seq);
-  return { story: { run: { ...got.run, measured: live.points.length, state: live.state || got.run.state }, night: { ...live, log } }, failed: "" };
+  const seen = new Set(got.night.log.map((l) => l.seq));
+  const log = [...got.night.log, ...live.log.filter((l) => !l.point && !seen.has(l.seq))];
+  const run = { ...got.run, measured: live.points.length, flagged: countFlagged(live.points), state: live.state || got.run.state };
+  return { story: { run, night: { ...live, log } }, failed: "" };
 }
 
 async function read(id: number, client: Client): Promise<Story> {

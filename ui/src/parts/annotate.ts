@@ -23,7 +23,7 @@ export function annotate(f: Frame, data: FigureData, now: Now | null): Annotatio
   ends(f, data, out);
   if (now) nowBracket(f, data, now, room, out);
   for (const s of data.series) {
-    if (s.dots.length) for (const p of s.passes) arrow(f, p, room, out);
+    if (s.dots.length) for (const p of s.passes) arrow(f, data, s, p, room, out);
     else notBegun(f, s, room, out);
   }
   for (const s of data.series) flags(f, s, room, out);
@@ -50,21 +50,31 @@ function heightAt(f: Frame, s: Series, ohmsAt: number): number | null {
 }
 
 /** An arrow along the curve, with its word, once a pass: up above it, down below. */
-function arrow(f: Frame, p: Pass, room: Room, out: Annotations) {
+function arrow(f: Frame, data: FigureData, s: Series, p: Pass, room: Room, out: Annotations) {
   const run = p.runs.reduce((a, b) => (b.length > a.length ? b : a));
   if (run.length < 3 || (p.direction !== "up" && p.direction !== "down")) return;
   const side = p.direction === "up" ? -1 : 1;
   const inner = [...run].sort((a, b) => a.x - b.x).slice(1, -1);
   const boxes = inner.flatMap((d, i) => {
     const slope = slopeAt(run, inner, i, f);
-    return [15, 22].map((away) => arrowBox(f.px(d.x), f.py(d.y) + side * away, slope, side));
+    return [15, 22].map((away) => ({ ...arrowBox(f.px(d.x), f.py(d.y) + side * away, slope, side), ohms: d.x }));
   });
   const b = room.place(boxes, 8);
   if (!b) return;
   const to = p.direction === "up" ? 1 : -1;
   const [x0, y0, x1, y1] = [b.cx - to * 14, b.cy - to * 14 * b.slope, b.cx + to * 14, b.cy + to * 14 * b.slope];
   out.lines.push({ d: `M${fix(x0)} ${fix(y0)}L${fix(x1)} ${fix(y1)}` + head(x0, y0, x1, y1), mark: "arw" });
-  out.labels.push({ text: p.direction, x: b.cx, y: fix(b.cy + (side < 0 ? -8 : 18)), anchor: "middle", mark: "lab" });
+  const text = crowded(f, data, s, b.ohms) ? `${p.direction}, ${format(s.supply, "V", 3)}` : p.direction;
+  out.labels.push({ text, x: b.cx, y: fix(b.cy + (side < 0 ? -8 : 18)), anchor: "middle", mark: "lab" });
+}
+
+/** Whether another curve runs so near that the arrow must say whose it is. */
+function crowded(f: Frame, data: FigureData, s: Series, ohmsAt: number): boolean {
+  const y = heightAt(f, s, ohmsAt);
+  return data.series.some((t) => {
+    const other = t === s ? null : heightAt(f, t, ohmsAt);
+    return y !== null && other !== null && Math.abs(other - y) < 30;
+  });
 }
 
 interface ArrowBox extends Box { cx: number; cy: number; slope: number }

@@ -36,7 +36,8 @@ export function Figure(props: FigureProps) {
     <figure ref={box}>
       <svg class="fig" width={f.width} height={f.height} viewBox={`0 0 ${f.width} ${f.height}`} role="img" aria-label={name}>
         <Axes f={f} title={title(data, f)} />
-        {data.series.map((s) => <Prediction key={s.supply} f={f} s={s} />)}
+        {data.series.map((s) => <path key={s.supply} class="band" d={f.bandPath(s)} />)}
+        {data.series.map((s) => <path key={s.supply} class="pencil" d={f.linePath(s.x, s.value)} />)}
         {data.series.map((s, i) => <Measured key={s.supply} f={f} s={s} dx={f.dodge(i)} />)}
         <Strip f={f} data={data} />
         <Notes notes={notes} />
@@ -50,15 +51,6 @@ export function Figure(props: FigureProps) {
 function title(d: FigureData, f: Frame): string {
   const unit = d.unit === "1" || !d.unit ? "" : `, ${prefixFor(f.factor, d.unit)[0]}${d.unit}`;
   return titled(d.quantity) + unit;
-}
-
-function Prediction({ f, s }: { f: Frame; s: Series }) {
-  return (
-    <g>
-      <path class="band" d={f.bandPath(s)} />
-      <path class="pencil" d={f.linePath(s.x, s.value)} />
-    </g>
-  );
 }
 
 function Measured({ f, s, dx }: { f: Frame; s: Series; dx: number }) {

@@ -1,6 +1,6 @@
 // The margin: the log, newest first, times hanging beside sentences.
 import type { ComponentChildren } from "preact";
-import { clock, clockSeconds } from "../data/format";
+import { bound, clock, clockSeconds } from "../data/format";
 import type { Line } from "../data/night";
 import { flagged } from "../data/nouns";
 import { flagsOf, named, pointWords } from "../data/words";
@@ -8,13 +8,13 @@ import { flagsOf, named, pointWords } from "../data/words";
 export interface LogProps { lines: readonly Line[]; now?: string; nowAt?: string; most: number; all?: string }
 
 export function Log({ lines, now, nowAt, most, all }: LogProps) {
-  const shown = lines.slice(-most).reverse();
+  const shown = withSupply(lines.slice(-most)).reverse();
   return (
     <>
       <h2>Log</h2>
       <ol class="log" reversed>
-        {now && <li class="now"><time>{nowAt ? clock(nowAt) : ""}</time><span>{now}</span></li>}
-        {shown.map((l) => <LogLine key={l.seq} l={l} />)}
+        {now && <li class="now"><time>{nowAt ? clock(nowAt) : ""}</time><span>{bound(now)}</span></li>}
+        {shown.map(({ l, same }) => <LogLine key={l.seq} l={l} same={same} />)}
       </ol>
       {lines.length > most && all && <p class="noprint"><a href={all}>The whole log</a></p>}
       {!lines.length && !now && <p class="sub">Nothing yet.</p>}
@@ -24,18 +24,29 @@ export function Log({ lines, now, nowAt, most, all }: LogProps) {
 
 const evidence = new Set(["off", "trip", "energising", "ended"]);
 
-function LogLine({ l }: { l: Line }) {
+/** Whether the point before stood at the same supply, so that its name need not be said again. */
+function withSupply(lines: readonly Line[]): { l: Line; same: boolean }[] {
+  let supply = NaN;
+  return lines.map((l) => {
+    const v = l.point?.setpoint.supply_voltage ?? supply;
+    const same = v === supply;
+    supply = v;
+    return { l, same };
+  });
+}
+
+function LogLine({ l, same }: { l: Line; same: boolean }) {
   return (
     <li>
       <time dateTime={l.at}>{evidence.has(l.kind) ? clockSeconds(l.at) : clock(l.at)}</time>
-      <span>{l.point ? <PointLine l={l} /> : l.words}</span>
+      <span>{l.point ? <PointLine l={l} same={same} /> : bound(l.words)}</span>
     </li>
   );
 }
 
-function PointLine({ l }: { l: Line }) {
+function PointLine({ l, same }: { l: Line; same: boolean }) {
   const p = l.point!;
-  if (!flagged(p)) return <>{pointWords(p)}</>;
+  if (!flagged(p)) return <>{pointWords(p, same)}</>;
   // One flag on several readings is said once, with the quantities it stands on.
   const byName = new Map<string, { words: string; on: string[] }>();
   for (const f of flagsOf(p)) {
@@ -44,7 +55,7 @@ function PointLine({ l }: { l: Line }) {
     byName.set(f.name, g);
   }
   const said: ComponentChildren[] = [...byName].map(([name, g], i) => (
-    <>{i > 0 && "; "}<i>{name}</i>{g.words ? `: ${g.words.replace(/\.$/, "")}` : g.on.length ? ` (${g.on.join(", ")})` : ""}</>
+    <>{i > 0 && "; "}<i>{name}</i>{g.words ? `: ${bound(g.words.replace(/\.$/, ""))}` : g.on.length ? ` (${g.on.join(", ")})` : ""}</>
   ));
-  return <>{pointWords(p)}{said}.</>;
+  return <>{pointWords(p, same)}{said}.</>;
 }

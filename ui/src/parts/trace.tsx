@@ -1,6 +1,6 @@
 // The newest record: one line in ink, its levels named at the right, its times on brackets.
 import type { NewestRecord } from "../data/client";
-import { clockSeconds, count, format, formatU, tidy } from "../data/format";
+import { clockSeconds, count, format, formatU, nbsp, tidy } from "../data/format";
 import { type Point, reading, type Wave } from "../data/nouns";
 import { spread } from "./place";
 import { linear, ticks } from "./scale";
@@ -17,9 +17,10 @@ export function Trace({ record, point }: TraceProps) {
   if (!w || w.codes.length < 2) return null;
   const narrow = width < 600;
   const [left, right, bottom] = [narrow ? 34 : 40, width - (narrow ? 84 : 140), top + 180];
-  const win = twoPeriods(w);
+  const found = levels(w);
+  const win = twoPeriods(w, found);
   const shown = w.codes.slice(win.from, win.to + 1);
-  const named = nameLevels(levels(w), point);
+  const named = nameLevels(found, point);
   const [lo, hi] = [Math.min(0, ...shown.map((c) => volts(w, c))), Math.max(...shown.map((c) => volts(w, c)))];
   const x = linear(win.from, win.to, left, right);
   const y = linear(lo - (hi - lo) * 0.05, hi + (hi - lo) * 0.05, bottom, top);
@@ -53,7 +54,7 @@ function nameLevels(found: Level[], point: Point | null): Named[] {
   return found.map((l) => {
     const r = point && reading(point, roads[l.name] ?? "");
     const near = r && r.value !== null && Math.abs(r.value - l.volts) < 0.5;
-    return { ...l, words: near ? formatU(r.value!, r.u, r.unit) : `about ${format(l.volts, "V", 3)}`, measured: !!near };
+    return { ...l, words: near ? formatU(r.value!, r.u, r.unit) : `about ${tidy(l.volts.toFixed(2))}${nbsp}V`, measured: !!near };
   });
 }
 

@@ -42,12 +42,16 @@ function peak(n: number[], sum: number[], from: number, to: number, total: numbe
   return count < 0.04 * total ? null : codes / count;
 }
 
-/** Instants (sample numbers, interpolated) where the record rises through the middle of its range. */
-export function rises(w: Wave): number[] {
+/**
+ * Instants (sample numbers, interpolated) where the record rises half way to its highest level
+ * from the level below: with a resting motor that is above the rest, not the middle of the range.
+ */
+export function rises(w: Wave, found: readonly Level[] = levels(w)): number[] {
   const { codes } = w;
-  let [lo, hi] = [Infinity, -Infinity];
-  for (const c of codes) [lo, hi] = [Math.min(lo, c), Math.max(hi, c)];
-  const [mid, hold] = [(lo + hi) / 2, (hi - lo) / 8];
+  const code = (v: number) => (v - w.volts_at_zero) / w.volts_per_code;
+  const [top, next] = found.map((l) => code(l.volts));
+  if (top === undefined || next === undefined) return [];
+  const [mid, hold] = [(top + next) / 2, (top - next) / 8];
   const out: number[] = [];
   let armed = false;
   for (let i = 1; i < codes.length; i++) {
@@ -64,8 +68,8 @@ export function rises(w: Wave): number[] {
 export interface Window { from: number; to: number; first: number | null; periods: number }
 
 /** About two periods with a little before the first rise, or the whole record when it has fewer. */
-export function twoPeriods(w: Wave): Window {
-  const r = rises(w);
+export function twoPeriods(w: Wave, found?: readonly Level[]): Window {
+  const r = rises(w, found);
   const n = w.codes.length;
   if (r.length < 3) return { from: 0, to: Math.max(0, n - 1), first: r.length > 1 ? r[0]! : null, periods: Math.max(0, r.length - 1) };
   const t = r[1]! - r[0]!;
