@@ -91,6 +91,12 @@ func Exactly[D dimension](q Quantity[D]) Toleranced[D] { return Toleranced[D]{No
 // SI is the nominal value.
 func (t Toleranced[D]) SI() float64 { return t.Nominal.x }
 
+// Spread gives nominal value, relative tolerance and whether the distribution is
+// normal, whatever the dimension.
+func (t Toleranced[D]) Spread() (nominal, tolerance float64, normal bool) {
+	return t.Nominal.x, t.Tolerance, t.Normal
+}
+
 // String writes nominal and tolerance as UnmarshalText reads them.
 func (t Toleranced[D]) String() string {
 	s := t.Nominal.String()

@@ -1,0 +1,211 @@
+package predict
+
+import (
+	"math"
+
+	"nightbench/sweeps/internal/numeric"
+)
+
+// branch is one way between the common node and the capacitor: a resistance
+// and, where nvt > 0, a diode in series with it. r = +Inf: nothing there.
+type branch struct {
+	r       float64 // Ω, with the diode's own
+	is, nvt float64
+	shunt   float64 // Ω across the junction, 0: none
+	see     float64 // share of a reverse voltage that a shunt leaves to the junction
+	rj      float64 // Ω seen by the junction
+	lnz     float64 // ln(is·rj/nvt), for current against the diode
+	g       float64 // 1/r
+}
+
+func newBranch(r float64, d diode) branch {
+	b := branch{r: r + d.rs, see: 1}
+	if b.r > 0 {
+		b.g = 1 / b.r
+	}
+	if d.is == 0 {
+		return b
+	}
+	b.is, b.nvt, b.shunt = d.is, d.nvt, d.shunt
+	if b.shunt > 0 {
+		b.see = b.shunt / (b.r + b.shunt)
+	}
+	b.rj = b.r * b.see
+	if b.rj > 0 {
+		b.lnz = math.Log(b.is * b.rj / b.nvt)
+	}
+	return b
+}
+
+// farReverse is the reverse voltage, in n·Vt, beyond which a junction carries its saturation current to 1e-13.
+const farReverse = 30
+
+// against is the current, and its slope, that flows through the way when w ≥ 0
+// stands across it against its diode. Without a diode it is w/r. With one and a
+// resistance it is exact by the Wright omega function.
+func (b *branch) against(w float64) (i, g float64) {
+	if b.nvt == 0 {
+		return w * b.g, b.g
+	}
+	i, g = b.saturation(w * b.see)
+	if b.shunt > 0 {
+		all := b.r + b.shunt
+		i, g = i+(w-b.r*i)/all, g*b.see*b.see+1/all
+	}
+	return i, g
+}
+
+// saturation is the junction's own current against it, w behind rj.
+func (b *branch) saturation(w float64) (i, g float64) {
+	switch {
+	case w > farReverse*b.nvt+b.is*b.rj:
+		return b.is, 0
+	case b.rj == 0:
+		e := b.is * math.Exp(-w/b.nvt)
+		return b.is - e, e / b.nvt
+	}
+	x := numeric.Omega(b.lnz + (b.is*b.rj-w)/b.nvt)
+	return b.is - b.nvt/b.rj*x, x / (1 + x) / b.rj
+}
+
+// law is one phase of the timing network: a source behind a resistance feeds the
+// common node; from there one way conducts to the capacitor and the other leaks
+// along. sign is +1 while charging, −1 while discharging. The law is explicit in
+// x: the junction voltage of the conducting diode, or, without a diode, the current through that way.
+type law struct {
+	sign, source, r float64
+	output          *output // output-fed: the source is the timer's output, loaded with carried amperes besides
+	carried         float64
+	on, other       branch
+	bias, leak      float64 // pin currents into the capacitor, less v·leak
+	c               float64
+}
+
+// at gives, at x, the capacitor's voltage, its slope dv/dx, and the current into the capacitor.
+func (l *law) at(x float64) (v, slope, i float64) {
+	var id, did, w, dw float64
+	if l.on.nvt > 0 {
+		e := math.Exp(x / l.on.nvt)
+		id, did = l.on.is*(e-1), l.on.is*e/l.on.nvt
+		if l.on.shunt > 0 {
+			id += x / l.on.shunt
+			did += 1 / l.on.shunt
+		}
+		w, dw = x+l.on.r*id, 1+l.on.r*did
+	} else {
+		id, did = x, 1
+		w, dw = l.on.r*x, l.on.r
+	}
+	leak, g := l.other.against(w)
+	total, dtotal := id+leak, did+g*dw
+	source, r := l.source, l.r
+	if l.output != nil {
+		var own float64
+		source, own = l.output.level(l.sign > 0, total+l.carried)
+		v = source - l.sign*(r*total+w)
+		slope = -l.sign * ((r+own)*dtotal + dw)
+	} else {
+		v = source - l.sign*(r*total+w)
+		slope = -l.sign * (r*dtotal + dw)
+	}
+	return v, slope, l.sign*total + l.bias - l.leak*v
+}
+
+// span is the voltage there is to drive current at a capacitor voltage v.
+func (l *law) span(v float64) float64 {
+	source := l.source
+	if l.output != nil {
+		source, _ = l.output.level(l.sign > 0, l.carried)
+	}
+	return l.sign * (source - v)
+}
+
+// maxNewton bounds the search for an end point. From the side chosen it converges
+// monotonically, and quadratically once near: five steps are usual.
+const maxNewton = 60
+
+// find is the x at which the capacitor stands at v. It starts beyond the root on
+// the steep side: the current if the diode dropped nothing.
+func (l *law) find(v float64) float64 {
+	span := l.span(v)
+	all := l.r + l.on.r
+	x := span
+	switch {
+	case l.on.nvt == 0:
+		x = span / all
+	case span > 0 && all > 0:
+		x = min(span, l.on.nvt*math.Log1p(span/(all*l.on.is)))
+	}
+	for range maxNewton {
+		at, slope, _ := l.at(x)
+		step := (v - at) / slope
+		x += step
+		if math.Abs(step) <= 1e-9*(math.Abs(x)+l.on.nvt) {
+			break
+		}
+	}
+	return x
+}
+
+// end is an end point of a phase.
+type end struct{ x, i float64 }
+
+// end is nothing where a diode would have to conduct backwards to get there.
+func (l *law) end(v float64) end {
+	if l.on.nvt > 0 && l.span(v) <= 0 {
+		return end{}
+	}
+	x := l.find(v)
+	_, _, i := l.at(x)
+	return end{x, i}
+}
+
+// runs tells whether the current at this end has the right sign. It falls
+// monotonically over a phase, so both ends speak for all between.
+func (l *law) runs(e end) bool { return l.sign*e.i > 0 }
+
+// steep is the ratio of currents above which an interval is halved before it is summed.
+const steep = 6
+
+// time is C·∫ dv/i_C from a to b, by Gauss–Legendre quadrature in x over intervals
+// within which the current changes moderately. Both ends must run.
+func (l *law) time(rule *numeric.Rule, a, b end) float64 {
+	return l.c * l.sum(rule, a, b, 48)
+}
+
+func (l *law) sum(rule *numeric.Rule, a, b end, depth int) float64 {
+	ratio := a.i / b.i
+	if (ratio > steep || ratio < 1/steep) && depth > 0 {
+		m := end{x: (a.x + b.x) / 2}
+		_, _, m.i = l.at(m.x)
+		return l.sum(rule, a, m, depth-1) + l.sum(rule, m, b, depth-1)
+	}
+	mid, half := (a.x+b.x)/2, (b.x-a.x)/2
+	var s float64
+	for k, x := range rule.X {
+		_, slope, i := l.at(mid + half*x)
+		s += rule.W[k] * slope / i
+	}
+	return s * half
+}
+
+// coast carries the wave on past an end point for the time td and gives the
+// voltage it reaches: four-stage Runge–Kutta in x, where dx/dt = i_C/(C·dv/dx).
+func (l *law) coast(from end, td, phase float64) float64 {
+	steps := 1 + int(min(8*td/phase, 200))
+	h := td / float64(steps)
+	rate := func(x float64) float64 {
+		_, slope, i := l.at(x)
+		return i / (l.c * slope)
+	}
+	x := from.x
+	for range steps {
+		k1 := rate(x)
+		k2 := rate(x + h/2*k1)
+		k3 := rate(x + h/2*k2)
+		k4 := rate(x + h*k3)
+		x += h / 6 * (k1 + 2*k2 + 2*k3 + k4)
+	}
+	v, _, _ := l.at(x)
+	return v
+}

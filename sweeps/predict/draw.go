@@ -1,0 +1,147 @@
+package predict
+
+import (
+	"fmt"
+	"math"
+	"math/rand/v2"
+	"runtime"
+	"sync"
+
+	"nightbench/sweeps"
+)
+
+// Ensemble is a number of boards drawn within tolerance. Each keeps its parts at
+// every setting, so that a curve's points move together (JCGM 101:2008). It is
+// immutable, and safe for use by several goroutines.
+type Ensemble struct {
+	m     *Model
+	draws []parts
+}
+
+// Draw draws n boards. The same seed gives the same boards, and the first of
+// many are the same as the first of few.
+func (m *Model) Draw(n int, seed uint64) *Ensemble {
+	r := rand.New(rand.NewPCG(seed, 0x6e69676874)) // the second word only sets the stream apart
+	e := &Ensemble{m: m, draws: make([]parts, max(n, 0))}
+	for k := range e.draws {
+		p := &e.draws[k]
+		*p = m.nominal
+		for i := range m.variables {
+			v := &m.variables[i]
+			*v.at(p) = v.draw(r)
+		}
+	}
+	return e
+}
+
+// Size is the number of boards drawn.
+func (e *Ensemble) Size() int { return len(e.draws) }
+
+// At gives the nominal value of each quantity and the interval that holds the
+// middle 95 % of the drawn boards that oscillate. Flags are the nominal board's,
+// and the share of draws that do not oscillate. A setting that cannot be gives no
+// predictions and a flag that says why.
+func (e *Ensemble) At(s Setting) (map[sweeps.Quantity]sweeps.Prediction, []sweeps.Flag) {
+	if err := e.m.checkSetting(s); err != nil {
+		return map[sweeps.Quantity]sweeps.Prediction{}, []sweeps.Flag{{Name: "bad_setting", Words: err.Error()}}
+	}
+	nominal := e.m.solve(&e.m.nominal, s.conditions())
+	b := e.bands(s, &nominal, make([]row, len(e.draws)))
+	out := make(map[sweeps.Quantity]sweeps.Prediction, len(predicted))
+	for i, q := range predicted {
+		if !math.IsNaN(b.value[i]) {
+			out[q] = sweeps.Prediction{Value: b.value[i], Low: b.low[i], High: b.high[i], Unit: q.Unit()}
+		}
+	}
+	return out, e.flags(&nominal, s, b.stopped)
+}
+
+func (e *Ensemble) flags(nominal *outcome, s Setting, stopped int) []sweeps.Flag {
+	fs := e.m.flags(nominal, s)
+	if nominal.stop == oscillates && stopped > 0 {
+		fs = append(fs, sweeps.Flag{Name: NoOscillation, Words: fmt.Sprintf("may not oscillate: %d of %d boards drawn within tolerance do not", stopped, len(e.draws))})
+	}
+	return fs
+}
+
+// band is one setpoint of the ensemble.
+type band struct {
+	value, low, high row
+	stopped          int // draws that do not oscillate
+}
+
+// bands computes all draws at a setting, on all processors, into rows.
+func (e *Ensemble) bands(s Setting, nominal *outcome, rows []row) band {
+	c := s.conditions()
+	stopped := make([]int, workers)
+	each(len(e.draws), func(w, from, to int) {
+		for k := from; k < to; k++ {
+			o := e.m.solve(&e.draws[k], c)
+			rows[k] = o.row()
+			if o.stop != oscillates {
+				stopped[w]++
+			}
+		}
+	})
+	b := band{value: nominal.row()}
+	b.low, b.high = b.value, b.value
+	for _, n := range stopped {
+		b.stopped += n
+	}
+	each(len(predicted), func(_, from, to int) {
+		column := make([]float64, 0, len(rows))
+		for i := from; i < to; i++ {
+			if math.IsNaN(b.value[i]) {
+				continue
+			}
+			if column = columnOf(column[:0], rows, i); len(column) > 0 {
+				b.low[i], b.high[i] = interval95(column)
+			}
+		}
+	})
+	b.widen(nominal)
+	return b
+}
+
+// columnOf collects quantity i of the rows that have it.
+func columnOf(into []float64, rows []row, i int) []float64 {
+	for k := range rows {
+		if v := rows[k][i]; !math.IsNaN(v) {
+			into = append(into, v)
+		}
+	}
+	return into
+}
+
+// widen makes room for what constant speed leaves out: half the peak-to-peak
+// change of speed in a period, T/τm·D(1−D)/2 of the value, on all the motor decides.
+func (b *band) widen(o *outcome) {
+	ratio := o.ripple()
+	if ratio < rippleLimit || o.k == 0 || o.stop != oscillates {
+		return
+	}
+	d := o.high / (o.high + o.low)
+	share := math.Min(0.5, ratio*d*(1-d)/2)
+	for _, i := range []int{qAverageVoltage, qMotorCurrent, qSupplyCurrent, qSupplyPower, qBackEMF, qConduction, qSpeed, qOutputDrop} {
+		extra := share * math.Abs(b.value[i])
+		b.low[i] -= extra
+		b.high[i] += extra
+	}
+	b.high[qConduction] = math.Min(1, b.high[qConduction])
+}
+
+// workers is how many goroutines compute at once.
+var workers = runtime.GOMAXPROCS(0)
+
+// each runs work over 0…n−1 in one contiguous share a worker, and waits for all.
+func each(n int, work func(worker, from, to int)) {
+	if n < 2*workers {
+		work(0, 0, n)
+		return
+	}
+	var wg sync.WaitGroup
+	for w := range workers {
+		wg.Go(func() { work(w, w*n/workers, (w+1)*n/workers) })
+	}
+	wg.Wait()
+}

@@ -1,0 +1,146 @@
+package predict
+
+import (
+	"fmt"
+	"sort"
+
+	"gonum.org/v1/gonum/interp"
+
+	"nightbench/sweeps"
+)
+
+// levels is an output table: voltage against current at each of several supply voltages.
+type levels []levelCurve
+
+type levelCurve struct {
+	supply float64
+	single float64 // the voltage where the table has one row
+	fit    *interp.FritschButland
+	end    float64 // A, last row: beyond it the last slope goes on
+	slope  float64
+	last   float64
+	first  float64 // A, first row
+}
+
+// fitLevels fits a monotone cubic (PCHIP, Fritsch and Butland 1984) through each
+// table of the part, or through the board's own rows where it has any.
+func fitLevels(part []level, own []sweeps.CurrentVoltage) (levels, error) {
+	if len(own) > 0 {
+		l := level{}
+		for _, r := range own {
+			l.Rows = append(l.Rows, [2]float64{r.Current.SI(), r.Voltage.SI()})
+		}
+		part = []level{l}
+	}
+	var out levels
+	for _, l := range part {
+		c, err := fitLevel(l)
+		if err != nil {
+			return nil, fmt.Errorf("table at %g V: %w", l.Supply, err)
+		}
+		out = append(out, c)
+	}
+	sort.Slice(out, func(i, k int) bool { return out[i].supply < out[k].supply })
+	return out, nil
+}
+
+func fitLevel(l level) (levelCurve, error) {
+	if err := checkRows(l.Rows); err != nil {
+		return levelCurve{}, err
+	}
+	n := len(l.Rows)
+	last := l.Rows[n-1]
+	c := levelCurve{supply: l.Supply, single: last[1], end: last[0], last: last[1], first: l.Rows[0][0]}
+	if n == 1 {
+		return c, nil
+	}
+	x, y := make([]float64, n), make([]float64, n)
+	for i, r := range l.Rows {
+		x[i], y[i] = r[0], r[1]
+	}
+	c.fit = new(interp.FritschButland)
+	c.slope = (y[n-1] - y[n-2]) / (x[n-1] - x[n-2])
+	return c, c.fit.Fit(x, y)
+}
+
+// at is the voltage and its slope at a current. Below the first row the first
+// voltage holds; beyond the last row the last chord goes on.
+func (c *levelCurve) at(i float64) (v, slope float64) {
+	switch {
+	case c.fit == nil:
+		return c.single, 0
+	case i > c.end:
+		return c.last + c.slope*(i-c.end), c.slope
+	case i < c.first:
+		return c.fit.Predict(c.first), 0
+	}
+	return c.fit.Predict(i), c.fit.PredictDerivative(i)
+}
+
+// at interpolates linearly between the tables of two supplies; outside them the nearest holds.
+func (l levels) at(i, supply float64) (v, slope float64) {
+	if len(l) == 0 {
+		return 0, 0
+	}
+	k := sort.Search(len(l), func(k int) bool { return l[k].supply >= supply })
+	switch {
+	case k == 0:
+		return l[0].at(i)
+	case k == len(l):
+		return l[k-1].at(i)
+	}
+	v0, s0 := l[k-1].at(i)
+	v1, s1 := l[k].at(i)
+	f := (supply - l[k-1].supply) / (l[k].supply - l[k-1].supply)
+	return v0 + f*(v1-v0), s0 + f*(s1-s0)
+}
+
+// output is the timer's pin 3 at one supply voltage.
+type output struct {
+	supply          float64
+	drop, low       levels
+	dropScale, lows float64
+	shift           float64 // V added to the drop, from temperature
+}
+
+// high is the high level while i amperes are sourced, and the resistance it falls with. It never falls below ground.
+func (o *output) high(i float64) (v, r float64) {
+	d, s := o.drop.at(i, o.supply)
+	d = max(0, d*o.dropScale+o.shift)
+	if d > o.supply {
+		return 0, 0
+	}
+	return o.supply - d, s * o.dropScale
+}
+
+// sink is the low level while i amperes are sunk, and the resistance it rises with. It never rises above the supply.
+func (o *output) sink(i float64) (v, r float64) {
+	l, s := o.low.at(i, o.supply)
+	if l *= o.lows; l > o.supply {
+		return o.supply, 0
+	}
+	return l, s * o.lows
+}
+
+// level is high or low at a current counted away from the output when high, into it when low.
+func (o *output) level(isHigh bool, i float64) (v, r float64) {
+	if isHigh {
+		return o.high(i)
+	}
+	return o.sink(i)
+}
+
+// into solves the current that the high output, sourcing extra amperes besides,
+// drives through r ohms into a junction of v volts to ground. At most 30 Newton steps.
+func (o *output) into(r, v, extra float64) float64 {
+	i := 0.0
+	for range 30 {
+		at, own := o.high(i + extra)
+		next := max(0, i+(at-v-r*i)/(r+own))
+		if diff := next - i; diff < 1e-12 && diff > -1e-12 {
+			return next
+		}
+		i = next
+	}
+	return i
+}
