@@ -49,7 +49,7 @@ func (r *reader) figures(f *userfile.Table) {
 
 // meter reads how long readings take and which speeds there are, slowest last.
 func (r *reader) meter(f *userfile.File) {
-	m, t := &Meter{}, f.Table.Table("meter")
+	m, t := &Meter{}, f.Table("meter")
 	t.Bool("auto_zero", &m.AutoZero)
 	r.duration(t, "range_time", &m.RangeTime)
 	userfile.Word(t, "speed_from", &m.SpeedFrom, "nplc", "aperture")
