@@ -30,8 +30,9 @@ type Options struct {
 	// Marker is a second query whose reply is known beforehand; default
 	// *OPC? with the reply 1.
 	Marker Marker
-	// NoMarker says that there is no such query; the identity alone is then
-	// the proof of being in step.
+	// NoMarker says that there is no such query. The identity alone is then
+	// the proof of being in step, and that no late reply passes for it rests
+	// on the quiet before and after, not on counting: weaker.
 	NoMarker bool
 	// ErrorQuery; default SYST:ERR?. ErrorDepth is how many errors the queue
 	// can hold; default 30.

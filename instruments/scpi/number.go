@@ -150,7 +150,7 @@ func FormatNumber(v float64) string { return strconv.FormatFloat(v, 'G', -1, 64)
 // another form is an ErrForm and puts the step in doubt, since it may be the
 // answer to something else.
 func (c *Conn) QueryNumber(ctx context.Context, query string) (n Number, err error) {
-	err = c.queryAs(ctx, query, func(reply string) error {
+	err = c.QueryAs(ctx, query, func(reply string) error {
 		n, err = c.opt.Numbers.Parse(reply)
 		return err
 	})
@@ -159,7 +159,7 @@ func (c *Conn) QueryNumber(ctx context.Context, query string) (n Number, err err
 
 // QueryBool asks for a boolean in the words of the options.
 func (c *Conn) QueryBool(ctx context.Context, query string) (b bool, err error) {
-	err = c.queryAs(ctx, query, func(reply string) error {
+	err = c.QueryAs(ctx, query, func(reply string) error {
 		b, err = ParseBool(reply, c.opt.Bools)
 		return err
 	})
@@ -168,15 +168,16 @@ func (c *Conn) QueryBool(ctx context.Context, query string) (b bool, err error) 
 
 // QueryString asks for a string in quotes, and returns what is inside.
 func (c *Conn) QueryString(ctx context.Context, query string) (s string, err error) {
-	err = c.queryAs(ctx, query, func(reply string) error {
+	err = c.QueryAs(ctx, query, func(reply string) error {
 		s, err = ParseString(reply)
 		return err
 	})
 	return s, err
 }
 
-// queryAs is Query for a reply that parse must accept.
-func (c *Conn) queryAs(ctx context.Context, query string, parse func(string) error) error {
+// QueryAs is Query for a reply that parse must accept. A reply it refuses puts
+// the step in doubt, since it may be the answer to something else.
+func (c *Conn) QueryAs(ctx context.Context, query string, parse func(reply string) error) error {
 	if err := checkMessage(query, true); err != nil {
 		return err
 	}

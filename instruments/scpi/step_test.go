@@ -122,7 +122,6 @@ func TestNeverAnothersAnswer(t *testing.T) {
 	rapid.Check(t, func(rt *rapid.T) {
 		delays := rapid.SliceOfN(rapid.IntRange(0, 2600), 40, 40).Draw(rt, "delays")
 		calm := rapid.IntRange(0, 3).Draw(rt, "calm") // of four answers, how many come at once
-		marked := rapid.Bool().Draw(rt, "marked")
 		var wrong string
 		right := 0
 		synctest.Test(t, func(t *testing.T) {
@@ -133,7 +132,7 @@ func TestNeverAnothersAnswer(t *testing.T) {
 				}
 				return time.Duration(delays[n]) * time.Millisecond
 			})
-			c := overPipe(t, ours, Options{NoMarker: !marked})
+			c := overPipe(t, ours, Options{})
 			for i := range 12 {
 				query := fmt.Sprintf("Q%d?", i)
 				if i%5 == 2 {
@@ -150,7 +149,7 @@ func TestNeverAnothersAnswer(t *testing.T) {
 			}
 			wait()
 		})
-		if wrong != "" && marked {
+		if wrong != "" {
 			rt.Fatal(wrong)
 		}
 		if right == 0 && calm == 3 {
