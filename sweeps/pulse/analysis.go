@@ -32,7 +32,7 @@ func (a *analysis) run() {
 		a.constant()
 		return
 	}
-	if !g.three || !a.threeLevels(g) {
+	if g.three == nil || !a.threeLevels(g) {
 		a.twoLevels(g.low, g.high, g.noise)
 	}
 	a.result.Middle = a.volts((a.driven.low + a.driven.high) / 2)
@@ -145,11 +145,8 @@ func (a *analysis) measureTwo(low, high float64) {
 // settled measures a state over its last three fifths, spikes left out.
 func (a *analysis) settled(occ []span, about, amplitude float64) state {
 	st := measureState(a.codes, occ, about, 0.35*amplitude, 0.4, a.h.step)
-	reach := max(4.5*math.Sqrt(st.spread), 1.5*a.q)
-	if reach < 0.35*amplitude {
-		st = measureState(a.codes, occ, st.level, reach, 0.4, a.h.step)
-	}
-	return st
+	reach := min(0.35*amplitude, max(4.5*math.Sqrt(st.spread), 1.5*a.q))
+	return measureState(a.codes, occ, st.level, reach, 0.4, a.h.step)
 }
 
 // pool shares the noise among states: the scope's is the same in all, and with
@@ -171,14 +168,14 @@ func (a *analysis) pool(states ...*state) {
 			s.uRandom = max(s.uRandom, math.Sqrt(a.noise/float64(s.n)))
 			s.dof = max(s.dof, float64(a.pairs-1), 1)
 		}
-		s.rounding(a.h)
+		s.rounding(a.q)
 	}
 }
 
 // threeLevels tries the record as freewheel and rest: every period must go from
 // rest to driven, fall to freewheel and come back to rest. False: it does not.
 func (a *analysis) threeLevels(g guess) bool {
-	low, mid, high := g.low, g.third, g.high
+	low, mid, high := g.three[0], g.three[1], g.three[2]
 	n := len(a.codes)
 	for range 2 {
 		a.driven = scanner{codes: a.codes, low: mid, high: high, bound: a.bound(mid, high, g.noise)}
@@ -191,7 +188,10 @@ func (a *analysis) threeLevels(g guess) bool {
 		a.high = a.settled(spans(a.driven.edges, true, n), high, high-mid)
 		a.low = a.settled(spans(a.freewheel.edges, false, n), low, mid-low)
 		a.rest = a.settled(restSpans(a.driven.edges, a.freewheel.edges), mid, min(high-mid, mid-low))
-		if a.rest.n == 0 {
+		if shorter(spans(a.freewheel.edges, false, n), 6) || shorter(spans(a.driven.edges, true, n), 3) {
+			return false
+		}
+		if !plateau(a.low, mid-low) || !plateau(a.high, high-mid) || !plateau(a.rest, min(high-mid, mid-low)) {
 			return false
 		}
 		low, mid, high = a.low.level, a.rest.level, a.high.level
@@ -203,6 +203,22 @@ func (a *analysis) threeLevels(g guess) bool {
 	a.tidy(&a.freewheel)
 	a.three = true
 	return true
+}
+
+// plateau tells whether a state holds its level, as the troughs of ringing do not.
+func plateau(s state, height float64) bool {
+	return s.n >= 4 && s.spread < sq(0.1*height)+2*s.noise
+}
+
+// shorter tells whether most occurrences last fewer than n samples.
+func shorter(occ []span, n int) bool {
+	short := 0
+	for _, o := range occ {
+		if o.to-o.from+1 < n {
+			short++
+		}
+	}
+	return 2*short > len(occ)
 }
 
 // follows tells whether nearly every driven pulse is followed by one freewheel pulse and a rest.
@@ -221,7 +237,7 @@ func follows(driven, freewheel []edge) bool {
 			good++
 		}
 	}
-	return good*10 >= 8*(len(ups)-1)
+	return good >= min(2, len(ups)-1) && good*10 >= 8*(len(ups)-1)
 }
 
 func risings(edges []edge) []edge {

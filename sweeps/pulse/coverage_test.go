@@ -42,6 +42,7 @@ func TestCoverage(t *testing.T) {
 		}
 		return total[k]
 	}
+	parts := map[string]float64{}
 	for i := range 3000 {
 		s := draw(rng, 20000)
 		r, err := Analyse(s.capture(rng), Options{})
@@ -58,6 +59,11 @@ func TestCoverage(t *testing.T) {
 				continue
 			}
 			v := q.Value()
+			if name == "duty" || name == "high_level" {
+				for _, c := range q.Components {
+					parts[name+" "+s.shape+" "+c.Source] += c.Share() * c.Share() / v.U / v.U / 500
+				}
+			}
 			get(name).add(v.X, want, v.U, v.Expanded(0.95), len(q.Flags) > 0)
 			get(name+" "+s.shape).add(v.X, want, v.U, v.Expanded(0.95), len(q.Flags) > 0)
 			if math.Abs(v.X-want) > 5*v.U && testing.Verbose() {
@@ -65,9 +71,12 @@ func TestCoverage(t *testing.T) {
 			}
 		}
 	}
+	for k, v := range parts {
+		t.Logf("part %s %.2f", k, v)
+	}
 	for _, k := range judged {
 		t.Logf("%-16s %s", k, get(k))
-		for _, sh := range []string{"step", "ramp", "exponential", "gaussian", "ringing"} {
+		for _, sh := range []string{"step", "ramp", "exponential", "gaussian", "ringing", "mixed"} {
 			t.Logf("      %-12s %s", sh, get(k+" "+sh))
 		}
 	}

@@ -79,7 +79,7 @@ func (c *cycles) phases(cell float64) {
 	grid := max(c.limit.grid, c.middle.grid)
 	jitter := math.Sqrt(max(0, variance-grid-c.limit.noise-c.middle.noise)) / cell
 	jitter = math.Hypot(jitter, math.Sqrt(min(c.limit.noise, c.middle.noise))/cell)
-	u := math.Sqrt((grid+variance)/down) / cell
+	u := 0.5 * math.Sqrt((grid+variance)/down) / cell
 	c.keep = coherence(c.fitted/cell, c.n(), u, jitter)
 }
 

@@ -139,7 +139,7 @@ func (s *scanner) removeNotches() (removed int) {
 			shortest[i] = max(shortest[i], min(2.5, usual/3))
 		}
 	}
-	kept := s.edges[:0]
+	kept := make([]edge, 0, len(s.edges))
 	for k := 0; k < len(s.edges); k++ {
 		e := s.edges[k]
 		if k+1 < len(s.edges) && s.edges[k+1].mid-e.mid < shortest[b2i(e.rising)] {
@@ -149,8 +149,24 @@ func (s *scanner) removeNotches() (removed int) {
 		}
 		kept = append(kept, e)
 	}
+	if removed == 0 || unevenness(kept) > unevenness(s.edges) {
+		return 0
+	}
 	s.edges = kept
 	return removed
+}
+
+// unevenness is the standard deviation of the period relative to its mean; of
+// fewer than two periods, one.
+func unevenness(edges []edge) float64 {
+	var periods []float64
+	for k := 0; k+2 < len(edges); k += 2 {
+		periods = append(periods, edges[k+2].mid-edges[k].mid)
+	}
+	if len(periods) < 2 {
+		return 1
+	}
+	return deviation(periods) / mean(periods)
 }
 
 func b2i(b bool) int {

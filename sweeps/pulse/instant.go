@@ -114,5 +114,5 @@ func coherence(period float64, n int, u, jitter float64) float64 {
 		power += max(0, sum) / float64(n*n) / (m * m)
 		norm += 1 / (m * m)
 	}
-	return min(1, max(1/float64(n), power/norm))
+	return min(1, max(0.3/float64(n), power/norm))
 }

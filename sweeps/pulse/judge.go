@@ -81,8 +81,9 @@ func (a *analysis) constant() {
 func (a *analysis) meanOfAll() Quantity {
 	n, mean, variance := a.h.moments(float64(a.h.low), float64(a.h.high()))
 	white := neighbourNoise(a.codes)
-	st := state{level: mean, noise: white * white, spread: variance, n: n}
-	st.rounding(a.h)
+	near, _ := a.h.within(mean-a.q*0.999, mean+a.q*0.999)
+	st := state{noise: white * white, n: n, outer: n - near}
+	st.rounding(a.q)
 	// What is slower than white noise does not average out over the record.
 	slow := math.Sqrt(max(0, variance-white*white*(1+3*math.Sqrt(2/float64(n)))))
 	return a.voltage("average_voltage", mean,

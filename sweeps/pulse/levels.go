@@ -31,8 +31,7 @@ func neighbourNoise(codes []int16) float64 {
 // guess is a first idea of the state levels, in codes.
 type guess struct {
 	low, high float64
-	third     float64 // a level between the two
-	three     bool
+	three     []float64 // lowest, middle and highest of three levels; nil: there are not three
 	width     int
 	noise     float64
 }
@@ -89,8 +88,7 @@ func (g *guess) more(h histogram, low, high int) {
 	first, last := peaks[0], peaks[len(peaks)-1]
 	between := peaks[1 : len(peaks)-1]
 	best := slices.MaxFunc(between, func(a, b peak) int { return a.count - b.count })
-	g.three, g.third = true, best.at
-	g.low, g.high = first.at, last.at
+	g.three = []float64{first.at, best.at, last.at}
 }
 
 // peaks lists windows of local maxima of the count, fullest first, at least apart from one another.

@@ -11,14 +11,14 @@ func spans(edges []edge, high bool, n int) []span {
 	var out []span
 	for k, e := range edges {
 		if k == 0 && e.rising != high {
-			out = append(out, span{0, e.from})
+			out = append(out, span{0, before(e, 0)})
 		}
 		if e.rising != high {
 			continue
 		}
 		end := n - 1
 		if k+1 < len(edges) {
-			end = edges[k+1].from
+			end = before(edges[k+1], e.to)
 		}
 		out = append(out, span{e.to, end})
 	}
@@ -36,8 +36,17 @@ type state struct {
 	dof     float64
 	uRound  float64 // … from the converter's steps
 	uSettle float64 // … from a level still moving
+	outer   int     // samples a converter step or more away from the level
+	equal   int     // pairs of equal neighbours
 	droop   float64 // level early in the state less level late in it
 	uDroop  float64
+}
+
+// before is the last sample of a state that is clear of the transition ending it: half
+// the transition's length earlier than where it leaves the state boundary, if the state
+// since its first sample is long enough.
+func before(e edge, since int) int {
+	return max(e.from-(e.to-e.from)/2, min(e.from, since+(e.from-since)*3/4))
 }
 
 const (
@@ -51,6 +60,7 @@ type sums struct {
 	y, yy, diff   float64
 	early, late   float64
 	nEarly, nLate int
+	outer, equal  int
 }
 
 // measureState averages the settled part of the occurrences: the first share
@@ -62,7 +72,7 @@ func measureState(codes []int16, occ []span, about, reach, skip float64, step in
 	var total sums
 	stride := (len(occ) + mostSpans - 1) / mostSpans
 	for k := 0; k < len(occ); k += max(1, stride) {
-		s := sumSpan(codes, occ[k], about, reach, skip)
+		s := sumSpan(codes, occ[k], about, reach, skip, float64(step))
 		if s.n == 0 {
 			continue
 		}
@@ -76,6 +86,7 @@ func measureState(codes []int16, occ []span, about, reach, skip float64, step in
 	n := float64(total.n)
 	off := total.y / n
 	st.n, st.pairs, st.level = total.n, total.pairs, about+off
+	st.outer, st.equal = total.outer, total.equal
 	st.spread = max(0, total.yy/n-off*off)
 	if total.pairs > 0 {
 		st.noise = total.diff / (2 * float64(total.pairs))
@@ -85,7 +96,7 @@ func measureState(codes []int16, occ []span, about, reach, skip float64, step in
 	return st
 }
 
-func sumSpan(codes []int16, o span, about, reach, skip float64) sums {
+func sumSpan(codes []int16, o span, about, reach, skip, step float64) sums {
 	var s sums
 	length := o.to - o.from + 1
 	from := o.from + int(skip*float64(length))
@@ -95,6 +106,9 @@ func sumSpan(codes []int16, o span, about, reach, skip float64) sums {
 		y := float64(codes[i]) - about
 		if math.Abs(y) > reach {
 			continue
+		}
+		if math.Abs(y) >= step {
+			s.outer++
 		}
 		s.n++
 		s.y += y
@@ -110,6 +124,9 @@ func sumSpan(codes []int16, o span, about, reach, skip float64) sums {
 			if d := float64(codes[i+1]) - about - y; math.Abs(d) <= 2*reach {
 				s.diff += d * d
 				s.pairs++
+				if d == 0 {
+					s.equal++
+				}
 			}
 		}
 	}
@@ -126,6 +143,8 @@ func (s *sums) add(o sums) {
 	s.late += o.late
 	s.nEarly += o.nEarly
 	s.nLate += o.nLate
+	s.outer += o.outer
+	s.equal += o.equal
 }
 
 // scatter sets the random uncertainty: that of white noise over all samples, or,
@@ -175,17 +194,16 @@ func (st *state) trend(t sums) {
 	st.uSettle = math.Sqrt(max(0, d*d-2*u2)) / math.Sqrt(3)
 }
 
-// rounding sets the uncertainty left by the converter's steps: step/√12 without
-// noise, vanishing once noise spreads the samples over several codes.
-func (st *state) rounding(h histogram) {
-	q := float64(h.step)
+// rounding sets the uncertainty left by the converter's steps of q codes: q/√12
+// without noise, vanishing once noise spreads the samples over several codes.
+func (st *state) rounding(q float64) {
 	st.uRound = q * sawtooth(max(0, st.noise/q/q-1.0/12))
 	// Two codes alone may be a little noise astride a threshold, which rounds the mean towards it.
-	a := float64(h.low) + math.Floor((st.level-float64(h.low))/q)*q
-	inTwo, _ := h.within(a-0.5, a+q+0.5)
-	inFour, _ := h.within(a-q-0.5, a+2*q+0.5)
-	if inFour-inTwo <= inFour/300 {
+	if st.outer <= st.n/200 {
 		st.uRound = max(st.uRound, 0.2*q)
+	}
+	if st.equal*10 > 9*st.pairs {
+		st.uRound = q / math.Sqrt(12)
 	}
 }
 

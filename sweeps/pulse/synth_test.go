@@ -5,64 +5,82 @@ import (
 	"math/rand/v2"
 )
 
-// synth is a waveform whose parameters are exactly known: a rectangular drive through
-// a linear step response of unit gain, so that duty, period and mean of the
-// drive are those of the waveform.
+// synth is a waveform whose parameters are exactly known: a rectangular drive whose
+// transitions each take a known course.
 type synth struct {
 	low, high float64 // V
 	period    float64 // s
 	duty      float64
-	start     float64                 // s, first rising transition of the drive
-	response  func(t float64) float64 // 0 before 0, 1 long after
-	memory    float64                 // s after which response is 1
-	jitter    float64                 // s, standard deviation of each transition
-	sag       float64                 // share of the amplitude lost at the end of the high state
-	notches   int                     // samples forced low in the middle of every fifth high state
-	freewheel float64                 // V; three levels when conduct > duty: driven, freewheel, low as rest
+	start     float64 // s, first rising transition of the drive
+	up, down  response
+	jitter    float64 // s, standard deviation of each transition
+	sag       float64 // share of the amplitude lost at the end of the high state
+	notches   int     // samples forced low in the middle of every fifth high state
+	freewheel float64 // V; three levels when conduct > duty: driven, freewheel, low as rest
 	conduct   float64
 }
 
-func step(t float64) float64 {
-	if t < 0 {
-		return 0
-	}
-	return 1
+// response is how a transition gets from 0 to 1: with the time it takes to reach one
+// half, and its mean delay ∫(1 − h) dt, both in s; settled after memory s.
+type response struct {
+	h                  func(t float64) float64
+	memory, half, area float64
 }
 
-// responses by name; d is the 10 % to 90 % duration, s.
-func ramp(d float64) func(float64) float64 {
+func step() response {
+	return response{h: func(t float64) float64 {
+		if t < 0 {
+			return 0
+		}
+		return 1
+	}}
+}
+
+// ramp, exponential and gaussian transitions of the 10 % to 90 % duration d, s.
+func ramp(d float64) response {
 	w := d / 0.8
-	return func(t float64) float64 { return min(1, max(0, t/w)) }
+	return response{func(t float64) float64 { return min(1, max(0, t/w)) }, w, w / 2, w / 2}
 }
 
-func exponential(d float64) func(float64) float64 {
+func exponential(d float64) response {
 	tau := d / math.Log(9)
-	return func(t float64) float64 {
+	return response{func(t float64) float64 {
 		if t < 0 {
 			return 0
 		}
 		return 1 - math.Exp(-t/tau)
-	}
+	}, 16 * tau, tau * math.Ln2, tau}
 }
 
-func gaussian(d float64) func(float64) float64 {
+func gaussian(d float64) response {
 	s := d / 2.5631
-	return func(t float64) float64 { return 0.5 * math.Erfc(-(t-3*s)/s/math.Sqrt2) }
+	return response{func(t float64) float64 { return 0.5 * math.Erfc(-(t-4*s)/s/math.Sqrt2) }, 9 * s, 4 * s, 4 * s}
 }
 
-// ringing overshoots by exp(−half period/decay) and rings with the given period, s.
-func ringing(period, decay float64) func(float64) float64 {
-	return func(t float64) float64 {
+// ringing overshoots by about exp(−half period/decay) and rings with the given period, s.
+func ringing(period, decay float64) response {
+	w := 2 * math.Pi / period
+	h := func(t float64) float64 {
 		if t < 0 {
 			return 0
 		}
-		return 1 - math.Exp(-t/decay)*math.Cos(2*math.Pi*t/period)
+		return 1 - math.Exp(-t/decay)*math.Cos(w*t)
 	}
+	low, high := 0.0, period/4
+	for range 60 {
+		if mid := (low + high) / 2; h(mid) < 0.5 {
+			low = mid
+		} else {
+			high = mid
+		}
+	}
+	return response{h, 20 * decay, low, 1 / decay / (1/decay/decay + w*w)}
 }
 
 // wave evaluates the waveform at rising times; jitter moves each transition for good.
 func (s *synth) wave(times []float64, rng *rand.Rand) []float64 {
-	first := int(math.Floor((times[0]-s.start-s.memory)/s.period)) - 1
+	memory := max(s.up.memory, s.down.memory)
+	first := int(math.Floor((times[0]-s.start-memory)/s.period)) - 1
 	last := int(math.Ceil((times[len(times)-1]-s.start)/s.period)) + 1
 	type change struct{ at, height float64 }
 	var changes []change
@@ -85,13 +103,17 @@ func (s *synth) wave(times []float64, rng *rand.Rand) []float64 {
 	y := make([]float64, len(times))
 	settled, done := s.low, 0
 	for i, t := range times {
-		for done < len(changes) && t-changes[done].at > s.memory {
+		for done < len(changes) && t-changes[done].at > memory {
 			settled += changes[done].height
 			done++
 		}
 		v := settled
 		for k := done; k < len(changes) && changes[k].at <= t; k++ {
-			v += changes[k].height * s.response(t-changes[k].at)
+			h := s.down.h
+			if changes[k].height > 0 {
+				h = s.up.h
+			}
+			v += changes[k].height * h(t-changes[k].at)
 		}
 		y[i] = v - s.sagAt(t)
 	}
@@ -109,12 +131,17 @@ func (s *synth) sagAt(t float64) float64 {
 	return s.sag * (s.high - s.low) * x / s.duty
 }
 
+// mean is the mean over a period, s.share the duty at the 50 % instants.
 func (s *synth) mean() float64 {
+	d := (s.down.area - s.up.area) / s.period
 	if s.conduct > s.duty {
-		return s.duty*s.high + (s.conduct-s.duty)*s.freewheel + (1-s.conduct)*s.low
+		rest := s.duty*s.high + (s.conduct-s.duty)*s.freewheel + (1-s.conduct)*s.low
+		return rest + ((s.high-s.freewheel)*s.down.area-(s.high-s.freewheel)*s.up.area)/s.period
 	}
-	return s.low + s.duty*(s.high-s.low)*(1-s.sag/2)
+	return s.low + (s.duty+d)*(s.high-s.low) - s.sag*(s.high-s.low)*s.duty/2
 }
+
+func (s *synth) share() float64 { return s.duty + (s.down.half-s.up.half)/s.period }
 
 // converter digitises volts: bits over a range, with noise, gain and offset errors.
 type converter struct {
@@ -198,19 +225,25 @@ func draw(rng *rand.Rand, most int) specimen {
 // shapeOf chooses how the transitions look, within the shorter phase (s).
 func (s *specimen) shapeOf(rng *rand.Rand, short float64) {
 	d := logUniform(rng, 0.01, 0.2) * short
-	switch rng.IntN(5) {
+	e := d
+	if rng.IntN(2) == 0 {
+		e = logUniform(rng, 0.01, 0.2) * short
+	}
+	switch rng.IntN(6) {
 	case 0:
-		s.shape, s.response, s.memory = "step", step, 0
+		s.shape, s.up, s.down = "step", step(), step()
 	case 1:
-		s.shape, s.response, s.memory = "ramp", ramp(d), 2*d
+		s.shape, s.up, s.down = "ramp", ramp(d), ramp(e)
 	case 2:
-		s.shape, s.response, s.memory = "exponential", exponential(d), 8*d
+		s.shape, s.up, s.down = "exponential", exponential(d), exponential(e)
 	case 3:
-		s.shape, s.response, s.memory = "gaussian", gaussian(d), 4*d
+		s.shape, s.up, s.down = "gaussian", gaussian(d), gaussian(e)
 	case 4:
 		p := logUniform(rng, 0.02, 0.15) * short
 		decay := p * uniform(rng, 0.3, 0.8)
-		s.shape, s.response, s.memory = "ringing", ringing(p, decay), 20*decay
+		s.shape, s.up, s.down = "ringing", ringing(p, decay), ringing(p, decay)
+	case 5:
+		s.shape, s.up, s.down = "mixed", exponential(d), step()
 	}
 }
 
@@ -221,7 +254,7 @@ func (s *specimen) capture(rng *rand.Rand) Record {
 
 func (s *specimen) truth() map[string]float64 {
 	t := map[string]float64{
-		"duty": s.duty, "period": s.period, "frequency": 1 / s.period, "t_high": s.duty * s.period, "t_low": (1 - s.duty) * s.period,
+		"duty": s.share(), "period": s.period, "frequency": 1 / s.period, "t_high": s.share() * s.period, "t_low": (1 - s.share()) * s.period,
 		"average_voltage": s.mean(), "high_level": s.high, "low_level": s.low, "amplitude": s.high - s.low,
 	}
 	return t
