@@ -52,11 +52,18 @@ func (e *Error) Unwrap() error { return e.Err }
 // errors.As finds the first *Error in it.
 type Errors []*Error
 
+// maxTold is how many mistakes a message tells; a wrong file can have thousands.
+const maxTold = 20
+
 // Error is one line for each mistake.
 func (es Errors) Error() string {
-	lines := make([]string, len(es))
+	var lines []string
 	for i, e := range es {
-		lines[i] = e.Error()
+		if i == maxTold {
+			lines = append(lines, fmt.Sprintf("%s: and %d more", e.File, len(es)-maxTold))
+			break
+		}
+		lines = append(lines, e.Error())
 	}
 	return strings.Join(lines, "\n")
 }

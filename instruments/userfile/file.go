@@ -13,9 +13,6 @@ import (
 // MaxSize is the largest file read, bytes. Files written by hand are far smaller.
 const MaxSize = 1 << 20
 
-// maxLines keeps the reading of a file quick: line numbers are counted for every key.
-const maxLines = 20_000
-
 // File is a file whose form is right. Ask it for its tables and keys; Err then
 // tells what was wrong with them and which keys nobody asked for.
 type File struct {
@@ -110,8 +107,6 @@ func plainText(name string, data []byte) error {
 	switch {
 	case len(data) > MaxSize:
 		return fail(0, "is larger than 1 MB; a file of this kind has a few kB: is it the right one?")
-	case bytes.Count(data, []byte("\n")) > maxLines:
-		return fail(0, "has more than %d lines; is it the right file?", maxLines)
 	case len(bytes.TrimSpace(data)) == 0:
 		return fail(0, "is empty; write a first one with: nightbench new DIR --example")
 	case bytes.HasPrefix(data, []byte("\xef\xbb\xbf")):

@@ -5,6 +5,7 @@ import (
 	"errors"
 	"fmt"
 	"regexp"
+	"slices"
 	"strings"
 
 	"github.com/pelletier/go-toml/v2/unstable"
@@ -17,6 +18,7 @@ const maxDepth = 16
 type tree struct {
 	name string
 	data []byte
+	ends []int // offsets of the ends of lines
 	p    unstable.Parser
 	root *node
 	here *node  // table that key-values go to
@@ -26,7 +28,7 @@ type tree struct {
 // parse reads a document up to its first mistake of form.
 func parse(name string, data []byte) (*node, *Error) {
 	root := newTable(1, byHeader)
-	t := &tree{name: name, data: data, root: root, here: root}
+	t := &tree{name: name, data: data, ends: lineEnds(data), root: root, here: root}
 	t.p.Reset(data)
 	for t.p.NextExpression() {
 		if err := t.expression(t.p.Expression()); err != nil {
@@ -178,7 +180,7 @@ var unquoted = regexp.MustCompile(`^\s*([A-Za-z0-9_-]+)\s*=\s*([^\s"'\[{#][^"'\[
 
 // syntax turns the parser's error into ours.
 func (t *tree) syntax(err error) *Error {
-	out := &Error{File: t.name, Line: 1 + bytes.Count(t.data, []byte("\n")), Want: err.Error(), Err: err}
+	out := &Error{File: t.name, Line: 1 + len(t.ends), Want: err.Error(), Err: err}
 	var pe *unstable.ParserError
 	if !errors.As(err, &pe) {
 		return out
@@ -202,7 +204,20 @@ func (t *tree) syntax(err error) *Error {
 }
 
 // line is the number of the line that byte offset is on, from 1.
-func (t *tree) line(offset int) int { return 1 + bytes.Count(t.data[:offset], []byte("\n")) }
+func (t *tree) line(offset int) int {
+	n, _ := slices.BinarySearch(t.ends, offset)
+	return n + 1
+}
+
+func lineEnds(data []byte) []int {
+	var ends []int
+	for i, b := range data {
+		if b == '\n' {
+			ends = append(ends, i)
+		}
+	}
+	return ends
+}
 
 // text is the line that byte offset is on.
 func (t *tree) text(offset int) string {

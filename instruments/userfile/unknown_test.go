@@ -1,6 +1,7 @@
 package userfile_test
 
 import (
+	"fmt"
 	"strings"
 	"testing"
 
@@ -80,6 +81,23 @@ func TestFoundIsBoundedAndPrintable(t *testing.T) {
 	if strings.ContainsAny(err, "\n\t\u200b") || len(err) > 200 {
 		t.Errorf("got %q", err)
 	}
+}
+
+func TestAWrongFileIsToldShortly(t *testing.T) {
+	f := parse(t, strings.Repeat("k", 3)+" = { "+manyKeys(20_000)+" }\n")
+	f.Optional().Table("kkk")
+	lines := strings.Split(f.Err().Error(), "\n")
+	if len(lines) != 21 || lines[20] != "f.toml: and 19980 more" {
+		t.Errorf("%d lines, the last %q", len(lines), lines[len(lines)-1])
+	}
+}
+
+func manyKeys(n int) string {
+	keys := make([]string, n)
+	for i := range keys {
+		keys[i] = fmt.Sprintf("k%d = 1", i)
+	}
+	return strings.Join(keys, ", ")
 }
 
 func TestNearest(t *testing.T) {
