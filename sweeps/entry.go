@@ -1,6 +1,10 @@
 package sweeps
 
-import "time"
+import (
+	"time"
+
+	"nightbench/instruments"
+)
 
 // Kind says what a journal entry is about.
 type Kind string
@@ -41,6 +45,15 @@ type Off struct {
 	Below     float64   `json:"below"`   // V
 	At        time.Time `json:"at"`
 	Words     string    `json:"words"` // unconfirmed: which switch to turn by hand
+}
+
+// OffFrom is a report of making safe as the journal keeps it.
+func OffFrom(r instruments.OffReport) Off {
+	by := r.By
+	if by == nil {
+		by = []string{}
+	}
+	return Off{Confirmed: r.Confirmed, By: by, Voltage: r.Voltage, Below: r.Below, At: r.At, Words: r.Words}
 }
 
 // Energised is what is known of the output: "yes", "no" or "unconfirmed".

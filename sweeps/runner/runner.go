@@ -49,10 +49,10 @@ type Options struct {
 	Plan    sweeps.Plan
 	Run     sweeps.Run
 	Order   []sweeps.Setpoint
-	Done    []sweeps.Point // measured before, on a resumed run
-	SafeBy  time.Time      // wall time the plan must be safe by; zero: none
-	Below   float64        // V: read back below this, the output counts as off
-	Changed func()         // rung when the vitals changed in a way worth showing at once
+	Done    []sweeps.Point       // measured before, on a resumed run
+	SafeBy  time.Time            // wall time the plan must be safe by; zero: none
+	Safe    instruments.SafeSpec // what safe means on this bench
+	Changed func()               // rung when the vitals changed in a way worth showing at once
 	Log     *slog.Logger
 }
 

@@ -44,7 +44,7 @@ func (r *Runner) makeSafe(last context.Context) sweeps.Off {
 func (r *Runner) switchOff(ctx context.Context) sweeps.Off {
 	ctx, cancel := context.WithTimeout(ctx, safeAttempt)
 	defer cancel()
-	off := Off(instruments.MakeSafe(ctx, r.o.Clock, r.o.Bench, instruments.SafeSpec{Below: r.o.Below}), r.o.Clock.Now())
+	off := sweeps.OffFrom(instruments.MakeSafe(ctx, r.o.Clock, r.o.Bench, r.o.Safe))
 	if !off.Confirmed {
 		r.setEnergised(sweeps.EnergisedUnconfirmed, nil)
 		return off

@@ -143,12 +143,13 @@ func Codes(a sweeps.Axis, pot *instruments.PotWiring) ([]int, error) {
 	if pot == nil {
 		return nil, fmt.Errorf("axis %q: this bench has no pot; add [pot] to the bench file", a.Set)
 	}
+	if a.Set == sweeps.SetPotResistance {
+		codes, _ := sweeps.Snap(*pot, a.Values)
+		return codes, nil
+	}
 	var codes []int
 	for _, v := range a.Values {
 		c := int(math.Round(v))
-		if a.Set == sweeps.SetPotResistance {
-			c = nearest(pot, v)
-		}
 		if c < 0 || c >= pot.Codes {
 			return nil, fmt.Errorf("axis %q: code %d is none of 0 to %d", a.Set, c, pot.Codes-1)
 		}
@@ -157,15 +158,4 @@ func Codes(a sweeps.Axis, pot *instruments.PotWiring) ([]int, error) {
 		}
 	}
 	return codes, nil
-}
-
-// nearest is the code whose resistance is nearest to ohms.
-func nearest(pot *instruments.PotWiring, ohms float64) int {
-	best, dist := 0, math.Inf(1)
-	for c := range pot.Codes {
-		if d := math.Abs(pot.Ohms(c).SI() - ohms); d < dist {
-			best, dist = c, d
-		}
-	}
-	return best
 }

@@ -1,0 +1,198 @@
+package app
+
+import (
+	"context"
+	"crypto/sha256"
+	"encoding/hex"
+	"fmt"
+	"math/rand/v2"
+	"path/filepath"
+	"time"
+
+	"nightbench/instruments"
+	"nightbench/sweeps"
+	"nightbench/sweeps/runner"
+	"nightbench/sweeps/schedule"
+)
+
+// active is the open run: its conductor and how to wait for it.
+type active struct {
+	id     int64
+	runner *runner.Runner
+	cancel context.CancelCauseFunc
+	done   chan struct{} // closed when the run is over and the bench safe
+	end    runner.Outcome
+}
+
+// Request is what a person asks for when starting a run.
+type Request struct {
+	Plan        string // path
+	BoardSerial string
+	Operator    string
+	Note        string
+}
+
+// Start reads plan and board, checks them against the bench, opens a run and lets it go.
+func (d *Daemon) Start(ctx context.Context, q Request) (sweeps.Run, error) {
+	plan, board, err := sweeps.ReadPlan(q.Plan)
+	if err != nil {
+		return sweeps.Run{}, err
+	}
+	job, err := d.job(plan, board, rand.Uint64())
+	if err != nil {
+		return sweeps.Run{}, err
+	}
+	run := job.Run
+	run.BoardSerial, run.Operator, run.Note, run.State, run.StartedAt = q.BoardSerial, q.Operator, q.Note, sweeps.Preparing, d.clock.Now()
+	return d.begin(ctx, job, func() (sweeps.Run, error) { return d.store.CreateRun(ctx, run) }, "Started"+by(q.Operator)+".")
+}
+
+// Resume goes on with an interrupted or stopped run, from the files as they were when it began.
+func (d *Daemon) Resume(ctx context.Context, id int64, operator string) (sweeps.Run, error) {
+	old, err := d.store.Run(ctx, id)
+	if err != nil {
+		return sweeps.Run{}, err
+	}
+	if !old.State.Ended() || old.State == sweeps.Done {
+		return sweeps.Run{}, conflict("run %d is %s: only an interrupted, stopped, tripped or failed run can be resumed", id, old.State)
+	}
+	plan, board, err := filesOf(old)
+	if err != nil {
+		return sweeps.Run{}, err
+	}
+	job, err := d.job(plan, board, old.Seed)
+	if err != nil {
+		return sweeps.Run{}, err
+	}
+	if job.Done, err = d.store.Points(ctx, id); err != nil {
+		return sweeps.Run{}, err
+	}
+	if _, left := schedule.Next(job.Order, job.Done); !left {
+		return sweeps.Run{}, conflict("run %d has all its %d points: nothing is left to measure", id, len(job.Done))
+	}
+	old.Planned = len(job.Order)
+	open := func() (sweeps.Run, error) {
+		_, err := d.store.Append(ctx, sweeps.Entry{Run: id, Kind: sweeps.KindState, State: sweeps.Preparing})
+		old.State = sweeps.Preparing
+		return old, err
+	}
+	return d.begin(ctx, job, open, fmt.Sprintf("Resumed%s at point %d of %d.", by(operator), len(job.Done)+1, len(job.Order)))
+}
+
+func by(operator string) string {
+	if operator == "" {
+		return ""
+	}
+	return " by " + operator
+}
+
+// job is all a run of this plan on this bench needs, the journal's part apart.
+func (d *Daemon) job(plan sweeps.Plan, board sweeps.Board, seed uint64) (runner.Options, error) {
+	w := d.bench.Bench.Wiring
+	if err := sweeps.CheckPlan(plan, board, &w); err != nil {
+		return runner.Options{}, err
+	}
+	p, err := newPredictor(board, w, seed)
+	if err != nil {
+		return runner.Options{}, err
+	}
+	order, err := schedule.Order(plan, w.Pot, seed)
+	if err != nil {
+		return runner.Options{}, err
+	}
+	o := runner.Options{Bench: d.bench.Bench, Clock: d.clock, Journal: d.store, Mark: d.mark, Predict: p, Board: board, Plan: plan, Order: order, Safe: safe(), Log: d.o.Log}
+	if o.SafeBy, err = safeBy(plan.SafeBy, d.clock.Now()); err != nil {
+		return runner.Options{}, err
+	}
+	o.Run = sweeps.Run{
+		Plan: plan.Name, Board: board.Name, Revision: board.Revision, Bench: w.Bench, Planned: len(order), Pace: d.clock.Pace(), Seed: seed,
+		Version: d.o.Version, Quantities: plan.Measure.Quantities, Instruments: d.identities(),
+		Files: []sweeps.File{file("bench", d.o.Bench.Path, d.o.Bench.Text), file("board", board.Path, board.Text), file("plan", plan.Path, plan.Text)},
+	}
+	return o, nil
+}
+
+func file(role, path, text string) sweeps.File {
+	sum := sha256.Sum256([]byte(text))
+	return sweeps.File{Role: role, Name: filepath.Base(path), SHA256: hex.EncodeToString(sum[:]), Text: text}
+}
+
+// filesOf reads plan and board from a run's own copies.
+func filesOf(run sweeps.Run) (sweeps.Plan, sweeps.Board, error) {
+	var planFile, boardFile sweeps.File
+	for _, f := range run.Files {
+		switch f.Role {
+		case "plan":
+			planFile = f
+		case "board":
+			boardFile = f
+		}
+	}
+	return sweeps.ParseFiles(planFile, boardFile)
+}
+
+// begin opens the run in the journal and conducts it in a goroutine that end and Stop wait for.
+func (d *Daemon) begin(ctx context.Context, o runner.Options, open func() (sweeps.Run, error), words string) (sweeps.Run, error) {
+	d.mu.Lock()
+	defer d.mu.Unlock()
+	if d.run != nil {
+		return sweeps.Run{}, conflict("run %d is open: stop it first, or wait for its end", d.run.id)
+	}
+	if d.ending {
+		return sweeps.Run{}, conflict("the daemon is ending")
+	}
+	if d.idle.Energised == sweeps.EnergisedUnconfirmed {
+		return sweeps.Run{}, conflict("off is not confirmed: press Outputs off, or see to the supply by hand, before starting")
+	}
+	run, err := open()
+	if err != nil {
+		return sweeps.Run{}, err
+	}
+	o.Run = run
+	started := sweeps.Entry{Run: run.ID, Kind: sweeps.KindStarted, Words: words, Setpoints: o.Order, Curves: o.Predict.Curves(o.Order)}
+	if _, err := d.store.Append(ctx, started); err != nil {
+		return sweeps.Run{}, err
+	}
+	running, cancel := context.WithCancelCause(context.Background())
+	a := &active{id: run.ID, runner: runner.New(o), cancel: cancel, done: make(chan struct{})}
+	d.run = a
+	go d.conduct(running, a)
+	return run, nil
+}
+
+func (d *Daemon) conduct(ctx context.Context, a *active) {
+	defer close(a.done)
+	a.end = a.runner.Conduct(ctx, d.last)
+	a.cancel(nil)
+	v := a.runner.Vitals()
+	d.mu.Lock()
+	d.run = nil
+	d.idle = sweeps.Vitals{Energised: v.Energised, Since: v.Since, ConfirmedBy: v.ConfirmedBy, Voltage: v.Voltage, VoltageU: v.VoltageU, Current: v.Current, CurrentU: v.CurrentU, ReadAt: v.ReadAt}
+	d.mu.Unlock()
+}
+
+// safeBy is the next time the clock on the wall shows hh:mm; zero for none.
+func safeBy(text string, now time.Time) (time.Time, error) {
+	if text == "" {
+		return time.Time{}, nil
+	}
+	t, err := time.ParseInLocation("15:04", text, time.Local)
+	if err != nil {
+		return time.Time{}, fmt.Errorf("safe_by = %q: write it like \"07:00\"", text)
+	}
+	n := now.Local()
+	by := time.Date(n.Year(), n.Month(), n.Day(), t.Hour(), t.Minute(), 0, 0, time.Local)
+	if !by.After(n) {
+		by = by.AddDate(0, 0, 1)
+	}
+	return by, nil
+}
+
+// identities are the instruments as one line each.
+func (d *Daemon) identities() []string {
+	var lines []string
+	for _, i := range d.bench.Info {
+		lines = append(lines, fmt.Sprintf("%s: %s, firmware %s, dialect %s, at %s", i.Name, i.Identity, i.Identity.Firmware, i.Dialect, i.Address))
+	}
+	return lines
+}

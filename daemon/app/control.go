@@ -1,0 +1,190 @@
+package app
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"time"
+
+	"nightbench/instruments"
+	"nightbench/instruments/si"
+	"nightbench/sweeps"
+	"nightbench/sweeps/runner"
+)
+
+// ErrConflict says that what is asked does not go with what is going on.
+var ErrConflict = errors.New("not now")
+
+// conflicting is an ErrConflict in words.
+type conflicting struct{ words string }
+
+func (c *conflicting) Error() string        { return c.words }
+func (c *conflicting) Is(target error) bool { return target == ErrConflict }
+
+func conflict(format string, args ...any) error { return &conflicting{fmt.Sprintf(format, args...)} }
+
+func (d *Daemon) active() *active {
+	d.mu.Lock()
+	defer d.mu.Unlock()
+	return d.run
+}
+
+// command passes a person's wish to the open run.
+func (d *Daemon) command(c runner.Command, by string) error {
+	a := d.active()
+	if a == nil {
+		return conflict("%s: no run is open", c)
+	}
+	if err := a.runner.Command(c, named(by)); err != nil {
+		return conflict("%s", err)
+	}
+	return nil
+}
+
+func named(by string) string {
+	if by == "" {
+		return "the operator"
+	}
+	return by
+}
+
+// Stop ends the open run and returns when the bench is safe, or ctx ends.
+func (d *Daemon) Stop(ctx context.Context, by string) error {
+	a := d.active()
+	if err := d.command(runner.CmdStop, by); err != nil {
+		return err
+	}
+	return wait(ctx, a)
+}
+
+func wait(ctx context.Context, a *active) error {
+	select {
+	case <-a.done:
+		return nil
+	case <-ctx.Done():
+		return context.Cause(ctx)
+	}
+}
+
+// Hold finishes the reading in hand and switches the output off.
+func (d *Daemon) Hold(_ context.Context, by string) error { return d.command(runner.CmdHold, by) }
+
+// Continue lets a held run go on.
+func (d *Daemon) Continue(_ context.Context, by string) error {
+	return d.command(runner.CmdContinue, by)
+}
+
+// Off switches the outputs off, with or without a run, and says what is known then.
+func (d *Daemon) Off(ctx context.Context, by string) (sweeps.Off, error) {
+	if a := d.active(); a != nil {
+		if err := a.runner.Command(runner.CmdOff, named(by)); err == nil {
+			if err := wait(ctx, a); err != nil {
+				return sweeps.Off{}, err
+			}
+			return a.end.Off, nil
+		}
+	}
+	off := sweeps.OffFrom(instruments.MakeSafe(ctx, d.clock, d.bench.Bench, safe()))
+	d.know(off)
+	_, err := d.store.Append(context.WithoutCancel(ctx), sweeps.Entry{Kind: sweeps.KindOff, Words: "Outputs off, by " + named(by) + ". " + off.Words, Off: &off})
+	return off, err
+}
+
+// safe is what safe means on every bench.
+func safe() instruments.SafeSpec { return instruments.SafeSpec{Below: si.Volts(Below)} }
+
+// know keeps what is known of the output while no run is open.
+func (d *Daemon) know(off sweeps.Off) {
+	d.mu.Lock()
+	defer d.mu.Unlock()
+	at := off.At
+	d.idle.Energised, d.idle.Since, d.idle.ConfirmedBy = sweeps.EnergisedUnconfirmed, &at, nil
+	if off.Confirmed {
+		d.idle.Energised, d.idle.ConfirmedBy = sweeps.EnergisedNo, off.By
+	}
+}
+
+// end stops the open run, if any, and waits until the bench is safe. A daemon
+// that ended a run says so by its error.
+func (d *Daemon) end(cause error) error {
+	d.mu.Lock()
+	d.ending = true
+	a := d.run
+	d.mu.Unlock()
+	if a == nil {
+		return nil
+	}
+	a.cancel(&runner.Stop{Reason: "the daemon was told to end: " + cause.Error()})
+	<-a.done // bounded by d.last: a second signal
+	if !a.end.Off.Confirmed {
+		return fmt.Errorf("off is not confirmed: %s", a.end.Off.Words)
+	}
+	return cause
+}
+
+// Wait returns when the run is over: how it ended.
+func (d *Daemon) Wait(ctx context.Context, run int64) (sweeps.Run, error) {
+	if a := d.active(); a != nil && a.id == run {
+		if err := wait(ctx, a); err != nil {
+			return sweeps.Run{}, err
+		}
+	}
+	return d.store.Run(ctx, run)
+}
+
+// Vitals is the latest of what changes all the time.
+func (d *Daemon) Vitals() sweeps.Vitals {
+	d.mu.Lock()
+	a, v := d.run, d.idle
+	d.mu.Unlock()
+	if a != nil {
+		v = a.runner.Vitals()
+	} else {
+		v.At = d.clock.Now()
+		v.Doing = "No run is open"
+	}
+	v.Instruments = d.answering()
+	return v
+}
+
+// answering says how each instrument answers.
+func (d *Daemon) answering() []sweeps.Answering {
+	var all []sweeps.Answering
+	for _, i := range d.bench.Answers() {
+		all = append(all, sweeps.Answering{Name: i.Name, Words: i.Words})
+	}
+	return all
+}
+
+// idleEvery is how often the supply is looked at while no run is open, wall time.
+const idleEvery = 2 * time.Second
+
+// watchIdle looks at the supply while no run does.
+func (d *Daemon) watchIdle(ctx context.Context) {
+	for d.clock.Wait(ctx, idleEvery) == nil {
+		if d.active() != nil {
+			continue
+		}
+		s, err := d.bench.Bench.Supply.State(ctx)
+		if err != nil || d.active() != nil {
+			continue
+		}
+		d.sawIdle(s)
+	}
+}
+
+func (d *Daemon) sawIdle(s instruments.SupplyState) {
+	d.mu.Lock()
+	defer d.mu.Unlock()
+	now := d.clock.Now()
+	d.idle.ReadAt = &now
+	d.idle.Voltage, d.idle.VoltageU = runner.SampleValue(s.Voltage)
+	d.idle.Current, d.idle.CurrentU = runner.SampleValue(s.Current)
+	low := d.idle.Voltage != nil && *d.idle.Voltage < Below
+	switch {
+	case s.Output && d.idle.Energised != sweeps.EnergisedYes:
+		d.idle.Energised, d.idle.Since, d.idle.ConfirmedBy = sweeps.EnergisedYes, &now, nil
+	case !s.Output && low && d.idle.Energised != sweeps.EnergisedNo:
+		d.idle.Energised, d.idle.Since, d.idle.ConfirmedBy = sweeps.EnergisedNo, &now, []string{"supply"}
+	}
+}

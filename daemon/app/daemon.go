@@ -1,0 +1,149 @@
+package app
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"log/slog"
+	"net"
+	"net/http"
+	"sync"
+	"time"
+
+	"nightbench/daemon/store"
+	"nightbench/daemon/web"
+	"nightbench/instruments"
+	"nightbench/instruments/bench"
+	"nightbench/sweeps"
+	"nightbench/ui"
+)
+
+// Cautions are shown at start, on the page and on reports.
+const Cautions = `Cautions. Switching off by software is no emergency stop: keep the mains switch within reach. Secure and
+guard the motor; a dry pump overheats; nothing flammable near; fit the inline fuse; mind polarity, the
+scope's earth and coast-down. Local rules and licensed practice come first.`
+
+// Options are what a daemon is started with.
+type Options struct {
+	State   string      // folder
+	Bench   *bench.File // read and checked
+	Listen  string      // loopback address, port 0 for any free one
+	Version string
+	Log     *slog.Logger
+	// Ready is called once, when the page can be opened; address is its URL with the operator's token.
+	Ready func(d *Daemon, address string)
+}
+
+// Budgets for closing, wall time.
+const (
+	closeBudget = 20 * time.Second
+	webBudget   = 3 * time.Second
+)
+
+// Below is the voltage under which a read-back output counts as off, V. Common
+// practice, no source: half a volt turns no timer and no small motor.
+const Below = 0.5
+
+// Daemon holds one bench and conducts its runs, one at a time.
+type Daemon struct {
+	o     Options
+	clock instruments.Clock
+	state *State
+	store *store.Store
+	bench *bench.Opened
+	mark  *mark
+	begun time.Time
+	last  context.Context // ends when nobody will wait for off any longer
+
+	mu     sync.Mutex // guards what follows; never held over I/O
+	run    *active
+	idle   sweeps.Vitals
+	ending bool
+}
+
+// Serve opens everything in order, safety first, serves until ctx ends, and
+// closes everything last-first. last ends when a person no longer waits for off
+// to be confirmed.
+func Serve(ctx, last context.Context, o Options) (err error) {
+	d := &Daemon{o: o, clock: instruments.NewClock(o.Bench.Pace), last: last}
+	d.begun = d.clock.Now()
+	var u undo
+	defer func() {
+		ctx, cancel := context.WithTimeout(context.Background(), closeBudget)
+		defer cancel()
+		err = errors.Join(err, u.all(ctx))
+	}()
+	if err := d.open(ctx, &u); err != nil {
+		return err
+	}
+	<-ctx.Done()
+	return d.end(context.Cause(ctx))
+}
+
+// open is the order of opening. Each step registers its undoing at once.
+func (d *Daemon) open(ctx context.Context, u *undo) (err error) {
+	if d.state, err = OpenState(d.o.State); err != nil {
+		return err
+	}
+	u.add("the state folder", func(context.Context) error { return d.state.Close() })
+	d.mark = d.newMark()
+	if err := d.safeFirst(ctx); err != nil {
+		return err
+	}
+	if d.store, err = store.Open(ctx, Database(d.state.Dir()), d.clock); err != nil {
+		return err
+	}
+	u.add("the store", d.store.Close)
+	if err := d.closeInterrupted(ctx); err != nil {
+		return err
+	}
+	if d.bench, err = bench.Open(ctx, d.o.Bench, bench.Options{Clock: d.clock}); err != nil {
+		return err
+	}
+	u.add("the bench", d.bench.Close)
+	watching, stop := context.WithCancel(context.WithoutCancel(ctx))
+	idle := make(chan struct{})
+	go func() { defer close(idle); d.watchIdle(watching) }()
+	u.add("the idle watch", func(context.Context) error { stop(); <-idle; return nil })
+	return d.openPage(ctx, u)
+}
+
+// openPage serves API and page on loopback and on the socket of the state folder.
+func (d *Daemon) openPage(ctx context.Context, u *undo) error {
+	token, err := d.state.Token()
+	if err != nil {
+		return err
+	}
+	tcp, err := net.Listen("tcp", d.o.Listen)
+	if err != nil {
+		return fmt.Errorf("the page's address: %w; choose another with --listen, port 0 takes any free one", err)
+	}
+	srv := web.New(web.Options{Store: d.store, Control: d, Page: ui.Page(), Token: token, Version: d.o.Version, Cautions: Cautions, Clock: d.clock, Log: d.o.Log})
+	local, err := web.ListenSocket(Socket(d.state.Dir()))
+	if err != nil {
+		return errors.Join(err, tcp.Close())
+	}
+	serving, stop := context.WithCancel(context.WithoutCancel(ctx))
+	done := make(chan error, 1)
+	go func() { done <- srv.Serve(serving, tcp, local) }()
+	u.add("the page", func(context.Context) error { stop(); return ignoreClosed(<-done) })
+	if d.o.Ready != nil {
+		d.o.Ready(d, fmt.Sprintf("http://%s/#token=%s", tcp.Addr(), token))
+	}
+	return nil
+}
+
+func ignoreClosed(err error) error {
+	if errors.Is(err, http.ErrServerClosed) || errors.Is(err, net.ErrClosed) {
+		return nil
+	}
+	return err
+}
+
+// newMark makes the energised record's keeper: it names the supply, so that a later start can switch it off with nothing else at hand.
+func (d *Daemon) newMark() *mark {
+	f := d.o.Bench
+	return &mark{path: energisedPath(d.state.Dir()), clock: d.clock, blank: Energised{
+		Bench: f.Wiring.Bench, Address: f.Supply.Address, Dialect: f.Supply.Dialect, Channel: f.Supply.Channel, Pace: f.Pace, Below: Below,
+	}}
+}

@@ -1,0 +1,62 @@
+package app
+
+import (
+	"context"
+	"fmt"
+	"time"
+
+	"nightbench/instruments"
+	"nightbench/instruments/bench"
+	"nightbench/instruments/si"
+	"nightbench/sweeps"
+)
+
+// safeFirst makes the bench safe before anything else when an earlier daemon
+// left it energised: without the database, without the rest of the bench. It
+// goes on until off is confirmed, with the loudest notice it has.
+func (d *Daemon) safeFirst(ctx context.Context) error {
+	e, there, err := readEnergised(d.state.Dir())
+	if err != nil {
+		return err
+	}
+	if !there {
+		return nil
+	}
+	d.o.Log.Warn("an earlier daemon left the bench energised: making it safe first", "since", e.At, "run", e.Run, "supply", e.Address)
+	for {
+		off, err := d.offBy(ctx, e)
+		if err == nil && off.Confirmed {
+			d.idle = sweeps.Vitals{Energised: sweeps.EnergisedNo, Since: &off.At, ConfirmedBy: off.By}
+			d.o.Log.Info("off, confirmed", "by", off.By)
+			return d.mark.Clear()
+		}
+		d.o.Log.Error("OFF IS NOT CONFIRMED: switch the supply off at its front panel and look that it is off", "supply", e.Address, "words", off.Words, "err", err)
+		if err := d.clock.Wait(ctx, time.Second); err != nil {
+			return fmt.Errorf("off was never confirmed (%s): switch the supply off at its front panel; the next start tries again: %w", e.Address, err)
+		}
+	}
+}
+
+// offBy makes one attempt with nothing but what the energised record says.
+func (d *Daemon) offBy(ctx context.Context, e Energised) (sweeps.Off, error) {
+	ctx, cancel := context.WithTimeout(ctx, 15*time.Second)
+	defer cancel()
+	s, err := bench.OpenSupply(ctx, e.Address, e.Dialect, e.Channel, bench.Options{Clock: d.clock})
+	if err != nil {
+		return sweeps.Off{}, err
+	}
+	defer s.Close(context.WithoutCancel(ctx))
+	b := instruments.Bench{Supply: s.Supply}
+	return sweeps.OffFrom(instruments.MakeSafe(ctx, d.clock, b, instruments.SafeSpec{Below: si.Volts(e.Below)})), nil
+}
+
+// closeInterrupted ends a run that an earlier daemon left open. It can be resumed, by a person.
+func (d *Daemon) closeInterrupted(ctx context.Context) error {
+	run, open, err := d.store.OpenRun(ctx)
+	if err != nil || !open {
+		return err
+	}
+	words := fmt.Sprintf("the daemon ended without making the bench safe; made safe at the next start. %d of %d points are kept; resume goes on", run.Measured, run.Planned)
+	_, err = d.store.Append(ctx, sweeps.Entry{Run: run.ID, Kind: sweeps.KindEnded, State: sweeps.Interrupted, Words: words})
+	return err
+}

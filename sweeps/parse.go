@@ -1,0 +1,22 @@
+package sweeps
+
+import "nightbench/instruments/userfile"
+
+// ParseFiles reads a plan and its board from copies kept with a run: the names are
+// for messages only, nothing is looked for on disk.
+func ParseFiles(plan, board File) (Plan, Board, error) {
+	pf, err := userfile.Parse(plan.Name, []byte(plan.Text))
+	if err != nil {
+		return Plan{}, Board{}, err
+	}
+	bf, err := userfile.Parse(board.Name, []byte(board.Text))
+	if err != nil {
+		return Plan{}, Board{}, err
+	}
+	p := planOf(pf)
+	b, boardErr := boardOf(bf)
+	if err := userfile.Join(pf.Err(), boardErr); err != nil {
+		return Plan{}, Board{}, err
+	}
+	return p, b, nil
+}
