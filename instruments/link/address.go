@@ -89,6 +89,9 @@ var lineWords = map[string][]string{
 }
 
 func (l *Line) set(key, value string) error {
+	if key == "flow" && value == "dtrdsr" {
+		return fmt.Errorf("flow=dtrdsr: this system can't do it; use flow=none with DSR tied to DTR at the instrument, and commands short enough for its buffer")
+	}
 	if words, ok := lineWords[key]; ok {
 		if !slices.Contains(words, value) {
 			return fmt.Errorf("%s=%s: use one of %s", key, value, strings.Join(words, ", "))

@@ -22,9 +22,11 @@ type wire struct {
 	in     chan []byte   // received, in order; closed by the reader at the end
 	out    chan parcel   // lines to send; unbuffered, so what is taken is being written
 	stop   chan struct{} // closed by shut
-	shutAt chan struct{} // one token: who takes it shuts
+	once   chan struct{} // one token: who takes it shuts
 	quit   chan struct{} // closed by the writer at its end
+	closed chan struct{} // closed when the stream's own Close is back
 	err    error         // why the reader ended; read only after in is closed
+	end    error         // what Close said; read only after closed is closed
 }
 
 // parcel is one line to write and where to say how it went.
@@ -37,9 +39,9 @@ func newWire(rw io.ReadWriteCloser, opt *Options) *wire {
 	w := &wire{
 		rw: rw, opt: opt,
 		in: make(chan []byte, 64), out: make(chan parcel),
-		stop: make(chan struct{}), shutAt: make(chan struct{}, 1), quit: make(chan struct{}),
+		stop: make(chan struct{}), once: make(chan struct{}, 1), quit: make(chan struct{}), closed: make(chan struct{}),
 	}
-	w.shutAt <- struct{}{}
+	w.once <- struct{}{}
 	go w.read()
 	go w.write()
 	return w
@@ -173,21 +175,17 @@ func ended(ctx context.Context) error {
 // after the first wait for the same end.
 func (w *wire) shut() error {
 	select {
-	case <-w.shutAt:
+	case <-w.once:
+		close(w.stop)
+		go func() {
+			defer close(w.closed)
+			w.end = w.rw.Close()
+		}()
 	default:
-		return w.gone(nil)
 	}
-	close(w.stop)
-	closed := make(chan error, 1)
-	go func() { closed <- w.rw.Close() }()
-	return w.gone(closed)
-}
-
-// gone waits until the pumps are back, and the closing if it is given one.
-func (w *wire) gone(closed <-chan error) (err error) {
 	limit := time.NewTimer(abandonAfter)
 	defer limit.Stop()
-	in, quit := w.in, w.quit
+	in, quit, closed := w.in, w.quit, w.closed
 	for in != nil || quit != nil || closed != nil {
 		select {
 		case _, more := <-in:
@@ -196,11 +194,11 @@ func (w *wire) gone(closed <-chan error) (err error) {
 			}
 		case <-quit:
 			quit = nil
-		case err = <-closed:
+		case <-closed:
 			closed = nil
 		case <-limit.C:
 			return fmt.Errorf("%w: the stream would not end and was abandoned", ErrTimeout)
 		}
 	}
-	return err
+	return w.end
 }
