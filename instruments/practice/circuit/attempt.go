@@ -8,9 +8,11 @@ import "math"
 // speed at mid-step, the rotor the mean current.
 func (s *Sim) attempt(h float64) {
 	g := &s.seg
-	if h != g.supply.H {
-		g.supply.span(h)
+	if s.way != 0 { // what the linearised winding will draw
+		g.load.span(h)
+		g.supply, _ = s.sourceArc(s.draw(g.load.avg, g.pin0))
 	}
+	g.supply.span(h)
 	if mean := g.supply.avg; math.Abs(mean-s.reference) > sameSupply*(math.Abs(mean)+0.01) {
 		s.refer(mean)
 	}
@@ -44,15 +46,21 @@ func fix(a *arc, f func(float64) float64) {
 	}
 }
 
-// wind makes the winding's arc: L di/dt = u(i) − R i − E − brush.
+// wind makes the winding's arc: L di/dt = u(i) − R i − E − brush. E is the mean
+// over the step for a current that grows in line from its start to the mean
+// last estimated.
 func (s *Sim) wind(h float64) {
 	g, l := &s.seg, &s.b.Load
+	ahead := g.load.avg
 	g.load = arc{X: s.x.Current}
 	if s.way == 0 {
 		g.load.span(h)
 		return
 	}
-	r, back := s.winding(), s.emf(s.x.Speed+h/2*s.acceleration(s.x.Current))
+	r, back := s.winding(), s.emf(s.x.Speed)
+	if h > 0 {
+		back = s.emf(s.x.Speed + h/2*s.acceleration((g.load.X+2*ahead)/3))
+	}
 	back += float64(s.way) * l.BrushDrop
 	slope := func(i float64) (f, df float64) {
 		u, du := s.loop(i, s.way, s.reference)
@@ -77,7 +85,7 @@ func (s *Sim) acceleration(current float64) float64 {
 	if !s.turning {
 		return 0
 	}
-	return (l.constant(s.x.Angle)*current - l.drag(s.x.Speed, s.x.Angle)) / l.Inertia
+	return (s.constant(s.x.Angle)*current - s.drag(s.x.Speed, s.x.Angle)) / l.Inertia
 }
 
 // spin makes the speed's arc from the mean current. A step longer than the
@@ -187,7 +195,7 @@ func (s *Sim) coast(h float64) {
 	switch {
 	case s.turning && x.Speed <= 1e-6 && g.speed.F <= 0:
 		x.Speed, s.turning = 0, false
-	case !s.turning && !s.locked && l.constant(x.Angle)*math.Max(x.Current, g.load.X) > l.StaticTorque:
+	case !s.turning && !s.locked && s.constant(x.Angle)*math.Max(x.Current, g.load.X) > l.StaticTorque:
 		s.turning = true
 	}
 }

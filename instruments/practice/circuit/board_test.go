@@ -152,3 +152,11 @@ func near(tb testing.TB, what string, got, want, fraction float64) {
 		tb.Errorf("%s = %.6g, want %.6g within %.3g %%: off by %+.3f %%", what, got, want, 100*fraction, 100*d)
 	}
 }
+
+// inside checks that got is from lo to hi.
+func inside(tb testing.TB, what string, got, lo, hi float64) {
+	tb.Helper()
+	if !(got >= lo && got <= hi) {
+		tb.Errorf("%s: %.5g, want %.5g to %.5g", what, got, lo, hi)
+	}
+}

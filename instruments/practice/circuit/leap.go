@@ -23,7 +23,7 @@ type cycle struct {
 	period       float64
 	steady       bool // the last two periods agree
 
-	since              float64 // when the board was last disturbed, s; NaN at first
+	since              float64 // when the board was last disturbed or leapt, s
 	rate, speed        float64 // the rotor's acceleration at an earlier leap, and its speed then
 	haveRate, haveTime bool
 }
@@ -56,8 +56,7 @@ func (s *Sim) leap(end float64) bool {
 	if !c.haveTime {
 		c.since, c.haveTime = s.x.Time, true
 	}
-	uneven := s.b.Load.Kind == Motor && s.turning && s.b.Load.unevenness() > 0
-	if uneven || !c.fresh || !c.repeats(s) {
+	if s.turning && s.unevenness() > 0 || !c.fresh || !c.repeats(s) {
 		return s.leapRestless(end)
 	}
 	c.fresh = false
@@ -160,5 +159,5 @@ func (s *Sim) shift(span float64) {
 		s.x.Angle = math.Mod(s.x.Angle+span*s.x.Speed, 2*math.Pi)
 	}
 	c := &s.cycle
-	c.n, c.fresh = 0, false
+	c.n, c.fresh, c.since = 0, false, s.x.Time
 }

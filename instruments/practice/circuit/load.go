@@ -113,16 +113,31 @@ func (s *Sim) winding() float64 {
 	return s.b.Load.Resistance * (1 + copper*(s.x.Winding-Nominal))
 }
 
-// constant is K at rotor angle: the mean with its commutation ripple.
-func (l *Load) constant(angle float64) float64 {
-	if l.Ripple == 0 {
+// constant is K at a rotor angle: the mean with its commutation ripple.
+func (s *Sim) constant(angle float64) float64 {
+	l := &s.b.Load
+	if l.Ripple == 0 || s.smooth {
 		return l.Constant
 	}
 	return l.Constant * (1 + l.Ripple*math.Cos(l.RipplePerTurn*angle))
 }
 
+// drag is the torque against a turning rotor, N m.
+func (s *Sim) drag(speed, angle float64) float64 {
+	l := &s.b.Load
+	t := l.CoulombTorque + speed*(l.ViscousTorque+speed*l.QuadraticTorque)
+	if l.Cogging != 0 && !s.smooth {
+		t += l.Cogging * math.Sin(l.CoggingPerTurn*angle)
+	}
+	return t
+}
+
 // unevenness is how many times a turn the rotor feels a difference.
-func (l *Load) unevenness() (perTurn float64) {
+func (s *Sim) unevenness() (perTurn float64) {
+	l := &s.b.Load
+	if s.smooth || l.Kind != Motor {
+		return 0
+	}
 	if l.Cogging != 0 {
 		perTurn = l.CoggingPerTurn
 	}
@@ -132,13 +147,15 @@ func (l *Load) unevenness() (perTurn float64) {
 	return perTurn
 }
 
-// drag is the torque against a turning rotor, N m.
-func (l *Load) drag(speed, angle float64) float64 {
-	t := l.CoulombTorque + speed*(l.ViscousTorque+speed*l.QuadraticTorque)
-	if l.Cogging != 0 {
-		t += l.Cogging * math.Sin(l.CoggingPerTurn*angle)
+// flywheel tells whether the rotor has so much energy that cogging does not
+// show in its mean speed: a tooth's work is below a hundredth of it.
+func (s *Sim) flywheel() bool {
+	l := &s.b.Load
+	if l.Kind != Motor || !s.turning {
+		return false
 	}
-	return t
+	tooth := 2 * l.Cogging / math.Max(l.CoggingPerTurn, 1)
+	return l.Inertia*s.x.Speed*s.x.Speed/2 > 100*tooth
 }
 
 // mechanical is the rotor's time constant at a speed, s: J/(K²/R + B + 2Qω).

@@ -31,12 +31,21 @@ func (s *Sim) Advance(until float64) {
 				watched = true
 			}
 		}
+		s.smoothen(!watched && s.flywheel())
 		if !watched && s.leap(end) {
 			continue
 		}
 		s.step(end)
 	}
 	s.drop()
+}
+
+// smoothen leaves cogging and commutation ripple out while nobody looks: they
+// average out, and without them the board repeats itself.
+func (s *Sim) smoothen(on bool) {
+	if s.smooth != on {
+		s.smooth, s.cycle.n = on, 0
+	}
 }
 
 // Run advances to a time with observers looking.

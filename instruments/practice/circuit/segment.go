@@ -175,7 +175,7 @@ func (g *Segment) timerOut(x *State) float64 {
 	s := g.sim
 	v, _ := g.out(x)
 	if s.b.Driver.Stage == StageNone && s.resting() {
-		v = s.b.Load.constant(x.Angle) * x.Speed
+		v = s.constant(x.Angle) * x.Speed
 		if s.b.Load.ToSupply {
 			v = x.Supply - v
 		}
@@ -206,7 +206,7 @@ func (g *Segment) loadLo(x *State) float64 {
 		v, _ = s.saturation(x.Current)
 		v = math.Min(v, x.Supply)
 	case s.resting():
-		v = x.Supply - l.constant(x.Angle)*x.Speed
+		v = x.Supply - s.constant(x.Angle)*x.Speed
 	default:
 		u, _ := s.loop(x.Current, s.way, x.Supply)
 		v = x.Supply - u - l.Burden*x.Current

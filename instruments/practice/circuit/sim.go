@@ -30,6 +30,7 @@ type Sim struct {
 	pot        float64 // ohm
 	short      float64 // across the supply, S
 	locked     bool
+	smooth     bool    // cogging and ripple left out
 	ambient    float64 // K
 
 	mode

@@ -28,14 +28,15 @@ func (s *Sim) locate(load float64) region {
 	return voltage
 }
 
-// sourceArc is the supply node over the coming step: the board taken as a
-// conductance that draws load now, the source as its region says. It also
-// gives the time at which the region ends.
+// sourceArc is the supply node over the coming step, the source as its region
+// says, the board drawing load: a constant current from a constant voltage, a
+// conductance where the voltage is left to itself. It also gives the time at
+// which the region ends.
 func (s *Sim) sourceArc(load float64) (a arc, ends float64) {
 	src := &s.b.Source
 	v := s.x.Supply
 	g := 0.0
-	if load > 0 && v > 1e-3 {
+	if s.region != voltage && load > 0 && v > 1e-3 {
 		g = load / v
 	}
 	in, gs := 0.0, 0.0

@@ -99,7 +99,7 @@ func (s *Sim) rotorLimit() float64 {
 	}
 	tau := l.mechanical(s.x.Speed, l.Resistance)
 	h := s.fineness * 0.1 * tau
-	if per := l.unevenness(); per > 0 {
+	if per := s.unevenness(); per > 0 {
 		return math.Min(h, s.fineness*0.3/(per*math.Max(s.x.Speed, 1)))
 	}
 	if math.Abs(s.acceleration(s.x.Current))*tau < 1e-8*s.x.Speed {
@@ -138,7 +138,7 @@ func (s *Sim) direct() {
 	}
 }
 
-func (s *Sim) emf(speed float64) float64 { return s.b.Load.constant(s.x.Angle) * speed }
+func (s *Sim) emf(speed float64) float64 { return s.constant(s.x.Angle) * speed }
 
 // refer finds the switch's drive and the capacitor's linearisation at supply vs.
 func (s *Sim) refer(vs float64) {
