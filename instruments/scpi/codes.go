@@ -1,7 +1,5 @@
 package scpi
 
-import "slices"
-
 // Error codes of SCPI-1999 volume 2 chapter 21 that this package or simulated
 // instruments raise.
 const (
@@ -90,17 +88,6 @@ func StandardText(code int) string {
 		}
 	}
 	return "Unknown error"
-}
-
-// Codes are the standard codes in the table, from 0 downwards.
-func Codes() []int {
-	codes := make([]int, 0, len(standardTexts))
-	for c := range standardTexts {
-		codes = append(codes, c)
-	}
-	slices.Sort(codes)
-	slices.Reverse(codes)
-	return codes
 }
 
 // maxText is the longest error text with its device information, in

@@ -331,3 +331,36 @@ func TestShortForm(t *testing.T) { // SCPI-1999 volume 1 section 6.2.1, from mem
 		}
 	}
 }
+
+func TestDeviceClearDropsTheOutput(t *testing.T) {
+	s := newSupply()
+	s.Write(t.Context(), []byte("VOLT 5;VOLT?"))
+	s.Clear()
+	if s.Write(t.Context(), []byte("VOLT?")); string(s.Read()) != "+5.00000000E+00\n" || s.errors() != "" {
+		t.Error("a device clear must drop the output, keep settings, and be no error")
+	}
+}
+
+func TestOptionalParametersAndLimits(t *testing.T) {
+	d := NewDevice(self, 4)
+	top := 10.0
+	var saw string
+	d.Set("TEST", func(c *Call) error {
+		saw = fmt.Sprintln(c.Has(0), c.Has(1), c.Bool(1), c.Has(2), c.Text(2), c.Has(3), c.Data(3), c.Channels(4), c.Text(5), c.Word(6))
+		return nil
+	}, Numeric{Limits: func() (float64, float64, float64) { return 0, top, 1 }, Optional: true}, Boolean{Optional: true}, Text{Optional: true},
+		Data{Optional: true}, Channels{Max: 3, Optional: true}, Expr{Optional: true}, Choice{Words: []string{"BUS"}, Optional: true})
+	for _, c := range []struct{ send, saw string }{
+		{"TEST", "false false false false  false [] []  \n"},
+		{"TEST MAX,ON,'a',#11b,(@3:1),(a+b),bus", "true true true true a true [98] [3 2 1] a+b BUS\n"},
+	} {
+		if d.Execute(t.Context(), []byte(c.send)); saw != c.saw || d.Queue.Len() != 0 {
+			t.Errorf("%s: saw %q, want %q; %d errors", c.send, saw, c.saw, d.Queue.Len())
+		}
+	}
+	top = 5
+	d.Execute(t.Context(), []byte("TEST 6"))
+	if f := d.Queue.Next(); f.Code != DataOutOfRange {
+		t.Errorf("above a limit that moved: %v", f)
+	}
+}

@@ -37,9 +37,6 @@ func (r *Register) SetCondition(bits uint16) {
 	r.condition = bits
 }
 
-// Condition is what holds now.
-func (r *Register) Condition() uint16 { return r.condition }
-
 // TakeEvent reads and clears the events.
 func (r *Register) TakeEvent() uint16 {
 	e := r.event
