@@ -64,7 +64,13 @@ func (b *branch) saturation(w float64) (i, g float64) {
 		e := b.is * math.Exp(-w/b.nvt)
 		return b.is - e, e / b.nvt
 	}
-	x := numeric.Omega(b.lnz + (b.is*b.rj-w)/b.nvt)
+	x := b.lnz + (b.is*b.rj-w)/b.nvt
+	if x < -12 { // the series of ω in e^x, here to 1e-15
+		e := math.Exp(x)
+		x = e * (1 - e)
+	} else {
+		x = numeric.Omega(x)
+	}
 	return b.is - b.nvt/b.rj*x, x / (1 + x) / b.rj
 }
 
@@ -160,9 +166,9 @@ func (l *law) end(v float64) end {
 	return end{x, i}
 }
 
-// runs tells whether the current at this end has the right sign. It falls
-// monotonically over a phase, so both ends speak for all between.
-func (l *law) runs(e end) bool { return l.sign*e.i > 0 }
+// runs tells whether the current at the phase's last point has the right sign. It
+// falls monotonically over a phase, so that point speaks for the whole.
+func (l *law) runs(last end) bool { return l.sign*last.i > 0 }
 
 // steep is the ratio of currents above which an interval is halved before it is summed.
 const steep = 6
@@ -189,10 +195,16 @@ func (l *law) sum(rule *numeric.Rule, a, b end, depth int) float64 {
 	return s * half
 }
 
-// coast carries the wave on past an end point for the time td and gives the
-// voltage it reaches: four-stage Runge–Kutta in x, where dx/dt = i_C/(C·dv/dx).
-func (l *law) coast(from end, td, phase float64) float64 {
-	steps := 1 + int(min(8*td/phase, 200))
+// coast carries the wave past the level v, where the phase ends, for the time td and
+// gives the voltage it reaches: four-stage Runge–Kutta in x, where dx/dt = i_C/(C·dv/dx).
+func (l *law) coast(from end, v, td float64) float64 {
+	if td == 0 {
+		return v
+	}
+	_, slope, i := l.at(from.x)
+	k := i / (l.c * slope)
+	scale := math.Abs(v * l.c / i) // s in which the level would change by itself
+	steps := 1 + int(min(8*td/scale, 200))
 	h := td / float64(steps)
 	rate := func(x float64) float64 {
 		_, slope, i := l.at(x)
@@ -200,12 +212,14 @@ func (l *law) coast(from end, td, phase float64) float64 {
 	}
 	x := from.x
 	for range steps {
-		k1 := rate(x)
-		k2 := rate(x + h/2*k1)
+		k2 := rate(x + h/2*k)
 		k3 := rate(x + h/2*k2)
 		k4 := rate(x + h*k3)
-		x += h / 6 * (k1 + 2*k2 + 2*k3 + k4)
+		x += h / 6 * (k + 2*k2 + 2*k3 + k4)
+		if steps > 1 {
+			k = rate(x)
+		}
 	}
-	v, _, _ := l.at(x)
+	v, _, _ = l.at(x)
 	return v
 }

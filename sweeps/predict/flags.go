@@ -114,11 +114,14 @@ func (o *outcome) ripple() float64 {
 
 // locked is the same setpoint with the rotor held: no back-EMF, so the largest current.
 func (m *Model) locked(nominal *parts, c conditions, running *outcome) outcome {
-	held := *nominal
+	held, o := *nominal, *running
+	m.warm(&held, c.kelvin)
 	held.load.k = 0
-	o := m.solve(&held, c)
-	if o.stop != oscillates {
-		return *running
+	high, low := 0.0, 0.0
+	if m.board.Timing.Network == sweeps.OutputFed {
+		high, low = o.into, o.outOf
 	}
+	m.drive(&o, &held, &c, high, low)
+	m.account(&o, &held, &c)
 	return o
 }

@@ -86,7 +86,9 @@ func pump() sweeps.Board {
 	return b
 }
 
-func within[T interface{ Spread() (float64, float64, bool) }](t T, tolerance float64) T {
+func within[T interface {
+	Spread() (float64, float64, bool)
+}](t T, tolerance float64) T {
 	switch x := any(&t).(type) {
 	case *si.TolResistance:
 		x.Tolerance = tolerance
@@ -133,26 +135,4 @@ func TestPumpPredictsEveryQuantity(t *testing.T) {
 		}
 	}
 	t.Log(flags)
-}
-
-func BenchmarkSetpoint(b *testing.B) {
-	m := mustNew(b, pump(), Options{})
-	for b.Loop() {
-		m.At(Setting{Supply: 9, Pot: 10e3, Temperature: Reference})
-	}
-}
-
-func BenchmarkSolve(b *testing.B) {
-	m := mustNew(b, pump(), Options{})
-	c := Setting{Supply: 9, Pot: 10e3, Temperature: Reference}.conditions()
-	for b.Loop() {
-		m.solve(&m.nominal, c)
-	}
-}
-
-func BenchmarkThousand(b *testing.B) {
-	e := mustNew(b, pump(), Options{}).Draw(1000, 1)
-	for b.Loop() {
-		e.At(Setting{Supply: 9, Pot: 10e3, Temperature: Reference})
-	}
 }

@@ -31,24 +31,19 @@ type rhythm struct {
 func (m *Model) time(p *parts, c *conditions, charge, discharge *law) (r rhythm) {
 	r.threshold, r.trigger = m.thresholds(p, c)
 	top, bottom := charge.end(r.threshold), discharge.end(r.trigger)
-	from, down := charge.end(r.trigger), discharge.end(r.threshold)
 	r.chargeCurrent, r.dischargeAtEnd = top.i, bottom.i
 	switch {
-	case !charge.runs(top) || !charge.runs(from):
+	case !charge.runs(top):
 		r.stop = stuckCharging
 		return r
-	case !discharge.runs(bottom) || !discharge.runs(down):
+	case !discharge.runs(bottom):
 		r.stop = stuckDischarging
 		return r
 	}
-	r.high, r.low = charge.time(&m.rule, from, top), discharge.time(&m.rule, down, bottom)
-	r.crest, r.trough = r.threshold, r.trigger
-	if td := p.timer.delay; td > 0 {
-		r.crest = charge.coast(top, td, r.high)
-		r.trough = discharge.coast(bottom, td, r.low)
-		r.high = td + charge.time(&m.rule, charge.end(r.trough), top)
-		r.low = td + discharge.time(&m.rule, discharge.end(r.crest), bottom)
-	}
+	td := p.timer.delay
+	r.crest, r.trough = charge.coast(top, r.threshold, td), discharge.coast(bottom, r.trigger, td)
+	r.high = td + charge.time(&m.rule, charge.end(r.trough), top)
+	r.low = td + discharge.time(&m.rule, discharge.end(r.crest), bottom)
 	swing := p.capacitor * (r.crest - r.trough)
 	r.into, r.outOf = swing/r.high, swing/r.low
 	return r
@@ -140,32 +135,23 @@ func (s *spell) mean() float64 {
 	return s.q / s.t
 }
 
-// drive solves stage and load together: the stage's curves are straightened at
-// the mean currents, which converge as Newton's method does; at most 12 rounds.
+// drive solves stage and load together, extra amperes of the timing network loading the output besides.
 func (m *Model) drive(o *outcome, p *parts, c *conditions, high, low float64) {
 	o.driver = m.control(p, &o.output, high)
 	o.isOn = m.on(p, &o.driver)
-	y := m.cycle(o, p, c)
-	extra := high
+	e := engaged{m: m, o: o, p: p, c: c, extra: high, y: m.cycle(o, p, c)}
 	if m.board.Load.ToSupply {
-		extra = low
+		e.extra = low
 	}
-	iOn := 0.5 * c.supply / (p.load.r + c.burden)
-	if o.k > 0 {
-		iOn = math.Min(iOn, 2*p.load.coulomb/p.load.k)
+	e.on = 0.5 * c.supply / (p.load.r + c.burden)
+	if p.load.k > 0 {
+		e.on = math.Min(e.on, 2*p.load.coulomb/p.load.k)
 	}
-	iFree := iOn
-	for range 12 {
-		m.connect(&o.driver, p, c, &o.output, iOn, iFree, extra)
-		y.sources = o.sources
-		o.emf, o.wave = p.load.balance(&y)
-		on, fly := math.Max(0, o.wave.spells[driven].mean()), math.Max(0, o.wave.spells[free].mean())
-		settled := math.Abs(on-iOn) <= 1e-5*on && math.Abs(fly-iFree) <= 1e-3*fly
-		if iOn, iFree = on, fly; settled {
-			break
-		}
+	e.fly = e.on
+	if !e.chase() {
+		e.settle()
 	}
-	o.stalled = o.k > 0 && o.emf == 0
+	o.stalled = p.load.k > 0 && o.emf == 0
 	o.mechanical = p.load.tau(o.sources[driven].r + c.burden)
 }
 
