@@ -11,6 +11,7 @@ import (
 	"context"
 	"errors"
 	"fmt"
+	"sync/atomic"
 	"time"
 
 	"nightbench/instruments"
@@ -32,10 +33,17 @@ type instrument struct {
 	clock   instruments.Clock
 	conn    *scpi.Conn
 	d       *dialect.Dialect
+	*health
+}
+
+// health is what a failed exchange leaves behind.
+type health struct {
+	lost   atomic.Bool // the link is gone and has to be opened anew
+	shaken atomic.Bool // settings have to be read back before they are relied on
 }
 
 func newInstrument(conn *scpi.Conn, d *dialect.Dialect, o Options) instrument {
-	i := instrument{name: o.Name, channel: max(o.Channel, 1), clock: o.Clock, d: d}
+	i := instrument{name: o.Name, channel: max(o.Channel, 1), clock: o.Clock, d: d, health: &health{}}
 	i.conn = conn.Within(i.base())
 	return i
 }
@@ -57,6 +65,9 @@ const resyncLimit = 10 * time.Second
 func (i *instrument) Identify(ctx context.Context) (instruments.Identity, error) {
 	l, err := i.line("identify")
 	if err != nil {
+		return instruments.Identity{}, err
+	}
+	if err := i.ready(ctx); err != nil {
 		return instruments.Identity{}, err
 	}
 	reply, err := i.conn.Query(ctx, l.Ask)

@@ -59,12 +59,16 @@ func (e *Error) Error() string {
 // Unwrap gives the cause.
 func (e *Error) Unwrap() error { return e.Err }
 
-// fault names the instrument beside a cause from below. The link's own hints
-// are in the cause.
+// fault names the instrument beside a cause from below, and notes what has to
+// be mended first. The link's own hints are in the cause.
 func (i *instrument) fault(command string, err error) error {
 	var e *Error
 	if errors.As(err, &e) {
 		return err
+	}
+	i.shaken.Store(true)
+	if errors.Is(err, link.ErrLost) {
+		i.lost.Store(true)
 	}
 	try := ""
 	if errors.Is(err, link.ErrTimeout) {

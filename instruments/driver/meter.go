@@ -81,6 +81,7 @@ func (m *Meter) Configure(ctx context.Context, want instruments.MeterSettings) (
 	if err := m.clean(ctx, "set-up for "+of); err != nil {
 		return m.set, err
 	}
+	m.shaken.Store(false)
 	m.set = instruments.MeterSettings{Unit: want.Unit, Range: full, Aperture: aperture}
 	m.next = m.accuracy(of, full, speed)
 	return m.set, nil
@@ -138,7 +139,7 @@ func (m *Meter) accuracy(of string, full float64, speed dialect.Speed) instrumen
 	return own
 }
 
-// verify reads the settings back after the connection was out of step: the
+// verify reads the settings back after an exchange failed: the
 // instrument may have been switched off and on, or another person at its panel.
 func (m *Meter) verify(ctx context.Context) error {
 	of := functions[m.set.Unit]
@@ -194,10 +195,11 @@ func (m *Meter) Read(ctx context.Context) (instruments.Sample, error) {
 	if m.set.Unit == "" {
 		return instruments.Sample{}, fmt.Errorf("%s: %w", m.name, ErrNotConfigured)
 	}
-	if !m.conn.InStep() {
+	if m.shaken.Load() {
 		if err := m.verify(ctx); err != nil {
 			return instruments.Sample{}, err
 		}
+		m.shaken.Store(false)
 	}
 	l, err := m.instrument.line("read")
 	if err != nil {

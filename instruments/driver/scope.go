@@ -69,6 +69,7 @@ func (s *Scope) Configure(ctx context.Context, want instruments.ScopeSettings) (
 	if err := s.clean(ctx, "set-up"); err != nil {
 		return s.set, err
 	}
+	s.shaken.Store(false)
 	s.set = got
 	return got, nil
 }
@@ -160,10 +161,11 @@ func (s *Scope) Capture(ctx context.Context) ([]instruments.Waveform, error) {
 	if len(s.set.Channels) == 0 {
 		return nil, fmt.Errorf("%s: %w", s.name, ErrNotConfigured)
 	}
-	if !s.conn.InStep() {
+	if s.shaken.Load() {
 		if err := s.verify(ctx); err != nil {
 			return nil, err
 		}
+		s.shaken.Store(false)
 	}
 	triggered, err := s.acquire(ctx)
 	if err != nil {
@@ -198,6 +200,7 @@ func (s *Scope) acquire(ctx context.Context) (triggered bool, err error) {
 	if err := s.start(ctx, s.base()+s.recordTime()); err != nil {
 		return false, err
 	}
+	s.shaken.Store(false) // a trigger that does not come is no failure
 	return false, s.ensure(ctx, "trigger_source", trigger)
 }
 

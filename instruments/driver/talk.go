@@ -44,7 +44,7 @@ func (i *instrument) ensure(ctx context.Context, name string, p dialect.Put) err
 
 // tell sends a line that has no reply.
 func (i *instrument) tell(ctx context.Context, l dialect.Line, p dialect.Put) error {
-	if err := i.selectChannel(ctx); err != nil {
+	if err := i.ready(ctx); err != nil {
 		return err
 	}
 	command := p.Fill(l.Send)
@@ -54,9 +54,16 @@ func (i *instrument) tell(ctx context.Context, l dialect.Line, p dialect.Put) er
 	return nil
 }
 
-// selectChannel comes before every line on an instrument of several channels,
-// since a person at its panel may have selected another.
-func (i *instrument) selectChannel(ctx context.Context) error {
+// ready opens a lost link anew, which proves that the same instrument answers,
+// and selects the channel where an instrument has several: a person at its
+// panel may have selected another.
+func (i *instrument) ready(ctx context.Context) error {
+	if i.lost.Load() {
+		if err := i.conn.Reopen(ctx); err != nil {
+			return i.fault("opening its link anew", err)
+		}
+		i.lost.Store(false)
+	}
 	if i.d.Channel == nil {
 		return nil
 	}
@@ -69,7 +76,7 @@ func (i *instrument) selectChannel(ctx context.Context) error {
 
 // ask sends the query of a line and hands the reply to parse.
 func (i *instrument) ask(ctx context.Context, l dialect.Line, p dialect.Put, parse func(string) error) error {
-	if err := i.selectChannel(ctx); err != nil {
+	if err := i.ready(ctx); err != nil {
 		return err
 	}
 	query := p.Fill(l.Ask)
@@ -212,6 +219,9 @@ func (i *instrument) done(ctx context.Context) error {
 func (i *instrument) errors(ctx context.Context) ([]scpi.Fault, error) {
 	if i.d.Errors.Form == "none" {
 		return nil, nil
+	}
+	if err := i.ready(ctx); err != nil {
+		return nil, err
 	}
 	faults, err := i.conn.Errors(ctx)
 	if err != nil {
