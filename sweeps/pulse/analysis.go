@@ -116,19 +116,23 @@ func (a *analysis) twoLevels(low, high, noise float64) {
 		}
 	}
 	a.driven.low, a.driven.high = low, high
-	a.tidy(&a.driven)
-	a.measureTwo(low, high)
+	if a.tidy(&a.driven) {
+		a.measureTwo(low, high)
+	}
 }
 
-// tidy locates the instants, removes notches and flags notches and runts.
-func (a *analysis) tidy(s *scanner) {
+// tidy locates the instants, removes notches and flags notches and runts. It tells
+// whether notches were removed.
+func (a *analysis) tidy(s *scanner) (changed bool) {
 	s.locate()
-	if n := s.removeNotches(); n > 0 {
+	n := s.removeNotches()
+	if n > 0 {
 		a.flag(Notch, "%d short excursions to the other state were taken for disturbances and left out", n)
 	}
 	if s.runts > 0 {
 		a.flag(Runt, "%d pulses passed the middle without reaching the other state; they were not counted", s.runts)
 	}
+	return n > 0
 }
 
 func (a *analysis) measureTwo(low, high float64) {

@@ -76,10 +76,16 @@ func (c *cycles) phases(cell float64) {
 		residual += ss - s*s/float64(len(ts))
 	}
 	variance := residual / (2*n - 2)
-	grid := max(c.limit.grid, c.middle.grid)
-	jitter := math.Sqrt(max(0, variance-grid-c.limit.noise-c.middle.noise)) / cell
-	jitter = math.Hypot(jitter, math.Sqrt(min(c.limit.noise, c.middle.noise))/cell)
-	u := 0.5 * math.Sqrt((grid+variance)/down) / cell
+	noise := math.Min(c.limit.noise, c.middle.noise)
+	// Scatter up to that of transitions faster than a sample is put down to sampling,
+	// what goes beyond to jitter.
+	most := sq(cell) / 12
+	seen := min(most, variance-noise)
+	if n >= 8 && seen > 1.3*min(c.limit.grid, c.middle.grid) {
+		c.limit.grid, c.middle.grid = max(c.limit.grid, seen), max(c.middle.grid, seen)
+	}
+	jitter := math.Sqrt(max(0, variance-most)) / cell
+	u := math.Sqrt(max(c.limit.grid, variance)/down) / cell
 	c.keep = coherence(c.fitted/cell, c.n(), u, jitter)
 }
 
@@ -144,7 +150,7 @@ func (a *analysis) timing(c cycles) {
 	noise := (b.noise + m.noise) / n
 	// An error of the 50 % level moves rising and falling instants apart.
 	level := math.Hypot(a.uLevel(a.low), a.uLevel(a.high)) / 2 * (1/b.slope + 1/m.slope)
-	bend := math.Hypot(b.shape, m.shape)
+	bend := bendBetween(b, m)
 	one := b.noise + m.noise + (b.grid+m.grid)*(1-c.keep+1/n)
 	scatter := func(e excess) uncertainty.Component {
 		return uncertainty.Scatter("scatter of periods", uncertainty.Value{U: e.mean, DOF: e.dof})

@@ -4,6 +4,7 @@ import (
 	"math"
 	"math/bits"
 	"slices"
+	"sync"
 )
 
 // histogram counts samples by converter code. Bins are single codes, so no bin
@@ -15,27 +16,39 @@ type histogram struct {
 	n     int
 }
 
+// counters count codes, all possible ones; index 0 is the lowest int16.
+type counters [1 << 16]uint32
+
+// scratch keeps counters between records; they are all zero while they wait.
+var scratch = sync.Pool{New: func() any { return new([2]counters) }}
+
 func newHistogram(codes []int16) histogram {
-	low, high := codes[0], codes[0]
-	for _, c := range codes {
-		low, high = min(low, c), max(high, c)
-	}
 	// Two interleaved counts: a run of equal codes need not wait for itself.
-	size := int(high) - int(low) + 1
-	even, odd := make([]uint32, size), make([]uint32, size)
-	base := int(low)
-	i := 0
-	for ; i+1 < len(codes); i += 2 {
-		even[int(codes[i])-base]++
-		odd[int(codes[i+1])-base]++
+	both := scratch.Get().(*[2]counters)
+	defer scratch.Put(both)
+	a, b := &both[0], &both[1]
+	pairs := codes
+	for len(pairs) >= 2 {
+		a[uint16(pairs[0])^0x8000]++
+		b[uint16(pairs[1])^0x8000]++
+		pairs = pairs[2:]
 	}
-	if i < len(codes) {
-		even[int(codes[i])-base]++
+	if len(pairs) == 1 {
+		a[uint16(pairs[0])^0x8000]++
 	}
-	for i, c := range odd {
-		even[i] += c
+	low, high := 0, len(a)-1
+	for a[low] == 0 && b[low] == 0 {
+		low++
 	}
-	h := histogram{low: base, count: even, n: len(codes)}
+	for a[high] == 0 && b[high] == 0 {
+		high--
+	}
+	h := histogram{low: low + math.MinInt16, count: make([]uint32, high-low+1), n: len(codes)}
+	for i := range h.count {
+		h.count[i] = a[low+i] + b[low+i]
+	}
+	clear(a[low : high+1])
+	clear(b[low : high+1])
 	h.step = h.spacing()
 	return h
 }

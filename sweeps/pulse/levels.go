@@ -8,7 +8,7 @@ import (
 // neighbourNoise estimates white noise (standard deviation, codes) from the
 // differences of neighbouring samples, transitions left out by their size.
 func neighbourNoise(codes []int16) float64 {
-	const most = 4096
+	const most = 2048
 	stride := max(1, (len(codes)-1)/most)
 	diffs := make([]float64, 0, most+1)
 	for i := 0; i+1 < len(codes); i += stride {

@@ -180,7 +180,7 @@ func (a *analysis) freewheelAndRest(c cycles) {
 		uncertainty.Known("sample interval", math.Sqrt(max(0, grid))/c.period),
 		uncertainty.Scatter("noise", uncertainty.Value{U: math.Sqrt(max(0, noise)) / c.period, DOF: max(1, float64(a.pairs-1))}),
 		uncertainty.Known("state levels", level/c.period),
-		uncertainty.Known("bend of transitions", math.Hypot(end.shape, c.limit.shape)/c.period),
+		uncertainty.Known("bend of transitions", bendBetween(end, c.limit)/c.period),
 		uncertainty.Scatter("scatter of periods", uncertainty.Value{U: e.mean, DOF: e.dof})))
 }
 

@@ -50,8 +50,8 @@ func before(e edge, since int) int {
 }
 
 const (
-	mostSpans   = 256  // occurrences looked at, spread over the record
-	mostSamples = 4096 // samples looked at in one occurrence, spread over it
+	mostSpans   = 64   // occurrences looked at, spread over the record
+	mostSamples = 1024 // samples looked at in one occurrence, spread over it
 )
 
 // sums gathers what one pass over a stretch of samples needs.
