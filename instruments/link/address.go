@@ -33,6 +33,11 @@ type Line struct {
 	Flow   string // none, rtscts, xonxoff
 }
 
+// String spells the line as technicians do, such as "9600 8N1 none".
+func (l Line) String() string {
+	return fmt.Sprintf("%d %d%c%s %s", l.Baud, l.Bits, strings.ToUpper(l.Parity)[0], l.Stop, l.Flow)
+}
+
 // DefaultLine is what a serial address means when it says nothing else: the
 // commonest setting of bench instruments (common practice, no source).
 var DefaultLine = Line{Baud: 9600, Bits: 8, Parity: "none", Stop: "1", Flow: "none"}

@@ -46,11 +46,6 @@ func openSerial(a Address) (io.ReadWriteCloser, error) {
 	return p, nil
 }
 
-// String spells the line as technicians do, such as "9600 8N1 none".
-func (l Line) String() string {
-	return fmt.Sprintf("%d %d%c%s %s", l.Baud, l.Bits, strings.ToUpper(l.Parity)[0], l.Stop, l.Flow)
-}
-
 func (l Line) mode() *serial.Mode {
 	parity := map[string]serial.Parity{"none": serial.NoParity, "odd": serial.OddParity,
 		"even": serial.EvenParity, "mark": serial.MarkParity, "space": serial.SpaceParity}

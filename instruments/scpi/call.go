@@ -62,9 +62,6 @@ func arg[T any](c *Call, i int) T {
 	return none
 }
 
-// NR1 spells a whole number for a reply.
-func NR1(n int) string { return fmt.Sprintf("%+d", n) }
-
 // NR3 spells a number for a reply with nine significant digits, as the HP
 // 34401A does: SD.DDDDDDDDESDD (HP 34401A User's Guide p. 159).
 func NR3(v float64) string { return fmt.Sprintf("%+.8E", v) }
