@@ -20,7 +20,7 @@ export function BenchView({ bench, client }: Views) {
         {b && <p class="sub">Each instrument stands between two nodes of the board; what it reads is the first less the second.{b.wiring.practice ? " The instruments here are simulated: this is the practice bench." : ""}</p>}
         {b && (
           <table class="wires">
-            <thead><tr><th /><th scope="col">instrument</th><th scope="col">between</th><th scope="col">who answers</th><th scope="col">now</th></tr></thead>
+            <thead><tr><th scope="col">no.</th><th scope="col">instrument</th><th scope="col">between</th><th scope="col">who answers</th><th scope="col">now</th></tr></thead>
             <tbody>{b.instruments.map((t, i) => <Row key={t.name} n={i + 1} t={t} between={between(b, t)} now={v?.instruments.find((a) => a.name === t.name)?.words ?? ""} />)}</tbody>
           </table>
         )}

@@ -56,7 +56,7 @@ function title(d: FigureData, f: Frame): string {
 function Measured({ f, s, dx }: { f: Frame; s: Series; dx: number }) {
   const joins = s.passes.flatMap((p) => p.runs).filter((r) => r.length > 1);
   return (
-    <g>
+    <g class="dots">
       {joins.map((r) => <path key={r[0]!.index} class="join" d={"M" + r.map((d) => `${f.px(d.x, dx)} ${f.py(d.y)}`).join("L")} />)}
       {s.dots.map((d) => {
         const [x, y] = [f.px(d.x, dx), f.py(d.y)];

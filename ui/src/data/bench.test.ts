@@ -1,0 +1,89 @@
+import { afterEach, beforeEach, expect, test, vi } from "vitest";
+import { watcherWords } from "./bench";
+import { Failure } from "./client";
+import { entries, night, playedBench, vitals } from "./fixture";
+import type { Off, Run, Status } from "./nouns";
+
+beforeEach(() => void vi.useFakeTimers({ now: new Date("2026-12-01T02:14:03Z") }));
+afterEach(() => void vi.useRealTimers());
+
+const off: Off = { confirmed: true, by: ["supply", "meter average"], voltage: 0.021, below: 0.5, at: "2026-12-01T02:14:04Z", words: "" };
+const run = { id: 41, state: "running" } as Run;
+
+test("entries are taken in together; the run's head is looked up once", async () => {
+  const asked = vi.fn(async () => ({ run, setpoints: [], curves: [] }));
+  const { bench, heard, cursor } = playedBench({ run: asked });
+  for (const e of entries) heard.entry(e);
+  expect(bench.night.value.run).toBe(0);
+  expect(cursor()).toBe(night.seq);
+  await vi.advanceTimersByTimeAsync(100);
+  expect(bench.night.value).toEqual(night);
+  expect(bench.run.value).toEqual(run);
+  expect(asked).toHaveBeenCalledTimes(1);
+});
+
+test("another journal at the same address: everything is read anew", () => {
+  const { bench, heard, cursor, restarts } = playedBench();
+  for (const e of entries) heard.entry(e);
+  heard.caughtUp(night.seq);
+  expect([bench.caughtUp.value, restarts()]).toEqual([true, 0]);
+  heard.caughtUp(3);
+  expect(bench.night.value.run).toBe(0);
+  expect([cursor(), restarts()]).toEqual([-1, 1]);
+});
+
+test("Outputs off asks nothing and says what came of it", async () => {
+  let answer!: (o: Off) => void;
+  const { bench } = playedBench({ off: () => new Promise((r) => (answer = r)) });
+  const pressed = bench.switchOff();
+  expect(bench.outcome.value).toMatchObject({ pending: true, words: "Off is sent (02:14:03); waiting for the supply to confirm it." });
+  answer(off);
+  await pressed;
+  expect(bench.outcome.value).toMatchObject({ pending: false, caution: false });
+  expect(bench.outcome.value!.words.replaceAll("\u00a0", " ")).toBe("Off confirmed at 02:14:04 by supply and meter average: 21 mV, below 500 mV.");
+});
+
+test("an off that is not confirmed, or does not get through, says which switch", async () => {
+  const unconfirmed = playedBench({ off: async () => ({ ...off, confirmed: false, words: "Turn the black switch." }) });
+  await unconfirmed.bench.switchOff();
+  expect(unconfirmed.bench.outcome.value).toMatchObject({ caution: true, words: "Off was sent and is not confirmed. Turn the black switch." });
+  const lost = playedBench({ off: () => Promise.reject(new Failure(0, "The daemon did not answer.")) });
+  await lost.bench.switchOff();
+  expect(lost.bench.outcome.value).toMatchObject({ caution: true, words: "Off did not get through: The daemon did not answer. Use the switch at the bench." });
+});
+
+test("a watcher sees why the button can't act, and nothing is sent", async () => {
+  const sent = vi.fn(async () => off);
+  const { bench } = playedBench({ off: sent }, "");
+  expect(bench.mayControl.value).toBe(false);
+  await bench.switchOff();
+  expect(sent).not.toHaveBeenCalled();
+  expect(bench.outcome.value!.words).toBe(watcherWords);
+});
+
+test("a token that the daemon does not take is the same as none", async () => {
+  const { bench, heard } = playedBench({ status: async () => ({ may_control: false }) as Status & { vitals: never } });
+  expect(bench.mayControl.value).toBe(true);
+  heard.live();
+  await vi.advanceTimersByTimeAsync(0);
+  expect(bench.mayControl.value).toBe(false);
+});
+
+test("an outcome goes when the output is on again since", async () => {
+  const { bench, heard } = playedBench({ off: async () => off });
+  await bench.switchOff();
+  heard.vitals({ ...vitals, energised: "yes", since: "2026-12-01T01:00:00Z" });
+  expect(bench.outcome.value).not.toBeNull();
+  heard.vitals({ ...vitals, energised: "yes", since: "2026-12-01T02:20:00Z" });
+  expect(bench.outcome.value).toBeNull();
+});
+
+test("not live is said since the last word, and ends with the next", () => {
+  const { bench, heard } = playedBench();
+  heard.live();
+  heard.vitals(vitals);
+  heard.lost(Date.parse("2026-12-01T01:58:07Z"));
+  expect(bench.standing.value.word).toBe("Not live since 01:58:07.");
+  heard.live();
+  expect(bench.standing.value.word).toBe("Energised.");
+});

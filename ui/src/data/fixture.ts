@@ -1,0 +1,31 @@
+// A recorded stream, for tests: 31 points of a night, then the newest vitals.
+import { readFileSync } from "node:fs";
+import { applyAll, type Night, noNight } from "./night";
+import { type Entry, tidyEntry, tidyVitals, type Vitals } from "./nouns";
+import type { BenchModel } from "./bench";
+import { newBench } from "./bench";
+import type { Client } from "./client";
+import type { Heard } from "./stream";
+
+type Message = { kind: string; entry?: Entry; vitals?: Vitals; seq?: number };
+
+const messages = JSON.parse(readFileSync("src/data/fixture/night.json", "utf8")) as Message[];
+
+export const entries: Entry[] = messages.flatMap((m) => (m.entry ? [tidyEntry(m.entry)] : []));
+export const vitals: Vitals = tidyVitals(messages.find((m) => m.vitals)!.vitals!);
+export const night: Night = applyAll(noNight, entries);
+
+/** A bench model whose stream is played by hand. */
+export function playedBench(client: Partial<Client> = {}, token = "t"): { bench: BenchModel; heard: Heard; cursor: () => number; restarts: () => number } {
+  let heard!: Heard;
+  let cursor!: () => number;
+  let restarts = 0;
+  const absent = () => Promise.reject(new Error("not asked for in this test"));
+  const all: Client = { status: absent, runs: absent, run: absent, points: absent, log: absent, record: absent, bench: absent, off: absent, ...client };
+  const bench = newBench(all, token, (o) => {
+    heard = o.heard;
+    cursor = o.cursor;
+    return { wake() {}, restart: () => void restarts++, close() {} };
+  });
+  return { bench, heard, cursor: () => cursor(), restarts: () => restarts };
+}
