@@ -6,6 +6,7 @@ import (
 	"slices"
 	"strings"
 	"testing"
+	"testing/synctest"
 	"time"
 
 	"nightbench/instruments"
@@ -163,6 +164,8 @@ func TestSupplyOff(t *testing.T) {
 		if err := <-asked; err == nil {
 			t.Error("a reply with a command in between was taken for good")
 		}
+		time.Sleep(time.Second)
+		synctest.Wait()
 		if f.On() {
 			t.Error("still on")
 		}
