@@ -68,10 +68,10 @@ func listed(t *userfile.Table, a *Axis) {
 	for i, v := range a.Values {
 		switch {
 		case i > 0 && v <= a.Values[i-1]:
-			t.Fail("values", fmt.Sprintf("value %d is not above the one before it; write them rising, each once, and say the way with direction", i+1))
+			t.FailItem("values", i, "is not above the one before it; write them rising, each once, and say the way with direction")
 			return
 		case v < 0 || v == 0 && a.Set == SetSupplyVoltage:
-			t.Fail("values", fmt.Sprintf("value %d has to be above zero", i+1))
+			t.FailItem("values", i, "has to be above zero")
 			return
 		}
 	}

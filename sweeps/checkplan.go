@@ -72,7 +72,7 @@ func (c *checker) supply() {
 	}
 	for i, v := range a.Values {
 		if want := c.voltageWrong(v); want != "" {
-			t.Fail(keyOf(t, i, len(a.Values)), want)
+			t.FailItem(keyOf(t, i, len(a.Values)), i, want)
 			return
 		}
 	}
@@ -152,9 +152,9 @@ func (c *checker) settle() {
 // quantities checks that everything asked for can be measured.
 func (c *checker) quantities() {
 	t := c.f.Look("measure")
-	for _, q := range c.plan.Measure.Quantities {
+	for i, q := range c.plan.Measure.Quantities {
 		if want := c.unmeasurable(q); want != "" {
-			t.Fail("quantities", want)
+			t.FailItem("quantities", i, want)
 		}
 	}
 	if c.plan.Measure.KeepWaveform > 0 && c.bench != nil && c.bench.Scope == nil {

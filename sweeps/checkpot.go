@@ -38,7 +38,7 @@ func (c *checker) potSettings(a Axis, t *userfile.Table) {
 			want = fmt.Sprintf("code %g is none of this pot, 0 to %d (pot.codes of bench %q)", v, c.bench.Pot.Codes-1, c.bench.Bench)
 		}
 		if want != "" {
-			t.Fail(keyOf(t, i, len(a.Values)), want)
+			t.FailItem(keyOf(t, i, len(a.Values)), i, want)
 			return
 		}
 	}

@@ -133,12 +133,12 @@ func measure(t *userfile.Table, m *Measure) {
 	var names []string
 	if t.Strings("quantities", &names) {
 		seen := map[string]bool{}
-		for _, n := range names {
+		for i, n := range names {
 			switch q := Quantity(n); {
 			case !q.Known():
 				unknownQuantity(t, "quantities", n)
 			case seen[n]:
-				t.Fail("quantities", fmt.Sprintf("%q is there twice", n))
+				t.FailItem("quantities", i, "is there twice")
 			default:
 				m.Quantities = append(m.Quantities, q)
 			}

@@ -83,12 +83,13 @@ func resistorSign(r *Resistor, use networkUse, key string) sign {
 // timingDiodes reads the diodes. Where a network has no diode "none" may be said.
 func timingDiodes(t *userfile.Table, v *Timing) {
 	use := networks[v.Network].diodes
+	bare := v.Network == OutputFed && !t.Has("charge_diode") && !t.Has("discharge_diode")
 	into := map[string]*Diode{"charge_diode": &v.ChargeDiode, "discharge_diode": &v.DischargeDiode}
 	for _, key := range []string{"charge_diode", "discharge_diode"} {
 		d := into[key]
 		d.None = true
 		needed := slices.Contains(use, key)
-		if !needed && !t.Has(key) {
+		if (!needed || bare) && !t.Has(key) {
 			t.Known(key)
 			continue
 		}
@@ -113,9 +114,13 @@ func timingDiodes(t *userfile.Table, v *Timing) {
 // refuseUseless reports the keys that a network has no use for.
 func refuseUseless(t *userfile.Table, n Network, use networkUse) {
 	useful := slices.Concat(use.resistors, use.optional)
+	words := fmt.Sprintf("network %q has no use for it here; it uses %s", n, strings.Join(useful, ", "))
+	if n == OutputFed && len(use.diodes) == 0 {
+		words = `network "output-fed" without charge_diode and discharge_diode has one resistor, common`
+	}
 	for _, key := range timingKeys {
 		if !slices.Contains(useful, key) && !strings.HasSuffix(key, "_diode") {
-			t.Refuse(key, fmt.Sprintf("network %q has no use for it here; it uses %s", n, strings.Join(useful, ", ")))
+			t.Refuse(key, words)
 		}
 	}
 }

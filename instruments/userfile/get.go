@@ -253,7 +253,7 @@ func (t *Table) unmarshal(key string, n *node, v encoding.TextUnmarshaler) bool 
 	if err == nil {
 		return true
 	}
-	e := t.at(key, n, err.Error())
+	e := t.at(key, n, plain(err.Error()))
 	e.Err = err
 	if fixed := withUnit(text, v); fixed != "" {
 		e.Fix = t.replaced(key, n.raw, strconv.Quote(fixed))

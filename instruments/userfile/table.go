@@ -2,6 +2,7 @@ package userfile
 
 import (
 	"fmt"
+	"slices"
 	"strconv"
 	"strings"
 
@@ -104,9 +105,9 @@ func (t *Table) Tables(key string) []*Table {
 func (t *Table) Look(key string, i ...int) *Table {
 	n, ok := t.node.under[key]
 	path := dotted(t.path, key)
-	if ok && len(i) > 0 {
+	if len(i) > 0 {
 		path = fmt.Sprintf("%s[%d]", path, i[0]+1)
-		if ok = i[0] < len(n.items); ok {
+		if ok = ok && i[0] < len(n.items); ok {
 			n = n.items[i[0]]
 		}
 	}
@@ -161,6 +162,18 @@ func (t *Table) mistake(key, want string) Error {
 // Want says what is wrong and what would do.
 func (t *Table) Fail(key, want string) { t.fail(t.mistake(key, want)) }
 
+// FailItem notes a mistake at one element of a list, counted from 0, or at the
+// whole value where it is no list.
+func (t *Table) FailItem(key string, i int, want string) { t.fail(t.itemMistake(key, i, want)) }
+
+func (t *Table) itemMistake(key string, i int, want string) Error {
+	n, ok := t.node.under[key]
+	if ok && n.kind == unstable.Array && i >= 0 && i < len(n.items) {
+		return t.at(key, n.items[i], plain(want))
+	}
+	return t.mistake(key, want)
+}
+
 // Correct notes a mistake whose correction is known: value is what should
 // stand behind the key, quotes included.
 func (t *Table) Correct(key, value, want string) {
@@ -172,13 +185,21 @@ func (t *Table) Correct(key, value, want string) {
 // Suggest notes a mistake in one word of a key's value, text or list, and
 // offers the nearest of the accepted words where there is one.
 func (t *Table) Suggest(key, word string, accepted []string, want string) {
-	e := t.mistake(key, want)
+	e := t.itemMistake(key, t.index(key, word), want)
 	if near := Nearest(word, accepted); near != "" {
 		if e.Fix = t.replaced(key, strconv.Quote(word), strconv.Quote(near)); e.Fix == "" {
 			e.Fix = t.replaced(key, word, near)
 		}
 	}
 	t.fail(e)
+}
+
+// index is where a word stands in a list; -1 where it doesn't.
+func (t *Table) index(key, word string) int {
+	if n, ok := t.node.under[key]; ok {
+		return slices.IndexFunc(n.items, func(el *node) bool { return el.text == word })
+	}
+	return -1
 }
 
 // Refuse notes a mistake if the key is there. The key is not named among the accepted ones.
