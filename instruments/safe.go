@@ -63,10 +63,14 @@ type OffReport struct {
 // allows. The first pass up to the first look at the supply is made whatever
 // the state of ctx, since a cancelled context is no reason to leave a board energised.
 func MakeSafe(ctx context.Context, clock Clock, b Bench, spec SafeSpec) OffReport {
-	s := &safing{clock: clock, bench: b, spec: spec.withDefaults(), logged: map[string]string{}}
+	s := &safing{clock: clock, bench: b, spec: spec.withDefaults(), logged: map[string]string{}, heard: map[string]float64{}}
 	must := context.WithoutCancel(ctx)
 	for {
+		before := s.report
 		s.pass(must, ctx)
+		if must == ctx && ctx.Err() != nil && !s.report.Confirmed {
+			return before // a pass cut short knows less than the one before it
+		}
 		if s.report.Confirmed || clock.Wait(ctx, s.spec.Again) != nil {
 			return s.report
 		}
@@ -81,7 +85,8 @@ type safing struct {
 	spec   SafeSpec
 	report OffReport
 	errs   []error
-	logged map[string]string // the last failure of each step, so that a night of them is one line
+	logged map[string]string  // the last failure of each step, so that a night of them is one line
+	heard  map[string]float64 // V, what each meter last said
 }
 
 // pass goes through all steps once. What cuts power runs under must, what only
@@ -178,6 +183,9 @@ func (s *safing) coast(ctx context.Context, state SupplyState, seen bool) {
 		}
 		if state, seen = s.look(ctx); !seen && ctx.Err() == nil {
 			state, seen = s.look(ctx) // one bad reply is no reason to give up waiting
+		}
+		if ctx.Err() != nil {
+			return
 		}
 	}
 }
