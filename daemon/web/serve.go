@@ -78,10 +78,16 @@ func near(a net.Addr) error {
 	return nil
 }
 
+// longestPath is what sun_path holds besides its final NUL (unix(7)).
+const longestPath = 107
+
 // ListenSocket listens on a unix socket at path that only its owner can open.
 // It is made with its mode in a folder nobody else can enter, then moved into
 // place; a socket left by a daemon that died is replaced, one that answers is an error.
 func ListenSocket(path string) (net.Listener, error) {
+	if len(path) > longestPath {
+		return nil, fmt.Errorf("socket %s: a socket's path has at most %d characters: choose a shorter state folder with --state", path, longestPath)
+	}
 	if c, err := net.Dial("unix", path); err == nil {
 		c.Close()
 		return nil, fmt.Errorf("socket %s: another daemon answers there; stop it, or choose another state folder with --state", path)
@@ -94,7 +100,7 @@ func ListenSocket(path string) (net.Listener, error) {
 	made := filepath.Join(dir, "s")
 	l, err := net.ListenUnix("unix", &net.UnixAddr{Name: made, Net: "unix"})
 	if err != nil {
-		return nil, fmt.Errorf("socket %s: %w; a socket's path has at most about 100 characters: choose a shorter state folder with --state", path, err)
+		return nil, fmt.Errorf("socket %s: %w", path, err)
 	}
 	l.SetUnlinkOnClose(false)
 	if err := errors.Join(os.Chmod(made, 0o600), os.Rename(made, path)); err != nil {
