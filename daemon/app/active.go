@@ -9,7 +9,7 @@ import (
 	"path/filepath"
 	"time"
 
-	"nightbench/instruments"
+	"nightbench/daemon/web"
 	"nightbench/sweeps"
 	"nightbench/sweeps/runner"
 	"nightbench/sweeps/schedule"
@@ -24,19 +24,11 @@ type active struct {
 	end    runner.Outcome
 }
 
-// Request is what a person asks for when starting a run.
-type Request struct {
-	Plan        string // path
-	BoardSerial string
-	Operator    string
-	Note        string
-}
-
 // Start reads plan and board, checks them against the bench, opens a run and lets it go.
-func (d *Daemon) Start(ctx context.Context, q Request) (sweeps.Run, error) {
+func (d *Daemon) Start(ctx context.Context, q web.StartRequest) (sweeps.Run, error) {
 	plan, board, err := sweeps.ReadPlan(q.Plan)
 	if err != nil {
-		return sweeps.Run{}, err
+		return sweeps.Run{}, web.Fail(web.Invalid, err)
 	}
 	job, err := d.job(plan, board, rand.Uint64())
 	if err != nil {
@@ -90,15 +82,15 @@ func by(operator string) string {
 func (d *Daemon) job(plan sweeps.Plan, board sweeps.Board, seed uint64) (runner.Options, error) {
 	w := d.bench.Bench.Wiring
 	if err := sweeps.CheckPlan(plan, board, &w); err != nil {
-		return runner.Options{}, err
+		return runner.Options{}, web.Fail(web.Invalid, err)
 	}
 	p, err := newPredictor(board, w, seed)
 	if err != nil {
-		return runner.Options{}, err
+		return runner.Options{}, web.Fail(web.Invalid, err)
 	}
 	order, err := schedule.Order(plan, w.Pot, seed)
 	if err != nil {
-		return runner.Options{}, err
+		return runner.Options{}, web.Fail(web.Invalid, err)
 	}
 	o := runner.Options{Bench: d.bench.Bench, Clock: d.clock, Journal: d.store, Mark: d.mark, Predict: p, Board: board, Plan: plan, Order: order, Safe: safe(), Log: d.o.Log}
 	if o.SafeBy, err = safeBy(plan.SafeBy, d.clock.Now()); err != nil {

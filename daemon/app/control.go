@@ -2,26 +2,20 @@ package app
 
 import (
 	"context"
-	"errors"
 	"fmt"
 	"time"
 
+	"nightbench/daemon/web"
 	"nightbench/instruments"
 	"nightbench/instruments/si"
 	"nightbench/sweeps"
 	"nightbench/sweeps/runner"
 )
 
-// ErrConflict says that what is asked does not go with what is going on.
-var ErrConflict = errors.New("not now")
-
-// conflicting is an ErrConflict in words.
-type conflicting struct{ words string }
-
-func (c *conflicting) Error() string        { return c.words }
-func (c *conflicting) Is(target error) bool { return target == ErrConflict }
-
-func conflict(format string, args ...any) error { return &conflicting{fmt.Sprintf(format, args...)} }
+// conflict says that what is asked does not go with what is going on.
+func conflict(format string, args ...any) error {
+	return web.Fail(web.Conflict, fmt.Errorf(format, args...))
+}
 
 func (d *Daemon) active() *active {
 	d.mu.Lock()
@@ -49,8 +43,12 @@ func named(by string) string {
 }
 
 // Stop ends the open run and returns when the bench is safe, or ctx ends.
-func (d *Daemon) Stop(ctx context.Context, by string) error {
+func (d *Daemon) Stop(ctx context.Context, reason, by string) error {
 	a := d.active()
+	by = named(by)
+	if reason != "" {
+		by += ": " + reason
+	}
 	if err := d.command(runner.CmdStop, by); err != nil {
 		return err
 	}
@@ -143,17 +141,31 @@ func (d *Daemon) Vitals() sweeps.Vitals {
 		v.At = d.clock.Now()
 		v.Doing = "No run is open"
 	}
-	v.Instruments = d.answering()
+	v.Instruments = d.answers.all()
 	return v
 }
 
-// answering says how each instrument answers.
-func (d *Daemon) answering() []sweeps.Answering {
-	var all []sweeps.Answering
-	for _, i := range d.bench.Answers() {
-		all = append(all, sweeps.Answering{Name: i.Name, Words: i.Words})
+// Bench is the wiring and who answers.
+func (d *Daemon) Bench() web.Bench {
+	b := web.Bench{Wiring: d.bench.Bench.Wiring}
+	for _, i := range d.bench.Info {
+		b.Instruments = append(b.Instruments, web.Instrument{Name: i.Name, Role: i.Role, Address: i.Address, Identity: i.Identity, Dialect: i.Dialect})
 	}
-	return all
+	return b
+}
+
+// foundOn keeps what the bench was found like: an output that was on already is said, and left as it is.
+func (d *Daemon) foundOn() {
+	now := d.clock.Now()
+	d.mu.Lock()
+	defer d.mu.Unlock()
+	switch {
+	case d.bench.FoundOn:
+		d.idle = sweeps.Vitals{Energised: sweeps.EnergisedYes, Since: &now}
+		d.o.Log.Warn("the supply's output was on already; no run starts before it is off: press Outputs off, or find out who feeds the board")
+	case d.idle.Energised == "":
+		d.idle = sweeps.Vitals{Energised: sweeps.EnergisedNo, Since: &now, ConfirmedBy: []string{"supply"}}
+	}
 }
 
 // idleEvery is how often the supply is looked at while no run is open, wall time.

@@ -29,6 +29,7 @@ type Options struct {
 	Bench   *bench.File // read and checked
 	Listen  string      // loopback address, port 0 for any free one
 	Version string
+	Clock   instruments.Clock // nil: one of the bench file's pace; a practice bench in this process shares its own
 	Log     *slog.Logger
 	// Ready is called once, when the page can be opened; address is its URL with the operator's token.
 	Ready func(d *Daemon, address string)
@@ -52,8 +53,10 @@ type Daemon struct {
 	store *store.Store
 	bench *bench.Opened
 	mark  *mark
-	begun time.Time
-	last  context.Context // ends when nobody will wait for off any longer
+
+	answers answers
+	begun   time.Time
+	last    context.Context // ends when nobody will wait for off any longer
 
 	mu     sync.Mutex // guards what follows; never held over I/O
 	run    *active
@@ -65,7 +68,10 @@ type Daemon struct {
 // closes everything last-first. last ends when a person no longer waits for off
 // to be confirmed.
 func Serve(ctx, last context.Context, o Options) (err error) {
-	d := &Daemon{o: o, clock: instruments.NewClock(o.Bench.Pace), last: last}
+	d := &Daemon{o: o, clock: o.Clock, last: last}
+	if d.clock == nil {
+		d.clock = instruments.NewClock(o.Bench.Pace)
+	}
 	d.begun = d.clock.Now()
 	var u undo
 	defer func() {
@@ -97,10 +103,14 @@ func (d *Daemon) open(ctx context.Context, u *undo) (err error) {
 	if err := d.closeInterrupted(ctx); err != nil {
 		return err
 	}
-	if d.bench, err = bench.Open(ctx, d.o.Bench, bench.Options{Clock: d.clock}); err != nil {
+	opening := bench.Options{Clock: d.clock, Exchange: d.answers.hear, Log: func(words string) { d.o.Log.Info(words) }}
+	if d.bench, err = bench.Open(ctx, d.o.Bench, opening); err != nil {
 		return err
 	}
 	u.add("the bench", d.bench.Close)
+	d.answers.expect(d.bench.Info)
+	d.mark.blank.Dialect = d.bench.Info[0].From
+	d.foundOn()
 	watching, stop := context.WithCancel(context.WithoutCancel(ctx))
 	idle := make(chan struct{})
 	go func() { defer close(idle); d.watchIdle(watching) }()
@@ -118,7 +128,7 @@ func (d *Daemon) openPage(ctx context.Context, u *undo) error {
 	if err != nil {
 		return fmt.Errorf("the page's address: %w; choose another with --listen, port 0 takes any free one", err)
 	}
-	srv := web.New(web.Options{Store: d.store, Control: d, Page: ui.Page(), Token: token, Version: d.o.Version, Cautions: Cautions, Clock: d.clock, Log: d.o.Log})
+	srv := web.New(web.Options{Store: d.store, Control: d, Page: ui.Page(), Token: token, Version: d.o.Version, Cautions: []string{Cautions}, Clock: d.clock, Log: d.o.Log})
 	local, err := web.ListenSocket(Socket(d.state.Dir()))
 	if err != nil {
 		return errors.Join(err, tcp.Close())
@@ -140,10 +150,13 @@ func ignoreClosed(err error) error {
 	return err
 }
 
+// StateDir is the daemon's state folder.
+func (d *Daemon) StateDir() string { return d.state.Dir() }
+
 // newMark makes the energised record's keeper: it names the supply, so that a later start can switch it off with nothing else at hand.
 func (d *Daemon) newMark() *mark {
 	f := d.o.Bench
 	return &mark{path: energisedPath(d.state.Dir()), clock: d.clock, blank: Energised{
-		Bench: f.Wiring.Bench, Address: f.Supply.Address, Dialect: f.Supply.Dialect, Channel: f.Supply.Channel, Pace: f.Pace, Below: Below,
+		Bench: f.Wiring.Bench, Address: f.Supply.Address.String(), Dialect: f.Supply.Dialect, Channel: f.Supply.Channel, Practice: f.Wiring.Practice, Below: Below,
 	}}
 }

@@ -14,14 +14,14 @@ import (
 // Energised is the tiny record that the bench is about to be energised. It names
 // all that is needed to switch off without the database or the bench file.
 type Energised struct {
-	Run     int64     `json:"run"`
-	At      time.Time `json:"at"`
-	Bench   string    `json:"bench"`
-	Address string    `json:"address"` // of the supply
-	Dialect string    `json:"dialect"`
-	Channel int       `json:"channel"`
-	Pace    float64   `json:"pace"`
-	Below   float64   `json:"below"` // V: read back below this the output counts as off
+	Run      int64     `json:"run"`
+	At       time.Time `json:"at"`
+	Bench    string    `json:"bench"`
+	Address  string    `json:"address"` // of the supply
+	Dialect  string    `json:"dialect"`
+	Channel  int       `json:"channel"`
+	Practice bool      `json:"practice"` // simulated: it may be gone with the process that simulated it
+	Below    float64   `json:"below"`    // V: read back below this the output counts as off
 }
 
 // mark keeps the record in a file of the state folder. It is a runner.Mark.
@@ -61,4 +61,14 @@ func readEnergised(dir string) (Energised, bool, error) {
 		return Energised{}, true, fmt.Errorf("%s can't be read (%v): switch the supply off by hand, see that it is off, then delete this file", energisedPath(dir), err)
 	}
 	return e, true, nil
+}
+
+// ForgetPractice drops the record of a practice bench that lived in a daemon that
+// is gone: its supply, and what it fed, went with it. A record of anything else stays.
+func ForgetPractice(dir string) error {
+	e, there, err := readEnergised(dir)
+	if err != nil || !there || !e.Practice {
+		return err
+	}
+	return removeDurably(energisedPath(dir))
 }

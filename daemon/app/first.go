@@ -30,7 +30,7 @@ func (d *Daemon) safeFirst(ctx context.Context) error {
 			d.o.Log.Info("off, confirmed", "by", off.By)
 			return d.mark.Clear()
 		}
-		d.o.Log.Error("OFF IS NOT CONFIRMED: switch the supply off at its front panel and look that it is off", "supply", e.Address, "words", off.Words, "err", err)
+		d.o.Log.Error("OFF IS NOT CONFIRMED: switch the supply off at its front panel and look that it is off. When it is, and this supply is gone for good, delete the record", "supply", e.Address, "record", energisedPath(d.state.Dir()), "words", off.Words, "err", err)
 		if err := d.clock.Wait(ctx, time.Second); err != nil {
 			return fmt.Errorf("off was never confirmed (%s): switch the supply off at its front panel; the next start tries again: %w", e.Address, err)
 		}
@@ -41,7 +41,7 @@ func (d *Daemon) safeFirst(ctx context.Context) error {
 func (d *Daemon) offBy(ctx context.Context, e Energised) (sweeps.Off, error) {
 	ctx, cancel := context.WithTimeout(ctx, 15*time.Second)
 	defer cancel()
-	s, err := bench.OpenSupply(ctx, e.Address, e.Dialect, e.Channel, bench.Options{Clock: d.clock})
+	s, err := bench.OpenSupply(ctx, e.Address, e.Dialect, e.Channel, bench.Options{Clock: d.clock, Log: func(words string) { d.o.Log.Warn(words) }})
 	if err != nil {
 		return sweeps.Off{}, err
 	}

@@ -22,7 +22,7 @@ import (
 // goleak sees that nothing is left).
 func TestShutdownWithWatchers(t *testing.T) {
 	h := newHouse(t)
-	stuck := h.watchSlowly(0)
+	stuck := h.watch(0)
 	h.appendBig()
 	a, b := h.watch(bigEntries), h.watch(bigEntries)
 	a.expectCaughtUp(bigEntries)

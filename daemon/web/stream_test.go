@@ -6,7 +6,6 @@ import (
 	"errors"
 	"fmt"
 	"math/rand/v2"
-	"net"
 	"net/http"
 	"strings"
 	"sync"
@@ -159,8 +158,8 @@ func TestReconnectingLosesNothing(t *testing.T) {
 	}
 }
 
-// bigEntries are more than a socket holds that takes nothing (4 MB at the
-// sender, by Linux's default tcp_wmem), in pieces of 100 kB.
+// bigEntries are more than a socket holds whose reader takes nothing (about
+// 4 MB, nearly all at the sender: Linux's default tcp_wmem), in pieces of 100 kB.
 const bigEntries = 80
 
 func (h *house) appendBig() {
@@ -169,15 +168,6 @@ func (h *house) appendBig() {
 	for range bigEntries {
 		h.append(sweeps.Entry{Kind: sweeps.KindLog, Words: words})
 	}
-}
-
-// watchSlowly is watch with hardly any room at the receiver.
-func (h *house) watchSlowly(after int64) *watcher {
-	w := h.watch(after)
-	if err := w.conn.NetConn().(*net.TCPConn).SetReadBuffer(4096); err != nil {
-		h.Fatal(err)
-	}
-	return w
 }
 
 // expectBig hears the big entries without decoding them, and counts the vitals between.
@@ -206,7 +196,7 @@ func (w *watcher) expectBig() (vitals int) {
 // order when it reads on, but of the vitals it slept through only the newest.
 func TestSlowWatcherHoldsUpNobody(t *testing.T) {
 	h := newHouse(t)
-	slow, fast := h.watchSlowly(0), h.watch(0)
+	slow, fast := h.watch(0), h.watch(0)
 	slow.expectCaughtUp(0)
 	fast.expectCaughtUp(0)
 	h.appendBig()

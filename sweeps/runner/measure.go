@@ -100,10 +100,15 @@ const (
 	mostPoints    = 20000
 )
 
+// aperture is long enough that the aperture term stays below its share of the swing, s.
+func aperture(e expected) float64 {
+	return math.Min(math.Max(e.duty*(1-e.duty)*e.period/apertureShare, leastAperture), mostAperture)
+}
+
 // setUpMeasuring tells meters and scope what the setpoint needs.
 func (r *Runner) setUpMeasuring(ctx context.Context, at sweeps.Setpoint) error {
 	e := r.expect(at)
-	aperture := math.Min(math.Max(e.duty*(1-e.duty)*e.period/apertureShare, leastAperture), mostAperture)
+	aperture := aperture(e)
 	for i, m := range r.o.Bench.Meters {
 		s := instruments.MeterSettings{Unit: sweeps.Quantity(r.o.Bench.Wiring.Meters[i].Reads).Unit(), Aperture: aperture}
 		switch s.Unit {
@@ -137,4 +142,19 @@ func (r *Runner) setUpScope(ctx context.Context, at sweeps.Setpoint, e expected)
 		return fmt.Errorf("scope: %w", err)
 	}
 	return nil
+}
+
+// AtLeast is the bench time a plan takes at the least, s: warm-up, settling five
+// time constants, and the repeats of the slowest meter, auto-zero counted.
+func AtLeast(plan sweeps.Plan, p Predictor, order []sweeps.Setpoint) float64 {
+	r := &Runner{o: Options{Predict: p}}
+	total := 0.0
+	if plan.WarmUp != nil {
+		total = plan.WarmUp.For.Seconds()
+	}
+	settle := 5 * math.Max(p.Tau(), supplyTau)
+	for _, s := range order {
+		total += settle + float64(plan.Measure.Repeats)*2*aperture(r.expect(s))
+	}
+	return total
 }

@@ -65,6 +65,9 @@ type branch struct {
 	e             float64 // exp(u/nvt)
 }
 
+// wiring is the resistance no joint goes below, ohm.
+const wiring = 1e-3
+
 type branchKind uint8
 
 const (
@@ -75,7 +78,7 @@ const (
 
 func (b *branch) set(d *Diode, series, t float64) {
 	if d == nil {
-		b.kind, b.r = resistive, series
+		b.kind, b.r = resistive, math.Max(series, wiring)
 		return
 	}
 	b.kind, b.r = junction, series+d.Rs

@@ -8,7 +8,7 @@ const (
 	samePeriod    = 1e-5 // share by which the last two periods may differ
 	sameState     = 2e-5 // share of full scale by which their starts may differ
 	settledShare  = 1e-4 // of the speed still to come: the rotor has settled
-	leapShare     = 0.2  // of the rotor's time constant in a leap before that
+	leapShare     = 0.1  // of the rotor's time constant in a leap before that
 	settledRise   = 0.05 // K still to come: the winding has settled
 	leapRise      = 0.3  // K in a leap before that
 	restlessSpans = 100  // rotor time constants after which a restless board is at its mean

@@ -53,7 +53,7 @@ func (n *network) build(b *Timing, p, t float64) {
 // voltage v by Newton's method, and returns the current into the capacitor
 // and its derivative against v.
 func (n *network) solve(vth, rth, v float64) (i, di float64) {
-	rth = math.Max(rth+n.rw, 1e-3)
+	rth = math.Max(rth+n.rw, wiring)
 	gs := 1 / rth
 	for range 200 {
 		a1, g1 := n.up.linear()

@@ -77,7 +77,6 @@ func New(b Board) (*Sim, error) {
 	if err := s.adopt(b); err != nil {
 		return nil, err
 	}
-	s.pot = 0
 	s.x.Winding = s.ambient
 	s.rebuild()
 	return s, nil
@@ -89,6 +88,9 @@ func (s *Sim) adopt(b Board) error {
 	}
 	if err := errors.Join(b.check(), within("ambient temperature", b.Ambient, 200, 450)); err != nil {
 		return err
+	}
+	if b.Timing.Pot == PotWiper && s.pot > b.Timing.PotTrack {
+		return fmt.Errorf("circuit: the pot stands at %g ohm; a track of %g ohm is too short", s.pot, b.Timing.PotTrack)
 	}
 	s.b, s.ambient = b, b.Ambient
 	return nil

@@ -29,14 +29,14 @@ func (s *Sim) locate(load float64) region {
 }
 
 // sourceArc is the supply node over the coming step, the source as its region
-// says, the board drawing load: a constant current from a constant voltage, a
-// conductance where the voltage is left to itself. It also gives the time at
-// which the region ends.
+// says, the board drawing load: a conductance if the load is one or the
+// voltage is left to itself, a motor's given current otherwise. It also gives
+// the time at which the region ends.
 func (s *Sim) sourceArc(load float64) (a arc, ends float64) {
 	src := &s.b.Source
 	v := s.x.Supply
 	g := 0.0
-	if s.region != voltage && load > 0 && v > 1e-3 {
+	if (s.region != voltage || s.b.Load.Kind == Resistor) && load > 0 && v > 1e-3 {
 		g = load / v
 	}
 	in, gs := 0.0, 0.0
@@ -80,8 +80,8 @@ func (s *Sim) draw(load, pin float64) float64 {
 	if s.powered {
 		i += quiescent(b.Timer.Quiescent, vs)
 	}
-	if b.Timing.Network < OutputFed && s.common > 0 {
-		i += (vs - pin) / s.common
+	if b.Timing.Network < OutputFed {
+		i += (vs - pin) / math.Max(s.common, wiring)
 	}
 	if s.powered && s.high {
 		_, out := s.output(vs, load, s.net.fed)

@@ -161,8 +161,8 @@ func (s *Sim) charge(v, vs float64) (f, df float64) {
 	case t.Network == OutputFed:
 		i, di = s.fedCharge(v, vs)
 	case s.powered && !s.high:
-		r7 := math.Max(m.DischargeResistance, 1e-3)
-		rc := math.Max(s.common, 1e-3)
+		r7 := math.Max(m.DischargeResistance, wiring)
+		rc := math.Max(s.common, wiring)
 		i, di = s.net.solve((vs*r7+m.DischargeOffset*rc)/(rc+r7), rc*r7/(rc+r7), v)
 	default:
 		i, di = s.net.solve(vs, s.common, v)

@@ -1,0 +1,55 @@
+package app
+
+import (
+	"nightbench/instruments"
+	"nightbench/sweeps"
+	"nightbench/sweeps/runner"
+	"nightbench/sweeps/schedule"
+)
+
+// Rehearsal is a plan gone through against the prediction.
+type Rehearsal struct {
+	Setpoints []Rehearsed `json:"setpoints"`
+	Seconds   float64     `json:"seconds"`    // bench time it takes at the least
+	NotJudged []string    `json:"not_judged"` // what a missing bench file left open
+}
+
+// Rehearsed is one setpoint with what is predicted there.
+type Rehearsed struct {
+	sweeps.Setpoint
+	Place       string                                `json:"place"`
+	Predictions map[sweeps.Quantity]sweeps.Prediction `json:"predictions"`
+	Flags       []sweeps.Flag                         `json:"flags"`
+}
+
+// imagined is the pot assumed where no bench file says which one it is: fine enough to land near any value.
+var imagined = instruments.PotWiring{Codes: 1025, EndToEnd: 1e6, Wiper: 0}
+
+// Rehearse checks a plan against its board and, where there is one, the bench, and
+// predicts every setpoint. It touches no instrument.
+func Rehearse(plan sweeps.Plan, board sweeps.Board, w *instruments.Wiring) (Rehearsal, error) {
+	if err := sweeps.CheckPlan(plan, board, w); err != nil {
+		return Rehearsal{}, err
+	}
+	r := Rehearsal{Setpoints: []Rehearsed{}, NotJudged: []string{}}
+	bench := instruments.Wiring{Pot: &imagined}
+	if w != nil {
+		bench = *w
+	} else {
+		r.NotJudged = append(r.NotJudged, "no bench file: its limits, which instruments give the quantities, the pot's codes and tolerance, and two nodes on earth; name it with --bench")
+	}
+	p, err := newPredictor(board, bench, 1)
+	if err != nil {
+		return Rehearsal{}, err
+	}
+	order, err := schedule.Order(plan, bench.Pot, 1)
+	if err != nil {
+		return Rehearsal{}, err
+	}
+	for _, s := range order {
+		values, flags := p.At(s.Supply, s.Pot)
+		r.Setpoints = append(r.Setpoints, Rehearsed{Setpoint: s, Place: runner.Place(s), Predictions: values, Flags: flags})
+	}
+	r.Seconds = runner.AtLeast(plan, p, order)
+	return r, nil
+}

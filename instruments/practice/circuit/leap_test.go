@@ -1,0 +1,133 @@
+package circuit
+
+import (
+	"math"
+	"testing"
+)
+
+// readings are what instruments would show of a board over 0.2 s.
+func readings(tb testing.TB, s *Sim) map[string]float64 {
+	tb.Helper()
+	t0 := s.Now()
+	t1 := t0 + 0.2
+	probes := map[string]Probe{
+		"motor current": Through(LoadCurrent), "supply current": Through(SupplyCurrent),
+		"average voltage": Between(LoadHi, LoadLo), "output": Between(TimerOut, Common), "speed": RotorSpeed(),
+	}
+	means := map[string]*Mean{}
+	var all []Observer
+	for name, p := range probes {
+		means[name] = NewMean(p, t0, t1)
+		all = append(all, means[name])
+	}
+	e := NewEdges(t0, t1)
+	mustRun(tb, s, t1, append(all, e)...)
+	out := map[string]float64{}
+	for name, m := range means {
+		out[name] = m.Value()
+	}
+	if n := len(e.Rising); n > 1 {
+		out["period"] = (e.Rising[n-1] - e.Rising[0]) / float64(n-1)
+	}
+	return out
+}
+
+// onlooker keeps a board from leaping.
+type onlooker struct{ from, to float64 }
+
+func (o onlooker) Window() (from, to float64) { return o.from, o.to }
+func (o onlooker) Observe(*Segment)           {}
+
+// TestLeapEqualsIntegration: the same wait leapt over and integrated to the
+// end gives the same readings within 0.1 %, in the middle of a run-up too.
+func TestLeapEqualsIntegration(t *testing.T) {
+	slow := pump() // a fan: its speed takes seconds
+	slow.Load.Inertia, slow.Load.QuadraticTorque = 2e-6, 0.3e-9
+	warm := pump()
+	warm.Load.ThermalResistance, warm.Load.ThermalCapacity = 40, 0.2
+	for name, c := range map[string]struct {
+		b    Board
+		pot  float64
+		wait float64
+	}{
+		"pump": {pump(), 5e3, 1}, "narrow pulses": {pump(), 30e3, 1}, "run-up of a fan": {slow, 2e3, 0.7}, "fan up to speed": {slow, 5e3, 2}, "winding warms": {warm, 2e3, 1.5},
+	} {
+		t.Run(name, func(t *testing.T) {
+			var got [2]map[string]float64
+			for k := range got {
+				s := mustNew(t, c.b, 9)
+				if err := s.SetPot(c.pot); err != nil {
+					t.Fatal(err)
+				}
+				if k == 1 {
+					if err := s.Watch(onlooker{0, c.wait}); err != nil {
+						t.Fatal(err)
+					}
+				}
+				s.Advance(c.wait)
+				got[k] = readings(t, s)
+			}
+			for what, want := range got[1] {
+				near(t, what, got[0][what], want, 0.001)
+			}
+		})
+	}
+}
+
+// TestUnevenRotor: cogging and commutation ripple show while somebody looks,
+// and leave the mean speed of a long unobserved wait as it is.
+func TestUnevenRotor(t *testing.T) {
+	b := pump()
+	even := mustNew(t, b, 9)
+	b.Load.Cogging, b.Load.CoggingPerTurn = 0.05e-3, 12
+	b.Load.Ripple, b.Load.RipplePerTurn = 0.03, 10
+	uneven := mustNew(t, b, 9)
+	var peak [2]float64
+	var speed [2]float64
+	for k, s := range []*Sim{even, uneven} {
+		if err := s.SetPot(1e3); err != nil {
+			t.Fatal(err)
+		}
+		s.Advance(3600)
+		i, w := NewMean(Through(LoadCurrent), 3600, 3600.5), NewMean(RotorSpeed(), 3600, 3600.5)
+		mustRun(t, s, 3600.5, i, w)
+		peak[k], speed[k] = i.Max-i.Min, w.Value()
+	}
+	near(t, "mean speed with cogging", speed[1], speed[0], 0.005)
+	if peak[1] < 1.02*peak[0] {
+		t.Errorf("ripple does not show: current swings %.4f A, without it %.4f A", peak[1], peak[0])
+	}
+}
+
+// TestNight: nine hours at once end, whatever the board does. Integrated
+// throughout, each case would take a quarter of an hour.
+func TestNight(t *testing.T) {
+	cogging := pump()
+	cogging.Load.Cogging, cogging.Load.CoggingPerTurn = 0.05e-3, 12
+	still := pump()
+	still.Timing = Timing{Network: Clocked, Period: 1e6, Duty: 1}
+	for name, c := range map[string]struct {
+		b Board
+		f func(*Sim)
+	}{
+		"running":  {pump(), func(*Sim) {}},
+		"cogging":  {cogging, func(*Sim) {}},
+		"dc":       {still, func(*Sim) {}},
+		"locked":   {pump(), func(s *Sim) { s.SetLocked(true) }},
+		"off":      {pump(), func(s *Sim) { s.Advance(1); s.SetOutput(false) }},
+		"starving": {pump(), func(s *Sim) { _ = s.SetLimit(0.04) }},
+		"shorted":  {pump(), func(s *Sim) { _ = s.SetShort(1); _ = s.SetLimit(0.5) }},
+	} {
+		t.Run(name, func(t *testing.T) {
+			s := mustNew(t, c.b, 9)
+			if err := s.SetPot(5e3); err != nil {
+				t.Fatal(err)
+			}
+			c.f(s)
+			s.Advance(9 * 3600)
+			if d := math.Abs(s.Now() - 9*3600); d > 1e-6 {
+				t.Errorf("at %g s", s.Now())
+			}
+		})
+	}
+}
