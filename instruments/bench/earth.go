@@ -30,16 +30,16 @@ func (r *reader) onEarth(t *userfile.Table, key string, n instruments.Node) {
 }
 
 // oneEarth refuses two different nodes on earth: they would be joined through
-// the protective conductor, across whatever lies between them.
+// the protective conductor, across whatever lies between them. Every node too many is told once.
 func (r *reader) oneEarth() {
-	for i, e := range r.earth {
-		for _, first := range r.earth[:i] {
-			if e.node == first.node {
-				continue
-			}
-			e.table.Fail(e.key, fmt.Sprintf("%s on %s and %s on %s (line %d) are both earthed: together they short out whatever lies between; move one, or use an instrument that is not earthed",
-				e.table.Path(), e.node, first.table.Path(), first.node, first.table.Line(first.key)))
-			break
+	told := map[instruments.Node]bool{}
+	for _, e := range r.earth {
+		first := r.earth[0]
+		if e.node == first.node || told[e.node] {
+			continue
 		}
+		told[e.node] = true
+		e.table.Fail(e.key, fmt.Sprintf("%s on %s and %s on %s (line %d) are both earthed: together they short out whatever lies between; move one, or use an instrument that is not earthed",
+			e.table.Path(), e.node, first.table.Path(), first.node, first.table.Line(first.key)))
 	}
 }

@@ -2,6 +2,7 @@ package bench
 
 import (
 	"fmt"
+	"strconv"
 	"strings"
 
 	"nightbench/instruments"
@@ -49,6 +50,7 @@ func (r *reader) reads(t *userfile.Table, m *instruments.MeterWiring) (si.Unit, 
 	for _, other := range r.out.Wiring.Meters {
 		if other.Reads == m.Reads {
 			t.Fail("reads", fmt.Sprintf("meter %q reads %s already; two meters on one quantity are not supported yet by this version", other.Name, m.Reads))
+			return "", false
 		}
 	}
 	return unit, true
@@ -86,7 +88,7 @@ func (r *reader) meterInput(t *userfile.Table, m *instruments.MeterWiring, unit 
 // accuracy reads { reading = "0.012 %", range = "0.004 %", offset = "1 mV", resolution = "10 uV" }.
 func accuracy(t *userfile.Table, v *instruments.Accuracy, unit si.Unit) {
 	o := t.Optional()
-	share(t, "reading", &v.Reading)
+	good := share(t, "reading", &v.Reading)
 	share(o, "range", &v.Range)
 	var volts si.Voltage
 	var amperes si.Current
@@ -96,24 +98,29 @@ func accuracy(t *userfile.Table, v *instruments.Accuracy, unit si.Unit) {
 	}
 	atLeastZero(o, "offset", q, &v.Offset)
 	atLeastZero(o, "resolution", q, &v.Resolution)
-	if t.Has("reading") && v.Reading == 0 && v.Range == 0 && v.Offset == 0 {
+	if good && v.Reading == 0 && v.Range == 0 && v.Offset == 0 {
 		t.Fail("", "no instrument is exact; give the maker's figures, like { reading = \"0.012 %\", range = \"0.004 %\" }")
 	}
 }
 
 // share reads a ratio below one that says its unit: an accuracy of "0.012" could be either.
-func share(t *userfile.Table, key string, v *float64) {
+func share(t *userfile.Table, key string, v *float64) bool {
+	const want = `has no unit; write it in % or ppm, like "0.012 %"`
 	var text string
-	if t.Has(key) && !t.IsNumber(key) && t.String(key, &text) && !strings.HasSuffix(text, "%") && !strings.HasSuffix(text, "ppm") {
-		t.Correct(key, `"`+strings.TrimSpace(text)+` %"`, "has no unit; write it in % or ppm")
-		return
-	}
-	if t.IsNumber(key) {
-		t.Fail(key, `has no unit; write it in % or ppm, like "0.012 %"`)
-		t.Known(key)
-		return
-	}
-	if atLeastZero(t, key, &si.Ratio{}, v) && *v >= 1 {
+	switch {
+	case t.IsNumber(key):
+		t.Refuse(key, want)
+		return false
+	case !t.String(key, &text):
+		return false
+	case !strings.HasSuffix(text, "%") && !strings.HasSuffix(text, "ppm"):
+		t.Correct(key, strconv.Quote(strings.TrimSpace(text)+" %"), want)
+		return false
+	case !atLeastZero(t, key, &si.Ratio{}, v):
+		return false
+	case *v >= 1:
 		t.Fail(key, "has to be below 100 %")
+		return false
 	}
+	return true
 }
