@@ -96,7 +96,7 @@ test("a cut line is said, and mended by itself with nothing lost or doubled", so
   const drawn = await cut.locator("details.behind").evaluate(async (d) => {
     d.open = true;
     await new Promise((r) => setTimeout(r, 200));
-    return [...d.querySelectorAll("tbody tr")].map((r) => [...r.cells].slice(0, 3).map((c) => c.textContent).join(" "));
+    return [...d.querySelectorAll("tbody tr")].map((r) => [...r.cells].slice(0, 3).map((c) => c.textContent).join(" ")).filter((s) => !s.includes("recheck"));
   });
   assert.equal(new Set(drawn).size, drawn.length, "a point stands twice");
   await cut.close();

@@ -8,7 +8,7 @@ beforeEach(() => void vi.useFakeTimers({ now: new Date("2026-12-01T02:14:03Z") }
 afterEach(() => void vi.useRealTimers());
 
 const off: Off = { confirmed: true, by: ["supply", "meter average"], voltage: 0.021, below: 0.5, at: "2026-12-01T02:14:04Z", words: "" };
-const run = { id: 41, state: "running" } as Run;
+const run = { id: 41, state: "running", started_at: "2026-11-30T22:02:00Z" } as Run;
 
 test("entries are taken in together; the run's head is looked up once", async () => {
   const asked = vi.fn(async () => ({ run, setpoints: [], curves: [] }));
@@ -22,14 +22,23 @@ test("entries are taken in together; the run's head is looked up once", async ()
   expect(asked).toHaveBeenCalledTimes(1);
 });
 
-test("another journal at the same address: everything is read anew", () => {
-  const { bench, heard, cursor, restarts } = playedBench();
-  for (const e of entries) heard.entry(e);
-  heard.caughtUp(night.seq);
-  expect([bench.caughtUp.value, restarts()]).toEqual([true, 0]);
-  heard.caughtUp(3);
-  expect(bench.night.value.run).toBe(0);
-  expect([cursor(), restarts()]).toEqual([-1, 1]);
+test.each([
+  ["the same journal goes on", run.started_at, night.seq, 0],
+  ["another journal at the same address is read from its start", "2026-12-01T00:00:00Z", -1, 1],
+])("after the daemon was started anew, %s", async (_, startedAt, cursor, restarts) => {
+  let born = "2026-11-30T22:00:00Z";
+  let head = run;
+  const played = playedBench({ status: async () => ({ started_at: born }) as Status, run: async () => ({ run: head, setpoints: [], curves: [] }) });
+  played.heard.live();
+  for (const e of entries) played.heard.entry(e);
+  played.heard.caughtUp();
+  await vi.advanceTimersByTimeAsync(0);
+  expect([played.cursor(), played.restarts()]).toEqual([night.seq, 0]);
+  born = "2026-12-01T03:00:00Z";
+  head = { ...run, started_at: startedAt };
+  played.heard.live();
+  await vi.advanceTimersByTimeAsync(0);
+  expect([played.cursor(), played.restarts()]).toEqual([cursor, restarts]);
 });
 
 test("Outputs off asks nothing and says what came of it", async () => {
@@ -62,7 +71,7 @@ test("a watcher sees why the button can't act, and nothing is sent", async () =>
 });
 
 test("a token that the daemon does not take is the same as none", async () => {
-  const { bench, heard } = playedBench({ status: async () => ({ may_control: false }) as Status & { vitals: never } });
+  const { bench, heard } = playedBench({ status: async () => ({ may_control: false, vitals }) as Status });
   expect(bench.mayControl.value).toBe(true);
   heard.live();
   await vi.advanceTimersByTimeAsync(0);

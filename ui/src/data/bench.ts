@@ -68,11 +68,28 @@ export function newBench(client: Client, token: string, open: OpenStream = openS
   async function lookUpStatus() {
     try {
       const s = await client.status();
+      const before = status.value;
       status.value = s;
-      vitals.value ??= s.vitals ?? null;
+      vitals.value ??= s.vitals;
+      if (before && before.started_at !== s.started_at) await sameJournal();
     } catch {
       return; // asked again with the next connection
     }
+  }
+
+  // A daemon that was started anew may keep another journal, whose numbers mean nothing here.
+  async function sameJournal() {
+    const known = run.value;
+    if (!known) return;
+    try {
+      if ((await client.run(known.id)).run.started_at === known.started_at) return;
+    } catch (e) {
+      if (!(e instanceof Failure) || e.status !== 404) return;
+    }
+    waiting = [];
+    night.value = noNight;
+    run.value = null;
+    stream.restart();
   }
 
   const stream: Stream = open({
@@ -87,13 +104,9 @@ export function newBench(client: Client, token: string, open: OpenStream = openS
         vitals.value = v;
         if (v.energised === "yes" && outcome.value && !outcome.value.pending && v.since && Date.parse(v.since) > outcome.value.at) outcome.value = null;
       },
-      caughtUp(seq) {
+      caughtUp() {
         takeIn();
         caughtUp.value = true;
-        if (seq >= night.value.seq) return;
-        night.value = noNight; // another journal than the one this page followed
-        run.value = null;
-        stream.restart();
       },
       lost(last) {
         link.value = { state: "lost", since: new Date(last).toISOString() };
@@ -139,5 +152,5 @@ export const watcherWords =
 
 /** Whether the newest run is still going on. */
 export function underWay(v: Vitals | null): boolean {
-  return !!v && v.run !== 0 && !ended(v.state || undefined);
+  return !!v && v.run !== 0 && !ended(v.state);
 }

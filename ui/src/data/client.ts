@@ -1,5 +1,6 @@
 // Requests to the daemon. Failures come back as sentences: what, where, why, what to try.
-import { type Bench, type Curve, type Entry, type Off, type Point, type Run, type Setpoint, type Status, tidyEntry, tidyPoint, tidyRun, type Vitals, type Wave } from "./nouns";
+import type { paths } from "./api";
+import { type Bench, type Entry, lean, type Off, type Point, type Run, type RunDetail, type Status, type Waveforms } from "./nouns";
 
 /** A failed request. Status 0: it did not get through at all. */
 export class Failure extends Error {
@@ -8,16 +9,13 @@ export class Failure extends Error {
   }
 }
 
-export interface Whole { run: Run; setpoints: Setpoint[]; curves: Curve[] }
-export interface NewestRecord { point: number; at: string; records: Wave[] }
-
 export interface Client {
-  status(): Promise<Status & { vitals: Vitals }>;
+  status(): Promise<Status>;
   runs(): Promise<Run[]>;
-  run(id: number): Promise<Whole>;
+  run(id: number): Promise<RunDetail>;
   points(id: number): Promise<Point[]>;
   log(id: number): Promise<Entry[]>;
-  record(id: number, point?: number): Promise<NewestRecord | null>;
+  record(id: number): Promise<Waveforms | null>;
   bench(): Promise<Bench>;
   off(): Promise<Off>;
 }
@@ -27,45 +25,32 @@ const patience = 15_000;
 const offPatience = 60_000;
 
 export function newClient(token: string, fetcher: typeof fetch = (...a) => fetch(...a)): Client {
-  const get = async <T>(path: string) => ask<T>(fetcher, token, path, { method: "GET" }, patience);
+  const get = <P extends Readable>(_: P, path: string) => ask<Answer<P>>(fetcher, token, path, { method: "GET" }, patience);
   return {
-    async status() {
-      const s = await get<Status & { vitals: Vitals }>("/api/status");
-      return { ...s, cautions: s.cautions ?? [] };
-    },
-    async runs() {
-      return ((await get<{ runs: Run[] | null }>("/api/runs")).runs ?? []).map(tidyRun);
-    },
-    async run(id) {
-      const w = await get<Whole>(`/api/runs/${id}`);
-      return { run: tidyRun(w.run), setpoints: w.setpoints ?? [], curves: w.curves ?? [] };
-    },
-    async points(id) {
-      return ((await get<{ points: Point[] | null }>(`/api/runs/${id}/points`)).points ?? []).map(tidyPoint);
-    },
-    async log(id) {
-      return ((await get<{ entries: Entry[] | null }>(`/api/runs/${id}/log`)).entries ?? []).map(tidyEntry);
-    },
-    async record(id, point) {
+    status: () => get("/api/status", "/api/status"),
+    bench: () => get("/api/bench", "/api/bench"),
+    runs: async () => (await get("/api/runs", "/api/runs")).runs,
+    run: (id) => get("/api/runs/{id}", `/api/runs/${id}`),
+    points: async (id) => (await get("/api/runs/{id}/points", `/api/runs/${id}/points`)).points.map(lean),
+    log: async (id) => (await get("/api/runs/{id}/log", `/api/runs/${id}/log`)).entries,
+    async record(id) {
       try {
-        const r = await get<NewestRecord>(`/api/runs/${id}/record${point === undefined ? "" : `?point=${point}`}`);
-        return { ...r, records: r.records ?? [] };
+        return await get("/api/runs/{id}/record", `/api/runs/${id}/record`);
       } catch (e) {
-        if (e instanceof Failure && e.status === 404) return null;
+        if (e instanceof Failure && e.status === 404) return null; // none was kept
         throw e;
       }
     },
-    async bench() {
-      const b = await get<Bench>("/api/bench");
-      return { wiring: { ...b.wiring, meters: b.wiring.meters ?? [] }, instruments: b.instruments ?? [] };
-    },
-    async off() {
+    off() {
       const body = JSON.stringify({ by: "the page" });
-      const off = await ask<Off>(fetcher, token, "/api/off", { method: "POST", body, headers: { "Content-Type": "application/json" } }, offPatience);
-      return { ...off, by: off.by ?? [] };
+      return ask<Off>(fetcher, token, "/api/off", { method: "POST", body, headers: { "Content-Type": "application/json" } }, offPatience);
     },
   };
 }
+
+/** The paths that can be read, and what the description says they answer. */
+type Readable = { [P in keyof paths]: paths[P]["get"] extends { responses: { 200: { content: { "application/json": unknown } } } } ? P : never }[keyof paths];
+type Answer<P extends Readable> = paths[P]["get"] extends { responses: { 200: { content: { "application/json": infer T } } } } ? T : never;
 
 async function ask<T>(fetcher: typeof fetch, token: string, path: string, init: RequestInit, wait: number): Promise<T> {
   const headers = new Headers(init.headers);

@@ -26,7 +26,7 @@ function answering(status: number, body: unknown) {
 }
 
 test("the token goes in a header, and only there", async () => {
-  const fetcher = answering(200, { runs: null });
+  const fetcher = answering(200, { runs: [] });
   expect(await newClient("secret", fetcher).runs()).toEqual([]);
   const [path, init] = fetcher.mock.calls[0]!;
   expect(String(path)).not.toContain("secret");
@@ -48,7 +48,7 @@ test("no record kept is not a failure", async () => {
   await expect(newClient("", answering(500, {})).record(41)).rejects.toThrow();
 });
 
-test.each([["/", { view: "now" }], ["/now/", { view: "now" }], ["/runs", { view: "runs" }], ["/runs/41", { view: "run", id: 41 }], ["/runs/041", { view: "unknown", path: "/runs/041" }], ["/runs/x", { view: "unknown", path: "/runs/x" }], ["/bench", { view: "bench" }], ["/morning", { view: "unknown", path: "/morning" }]])("%s leads to its view", (path, want) => {
+test.each([["/", { view: "now" }], ["/runs/", { view: "runs" }], ["/runs", { view: "runs" }], ["/runs/41", { view: "run", id: 41 }], ["/runs/041", { view: "unknown", path: "/runs/041" }], ["/runs/x", { view: "unknown", path: "/runs/x" }], ["/bench", { view: "bench" }], ["/morning", { view: "unknown", path: "/morning" }]])("%s leads to its view", (path, want) => {
   expect(routeOf(path)).toEqual(want);
 });
 

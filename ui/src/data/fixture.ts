@@ -1,18 +1,16 @@
 // A recorded stream, for tests: 31 points of a night, then the newest vitals.
 import { readFileSync } from "node:fs";
 import { applyAll, type Night, noNight } from "./night";
-import { type Entry, tidyEntry, tidyVitals, type Vitals } from "./nouns";
+import type { Entry, StreamMessage, Vitals } from "./nouns";
 import type { BenchModel } from "./bench";
 import { newBench } from "./bench";
 import type { Client } from "./client";
 import type { Heard } from "./stream";
 
-type Message = { kind: string; entry?: Entry; vitals?: Vitals; seq?: number };
+const messages = JSON.parse(readFileSync("src/data/fixture/night.json", "utf8")) as StreamMessage[];
 
-const messages = JSON.parse(readFileSync("src/data/fixture/night.json", "utf8")) as Message[];
-
-export const entries: Entry[] = messages.flatMap((m) => (m.entry ? [tidyEntry(m.entry)] : []));
-export const vitals: Vitals = tidyVitals(messages.find((m) => m.vitals)!.vitals!);
+export const entries: Entry[] = messages.flatMap((m) => (m.kind === "entry" ? [m.entry] : []));
+export const vitals: Vitals = messages.find((m) => m.kind === "vitals")!.vitals;
 export const night: Night = applyAll(noNight, entries);
 
 /** A bench model whose stream is played by hand. */

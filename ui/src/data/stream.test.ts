@@ -32,7 +32,7 @@ function setUp() {
     heard: {
       entry: (e: Entry) => ((cursor = e.seq), log.push(`entry ${e.seq}`)),
       vitals: (v: Vitals) => log.push(`vitals ${v.measured}`),
-      caughtUp: (seq) => log.push(`caught up ${seq}`),
+      caughtUp: () => log.push("caught up"),
       lost: (last) => log.push(`lost ${last}`),
       live: () => log.push("live"),
     },

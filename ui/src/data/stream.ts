@@ -1,6 +1,6 @@
 // The one owner of the socket: it connects, says hello, parses, and comes back
 // by itself after the last entry seen. Everything else sees entries and vitals.
-import { type Entry, tidyEntry, tidyVitals, type Vitals } from "./nouns";
+import { type Entry, lean, type StreamMessage, type Vitals } from "./nouns";
 
 /** Waits before trying again; the last one holds for ever. */
 export const retries = [500, 1_000, 2_000, 5_000];
@@ -12,7 +12,8 @@ export const stale = 15_000;
 export interface Heard {
   entry(e: Entry): void;
   vitals(v: Vitals): void;
-  caughtUp(seq: number): void;
+  /** The replay has reached the tail. */
+  caughtUp(): void;
   /** The line was lost; `last` is when something was last heard, in ms of `now`. */
   lost(last: number): void;
   live(): void;
@@ -35,11 +36,6 @@ export interface Options {
   open?: (path: string) => Socket;
   now?: () => number;
 }
-
-type Message =
-  | { kind: "entry"; entry: Entry }
-  | { kind: "vitals"; vitals: Vitals }
-  | { kind: "caught_up"; seq: number };
 
 export interface Stream {
   /** Tries at once: the network is back, or the page is looked at again. */
@@ -81,9 +77,9 @@ export function openStream(o: Options): Stream {
       live = true;
       o.heard.live();
     }
-    if (m.kind === "entry") o.heard.entry(tidyEntry(m.entry));
-    else if (m.kind === "vitals") o.heard.vitals(tidyVitals(m.vitals));
-    else o.heard.caughtUp(m.seq);
+    if (m.kind === "entry") o.heard.entry(m.entry.point ? { ...m.entry, point: lean(m.entry.point) } : m.entry);
+    else if (m.kind === "vitals") o.heard.vitals(m.vitals);
+    else o.heard.caughtUp();
   }
 
   // Nothing was said for a while: ask anew without alarming anyone; the server greets a new line at once.
@@ -127,14 +123,14 @@ export function openStream(o: Options): Stream {
 }
 
 /** A message of the stream, or null for what this page does not know. */
-export function parse(data: unknown): Message | null {
+export function parse(data: unknown): StreamMessage | null {
   if (typeof data !== "string") return null;
   try {
-    const m = JSON.parse(data) as Partial<Message> | null;
+    const m = JSON.parse(data) as Partial<StreamMessage> | null;
     switch (m?.kind) {
-      case "entry": return m.entry ? (m as Message) : null;
-      case "vitals": return m.vitals ? (m as Message) : null;
-      case "caught_up": return typeof m.seq === "number" ? (m as Message) : null;
+      case "entry": return m.entry ? (m as StreamMessage) : null;
+      case "vitals": return m.vitals ? (m as StreamMessage) : null;
+      case "caught_up": return typeof m.seq === "number" ? (m as StreamMessage) : null;
       default: return null;
     }
   } catch {

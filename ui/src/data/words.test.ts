@@ -20,7 +20,7 @@ test("energised, with its evidence", () => {
 });
 
 test("off is a claim with a witness", () => {
-  const v: Vitals = { ...base, energised: "no", since: "2026-12-01T06:31:08Z", confirmed_by: ["supply", "meter", "cutoff"], run: 0, state: "" };
+  const v: Vitals = { ...base, energised: "no", since: "2026-12-01T06:31:08Z", confirmed_by: ["supply", "meter", "cutoff"], run: 0, state: undefined };
   expect(standing(v, live).evidence).toBe("Output off since 06:31:08, confirmed by supply, meter and cutoff.");
   expect(progress(v, live, "Bench 2")).toBe("Nothing is running on Bench 2.");
 });

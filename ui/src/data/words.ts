@@ -59,8 +59,8 @@ function energised(v: Vitals): Standing {
 /** "supply reads 9.003(4) V, 52(1) mA at 01:58:07": empty when nothing was read. */
 export function readsNow(v: Vitals): string {
   const parts: string[] = [];
-  if (v.supply_voltage !== null && v.supply_voltage !== undefined) parts.push(formatU(v.supply_voltage, v.supply_voltage_u, "V"));
-  if (v.supply_current !== null && v.supply_current !== undefined) parts.push(formatU(v.supply_current, v.supply_current_u, "A"));
+  if (v.supply_voltage !== undefined) parts.push(formatU(v.supply_voltage, v.supply_voltage_u, "V"));
+  if (v.supply_current !== undefined) parts.push(formatU(v.supply_current, v.supply_current_u, "A"));
   return parts.length ? parts.join(", ") : "";
 }
 
@@ -89,7 +89,7 @@ export function progress(v: Vitals | null, link: Link, bench: string): string {
     return `${safe}“Outputs off” may not get through: to be sure, use the switch at the bench.`;
   }
   if (!v) return "";
-  if (!v.run || ended(v.state || undefined)) return `Nothing is running on ${bench || "this bench"}.`;
+  if (!v.run || ended(v.state)) return `Nothing is running on ${bench || "this bench"}.`;
   const flags = v.flagged ? `, ${v.flagged} flagged` : "";
   return [`Run ${v.run}: ${v.measured} of ${count(v.planned, "point")}${flags}.`, timeLeft(v)].filter(Boolean).join(" ");
 }
@@ -98,7 +98,7 @@ export function progress(v: Vitals | null, link: Link, bench: string): string {
 export function timeLeft(v: Vitals): string {
   const safe = v.safe_by ? `safe by ${clock(v.safe_by)} whatever remains.` : "";
   if (v.state === "making_safe") return "Making safe.";
-  if (v.time_left === null || v.time_left === undefined) return sentenceCase(safe);
+  if (v.time_left === undefined) return sentenceCase(safe);
   const near = new Date(new Date(v.at).getTime() + v.time_left * 1000);
   const done = v.time_left < 90 ? "" : `, done near ${clock(near)}`;
   return `About ${duration(v.time_left)} left${done}${safe ? "; " + safe : "."}`;
@@ -106,8 +106,8 @@ export function timeLeft(v: Vitals): string {
 
 /** Short, for the bar at the foot of a phone. */
 export function briefProgress(v: Vitals | null): string {
-  if (!v || !v.run || ended(v.state || undefined)) return "";
-  const left = v.time_left === null || v.time_left === undefined ? "" : `, ${duration(v.time_left)} left`;
+  if (!v || !v.run || ended(v.state)) return "";
+  const left = v.time_left === undefined ? "" : `, ${duration(v.time_left)} left`;
   return `${v.measured} of ${v.planned}${left}`;
 }
 
@@ -154,6 +154,6 @@ export function tallied(r: { measured: number; planned: number; flagged: number 
 /** What pressing "Outputs off" brought. */
 export function offOutcome(off: Off): string {
   if (!off.confirmed) return `Off was sent and is not confirmed. ${off.words}`.trim();
-  const volts = off.voltage === null || off.voltage === undefined ? "" : `: ${format(off.voltage, "V", 3)}, below ${format(off.below, "V", 3)}`;
+  const volts = off.voltage === null ? "" : `: ${format(off.voltage, "V", 3)}, below ${format(off.below, "V", 3)}`;
   return `Off confirmed at ${clockSeconds(off.at)}${off.by.length ? ` by ${listed(off.by)}` : ""}${volts}.`;
 }

@@ -1,7 +1,8 @@
 // Now: what the bench does this minute. Finished passes in ink, coming ones pencil only.
 import { useEffect, useState } from "preact/hooks";
 import { underWay } from "../data/bench";
-import type { Client, NewestRecord } from "../data/client";
+import type { Client } from "../data/client";
+import type { Waveforms } from "../data/nouns";
 import { bound, clockSeconds, date, format, nbsp } from "../data/format";
 import { quantitiesOf } from "../data/night";
 import { headline, tallied } from "../data/words";
@@ -89,8 +90,8 @@ function Drawn({ bench, client, place }: Views) {
 /** The newest record is asked for after points came, not more often than this (ms). */
 const recordEvery = 5_000;
 
-function useRecord(client: Client, run: number, points: number): NewestRecord | null {
-  const [got, setGot] = useState<{ run: number; at: number; asked: number; record: NewestRecord | null }>({ run: 0, at: -1, asked: 0, record: null });
+function useRecord(client: Client, run: number, points: number): Waveforms | null {
+  const [got, setGot] = useState<{ run: number; at: number; asked: number; record: Waveforms | null }>({ run: 0, at: -1, asked: 0, record: null });
   useEffect(() => {
     if (!run || !points || (got.run === run && got.at === points)) return;
     const wait = got.run === run ? Math.max(0, got.asked + recordEvery - Date.now()) : 0;

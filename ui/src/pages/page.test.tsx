@@ -10,9 +10,9 @@ import { Page } from "./page";
 import { newRouter, type Router } from "./router";
 
 const run: Run = { id: 41, state: "running", reason: "", plan: "Overnight", board: "Dosing pump driver", revision: "B", board_serial: "0017", bench: "Bench 2", operator: "AK", note: "New capacitor in.", started_at: "2026-11-30T22:02:00Z", planned: 72, measured: 31, flagged: 3, pace: 20, seed: 7, version: "1", quantities: [], files: [{ role: "plan", name: "overnight.toml", sha256: "ab", text: "" }], instruments: ["Practice supply, serial 1"] };
-const status: Status & { vitals: Vitals } = { version: "1", practice: true, pace: 20, bench: "Bench 2", may_control: true, cautions: [], started_at: run.started_at, vitals };
+const status: Status = { version: "1", practice: true, pace: 20, bench: "Bench 2", may_control: true, cautions: [], started_at: run.started_at, vitals };
 const wired: Bench = {
-  wiring: { bench: "Bench 2", practice: true, supply: { between: ["supply", "common"], max_voltage: 13, max_current: 1, over_voltage: 14, fuse: 1 }, meters: [{ name: "average", reads: "average_voltage", between: ["load_hi", "load_lo"], burden: 0, calibrated: "2026-03-01", due: "2027-03-01" }], scope: null, pot: null },
+  wiring: { bench: "Bench 2", practice: true, supply: { between: ["supply", "common"], max_voltage: 13, max_current: 1, over_voltage: 14, fuse: 1 }, meters: [{ name: "average", reads: "average_voltage", between: ["load_hi", "load_lo"], burden: 0, input_resistance: 0, calibrated: "2026-03-01", due: "2027-03-01" }], },
   instruments: [{ name: "supply", role: "supply", address: "tcp://127.0.0.1:1", dialect: "standard", identity: { maker: "Practice", model: "S", serial: "1", firmware: "1", raw: "" } }, { name: "average", role: "meter", address: "tcp://127.0.0.1:2", dialect: "standard", identity: { maker: "", model: "", serial: "", firmware: "", raw: "a meter" } }],
 };
 const client: Partial<Client> = {
@@ -51,7 +51,7 @@ async function opened(path: string, more: { vitals?: Partial<Vitals>; token?: st
     played.heard.live();
     played.heard.vitals({ ...vitals, ...more.vitals });
     for (const e of entries) played.heard.entry(e);
-    played.heard.caughtUp(night.seq);
+    played.heard.caughtUp();
   });
   await settle();
   return played;
@@ -141,7 +141,7 @@ test("a run that starts while the page is open is the one shown", async () => {
   const at = "2026-12-01T08:00:00Z";
   await act(async () => {
     heard.entry({ seq: night.seq + 1, run: 42, at, elapsed: 0, kind: "started", words: "Started by BL.", state: "preparing", setpoints: night.setpoints.slice(0, 12), curves: [...night.curves] });
-    heard.vitals({ ...vitals, run: 42, state: "preparing", doing: "Preparing run 42", measured: 0, flagged: 0, planned: 12, setpoint: null });
+    heard.vitals({ ...vitals, run: 42, state: "preparing", doing: "Preparing run 42", measured: 0, flagged: 0, planned: 12, setpoint: undefined });
   });
   await settle();
   expect(text("h1")).toBe("Preparing run 42");

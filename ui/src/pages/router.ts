@@ -10,7 +10,7 @@ export type Route =
 
 export function routeOf(path: string): Route {
   const clean = path.replace(/\/+$/, "") || "/";
-  if (clean === "/" || clean === "/now") return { view: "now" };
+  if (clean === "/") return { view: "now" };
   if (clean === "/runs") return { view: "runs" };
   if (clean === "/bench") return { view: "bench" };
   const run = /^\/runs\/([1-9]\d*)$/.exec(clean);

@@ -84,9 +84,9 @@ function Identity({ run }: { run: Run }) {
           <tr><th scope="row">board</th><td>{[run.board, run.revision && `revision ${run.revision}`, run.board_serial && `serial ${run.board_serial}`].filter(Boolean).join(", ")}</td></tr>
           <tr><th scope="row">plan</th><td>{run.plan}</td></tr>
           <tr><th scope="row">bench</th><td>{run.bench}</td></tr>
-          {run.instruments.map((t) => <tr key={t}><th scope="row">instrument</th><td>{t}</td></tr>)}
+          {(run.instruments ?? []).map((t) => <tr key={t}><th scope="row">instrument</th><td>{t}</td></tr>)}
           <tr><th scope="row">program</th><td>{run.version}; seed {run.seed}; pace {run.pace}</td></tr>
-          {run.files.map((f) => <tr key={f.role}><th scope="row">{named(f.role)} file</th><td>{f.name}<br /><span class="hash">SHA-256 {f.sha256}</span></td></tr>)}
+          {(run.files ?? []).map((f) => <tr key={f.role}><th scope="row">{named(f.role)} file</th><td>{f.name}<br /><span class="hash">SHA-256 {f.sha256}</span></td></tr>)}
         </tbody>
       </table>
     </>

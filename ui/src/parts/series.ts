@@ -1,5 +1,5 @@
 // What a figure draws, taken out of points and curves: one series a supply. Pure.
-import { type Curve, type Direction, flagged, type Point, type Quantity, reading, type Setpoint } from "../data/nouns";
+import { type Curve, flagged, type Point, type Quantity, reading, type Setpoint } from "../data/nouns";
 
 /** The 95 % interval is this many standard deviations to either side. */
 const k95 = 1.96;
@@ -11,13 +11,13 @@ export interface Dot {
   u: number;
   hollow: boolean;
   flags: string[]; // names
-  direction: Direction;
+  direction: string;
   recheck: boolean;
   residual: number | null; // measured less predicted, in joint standard uncertainties
 }
 
 /** One way of travel along the axis, once. */
-export interface Pass { pass: number; direction: Direction; runs: Dot[][] } // runs: unbroken stretches
+export interface Pass { pass: number; direction: string; runs: Dot[][] } // runs: unbroken stretches
 
 export interface Series {
   supply: number; // V

@@ -1,13 +1,12 @@
 // The newest record: one line in ink, its levels named at the right, its times on brackets.
-import type { NewestRecord } from "../data/client";
 import { clockSeconds, count, format, formatU, nbsp, tidy } from "../data/format";
-import { type Point, reading, type Wave } from "../data/nouns";
+import { type Point, reading, type Wave, type Waveforms } from "../data/nouns";
 import { spread } from "./place";
 import { linear, ticks } from "./scale";
 import { type Level, levels, outline, twoPeriods, volts } from "./wave";
 import { useWidth } from "./width";
 
-export interface TraceProps { record: NewestRecord; point: Point | null }
+export interface TraceProps { record: Waveforms; point: Point | null }
 
 const top = 24;
 
@@ -82,7 +81,7 @@ function bracket(a: number, b: number, y: number): string {
   return `M${a} ${y - 4}v4H${b}v-4`;
 }
 
-function says(w: Wave, record: NewestRecord, periods: number, named: Named[]): string {
+function says(w: Wave, record: Waveforms, periods: number, named: Named[]): string {
   const of = periods > 2 ? `Two of ${periods} whole periods` : periods > 0 ? count(periods, "whole period") : `${format(w.codes.length * w.interval, "s", 3)} of it`;
   const about = named.some((l) => !l.measured) ? " “About” is read off this record, without an uncertainty." : "";
   return `${of}, taken at ${clockSeconds(record.at)}: ${w.node}.${about}`;
