@@ -3,6 +3,7 @@ package pulse
 import (
 	"fmt"
 	"math"
+	"slices"
 )
 
 // analysis carries one record through the steps of the standard: state levels,
@@ -28,11 +29,11 @@ func (a *analysis) run() {
 	a.result.Flags = append(a.result.Flags, a.flags...)
 	a.checkClipping()
 	g := guessLevels(a.codes, a.h)
-	if a.flat(g) {
-		a.constant()
-		return
-	}
 	if g.three == nil || !a.threeLevels(g) {
+		if a.flat(g) {
+			a.constant()
+			return
+		}
 		a.twoLevels(g.low, g.high, g.noise)
 	}
 	a.result.Middle = a.volts((a.driven.low + a.driven.high) / 2)
@@ -203,10 +204,44 @@ func (a *analysis) threeLevels(g guess) bool {
 	a.pool(&a.low, &a.high, &a.rest)
 	a.driven.low, a.driven.high = mid, high
 	a.freewheel.low, a.freewheel.high = low, mid
+	for _, s := range []*scanner{&a.driven, &a.freewheel} {
+		probe := scanner{codes: a.codes, low: s.low, high: s.high, edges: slices.Clone(s.edges)}
+		probe.locate()
+		if 10*probe.removeNotches() > len(s.edges) {
+			return false // ringing through the level, not a rest at it
+		}
+	}
 	a.tidy(&a.driven)
 	a.tidy(&a.freewheel)
+	a.relocateFalls()
 	a.three = true
 	return true
+}
+
+// relocateFalls gives the falls from driven to freewheel the 50 % level of that
+// transition: they pass the rest level without stopping.
+func (a *analysis) relocateFalls() {
+	whole := scanner{codes: a.codes, low: a.freewheel.low, high: a.driven.high}
+	reached := a.freewheel.low + a.freewheel.bound
+	for k := range a.driven.edges {
+		e := &a.driven.edges[k]
+		if e.rising {
+			continue
+		}
+		end := len(a.codes) - 1
+		if k+1 < len(a.driven.edges) {
+			end = a.driven.edges[k+1].from
+		}
+		to := e.to
+		for to < end && float64(a.codes[to]) > reached {
+			to++
+		}
+		full := *e
+		full.to = to
+		whole.locateOne(&full)
+		full.to = e.to
+		*e = full
+	}
 }
 
 // plateau tells whether a state holds its level, as the troughs of ringing do not.

@@ -80,13 +80,16 @@ func (c *cycles) phases(cell float64) {
 	// Scatter up to that of transitions faster than a sample is put down to sampling,
 	// what goes beyond to jitter.
 	most := sq(cell) / 12
+	jitter := math.Sqrt(max(0, variance-most)) / cell
+	// Instants that keep their place scatter less than they err: hence the factor, set by simulation.
+	u := 1.4 * math.Sqrt(max(c.limit.grid, variance)/down) / cell
+	c.keep = coherence(c.fitted/cell, c.n(), u, jitter)
+	c.limit.sampled(cell, 1/c.keep)
+	c.middle.sampled(cell, 1/c.keep)
 	seen := min(most, variance-noise)
 	if n >= 8 && seen > 1.3*min(c.limit.grid, c.middle.grid) {
 		c.limit.grid, c.middle.grid = max(c.limit.grid, seen), max(c.middle.grid, seen)
 	}
-	jitter := math.Sqrt(max(0, variance-most)) / cell
-	u := math.Sqrt(max(c.limit.grid, variance)/down) / cell
-	c.keep = coherence(c.fitted/cell, c.n(), u, jitter)
 }
 
 // durations returns, period by period, how long the high state, the low state and the whole lasted.

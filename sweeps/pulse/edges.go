@@ -14,6 +14,7 @@ type edge struct {
 	mid      float64 // 50 % reference level instant
 	tenth    float64 // 10 % reference level instant
 	ninth    float64 // 90 % reference level instant
+	early    int     // samples between the level left and 50 %, 10 % apart from it
 	inside   int     // samples strictly between the 10 % and 90 % levels
 }
 
@@ -84,16 +85,25 @@ func clamp16(x float64) int16 { return int16(min(math.MaxInt16, max(math.MinInt1
 
 // locate fills in the reference level instants of every edge.
 func (s *scanner) locate() {
-	a := s.high - s.low
 	for k := range s.edges {
-		e := &s.edges[k]
-		y10, y90 := s.low+0.1*a, s.low+0.9*a
-		e.mid = s.instant(*e, s.low+0.5*a)
-		e.tenth, e.ninth = s.instant(*e, y10), s.instant(*e, y90)
-		for _, c := range s.codes[e.from+1 : e.to] {
-			if y := float64(c); y > y10 && y < y90 {
-				e.inside++
-			}
+		s.locateOne(&s.edges[k])
+	}
+}
+
+func (s *scanner) locateOne(e *edge) {
+	a := s.high - s.low
+	y10, y50, y90 := s.low+0.1*a, s.low+0.5*a, s.low+0.9*a
+	e.mid = s.instant(*e, y50)
+	e.tenth, e.ninth = s.instant(*e, y10), s.instant(*e, y90)
+	e.inside, e.early = 0, 0
+	for _, c := range s.codes[e.from+1 : e.to] {
+		y := float64(c)
+		if y <= y10 || y >= y90 {
+			continue
+		}
+		e.inside++
+		if y < y50 == e.rising {
+			e.early++
 		}
 	}
 }

@@ -8,6 +8,7 @@ type instantModel struct {
 	n        int     // transitions
 	duration float64 // s, mean 10 % to 90 % duration by counting samples between
 	slope    float64 // codes per s at the 50 % level
+	caught   float64 // samples, the duration as the first half of each transition tells: ringing fools the second
 	noise    float64 // variance from amplitude noise
 	grid     float64 // variance from the sample interval
 	shape    float64 // s, standard uncertainty from the unknown bend between samples, the same for all
@@ -16,30 +17,47 @@ type instantModel struct {
 // modelInstants describes the rising or the falling transitions of a scanner.
 func (a *analysis) modelInstants(s *scanner, rising bool) instantModel {
 	var m instantModel
-	var inside, span, skew float64
+	var inside, early, span, skew float64
 	for _, e := range s.edges {
 		if e.rising != rising {
 			continue
 		}
 		m.n++
 		inside += float64(e.inside)
+		early += float64(e.early)
 		span += math.Abs(e.ninth - e.tenth)
 		skew += math.Abs(e.ninth-e.mid) - math.Abs(e.mid-e.tenth)
 	}
 	if m.n == 0 {
 		return instantModel{n: 0, slope: math.Inf(1)}
 	}
-	tau := inside / float64(m.n+1) // samples; the one more keeps a few lucky catches from promising much
+	tau := inside / float64(m.n) // samples
+	m.caught = tau
+	if 2*early < 0.7*inside {
+		m.caught = 2 * early / float64(m.n)
+	}
 	if tau >= 3 {
 		tau = span / float64(m.n)
+		m.caught = tau
 	}
 	m.duration = tau * a.cell
 	m.slope = a.slope(s, rising, tau) / a.cell
 	sigma := math.Sqrt(max(a.noise, a.q*a.q/12*b2f(tau > 1)))
 	m.noise = crossingVariance(sigma/(m.slope*a.cell)) * a.cell * a.cell
-	m.grid = sq(gridError(tau) * a.cell)
+	m.sampled(a.cell, float64(m.n))
 	m.shape = shapeError(tau, math.Abs(skew)/max(span, 1e-9)) * a.cell
 	return m
+}
+
+// sampled sets the variance from the sample interval, given how many transitions at
+// independent places between samples the count of samples caught stands for: a few
+// lucky catches must not promise much.
+func (m *instantModel) sampled(cell, independent float64) {
+	tau := m.caught
+	if tau < 3 {
+		tau *= independent / (independent + 1)
+	}
+	m.grid = sq(gridError(tau) * cell)
 }
 
 func sq(x float64) float64 { return x * x }
@@ -82,7 +100,7 @@ func crossingVariance(x float64) float64 {
 // shrinking as samples begin to fall inside. Fitted to simulated straight,
 // exponential and Gaussian transitions at random phase.
 func gridError(tau float64) float64 {
-	return 1 / math.Sqrt(12) / (1 + math.Pow(tau/0.55, 1.5))
+	return 1 / math.Sqrt(12) / (1 + math.Pow(tau/0.5, 1.6))
 }
 
 // shapeError is the standard uncertainty, in samples, of the mean instant from the bend

@@ -257,5 +257,9 @@ func (s *specimen) truth() map[string]float64 {
 		"duty": s.share(), "period": s.period, "frequency": 1 / s.period, "t_high": s.share() * s.period, "t_low": (1 - s.share()) * s.period,
 		"average_voltage": s.mean(), "high_level": s.high, "low_level": s.low, "amplitude": s.high - s.low,
 	}
+	if s.conduct > s.duty {
+		t["low_level"], t["back_emf"], t["amplitude"] = s.freewheel, s.low, s.high-s.freewheel
+		t["conduction"] = s.conduct // it ends, as it begins, with a rise
+	}
 	return t
 }
