@@ -14,12 +14,6 @@ import (
 	"nightbench/instruments/driver"
 	"nightbench/instruments/link"
 	"nightbench/instruments/scpi"
-	"nightbench/instruments/si"
-)
-
-var (
-	volts   = si.Volts
-	amperes = si.Amperes
 )
 
 // resolve finds the dialects that are named. The user's own file is looked for
@@ -81,6 +75,10 @@ func (i *instrument) reach(ctx context.Context, o Options) error {
 	asked := i.d
 	if err := i.recognise(id); err != nil {
 		return err
+	}
+	if i.port.Channel > 1 && !i.d.HasChannels() {
+		return fmt.Errorf("%w: channel = %d, and dialect %s knows one channel only; leave the key out, or use a dialect that has channels",
+			dialect.ErrCannot, i.port.Channel, i.d.Head.Name)
 	}
 	if asked == nil && particular(i.d) { // found by identity, and its link has settings of its own
 		if err := i.link.Close(); err != nil {

@@ -13,6 +13,7 @@ import (
 	"nightbench/instruments/driver"
 	"nightbench/instruments/link"
 	"nightbench/instruments/scpi"
+	"nightbench/instruments/si"
 )
 
 // Options say how a bench is opened.
@@ -219,5 +220,5 @@ func (i *instrument) options(o Options) driver.Options {
 }
 
 func (i *instrument) supplyOptions(w instruments.SupplyWiring, o Options) driver.SupplyOptions {
-	return driver.SupplyOptions{Options: i.options(o), MaxVoltage: volts(w.MaxVoltage), MaxCurrent: amperes(w.MaxCurrent)}
+	return driver.SupplyOptions{Options: i.options(o), MaxVoltage: si.Volts(w.MaxVoltage), MaxCurrent: si.Amperes(w.MaxCurrent)}
 }

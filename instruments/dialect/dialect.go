@@ -30,6 +30,7 @@ import (
 	"errors"
 	"fmt"
 	"slices"
+	"strings"
 	"time"
 
 	"nightbench/instruments"
@@ -182,6 +183,19 @@ func (d *Dialect) Line(name string) (Line, error) {
 	}
 	return Line{}, fmt.Errorf("%w: dialect %s can't %s (it has no line %q); use another dialect, or add the line to a file of your own",
 		ErrCannot, d.Head.Name, does, name)
+}
+
+// HasChannels tells whether the dialect can say which channel is meant.
+func (d *Dialect) HasChannels() bool {
+	if d.Channel != nil {
+		return true
+	}
+	for _, l := range d.Commands {
+		if strings.Contains(l.Send+l.Ask, "{channel}") {
+			return true
+		}
+	}
+	return false
 }
 
 // Unchecked names the lines that are written from memory, sorted.
