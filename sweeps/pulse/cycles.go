@@ -56,7 +56,7 @@ func (c *cycles) phases(cell float64) {
 	if n < 2 {
 		return
 	}
-	var up, down, residual float64
+	var up, down float64
 	for _, ts := range [][]float64{c.bounds, c.inner} {
 		m := float64(len(ts)-1) / 2
 		for k, t := range ts {
@@ -66,17 +66,8 @@ func (c *cycles) phases(cell float64) {
 		}
 	}
 	c.fitted = up / down
-	for _, ts := range [][]float64{c.bounds, c.inner} {
-		var s, ss float64
-		for k, t := range ts {
-			d := t - ts[0] - float64(k)*c.fitted
-			s += d
-			ss += d * d
-		}
-		residual += ss - s*s/float64(len(ts))
-	}
-	variance := residual / (2*n - 2)
-	noise := math.Min(c.limit.noise, c.middle.noise)
+	ends, insides := c.residual(c.bounds), c.residual(c.inner)
+	variance := (ends + insides) / (2*n - 2)
 	// Scatter up to that of transitions faster than a sample is put down to sampling,
 	// what goes beyond to jitter.
 	most := sq(cell) / 12
@@ -86,10 +77,21 @@ func (c *cycles) phases(cell float64) {
 	c.keep = coherence(c.fitted/cell, c.n(), u, jitter)
 	c.limit.sampled(cell, 1/c.keep)
 	c.middle.sampled(cell, 1/c.keep)
-	seen := min(most, variance-noise)
-	if n >= 8 && seen > 1.3*min(c.limit.grid, c.middle.grid) {
-		c.limit.grid, c.middle.grid = max(c.limit.grid, seen), max(c.middle.grid, seen)
+	if n >= 8 && c.keep < 0.5 {
+		c.limit.seen(ends/(n-0.5), most, c.keep)
+		c.middle.seen(insides/(n-1.5), most, c.keep)
 	}
+}
+
+// residual is the sum of squares of what the fitted period leaves of the instants.
+func (c *cycles) residual(instants []float64) float64 {
+	var s, ss float64
+	for k, t := range instants {
+		d := t - instants[0] - float64(k)*c.fitted
+		s += d
+		ss += d * d
+	}
+	return ss - s*s/float64(len(instants))
 }
 
 // durations returns, period by period, how long the high state, the low state and the whole lasted.

@@ -60,6 +60,12 @@ func (m *instantModel) sampled(cell, independent float64) {
 	m.grid = sq(gridError(tau) * cell)
 }
 
+// seen replaces the variance from the sample interval by what the instants show once
+// enough of them, at different places between samples, have been seen.
+func (m *instantModel) seen(variance, most, keep float64) {
+	m.grid = min(most, max(0.15*m.grid, 1.15*(variance-m.noise)/(1-keep)))
+}
+
 func sq(x float64) float64 { return x * x }
 
 func b2f(b bool) float64 {
@@ -118,7 +124,7 @@ func shapeError(tau, skew float64) float64 {
 // bendBetween is what shapeError leaves of a duration between two kinds of transition:
 // those of like length bend alike and shift it little.
 func bendBetween(a, b instantModel) float64 {
-	return max(math.Abs(a.shape-b.shape), 0.35*max(a.shape, b.shape))
+	return max(math.Abs(a.shape-b.shape), 0.2*max(a.shape, b.shape))
 }
 
 // coherence tells how far the sampling errors of n instants that follow each other at
