@@ -42,7 +42,7 @@ var badFiles = map[string]bad{
 	"missing-unit.plan.toml":               {8, "axis[1].values", `"12"`, `"12" has no unit; write a voltage like "9 V"`, `values = ["9 V", "12 V"]`},
 	"motor-without-flyback.board.toml":     {18, "driver.flyback", "", `is missing; a motor needs a flyback diode like "1N5819", or say that it has "none"`, ""},
 	"negative-resistance.board.toml":       {11, "timing.charge", `"-10k 1%"`, "a resistance has to be above zero", ""},
-	"no-meter-for-it.plan.toml":            {24, "measure.quantities", `"control_voltage"`, "control_voltage is not measured by any instrument", ""},
+	"no-meter-for-it.plan.toml":            {24, "measure.quantities", `"control_voltage"`, `control_voltage: no meter of bench "Pump bench" reads it; add a [[meter]] with reads = "control_voltage" to the bench file`, ""},
 	"no-supply.bench.toml":                 {1, "supply", "", "the table [supply] is missing", ""},
 	"not-utf8.bench.toml":                  {2, "", "", "byte 0xe4 is not UTF-8; save the file as UTF-8", ""},
 	"one-repeat.plan.toml":                 {25, "measure.repeats", "1", "give a whole number from 2 to 1000", ""},

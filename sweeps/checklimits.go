@@ -56,6 +56,9 @@ func (c *checker) voltageTrip(trip Trip, t *userfile.Table) {
 	}
 }
 
+// byMeter are the quantities that a meter reads, if the bench file puts one to it.
+var byMeter = []Quantity{AverageVoltage, MotorCurrent, OutputCurrent, ControlVoltage}
+
 // byScope are the quantities taken from a record of any switching node.
 var byScope = []Quantity{Duty, Frequency, Period, THigh, TLow, HighLevel, LowLevel, Ripple, RiseTime, FallTime, Jitter, Overshoot}
 
@@ -70,13 +73,15 @@ func (c *checker) unmeasurable(q Quantity) string {
 	switch {
 	case slices.Contains(ofMotor, q) && c.board.Load.Kind == ResistorLoad:
 		return fmt.Sprintf("%s: the load of %s is a resistor", q, c.boardName())
+	case q == PotResistance && !c.board.Timing.UsesPot():
+		return fmt.Sprintf("pot_resistance: %s has no pot", c.boardName())
 	case q == PotResistance:
-		return "pot_resistance is set, not measured; it is kept with every point anyway"
+		return ""
 	case q == SupplyVoltage, q == SupplyCurrent, q == SupplyPower:
 		return ""
 	case slices.Contains(byScope, q), slices.Contains(byScopeAtLoad, q):
 		return c.unseen(q)
-	case q == AverageVoltage, q == MotorCurrent:
+	case slices.Contains(byMeter, q):
 		return c.unread(q)
 	}
 	return fmt.Sprintf("%s is not measured by any instrument that this version supports", q)
@@ -98,14 +103,17 @@ func (c *checker) unseen(q Quantity) string {
 	if c.bench.Scope == nil {
 		return fmt.Sprintf("%s needs a scope and bench %q has none; add [scope] to the bench file", q, c.bench.Bench)
 	}
-	nodes := []instruments.Node{instruments.NodeLoadHigh, instruments.NodeLoadLow}
-	if !slices.Contains(byScopeAtLoad, q) || c.board.Driver.Stage == StageNone {
+	nodes := []instruments.Node{instruments.NodeLoadLow}
+	if !slices.Contains(byScopeAtLoad, q) {
 		nodes = append(nodes, instruments.NodeTimerOut)
+	} else if c.board.Driver.Stage == StageNone && !c.board.Load.ToSupply {
+		nodes = []instruments.Node{instruments.NodeTimerOut} // the load stands between timer_out and common
 	}
 	for _, ch := range c.bench.Scope.Channels {
-		if slices.Contains(nodes, ch.Between[0]) || slices.Contains(nodes, ch.Between[1]) {
+		if slices.Contains(nodes, ch.Between[0]) && ch.Between[1] == instruments.NodeCommon {
 			return ""
 		}
 	}
-	return fmt.Sprintf("%s: no scope channel of bench %q looks at %s; add one, like [scope.channel.1]", q, c.bench.Bench, nodes[len(nodes)-1])
+	node := nodes[len(nodes)-1]
+	return fmt.Sprintf("%s: no scope channel of bench %q is wired for it; add one with between = [%q, %q]", q, c.bench.Bench, node, instruments.NodeCommon)
 }

@@ -140,8 +140,8 @@ func (c *checker) size() {
 func (c *checker) settle() {
 	t := c.f.Look("settle")
 	q := c.plan.Settle.Watch
-	if q != AverageVoltage && q != MotorCurrent {
-		t.Fail("watch", "settling is watched by a meter; use average_voltage or motor_current")
+	if !slices.Contains(byMeter, q) {
+		t.Fail("watch", "settling is watched by a meter; use average_voltage, motor_current, output_current or control_voltage")
 		return
 	}
 	if want := c.unmeasurable(q); want != "" {

@@ -64,7 +64,7 @@ func TestCheckPlanTells(t *testing.T) {
 		{"WarmUpNowhere", "overnight.toml", func(n *night) { n.plan.WarmUp.At.Pot = si.Ohms(0) }, `overnight.toml:22: warm_up.at.pot_resistance = "10k": is missing; the board is timed by the pot`},
 		{"WarmUpOutOfReach", "overnight.toml", func(n *night) { n.plan.WarmUp.At.Pot = si.Ohms(2e5) }, `overnight.toml:22: warm_up.at.pot_resistance = "10k": 200 kΩ is out of the pot's reach`},
 		{"WarmUpTooLong", "overnight.toml", func(n *night) { n.plan.AtMost = time.Minute }, `overnight.toml:23: warm_up.for = "20 min": is not shorter than the plan's at_most, 1m0s`},
-		{"WatchDuty", "sample.toml", func(n *night) { n.plan.Settle.Watch = sweeps.Duty }, `sample.toml:21: settle.watch = "average_voltage": settling is watched by a meter; use average_voltage or motor_current`},
+		{"WatchDuty", "sample.toml", func(n *night) { n.plan.Settle.Watch = sweeps.Duty }, `sample.toml:21: settle.watch = "average_voltage": settling is watched by a meter; use average_voltage, motor_current`},
 		{"NoScope", "sample.toml", func(n *night) {
 			n.bench.Scope = nil
 			n.plan.Measure.Quantities = []sweeps.Quantity{sweeps.SupplyCurrent, sweeps.Frequency}
@@ -75,11 +75,12 @@ func TestCheckPlanTells(t *testing.T) {
 			n.plan.Measure.Quantities = []sweeps.Quantity{sweeps.SupplyCurrent}
 			n.plan.Accept = nil
 		}, `sample.toml:28: measure.keep_waveform = "every 6": bench "Pump bench" has no scope`},
-		{"ScopeLooksElsewhere", "sample.toml", func(n *night) { n.bench.Scope.Channels = n.bench.Scope.Channels[:1] }, `sample.toml:26: measure.quantities = "output_drop": output_drop: no scope channel of bench "Pump bench" looks at load_lo`},
+		{"ScopeLooksElsewhere", "sample.toml", func(n *night) { n.bench.Scope.Channels = n.bench.Scope.Channels[:1] }, `sample.toml:26: measure.quantities = "output_drop": output_drop: no scope channel of bench "Pump bench" is wired for it; add one with between = ["load_lo", "common"]`},
 		{"AcceptUnmeasured", "sample.toml", func(n *night) { n.plan.Measure.Quantities = n.plan.Measure.Quantities[1:] }, `sample.toml:36: accept.duty = "1 points": this plan does not measure it`},
-		{"PotIsNotMeasured", "sample.toml", func(n *night) {
-			n.plan.Measure.Quantities, n.plan.Accept = []sweeps.Quantity{sweeps.PotResistance}, nil
-		}, `sample.toml:26: measure.quantities = "duty": pot_resistance is set, not measured`},
+		{"ChannelOnTheOutputSeesNoLoad", "sample.toml", func(n *night) { n.bench.Scope.Channels[1].Between[1] = instruments.NodeEarth }, `sample.toml:26: measure.quantities = "output_drop": output_drop: no scope channel`},
+		{"NothingMeasuresSpeed", "sample.toml", func(n *night) {
+			n.plan.Measure.Quantities, n.plan.Accept = []sweeps.Quantity{sweeps.PotResistance, sweeps.Speed}, nil
+		}, `sample.toml:26: measure.quantities = "frequency": speed is not measured by any instrument`},
 		{"TripAboveFuse", "sample.toml", func(n *night) { n.bench.Supply.Fuse = 0.85 }, `sample.toml:32: trip.supply_current.limit = "0.9 A": 900 mA is above the fuse of bench "Pump bench", 850 mA`},
 		{"TripAboveProtection", "sample.toml", func(n *night) { n.plan.Trips[2].Limit = 14.5 }, `sample.toml:33: trip.supply_voltage.limit = "13 V": 14.5 V is above the over-voltage protection of bench "Pump bench", 14 V`},
 		{"TooManySetpoints", "sample.toml", func(n *night) { n.plan.Axes[0].Values = manyVolts(5000); n.plan.Axes[1].Values = manyVolts(20) }, "sample.toml:8: axis: the axes make more than 100000 setpoints"},

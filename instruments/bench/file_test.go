@@ -150,7 +150,7 @@ func TestBenchMistakes(t *testing.T) {
 		{"Sense", "channel = 2", "sense = \"remote\"", "supply.sense = \"remote\": not supported yet by this version; leave it out"},
 		{"OneNode", `["supply", "common"]`, `["supply"]`, `supply.between = ["supply"]: give two nodes`},
 		{"SameNode", `["supply", "common"]`, `["common", "common"]`, `supply.between = ["common", "common"]: is "common" twice`},
-		{"ReadsMisspelt", `"motor_current"`, `"motor_curent"`, `meter[2].reads = "motor_curent": use average_voltage or motor_current; nothing else is supported yet by this version; the line would be: reads = "motor_current"`},
+		{"ReadsMisspelt", `"motor_current"`, `"motor_curent"`, `meter[2].reads = "motor_curent": use average_voltage, motor_current, output_current or control_voltage; nothing else is supported yet by this version; the line would be: reads = "motor_current"`},
 		{"ReadsTwice", `"motor_current"`, `"average_voltage"`, `meter[2].reads = "average_voltage": meter "average" reads average_voltage already`},
 		{"NameTwice", `"motor"`, `"average"`, `meter[2].name = "average": another meter has this name`},
 		{"BurdenOfVoltmeter", `input_resistance = "10M"`, `burden = "1"`, `meter[1].burden = "1": only a meter that reads a current has one`},

@@ -2,6 +2,8 @@ package bench
 
 import (
 	"fmt"
+	"maps"
+	"slices"
 	"strconv"
 	"strings"
 
@@ -11,7 +13,7 @@ import (
 )
 
 // readable are the quantities that a meter can be put to, with the function it needs.
-var readable = map[string]si.Unit{"average_voltage": si.Volt, "motor_current": si.Ampere}
+var readable = map[string]si.Unit{"average_voltage": si.Volt, "motor_current": si.Ampere, "output_current": si.Ampere, "control_voltage": si.Volt}
 
 // meter reads one [[meter]].
 func (r *reader) meter(t *userfile.Table) {
@@ -43,8 +45,8 @@ func (r *reader) reads(t *userfile.Table, m *instruments.MeterWiring) (si.Unit, 
 	}
 	unit, ok := readable[m.Reads]
 	if !ok {
-		t.Suggest("reads", m.Reads, []string{"average_voltage", "motor_current"},
-			"use average_voltage or motor_current; nothing else is supported yet by this version")
+		t.Suggest("reads", m.Reads, slices.Sorted(maps.Keys(readable)),
+			"use average_voltage, motor_current, output_current or control_voltage; nothing else is supported yet by this version")
 		return "", false
 	}
 	for _, other := range r.out.Wiring.Meters {
