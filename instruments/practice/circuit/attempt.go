@@ -245,6 +245,11 @@ func (s *Sim) flip(high bool) {
 	s.outEdge = edge{s.x.Time, rise, was}
 	if high && !s.high {
 		s.cycle.turned(s)
+		for _, w := range s.watchers {
+			if o, ok := w.Observer.(carried); ok {
+				o.turn(s.x.Time)
+			}
+		}
 	}
 	s.high = high
 	switch d := &s.b.Driver; {

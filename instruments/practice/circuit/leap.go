@@ -48,22 +48,42 @@ func (c *cycle) repeats(s *Sim) bool {
 		math.Abs(c.last.Current-c.before.Current) < sameState*full/s.b.Load.Resistance
 }
 
+// A carried observer needs no integration of periods that are all alike: it takes
+// what the last whole one gave as many times as are leapt over.
+type carried interface {
+	// turn notes a rising turn of the output at time t.
+	turn(t float64)
+	// ready tells whether the last whole period was seen in full.
+	ready(period float64) bool
+	// carry adds m periods like the last one.
+	carry(m float64)
+}
+
 // leap moves the time on over whole periods when the board repeats itself,
 // taking the slow states (speed, winding temperature) along at the rate of the
-// last period. It reports whether it did.
-func (s *Sim) leap(end float64) bool {
+// last period; with observers to be carried only when those have settled. It
+// reports whether it did.
+func (s *Sim) leap(end float64, carried []carried) bool {
 	c := &s.cycle
 	if !c.haveTime {
 		c.since, c.haveTime = s.x.Time, true
 	}
 	if s.turning && s.unevenness() > 0 || !c.fresh || !c.repeats(s) {
-		return s.leapRestless(end)
+		return len(carried) == 0 && s.leapRestless(end)
+	}
+	for _, o := range carried {
+		if !o.ready(c.period) {
+			return false
+		}
 	}
 	c.fresh = false
 	span := end - s.x.Time
 	tau := s.rotorConstant()
 	rate := (c.last.Speed - c.before.Speed) / c.period
 	if s.turning && math.Abs(rate)*tau.long > settledShare*math.Max(s.x.Speed, 1) {
+		if len(carried) > 0 {
+			return false
+		}
 		span = math.Min(span, leapShare*tau.likely)
 	}
 	warm, heat := s.warming()
@@ -80,6 +100,9 @@ func (s *Sim) leap(end float64) bool {
 		s.x.Speed = math.Max(0, s.x.Speed+relax(rate, tau.likely, span))
 	}
 	s.x.Winding += relax(heat, warm, span)
+	for _, o := range carried {
+		o.carry(m)
+	}
 	s.shift(span)
 	return true
 }

@@ -23,6 +23,11 @@ type Mean struct {
 	Min, Max float64
 
 	sum, span float64
+
+	// What had been seen by the last rising turn of the output, and what the whole
+	// period before it gave.
+	turnSum, turnSpan   float64
+	wholeSum, wholeSpan float64
 }
 
 // NewMean looks at a probe from t0 to t1.
@@ -45,6 +50,22 @@ func (m *Mean) Observe(g *Segment) {
 		y := g.See(m.Probe, t)
 		m.Min, m.Max = math.Min(m.Min, y), math.Max(m.Max, y)
 	}
+}
+
+func (m *Mean) turn(float64) {
+	m.wholeSum, m.wholeSpan = m.sum-m.turnSum, m.span-m.turnSpan
+	m.turnSum, m.turnSpan = m.sum, m.span
+}
+
+func (m *Mean) ready(period float64) bool {
+	return math.Abs(m.wholeSpan-period) < 1e-6*period
+}
+
+func (m *Mean) carry(n float64) {
+	m.sum += n * m.wholeSum
+	m.span += n * m.wholeSpan
+	m.turnSum, m.turnSpan = m.sum, m.span
+	m.wholeSum, m.wholeSpan = 0, 0
 }
 
 // Value is the mean over what has been seen of the aperture; NaN before that.

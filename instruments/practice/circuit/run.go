@@ -22,17 +22,8 @@ func (s *Sim) Watch(o Observer) error {
 func (s *Sim) Advance(until float64) {
 	for s.x.Time < until {
 		s.drop()
-		end := until
-		watched := false
-		for _, w := range s.watchers {
-			if w.from > s.x.Time {
-				end = math.Min(end, w.from)
-			} else {
-				watched = true
-			}
-		}
-		s.smoothen(!watched && s.flywheel())
-		if !watched && s.leap(end) {
+		end, carried, watched := s.looking(until)
+		if !watched && s.leap(end, carried) {
 			continue
 		}
 		s.step(end)
@@ -46,6 +37,25 @@ func (s *Sim) smoothen(on bool) {
 	if s.smooth != on {
 		s.smooth, s.cycle.n = on, 0
 	}
+}
+
+// looking sorts the observers: the next instant at which one begins or, where it
+// is carried over leaps, ends; those carried; and whether any other looks now.
+func (s *Sim) looking(until float64) (end float64, all []carried, watched bool) {
+	end = until
+	for _, w := range s.watchers {
+		o, ok := w.Observer.(carried)
+		switch {
+		case w.from > s.x.Time:
+			end = math.Min(end, w.from)
+		case ok:
+			end = math.Min(end, w.to)
+			all = append(all, o)
+		default:
+			watched = true
+		}
+	}
+	return end, all, watched
 }
 
 // Run advances to a time with observers looking.
