@@ -15,7 +15,7 @@ import (
 //
 // Errors: ErrDuplicate, ErrRunOpen, ErrNotFound (no such run), ErrRefused,
 // ErrFull, the context's cause. On a full disk the last words of a run (off,
-// trip, state, ended) are written into the space kept in reserve.
+// trip, making safe, ended) are written into the space kept in reserve.
 func (s *Store) Append(ctx context.Context, e sweeps.Entry) (sweeps.Entry, error) {
 	if e.At.IsZero() {
 		e.At = s.now()
@@ -44,7 +44,7 @@ func (s *Store) Append(ctx context.Context, e sweeps.Entry) (sweeps.Entry, error
 func (s *Store) append(ctx context.Context, e sweeps.Entry) (seq int64, err error) {
 	once := func(w *write) (err error) { seq, err = w.entry(e); return err }
 	err = s.transact(ctx, once)
-	if !isFull(err) || !lastWord(e.Kind) {
+	if !isFull(err) || !lastWord(e) {
 		return seq, err
 	}
 	gave, rerr := s.reserve.release()
@@ -55,12 +55,12 @@ func (s *Store) append(ctx context.Context, e sweeps.Entry) (seq int64, err erro
 }
 
 // lastWord tells which entries may use the reserve: those that say how the bench was left.
-func lastWord(k sweeps.Kind) bool {
-	switch k {
-	case sweeps.KindOff, sweeps.KindTrip, sweeps.KindState, sweeps.KindEnded:
+func lastWord(e sweeps.Entry) bool {
+	switch e.Kind {
+	case sweeps.KindOff, sweeps.KindTrip, sweeps.KindEnded:
 		return true
 	}
-	return false
+	return e.State == sweeps.MakingSafe || e.State.Ended()
 }
 
 func (w *write) entry(e sweeps.Entry) (int64, error) {

@@ -1,6 +1,7 @@
 package store
 
 import (
+	"crypto/rand"
 	"errors"
 	"fmt"
 	"io/fs"
@@ -25,7 +26,8 @@ func newReserve(store string) *reserve {
 }
 
 // fill writes the reserve anew where it is missing or short. The bytes are
-// written, not merely declared: a sparse file reserves nothing.
+// written, not merely declared, and random: a sparse file reserves nothing, nor
+// does one of zeros where the file system compresses.
 func (r *reserve) fill() error {
 	if i, err := os.Stat(r.path); err == nil && i.Size() == reserveSize {
 		return nil
@@ -34,7 +36,9 @@ func (r *reserve) fill() error {
 	if err != nil {
 		return fmt.Errorf("reserve for the last words: %w", err)
 	}
-	_, err = f.Write(make([]byte, reserveSize))
+	noise := make([]byte, reserveSize)
+	rand.Read(noise) // never fails
+	_, err = f.Write(noise)
 	if err := errors.Join(err, f.Sync(), f.Close()); err != nil {
 		return fmt.Errorf("reserve of %d KiB for the last words: %w; free some space first", reserveSize>>10, err)
 	}

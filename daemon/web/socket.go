@@ -38,9 +38,9 @@ func openSocket(w http.ResponseWriter, r *http.Request) (*socket, error) {
 	return &socket{conn}, nil
 }
 
-// hello waits for the watcher's first message.
-func (s *socket) hello() (h Hello, err error) {
-	if err := s.conn.SetReadDeadline(time.Now().Add(helloLimit)); err != nil {
+// hello waits for the watcher's first message, no longer than limit.
+func (s *socket) hello(limit time.Duration) (h Hello, err error) {
+	if err := s.conn.SetReadDeadline(time.Now().Add(limit)); err != nil {
 		return h, err
 	}
 	_, text, err := s.conn.ReadMessage()

@@ -40,7 +40,7 @@ func (s *Server) stream(w http.ResponseWriter, r *http.Request) {
 	defer all.Wait()
 	defer cancel()
 	all.Go(func() { sock.hangUpWhen(ctx) })
-	if _, err := sock.hello(); err != nil {
+	if _, err := sock.hello(s.patience); err != nil {
 		sock.hangUp(notWelcome, "say hello first: {\"token\":\"\"}")
 		return
 	}

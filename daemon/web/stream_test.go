@@ -276,8 +276,7 @@ func TestMessagesKeepTheDescription(t *testing.T) {
 }
 
 func TestHelloFirst(t *testing.T) {
-	t.Parallel() // it waits five seconds
-	h := newHouse(t)
+	h := newHouse(t, func(s *Server) { s.patience = 200 * time.Millisecond })
 	h.append(sweeps.Entry{Kind: sweeps.KindLog})
 	dial := func() *watcher {
 		conn, _, err := websocket.DefaultDialer.Dial("ws://"+h.addr+streamPath, nil)

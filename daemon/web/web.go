@@ -78,6 +78,7 @@ type Server struct {
 	began   time.Time
 	handler http.Handler
 
+	patience time.Duration   // with a watcher who says no hello
 	life     context.Context // of the watchers; ended by Close
 	end      context.CancelFunc
 	mu       sync.Mutex // orders the arrival of watchers before Close
@@ -91,7 +92,7 @@ func New(o Options) *Server {
 	if o.Log == nil {
 		o.Log = slog.New(slog.DiscardHandler)
 	}
-	s := &Server{o: o, began: o.Clock.Now()}
+	s := &Server{o: o, began: o.Clock.Now(), patience: helloLimit}
 	s.life, s.end = context.WithCancel(context.Background())
 	mux := http.NewServeMux()
 	s.newAPI(mux)

@@ -95,7 +95,7 @@ type house struct {
 	stop    func() // ends Serve and waits for it
 }
 
-func newHouse(t *testing.T) *house {
+func newHouse(t *testing.T, change ...func(*Server)) *house {
 	t.Helper()
 	dir := t.TempDir()
 	st, err := store.Open(t.Context(), filepath.Join(dir, "nightbench.db"), instruments.NewClock(1))
@@ -107,6 +107,9 @@ func newHouse(t *testing.T) *house {
 		Store: st, Control: h.control, Token: token, Version: "v0.1.0", Cautions: []string{"A software button is no emergency stop."}, Clock: instruments.NewClock(20),
 		Page: fstest.MapFS{"index.html": {Data: []byte("<!doctype html><title>leaf</title>")}, "assets/leaf-1a2b.js": {Data: []byte("let leaf")}, "icon.svg": {Data: []byte("<svg/>")}, ".keep": {}},
 	})
+	for _, c := range change {
+		c(h.server)
+	}
 	tcp, err := net.Listen("tcp", "127.0.0.1:0")
 	if err != nil {
 		t.Fatal(err)
