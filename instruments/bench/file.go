@@ -11,6 +11,7 @@ import (
 
 	"nightbench/instruments"
 	"nightbench/instruments/link"
+	"nightbench/instruments/si"
 	"nightbench/instruments/userfile"
 )
 
@@ -28,6 +29,7 @@ const Auto = "auto"
 type File struct {
 	Wiring instruments.Wiring
 	Pace   float64 // of a practice bench; 1 on a real one
+	Line   float64 // Hz, of the power line that apertures are counted in
 	Supply Port
 	Meters []Port // in the order of Wiring.Meters
 	Scope  *Port
@@ -44,7 +46,7 @@ func Read(path string) (*File, error) {
 	if err != nil {
 		return nil, err
 	}
-	r := reader{file: f, out: &File{Path: f.Name, Text: f.Source, Pace: 1}}
+	r := reader{file: f, out: &File{Path: f.Name, Text: f.Source, Pace: 1, Line: 50}}
 	r.bench(f.Table("bench"))
 	r.supply(f.Table("supply"))
 	for _, t := range f.Optional().Tables("meter") {
@@ -79,6 +81,7 @@ func (r *reader) bench(t *userfile.Table) {
 	w := &r.out.Wiring
 	t.String("name", &w.Bench)
 	t.Optional().Bool("practice", &w.Practice)
+	r.powerLine(t)
 	if !t.Optional().Number("pace", &r.out.Pace) {
 		return
 	}
@@ -87,6 +90,17 @@ func (r *reader) bench(t *userfile.Table) {
 		t.Fail("pace", "only a practice bench can be sped up; remove the line, or add practice = true if the instruments are simulated")
 	case r.out.Pace < 0.1 || r.out.Pace > 10_000:
 		t.Fail("pace", "give how many times as fast as the wall bench time runs, from 0.1 to 10000, like 20")
+	}
+}
+
+// powerLine reads the frequency of the power line, which meters count their apertures in.
+func (r *reader) powerLine(t *userfile.Table) {
+	var f si.Frequency
+	if !t.Optional().Text("line_frequency", &f) {
+		return
+	}
+	if r.out.Line = f.SI(); r.out.Line != 50 && r.out.Line != 60 {
+		t.Fail("line_frequency", `give "50 Hz" or "60 Hz"`)
 	}
 }
 

@@ -92,7 +92,7 @@ func (b *Opened) slots(f *File, o Options) []slot {
 	w := f.Wiring
 	slots := []slot{b.supplySlot(f.Supply, w.Supply, o)}
 	for n, p := range f.Meters {
-		slots = append(slots, b.meterSlot(n, p, w.Meters[n], o))
+		slots = append(slots, b.meterSlot(n, p, w.Meters[n], f.Line, o))
 	}
 	if f.Scope != nil {
 		slots = append(slots, slot{name: "scope", role: dialect.RoleScope, port: *f.Scope,
@@ -128,10 +128,10 @@ func (b *Opened) supplySlot(p Port, w instruments.SupplyWiring, o Options) slot 
 		}}
 }
 
-func (b *Opened) meterSlot(n int, p Port, w instruments.MeterWiring, o Options) slot {
+func (b *Opened) meterSlot(n int, p Port, w instruments.MeterWiring, line float64, o Options) slot {
 	return slot{name: "meter " + w.Name, role: dialect.RoleMeter, port: p,
 		make: func(ctx context.Context, i *instrument) ([]string, error) {
-			m, notes, err := driver.OpenMeter(ctx, i.conn, i.d, driver.MeterOptions{Options: i.options(o), Accuracy: w.Accuracy})
+			m, notes, err := driver.OpenMeter(ctx, i.conn, i.d, driver.MeterOptions{Options: i.options(o), Accuracy: w.Accuracy, LineFrequency: line})
 			if err == nil {
 				b.Meters[n], i.stop = m, m.Close
 			}

@@ -5,6 +5,7 @@ import (
 	"errors"
 	"fmt"
 	"io"
+	"math"
 	"slices"
 	"strings"
 	"testing"
@@ -255,6 +256,19 @@ func TestOpenFails(t *testing.T) {
 			t.Errorf("took %v", took)
 		}
 	})
+}
+
+func TestLineFrequency(t *testing.T) {
+	inBubble(t, "TenPeriodsOf60Hz", func(t *testing.T) {
+		b := opened(t, newWired(), file(t, "practice = true\n", "practice = true\nline_frequency = \"60 Hz\"\n"), 1)
+		got, err := b.Meters[0].Configure(t.Context(), instruments.MeterSettings{Unit: si.Volt, Range: 10, Aperture: 0.2})
+		if err != nil || math.Abs(got.Aperture-10.0/60) > 1e-9 {
+			t.Errorf("aperture %g s, %v", got.Aperture, err)
+		}
+	})
+	if _, err := Read(written(t, strings.Replace(wiredText, "practice = true", `line_frequency = "55 Hz"`, 1))); err == nil || !strings.Contains(err.Error(), "bench.line_frequency") {
+		t.Errorf("55 Hz: %v", err)
+	}
 }
 
 func TestUnknownDialectIsAMistakeInTheFile(t *testing.T) {

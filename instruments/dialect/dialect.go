@@ -6,7 +6,8 @@
 //	[dialect]     name, role (supply, meter, scope, pot), about; accepts_any where an unknown identity will do
 //	[sources]     tag = document; every line carries source = a tag, "ours" (our own choice) or "unchecked" (from memory)
 //	[[identity]]  maker and model as patterns ("*" stands for anything, case does not matter), or text for replies with fewer than 4 fields
-//	[link]        terminator, timeout of one reply, line (serial settings where the address gives none), clear_bytes
+//	[link]        terminator (nl, cr, crnl), timeout of one reply, gap between exchanges, echo,
+//	              line (serial settings where the address gives none), clear_bytes (a device clear)
 //	[errors]      form ("queue" or "none"), ask, depth
 //	[completion]  style "held" (the reply is held back until done) or "polled" (asked until the reply is the word in until)
 //	[channel]     select: a line sent before anything else on an instrument of several channels
@@ -84,6 +85,8 @@ type Link struct {
 	Timeout    time.Duration // of one reply; settling and aperture come on top
 	Line       string        // serial settings as an address gives them, "baud=115200&stop=2"; the address wins
 	ClearBytes []byte        // the family's device clear on a stream, if it has one
+	Gap        time.Duration // least time between two exchanges
+	Echo       bool          // each line sent comes back before its reply
 }
 
 // ErrorQueue is how errors are asked for.

@@ -6,6 +6,7 @@ import (
 	"fmt"
 	"time"
 
+	"nightbench/instruments/link"
 	"nightbench/instruments/si"
 	"nightbench/instruments/userfile"
 )
@@ -106,11 +107,23 @@ func (r *reader) link(t *userfile.Table) {
 	userfile.Word(o, "terminator", &end, "nl", "cr", "crnl")
 	l.Terminator = terminators[end]
 	r.duration(o, "timeout", &l.Timeout)
-	o.String("line", &l.Line)
+	r.duration(o, "gap", &l.Gap)
+	o.Bool("echo", &l.Echo)
+	r.serialLine(o, &l.Line)
 	var clear []int
 	o.Ints("clear_bytes", &clear, 0, 255)
 	for _, b := range clear {
 		l.ClearBytes = append(l.ClearBytes, byte(b))
+	}
+}
+
+// serialLine reads serial settings in the form that an address has them.
+func (r *reader) serialLine(o *userfile.Table, v *string) {
+	if !o.String("line", v) {
+		return
+	}
+	if _, err := link.Parse("serial:///dev/any?" + *v); err != nil {
+		o.Fail("line", `give serial settings as an address has them, like "baud=9600&stop=2": `+err.Error())
 	}
 }
 

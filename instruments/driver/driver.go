@@ -50,7 +50,15 @@ func newInstrument(conn *scpi.Conn, d *dialect.Dialect, o Options) instrument {
 
 // Settings gives the scpi options that a dialect asks for.
 func Settings(d *dialect.Dialect) scpi.Options {
-	o := scpi.Options{ErrorQuery: d.Errors.Ask, ErrorDepth: d.Errors.Depth, ResyncLimit: resyncLimit}
+	o := scpi.Options{ErrorQuery: d.Errors.Ask, ErrorDepth: d.Errors.Depth, ResyncLimit: resyncLimit,
+		Gap: d.Link.Gap, Echo: d.Link.Echo}
+	if c := d.Completion; c == nil {
+		o.NoMarker = true
+	} else if c.Style == "held" {
+		o.Marker = scpi.Marker{Query: c.Ask, Replies: []string{"1", "+1"}}
+	} else {
+		o.Marker = scpi.Marker{Query: c.Ask, Replies: []string{c.Until}}
+	}
 	if l, ok := d.Commands["identify"]; ok {
 		o.IdentityQuery = l.Ask
 	}

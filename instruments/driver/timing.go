@@ -16,15 +16,16 @@ func (m *Meter) readingTime() time.Duration {
 func (s *Scope) recordTime() time.Duration { return s.bench(s.set.Duration) }
 
 // A trigger may come up to triggerWait (bench time) after a record began to
-// wait for it: a driver board at work has several a second. The allowance is
-// never below triggerFloor (wall), which a simulation or a slow link needs
-// however fast the bench's clock runs.
+// wait for it: a driver board at work has several a second. The record with
+// its part before the trigger may take some of its length more. The allowance
+// is never below triggerFloor (wall), which a simulation on a busy computer
+// needs however fast the bench's clock runs.
 const (
 	triggerWait  = 1.0 // s
-	triggerFloor = time.Second
+	triggerFloor = 3 * time.Second
 )
 
 // triggerTime is allowed for a triggered record to be complete.
 func (s *Scope) triggerTime() time.Duration {
-	return max(s.bench(triggerWait+2*s.set.Duration), triggerFloor+s.recordTime())
+	return max(s.bench(triggerWait+4*s.set.Duration), triggerFloor+s.recordTime())
 }
