@@ -11,7 +11,8 @@ export default defineConfig({
     emptyOutDir: true,
   },
   test: {
-    environment: "happy-dom",
+    environment: "node", // a test that needs a document says so in its first line
+    testTimeout: 20_000,
     include: ["src/**/*.test.{ts,tsx}"],
     env: { TZ: "UTC" },
     restoreMocks: true,

@@ -1,3 +1,4 @@
+// @vitest-environment happy-dom
 // The edges: the token, the requests, the paths.
 import { beforeEach, expect, test, vi } from "vitest";
 import { takeToken } from "./access";

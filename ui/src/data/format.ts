@@ -48,9 +48,9 @@ export function formatU(x: number, u: number | null | undefined, unit: string): 
   return `${tidy(xs.toFixed(dec))}(${Math.round(us * 10 ** dec)})` + suffix(p, unit);
 }
 
-/** A setting in a sentence: "22 k", "5.5 k", "75 Ω", two or three figures, no Ω after a prefix. */
+/** A setting in a sentence, three figures as the program's own words have it: "21.6 k", "5.5 k", "75 Ω". */
 export function ohms(x: number): string {
-  const s = format(x, "Ω", x >= 99.5 && x < 1e3 ? 3 : 2);
+  const s = format(x, "Ω", 3);
   return s.endsWith("kΩ") || s.endsWith("MΩ") ? s.slice(0, -1) : s;
 }
 

@@ -2,7 +2,7 @@ import { expect, test } from "vitest";
 import { night, vitals } from "./fixture";
 import { nbsp } from "./format";
 import type { Run, Status, Vitals } from "./nouns";
-import { briefProgress, flagsOf, headline, type Link, listed, named, pace, pointWords, progress, sentenceCase, standing, tallied } from "./words";
+import { briefProgress, doingNow, flagsOf, headline, type Link, listed, named, pace, pointWords, progress, sentenceCase, standing, tallied } from "./words";
 
 const plain = (s: string) => s.replaceAll(nbsp, " ");
 const live: Link = { state: "live" };
@@ -45,10 +45,18 @@ test("pace is said when it is not 1", () => {
 
 test("a point in words; the supply is said where it changes", () => {
   const [good, bad] = [night.points[0]!, night.points[10]!];
-  expect(plain(pointWords(good))).toMatch(/^5 V, 1\.2 k: 4\.\d+\(\d+\) V, duty 0\.8\d+\(\d+\)\. Good\.$/);
-  expect(plain(pointWords(good, true))).toMatch(/^1\.2 k: /);
+  expect(plain(pointWords(good))).toMatch(/^5 V, 1\.\d+ k: 4\.\d+\(\d+\) V, duty 0\.8\d+\(\d+\)\. Good\.$/);
+  expect(plain(pointWords(good, true))).toMatch(/^1\.\d+ k: /);
   expect(pointWords(bad)).toMatch(/, flagged $/);
-  expect(flagsOf(bad)).toMatchObject([{ name: "unsettled", quantity: "average_voltage" }]);
+  expect(flagsOf(bad)).toMatchObject([{ name: "unsettled", on: ["average voltage"] }]);
+  const every = { ...bad, readings: bad.readings.map((r) => ({ ...r, flags: [{ name: "unsettled", words: "after 20 s" }] })) };
+  expect(flagsOf(every)).toEqual([{ name: "unsettled", words: "after 20 s", on: [] }]);
+});
+
+test("the headline counts repeats where the run does not say them itself", () => {
+  expect(plain(doingNow({ ...base, doing: "Measuring at 9 V, 21.6 k", repeat: 3, repeats: 8 }))).toBe("Measuring at 9 V, 21.6 k; 3 of 8 repeats");
+  expect(plain(doingNow({ ...base, doing: "Settling at 9 V, 21.6 k", repeat: 0, repeats: 8 }))).toBe("Settling at 9 V, 21.6 k");
+  expect(doingNow({ ...base, doing: "2 of 8 repeats", repeat: 2, repeats: 8 })).toBe("2 of 8 repeats");
 });
 
 test("lists, names, headlines", () => {

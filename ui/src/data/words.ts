@@ -1,5 +1,5 @@
 // Sentences. Present for now, past for what happened; no exclamations.
-import { clock, clockSeconds, count, duration, format, formatU, nbsp, ohms, setting } from "./format";
+import { bound, clock, clockSeconds, count, duration, format, formatU, nbsp, ohms, setting } from "./format";
 import { ended, flagged, type Flag, type Off, type Point, type Quantity, reading, type Run, type Status, type Vitals } from "./nouns";
 
 const titles: Record<Quantity, string> = {
@@ -119,12 +119,23 @@ export function pace(s: Status | null): string {
   return times ? `Running${times}` : "";
 }
 
-/** All flags of a point, those of its readings with the quantity's name. */
-export function flagsOf(p: Point): (Flag & { quantity: string })[] {
-  return [
-    ...p.readings.flatMap((r) => r.flags.map((f) => ({ ...f, quantity: r.quantity }))),
-    ...p.flags.map((f) => ({ ...f, quantity: "" })),
-  ];
+/** The flags of a point, each said once; `on` names the quantities it stands on, none where it stands on all. */
+export function flagsOf(p: Point): (Flag & { on: string[] })[] {
+  const found = new Map<string, Flag & { on: string[] }>();
+  for (const f of p.flags) found.set(f.name + f.words, { ...f, on: [] });
+  for (const r of p.readings)
+    for (const f of r.flags) {
+      const g = found.get(f.name + f.words) ?? { ...f, on: [] };
+      g.on.push(named(r.quantity));
+      found.set(f.name + f.words, g);
+    }
+  return [...found.values()].map((g) => (g.on.length === p.readings.length ? { ...g, on: [] } : g));
+}
+
+/** What the run does this minute, with the repeats done where they are counted. */
+export function doingNow(v: Vitals): string {
+  const repeats = v.repeat > 0 && v.repeats > 1 && !v.doing.includes("repeat") ? `; ${v.repeat} of ${v.repeats} repeats` : "";
+  return bound((v.doing || "Preparing") + repeats);
 }
 
 /** "9 V, 18 k: 6.21(6) V, duty 0.353(2). Good."; the supply is left out where the line before has it. A flagged point ends "flagged ". */

@@ -5,7 +5,7 @@ import type { Client } from "../data/client";
 import type { Waveforms } from "../data/nouns";
 import { bound, clockSeconds, date, format, nbsp } from "../data/format";
 import { quantitiesOf } from "../data/night";
-import { headline, tallied } from "../data/words";
+import { doingNow, headline, tallied } from "../data/words";
 import { Alarm } from "../parts/alarm";
 import { Figure, type Now } from "../parts/figure";
 import { AlsoHere, Instruments } from "../parts/instruments";
@@ -32,7 +32,7 @@ export function NowView({ bench, client, place }: Views) {
         {!alarmed && <Drawn {...{ bench, client, place }} />}
       </main>
       <aside class="margin" aria-label="Log">
-        <Log lines={night.log} most={linesShown} all={night.run ? `/runs/${night.run}` : undefined} now={open ? v?.doing : undefined} nowAt={v?.at} />
+        <Log lines={night.log} most={linesShown} all={night.run ? `/runs/${night.run}` : undefined} now={open && v ? doingNow(v) : undefined} nowAt={v?.at} />
         <Instruments vitals={v} stale={stale} />
         <AlsoHere vitals={v} stale={stale} />
       </aside>
@@ -45,7 +45,7 @@ function Headline({ bench }: Views) {
   const link = bench.link.value;
   const run = bench.run.value;
   if (link.state === "lost") {
-    const was = v?.doing ? `: ${bound(lower(v.doing))}` : "";
+    const was = v?.doing ? `: ${lower(doingNow(v))}` : "";
     return (
       <>
         <h1 tabIndex={-1}>{v ? `Last heard at ${clockSeconds(link.since)}${was}` : "The bench does not answer"}</h1>
@@ -53,7 +53,7 @@ function Headline({ bench }: Views) {
       </>
     );
   }
-  if (v && underWay(v)) return <><h1 tabIndex={-1}>{bound(v.doing || "Preparing")}</h1><p class="sub">{bound(v.detail)}</p></>;
+  if (v && underWay(v)) return <><h1 tabIndex={-1}>{doingNow(v)}</h1><p class="sub">{bound(v.detail)}</p></>;
   if (!v || (!bench.caughtUp.value && !run)) return <><h1 tabIndex={-1}>Waiting for the bench</h1><p class="sub">It says at once where it stands.</p></>;
   if (!run) return <><h1 tabIndex={-1}>{headline(null)}</h1><p class="sub">A run is started with <span class="q">nightbench start PLAN</span>; it appears here by itself.</p></>;
   return (

@@ -1,3 +1,4 @@
+// @vitest-environment happy-dom
 // The views whole, from the recorded stream: what they say, and that a reader without eyes or mouse gets it too.
 import { render } from "preact";
 import { act } from "preact/test-utils";
@@ -86,7 +87,7 @@ test("Now draws measured points and predictions, and the choice of quantity foll
   expect(document.querySelector("main figure svg")!.getAttribute("aria-label")).toContain("31 points measured");
   act(() => document.querySelector<HTMLAnchorElement>('.picker a[href$="frequency"]')!.click());
   expect(text(".picker [aria-current]")).toBe("frequency");
-  expect(text(".log")).toContain("flagged roads disagree: meter and scope differ by 3.6 u");
+  expect(text(".log")).toContain("flagged roads disagree (average voltage): meter and scope differ by 3.6 u");
 });
 
 test("the points behind a figure are there as a table", async () => {
@@ -141,7 +142,7 @@ test("a run that starts while the page is open is the one shown", async () => {
   const at = "2026-12-01T08:00:00Z";
   await act(async () => {
     heard.entry({ seq: night.seq + 1, run: 42, at, elapsed: 0, kind: "started", words: "Started by BL.", state: "preparing", setpoints: night.setpoints.slice(0, 12), curves: [...night.curves] });
-    heard.vitals({ ...vitals, run: 42, state: "preparing", doing: "Preparing run 42", measured: 0, flagged: 0, planned: 12, setpoint: undefined });
+    heard.vitals({ ...vitals, run: 42, state: "preparing", doing: "Preparing run 42", measured: 0, flagged: 0, planned: 12, repeat: 0, setpoint: undefined });
   });
   await settle();
   expect(text("h1")).toBe("Preparing run 42");
@@ -162,7 +163,7 @@ test("when nothing runs the answer is how the last one went", async () => {
 test("a run's page has its points, flags in words, and what it was measured with", async () => {
   await opened("/runs/41");
   expect(document.querySelectorAll("table.points tbody tr:not(.why)")).toHaveLength(31);
-  expect(text("table.points .why")).toContain("average voltage unsettled: still moving by 1.6 % after 20 s");
+  expect(text("table.points .why")).toContain("unsettled (average voltage): still moving by 1.6 % after 20 s");
   expect(text("table.plain")).toContain("overnight.toml");
 });
 

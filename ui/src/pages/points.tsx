@@ -1,7 +1,8 @@
 // The points of a run as a table; on a phone each is an entry of a few lines.
 import { format, formatU, ohms } from "../data/format";
 import { flagged, type Point, type Quantity, reading } from "../data/nouns";
-import { flagsOf, named } from "../data/words";
+import { named } from "../data/words";
+import { Flags } from "../parts/flags";
 
 export function PointsTable({ points, quantities }: { points: readonly Point[]; quantities: readonly Quantity[] }) {
   if (!points.length) return <p class="sub">None yet.</p>;
@@ -15,7 +16,6 @@ export function PointsTable({ points, quantities }: { points: readonly Point[]; 
 
 function Row({ p, quantities }: { p: Point; quantities: readonly Quantity[] }) {
   const s = p.setpoint;
-  const flags = flagsOf(p);
   return (
     <>
       <tr>
@@ -25,7 +25,7 @@ function Row({ p, quantities }: { p: Point; quantities: readonly Quantity[] }) {
         <td>{s.recheck ? "recheck" : s.direction}</td>
         {quantities.map((q) => <td class="r" key={q} data-name={named(q)}>{value(p, q)}</td>)}
       </tr>
-      {flagged(p) && <tr class="why"><td /><td colSpan={3 + quantities.length}>{flags.map((f, i) => <span key={i}>{i > 0 && "; "}{f.quantity && `${named(f.quantity)} `}<i>{f.name}</i>{f.words && `: ${f.words.replace(/\.$/, "")}`}</span>)}.</td></tr>}
+      {flagged(p) && <tr class="why"><td /><td colSpan={3 + quantities.length}><Flags of={p} />.</td></tr>}
     </>
   );
 }

@@ -1,9 +1,9 @@
 // The margin: the log, newest first, times hanging beside sentences.
-import type { ComponentChildren } from "preact";
 import { bound, clock, clockSeconds } from "../data/format";
 import type { Line } from "../data/night";
 import { flagged } from "../data/nouns";
-import { flagsOf, named, pointWords } from "../data/words";
+import { pointWords } from "../data/words";
+import { Flags } from "./flags";
 
 export interface LogProps { lines: readonly Line[]; now?: string; nowAt?: string; most: number; all?: string }
 
@@ -13,7 +13,7 @@ export function Log({ lines, now, nowAt, most, all }: LogProps) {
     <>
       <h2>Log</h2>
       <ol class="log" reversed>
-        {now && <li class="now"><time>{nowAt ? clock(nowAt) : ""}</time><span>{bound(now)}</span></li>}
+        {now && <li class="now"><time>{nowAt ? clock(nowAt) : ""}</time><span>{now}</span></li>}
         {shown.map(({ l, same }) => <LogLine key={l.seq} l={l} same={same} />)}
       </ol>
       {lines.length > most && all && <p class="noprint"><a href={all}>The whole log</a></p>}
@@ -47,15 +47,5 @@ function LogLine({ l, same }: { l: Line; same: boolean }) {
 function PointLine({ l, same }: { l: Line; same: boolean }) {
   const p = l.point!;
   if (!flagged(p)) return <>{pointWords(p, same)}</>;
-  // One flag on several readings is said once, with the quantities it stands on.
-  const byName = new Map<string, { words: string; on: string[] }>();
-  for (const f of flagsOf(p)) {
-    const g = byName.get(f.name) ?? { words: f.words, on: [] };
-    if (f.quantity) g.on.push(named(f.quantity));
-    byName.set(f.name, g);
-  }
-  const said: ComponentChildren[] = [...byName].map(([name, g], i) => (
-    <>{i > 0 && "; "}<i>{name}</i>{g.words ? `: ${bound(g.words.replace(/\.$/, ""))}` : g.on.length ? ` (${g.on.join(", ")})` : ""}</>
-  ));
-  return <>{pointWords(p, same)}{said}.</>;
+  return <>{pointWords(p, same)}<Flags of={p} />.</>;
 }
