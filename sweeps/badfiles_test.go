@@ -64,6 +64,7 @@ var badFiles = map[string]bad{
 	"two-instruments-one-port.bench.toml":  {20, "scope.address", `"tcp://192.0.2.11:05025"`, "is the same port as meter[1].address (line 14)", ""},
 	"two-nodes-on-earth.bench.toml":        {26, "scope.channel.2.between", `["load_hi", "load_lo"]`, "scope.channel.2 on load_lo and scope.channel.1 on common (line 23) are both earthed", ""},
 	"two-pots.board.toml":                  {12, "timing.discharge", `"pot"`, "timing.charge is the bench's pot already", ""},
+	"unknown-dialect.bench.toml":           {21, "scope.dialect", `"standard-skope"`, "no such dialect; use auto, standard-scope, or the path of a file of your own", `dialect = "standard-scope"`},
 	"unknown-key.bench.toml":               {7, "supply.max_curent", `"1 A"`, `unknown key; did you mean "max_current"? (accepted here: address, between`, `max_current = "1 A"`},
 	"unknown-kind-of-address.bench.toml":   {20, "scope.address", `"http://192.0.2.12:5025"`, `address "http://192.0.2.12:5025": unknown kind of address; use serial://`, ""},
 	"unknown-network.board.toml":           {10, "timing.network", `"steerd"`, "use plain, bypassed, steered, wiper or output-fed", `network = "steered"`},

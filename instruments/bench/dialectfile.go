@@ -1,6 +1,7 @@
 package bench
 
 import (
+	"errors"
 	"strings"
 
 	"nightbench/instruments/dialect"
@@ -14,7 +15,13 @@ func (r *reader) dialect(t *userfile.Table, name string) {
 		return
 	}
 	kind, _, _ := strings.Cut(t.Path(), "[")
-	if _, err := dialect.Find(dialect.Role(kind), ownFile(name, r.file.Name)); err != nil {
+	role := dialect.Role(kind)
+	_, err := dialect.Find(role, ownFile(name, r.file.Name))
+	switch {
+	case err == nil:
+	case errors.Is(err, dialect.ErrUnknown):
+		t.Suggest("dialect", name, dialect.Names(role), "no such dialect; use auto, "+strings.Join(dialect.Names(role), ", ")+", or the path of a file of your own that ends in .toml")
+	default:
 		t.Fail("dialect", err.Error())
 	}
 }
