@@ -185,7 +185,7 @@ func (r *reader) protection(t *userfile.Table) {
 
 // sequences reads the lines sent at opening and closing.
 func (r *reader) sequences(f *userfile.Table) {
-	free := spec{does: "be opened or closed", needs: anyHalf, channel: true}
+	free := spec{does: "be opened or closed", needs: sends, channel: true}
 	for _, t := range f.Tables("open") {
 		r.d.Open = append(r.d.Open, r.line(t, "open", free))
 	}

@@ -75,7 +75,7 @@ func (i *instrument) Identify(ctx context.Context) (instruments.Identity, error)
 	if err != nil {
 		return instruments.Identity{}, err
 	}
-	if err := i.ready(ctx); err != nil {
+	if err := i.mend(ctx); err != nil {
 		return instruments.Identity{}, err
 	}
 	reply, err := i.conn.Query(ctx, l.Ask)
@@ -85,22 +85,27 @@ func (i *instrument) Identify(ctx context.Context) (instruments.Identity, error)
 	return scpi.ParseIdentity(reply), nil
 }
 
-// open drains the error queue, which belongs to whoever was there before, and
-// sends the opening lines. What the queue held is returned in words.
+// open sends the opening lines, since some instruments obey nothing before
+// them, and drains the error queue, which belongs to whoever was there before.
+// What it held is returned in words.
 func (i *instrument) open(ctx context.Context) (notes []string, err error) {
-	old, err := i.errors(ctx)
-	if err != nil {
+	if err := i.sequence(ctx, i.d.Open); err != nil {
 		return nil, err
 	}
+	old, err := i.errors(ctx)
 	for _, f := range old {
-		notes = append(notes, fmt.Sprintf("its error queue held %v from before", f))
+		notes = append(notes, fmt.Sprintf("its error queue held %v when it was opened", f))
 	}
-	for _, l := range i.d.Open {
-		if err := i.say(ctx, l, i.put(0)); err != nil {
-			return notes, err
-		}
+	return notes, err
+}
+
+// sequence sends lines of opening or closing, all of them, whatever happens to one.
+func (i *instrument) sequence(ctx context.Context, lines []dialect.Line) error {
+	var errs []error
+	for _, l := range lines {
+		errs = append(errs, i.write(ctx, i.put(0).Fill(l.Send)))
 	}
-	return notes, nil
+	return errors.Join(errs...)
 }
 
 // reset brings an instrument that feeds nothing to a known state.
@@ -124,14 +129,8 @@ func (i *instrument) reset(ctx context.Context) error {
 // (common practice, no source).
 const resetTime = 8 * time.Second
 
-// Close sends the closing lines of the dialect, best effort, all of them.
-func (i *instrument) Close(ctx context.Context) error {
-	var errs []error
-	for _, l := range i.d.Close {
-		errs = append(errs, i.say(ctx, l, i.put(0)))
-	}
-	return errors.Join(errs...)
-}
+// Close sends the closing lines of the dialect, all of them, whatever happens to one.
+func (i *instrument) Close(ctx context.Context) error { return i.sequence(ctx, i.d.Close) }
 
 // line finds a line of the dialect, or says what the instrument can't do.
 func (i *instrument) line(name string) (dialect.Line, error) {

@@ -5,6 +5,7 @@ import (
 	"strings"
 	"testing"
 	"testing/synctest"
+	"time"
 
 	"go.uber.org/goleak"
 
@@ -133,4 +134,10 @@ func TestParseNumberInTheFormOfItsLine(t *testing.T) {
 			}
 		})
 	}
+}
+
+// pause lets s seconds pass.
+func pause(t *testing.T, s float64) {
+	t.Helper()
+	must(t, instruments.NewClock(1).Sleep(t.Context(), time.Duration(s*float64(time.Second))))
 }

@@ -47,27 +47,31 @@ func (i *instrument) tell(ctx context.Context, l dialect.Line, p dialect.Put) er
 	if err := i.ready(ctx); err != nil {
 		return err
 	}
-	command := p.Fill(l.Send)
-	if err := i.conn.Write(ctx, command); err != nil {
-		return i.fault(command, err)
+	return i.write(ctx, p.Fill(l.Send))
+}
+
+// ready mends the link and selects the channel.
+func (i *instrument) ready(ctx context.Context) error {
+	if err := i.mend(ctx); err != nil || i.d.Channel == nil {
+		return err
 	}
+	return i.write(ctx, i.put(0).Fill(i.d.Channel.Select.Send))
+}
+
+// mend opens a lost link anew, which proves that the same instrument answers.
+func (i *instrument) mend(ctx context.Context) error {
+	if !i.lost.Load() {
+		return nil
+	}
+	if err := i.conn.Reopen(ctx); err != nil {
+		return i.fault("opening its link anew", err)
+	}
+	i.lost.Store(false)
 	return nil
 }
 
-// ready opens a lost link anew, which proves that the same instrument answers,
-// and selects the channel where an instrument has several: a person at its
-// panel may have selected another.
-func (i *instrument) ready(ctx context.Context) error {
-	if i.lost.Load() {
-		if err := i.conn.Reopen(ctx); err != nil {
-			return i.fault("opening its link anew", err)
-		}
-		i.lost.Store(false)
-	}
-	if i.d.Channel == nil {
-		return nil
-	}
-	command := i.put(0).Fill(i.d.Channel.Select.Send)
+// write sends one message that has no reply.
+func (i *instrument) write(ctx context.Context, command string) error {
 	if err := i.conn.Write(ctx, command); err != nil {
 		return i.fault(command, err)
 	}
@@ -220,7 +224,7 @@ func (i *instrument) errors(ctx context.Context) ([]scpi.Fault, error) {
 	if i.d.Errors.Form == "none" {
 		return nil, nil
 	}
-	if err := i.ready(ctx); err != nil {
+	if err := i.mend(ctx); err != nil {
 		return nil, err
 	}
 	faults, err := i.conn.Errors(ctx)
