@@ -10,7 +10,7 @@ import (
 // TestAnyBoard: whatever sensible or foolish board is wired up, its nodes stay
 // finite and near the rails, and the work for a period is bounded.
 func TestAnyBoard(t *testing.T) {
-	const span = 0.02 // s
+	const span = 0.008 // s
 	rapid.Check(t, func(r *rapid.T) {
 		decades := func(name string, lo, hi float64) float64 {
 			return math.Pow(10, rapid.Float64Range(math.Log10(lo), math.Log10(hi)).Draw(r, name))

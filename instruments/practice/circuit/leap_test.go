@@ -89,6 +89,9 @@ func TestUnevenRotor(t *testing.T) {
 			t.Fatal(err)
 		}
 		s.Advance(3600)
+		if !s.smooth {
+			t.Error("unevenness is followed though nobody looks")
+		}
 		i, w := NewMean(Through(LoadCurrent), 3600, 3600.5), NewMean(RotorSpeed(), 3600, 3600.5)
 		mustRun(t, s, 3600.5, i, w)
 		peak[k], speed[k] = i.Max-i.Min, w.Value()

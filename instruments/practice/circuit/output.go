@@ -19,6 +19,9 @@ func (s *Sim) pin(i, vs float64) (v, r float64) {
 		d, rd := m.Low.at(-i, vs)
 		return math.Min(d, vs), -rd
 	}
+	if i == 0 {
+		return 0, 0 // dead, and nothing pulls at it
+	}
 	over, r := s.clamp.drop(math.Abs(i))
 	if m.PushPull && s.powered {
 		d, rd := m.Drop.at(-i, vs)
@@ -46,7 +49,13 @@ func (s *Sim) output(vs, load, extra float64) (v, i float64) {
 		}
 		extra += load
 	}
-	if g == 0 {
+	switch {
+	case !s.powered && extra == 0: // dead: the pin goes where its load leaves it
+		if s.b.Driver.Stage == StageNone && g > 0 {
+			return -j / g, 0
+		}
+		return 0, 0
+	case g == 0 || !s.powered:
 		v, _ = s.pin(extra, vs)
 		return v, extra
 	}

@@ -23,6 +23,7 @@ func (s *Sim) Advance(until float64) {
 	for s.x.Time < until {
 		s.drop()
 		end, carried, watched := s.looking(until)
+		s.smoothen(!watched && len(carried) == 0 && s.flywheel())
 		if !watched && s.leap(end, carried) {
 			continue
 		}

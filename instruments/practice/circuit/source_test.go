@@ -143,3 +143,24 @@ func TestStarvedMotor(t *testing.T) {
 	inside(t, "starved supply, V", v.Value(), 1, 8.5)
 	s.Advance(20000) // restless or not, a long wait ends
 }
+
+// TestDead: without supply every node is at nothing, whatever hangs on the pin.
+func TestDead(t *testing.T) {
+	b := bare(Timing{Network: Plain, Common: 1e3, Down: 10e3, Capacitance: 100e-9}, 10)
+	b.Load = Load{Kind: Resistor, Resistance: 100, ToSupply: true}
+	for _, alter := range []func(*Board){
+		func(*Board) {}, func(b *Board) { b.Load.ToSupply = false }, func(b *Board) { b.Driver.Stage = NMOS },
+		func(b *Board) { b.Driver = Driver{Stage: NPN, BaseResistor: 1e3, Vbe: 0.7} },
+	} {
+		alter(&b)
+		s := mustNew(t, b, 0.5) // below what the timer needs
+		s.Advance(1)
+		inside(t, "dead output, V", s.Look(Between(TimerOut, Common)), 0, 0.51)
+		inside(t, "dead load, A", s.Look(Through(LoadCurrent)), -1e-12, 1e-12)
+		s.SetOutput(false)
+		s.Advance(1000)
+		for n := range nodes {
+			inside(t, n.String()+", V", s.Look(Between(n, Common)), 0, 0.51)
+		}
+	}
+}
