@@ -100,7 +100,7 @@ func printPrediction(cmd *cobra.Command, board sweeps.Board, at predict.Setting,
 	t := tabwriter.NewWriter(cmd.OutOrStdout(), 0, 0, 2, ' ', 0)
 	for _, q := range sweeps.Quantities {
 		if p, ok := values[q.Name]; ok {
-			fmt.Fprintf(t, "%s\t%s\t%s to %s\n", strings.ReplaceAll(string(q.Name), "_", " "), si.Format(p.Value, p.Unit), si.Format(p.Low, p.Unit), si.Format(p.High, p.Unit))
+			fmt.Fprintf(t, "%s\t%s\t%s\n", strings.ReplaceAll(string(q.Name), "_", " "), si.Format(p.Value, p.Unit), si.FormatRange(p.Low, p.High, p.Unit))
 		}
 	}
 	if err := t.Flush(); err != nil {

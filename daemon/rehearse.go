@@ -82,7 +82,7 @@ func printRehearsal(cmd *cobra.Command, plan sweeps.Plan, board sweeps.Board, r 
 				line += "\t-"
 				continue
 			}
-			line += fmt.Sprintf("\t%s [%s, %s]", si.Format(p.Value, p.Unit), si.Format(p.Low, ""), si.Format(p.High, p.Unit))
+			line += fmt.Sprintf("\t%s [%s]", si.Format(p.Value, p.Unit), si.FormatRange(p.Low, p.High, p.Unit))
 		}
 		fmt.Fprintln(t, line)
 	}

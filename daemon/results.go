@@ -92,7 +92,7 @@ func printPoints(w io.Writer, run sweeps.Run, points []sweeps.Point) error {
 	return nil
 }
 
-// cell is one reading: "4.352(12) V [4.31, 4.41]".
+// cell is one reading: "4.352(12) V [4.310 to 4.410 V]".
 func cell(p sweeps.Point, q sweeps.Quantity) string {
 	r, ok := p.Reading(q)
 	if !ok {
@@ -106,7 +106,7 @@ func cell(p sweeps.Point, q sweeps.Quantity) string {
 		s += "*"
 	}
 	if x, ok := p.Predictions[q]; ok {
-		s += " [" + si.Format(x.Low, "") + ", " + si.Format(x.High, x.Unit) + "]"
+		s += " [" + si.FormatRange(x.Low, x.High, x.Unit) + "]"
 	}
 	return s
 }

@@ -90,6 +90,20 @@ func round(x float64, n int) float64 {
 // tidy writes a true minus sign.
 func tidy(s string) string { return strings.Replace(s, "-", "−", 1) }
 
+// FormatRange prints an interval with one prefix for both ends, four figures: "4.650 to 5.337 kHz".
+func FormatRange(low, high float64, u Unit) string {
+	if math.IsNaN(low) || math.IsInf(low, 0) || math.IsNaN(high) || math.IsInf(high, 0) {
+		return "no value"
+	}
+	p, f := prefixFor(math.Max(math.Abs(low), math.Abs(high)), u)
+	dec := 3
+	if m := math.Max(math.Abs(low), math.Abs(high)) / f; m >= 1 {
+		dec = max(0, 3-int(math.Log10(m)))
+	}
+	one := func(x float64) string { return tidy(strconv.FormatFloat(x/f, 'f', dec, 64)) }
+	return one(low) + " to " + one(high) + suffix(p, u)
+}
+
 // Short prints a resistance as people write it in a sentence, figures and prefix only: "22 k", "470".
 func Short(ohms float64) string {
 	p, f := prefixFor(ohms, Ohm)

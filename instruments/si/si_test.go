@@ -155,3 +155,22 @@ func TestPrintedQuantitiesParseBack(t *testing.T) {
 		}
 	})
 }
+
+func TestRangesShareAPrefix(t *testing.T) {
+	for _, x := range []struct {
+		low, high float64
+		unit      Unit
+		want      string
+	}{
+		{4649.7, 5336.8, Hertz, "4.650 to 5.337 kHz"},
+		{843.75, 1193.9, Hertz, "0.844 to 1.194 kHz"},
+		{0.025038, 0.0253672, Volt, "25.04 to 25.37 mV"},
+		{0.14853, 0.20607, One, "0.149 to 0.206"},
+		{-1, 250, Volt, "−1.0 to 250.0 V"},
+		{math.NaN(), 1, Volt, "no value"},
+	} {
+		if got := strings.ReplaceAll(FormatRange(x.low, x.high, x.unit), nbsp, " "); got != x.want {
+			t.Errorf("FormatRange(%g, %g): got %q, want %q", x.low, x.high, got, x.want)
+		}
+	}
+}

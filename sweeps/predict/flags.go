@@ -48,9 +48,12 @@ func (m *Model) flags(o *outcome, s Setting) []sweeps.Flag {
 	return fs
 }
 
+// supplyError is how far a supply set to a board's rating may read beyond it and still be at it: more than any bench supply's own error.
+const supplyError = 2e-3
+
 func (m *Model) flagSupply(s Setting, add func(string, string, ...any)) {
 	lo, hi := m.board.RatedSupply[0].SI(), m.board.RatedSupply[1].SI()
-	if hi > 0 && (s.Supply < lo*(1-1e-9) || s.Supply > hi*(1+1e-9)) {
+	if hi > 0 && (s.Supply < lo*(1-supplyError) || s.Supply > hi*(1+supplyError)) {
 		add(SupplyRange, "%s is outside the board's rated %s to %s", show(s.Supply, si.Volt), show(lo, si.Volt), show(hi, si.Volt))
 	}
 	if limit := m.rated.timer.MaxSupply.Typical; limit > 0 && s.Supply > limit {

@@ -42,7 +42,7 @@ func (r *Runner) settle(ctx context.Context) (*sweeps.Flag, error) {
 		if elapsed > 5*tau && s.steady(3*tau, rule.Steady, r.floor(sample)) {
 			return nil, nil
 		}
-		if elapsed > rule.AtMost.Seconds() {
+		if elapsed > rule.AtMost.Seconds() && s.enough() {
 			return s.flag(rule, 3*tau), nil
 		}
 	}
@@ -59,6 +59,10 @@ type settling struct{ at, value []float64 }
 func (s *settling) add(at, value float64) {
 	s.at, s.value = append(s.at, at), append(s.value, value)
 }
+
+// enough tells whether a verdict "unsettled" is fair: a slow meter, or a sped-up
+// practice bench, gets to say something before the limit counts.
+func (s *settling) enough() bool { return len(s.at) >= 3*leastReadings }
 
 // window is the index of the first reading of the last max(5 readings, span s).
 func (s *settling) window(span float64) int {

@@ -45,6 +45,15 @@ func After(s sweeps.State, c Command) (sweeps.State, error) {
 	return s, fmt.Errorf("%s: not possible while the run is %s", c, words(s))
 }
 
+// said is what the log says when a run comes to a state.
+var said = map[sweeps.State]string{
+	sweeps.Preparing:  "Preparing: limits set and read back, output off.",
+	sweeps.Running:    "Running.",
+	sweeps.HeldState:  "Held: output off.",
+	sweeps.Asking:     "Waiting for a person.",
+	sweeps.MakingSafe: "Making the bench safe.",
+}
+
 func words(s sweeps.State) string {
 	switch s {
 	case sweeps.MakingSafe:
@@ -101,7 +110,7 @@ func (r *Runner) setState(s sweeps.State) {
 	if !changed || s.Ended() {
 		return
 	}
-	if _, err := r.append(sweeps.Entry{Kind: sweeps.KindState, State: s}); err != nil {
+	if _, err := r.append(sweeps.Entry{Kind: sweeps.KindState, State: s, Words: said[s]}); err != nil {
 		r.cancel(&journalFailed{err})
 	}
 	r.changed()
