@@ -121,11 +121,14 @@ func (s *synth) wave(times []float64, rng *rand.Rand) []float64 {
 }
 
 func (s *synth) sagAt(t float64) float64 {
+	if s.sag == 0 {
+		return 0
+	}
 	x := math.Mod(t-s.start, s.period) / s.period
 	if x < 0 {
 		x++
 	}
-	if s.sag == 0 || x >= s.duty {
+	if x >= s.duty {
 		return 0
 	}
 	return s.sag * (s.high - s.low) * x / s.duty
