@@ -45,10 +45,16 @@ func crashChild(dir string) {
 // TestKilledWhileAppending kills a writing process again and again: every point
 // acknowledged before is there, none twice, and the file is sound.
 func TestKilledWhileAppending(t *testing.T) {
+	killAgainAndAgain(t, 6, func(round int) int { return 3 + 7*round })
+}
+
+// killAgainAndAgain kills a child in each round after it has said as many setpoints as told, and looks at what it left.
+func killAgainAndAgain(t *testing.T, rounds int, after func(round int) int) {
+	t.Helper()
 	dir := t.TempDir()
 	last := -1
-	for round := range 6 {
-		last = max(last, killAfter(t, dir, 3+7*round))
+	for round := range rounds {
+		last = max(last, killAfter(t, dir, after(round)))
 		s := openAt(t, filepath.Join(dir, "nightbench.db"))
 		var sound string
 		if err := s.read.QueryRow(`PRAGMA integrity_check`).Scan(&sound); err != nil || sound != "ok" {

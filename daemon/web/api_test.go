@@ -8,6 +8,7 @@ import (
 	"io"
 	"net"
 	"net/http"
+	"net/http/httptest"
 	"reflect"
 	"slices"
 	"strings"
@@ -18,6 +19,7 @@ import (
 	"github.com/google/go-cmp/cmp"
 
 	"nightbench/daemon/store"
+	"nightbench/instruments"
 	"nightbench/sweeps"
 )
 
@@ -276,6 +278,32 @@ func TestWordsAreWhole(t *testing.T) {
 	for _, state := range []sweeps.State{sweeps.Preparing, sweeps.Interrupted} {
 		if e := r.Schema(reflect.TypeFor[sweeps.State](), true, "").Enum; !slices.Contains(e, any(string(state))) {
 			t.Errorf("%s not in %v", state, e)
+		}
+	}
+}
+
+// deadlined records the bound on reading that a handler leaves on its connection.
+type deadlined struct {
+	*httptest.ResponseRecorder
+	left time.Time
+}
+
+func (d *deadlined) SetReadDeadline(t time.Time) error { d.left = t; return nil }
+
+// TestLongCommandIsNotCalledOff: a bound on reading a request that passes while
+// the daemon still works ends the request's context (net/http reads on in the
+// background), so no command may leave one.
+func TestLongCommandIsNotCalledOff(t *testing.T) {
+	s := New(Options{Control: &control{}, Clock: instruments.NewClock(1)})
+	for _, c := range calls(t) {
+		if c.method != http.MethodPost {
+			continue
+		}
+		w := &deadlined{httptest.NewRecorder(), time.Now().Add(readLimit)}
+		r := httptest.NewRequest(c.method, c.path, strings.NewReader(c.body))
+		s.ServeHTTP(w, r.WithContext(context.WithValue(t.Context(), peerKey{}, true)))
+		if w.Code != http.StatusOK || !w.left.IsZero() {
+			t.Errorf("%s: %d, reading ends in %v", c.path, w.Code, time.Until(w.left))
 		}
 	}
 }

@@ -29,6 +29,7 @@ type (
 func post[I, O any](s *Server, api huma.API, op huma.Operation, do func(context.Context, *I) (O, error)) {
 	op.Method = http.MethodPost
 	op.Security = []map[string][]string{{"operator": {}}}
+	op.BodyReadTimeout = -1 // no limit: one that passed while the daemon still works would call the request off
 	op.Errors = []int{400, 403, 404, 409, 422, 502, 503, 507}
 	op.Middlewares = huma.Middlewares{func(ctx huma.Context, next func(huma.Context)) {
 		if !mayControl(ctx.Context()) {
@@ -101,6 +102,7 @@ func (in *offInput) Resolve(ctx huma.Context) []error {
 	if ctx.SetReadDeadline(time.Now().Add(offWait)) != nil {
 		return nil // a connection whose reading can't be bounded is not waited for
 	}
+	defer ctx.SetReadDeadline(time.Time{}) // else it would pass while the outputs go off
 	body, err := io.ReadAll(io.LimitReader(ctx.BodyReader(), offBytes))
 	var who ByRequest
 	if err == nil && json.Unmarshal(body, &who) == nil {

@@ -9,7 +9,7 @@ import (
 	"nightbench/sweeps"
 )
 
-//go:generate go test -run TestDescription -update .
+//go:generate go test -run TestOpenAPI -update .
 
 // newRegistry is huma's registry, told of the words that stand for themselves.
 // The stand-ins live here so that the nouns need not know the web.

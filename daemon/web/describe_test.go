@@ -32,8 +32,8 @@ func description(t *testing.T) (huma.API, []byte) {
 	return api, out.Bytes()
 }
 
-// TestDescription holds openapi.json to the code. After a change: go generate ./daemon/web, then make the page's types anew.
-func TestDescription(t *testing.T) {
+// TestOpenAPI holds openapi.json to the code. After a change: go generate ./daemon/web, then make the page's types anew.
+func TestOpenAPI(t *testing.T) {
 	const golden = "openapi.json"
 	_, now := description(t)
 	if *update {
