@@ -112,6 +112,41 @@ func TestHonestUncertaintyOfThreeLevels(t *testing.T) {
 	}
 }
 
+// A board whose every transition jitters by 0.03 to 1.5 samples: the truth is the mean
+// of the process, which a record of few periods can only guess at.
+func TestHonestUncertaintyUnderJitter(t *testing.T) {
+	names := []string{"duty", "period", "average_voltage"}
+	tallies := run(t, 1000, 6, names, func(rng *rand.Rand) specimen {
+		s := draw(rng, 3000)
+		s.jitter = s.interval * logUniform(rng, 0.03, 1.5)
+		return s
+	})
+	for _, n := range names {
+		tally := tallies[n]
+		t.Logf("%-16s %s", n, tally)
+		if tally.coverage() < 0.91 || tally.ratio() > 1.2 || tally.wrong > 5 {
+			t.Errorf("%s: %s", n, tally)
+		}
+	}
+}
+
+// Records of up to a quarter million samples and thousands of periods.
+func TestHonestUncertaintyOfLongRecords(t *testing.T) {
+	names := []string{"duty", "period", "average_voltage", "high_level", "low_level"}
+	tallies := run(t, 60, 5, names, func(rng *rand.Rand) specimen {
+		s := draw(rng, 3000)
+		s.n = int(logUniform(rng, 2e4, 2.5e5))
+		return s
+	})
+	for _, n := range names {
+		tally := tallies[n]
+		t.Logf("%-16s %s", n, tally)
+		if tally.coverage() < 0.92 || tally.ratio() < 0.6 || tally.ratio() > 1.2 || tally.wrong > 0 {
+			t.Errorf("%s: %s", n, tally)
+		}
+	}
+}
+
 // drawMotor makes a freewheeling motor: driven, freewheel at a diode drop below zero, rest at the back-EMF.
 func drawMotor(rng *rand.Rand) specimen {
 	var s specimen

@@ -66,7 +66,8 @@ func (c *cycles) phases(cell float64) {
 		}
 	}
 	c.fitted = up / down
-	ends, insides := c.residual(c.bounds), c.residual(c.inner)
+	ends, endRange := c.residual(c.bounds)
+	insides, insideRange := c.residual(c.inner)
 	variance := (ends + insides) / (2*n - 2)
 	// Scatter up to that of transitions faster than a sample is put down to sampling,
 	// what goes beyond to jitter.
@@ -77,21 +78,28 @@ func (c *cycles) phases(cell float64) {
 	c.keep = coherence(c.fitted/cell, c.n(), u, jitter)
 	c.limit.sampled(cell, 1/c.keep)
 	c.middle.sampled(cell, 1/c.keep)
-	if n >= 8 && c.keep < 0.5 {
+	noise := math.Sqrt(max(c.limit.noise, c.middle.noise))
+	switch {
+	case endRange > c.limit.widest(cell)+4*noise || insideRange > c.middle.widest(cell)+4*noise:
+		c.keep = max(c.keep, 1/n)
+		c.limit.shaken(variance)
+		c.middle.shaken(variance)
+	case n >= 8 && c.keep < 0.5:
 		c.limit.seen(ends/(n-0.5), most, c.keep)
 		c.middle.seen(insides/(n-1.5), most, c.keep)
 	}
 }
 
-// residual is the sum of squares of what the fitted period leaves of the instants.
-func (c *cycles) residual(instants []float64) float64 {
-	var s, ss float64
+// residual is the sum of squares of what the fitted period leaves of the instants, and its range.
+func (c *cycles) residual(instants []float64) (squares, span float64) {
+	var s, ss, low, high float64
 	for k, t := range instants {
 		d := t - instants[0] - float64(k)*c.fitted
+		low, high = min(low, d), max(high, d)
 		s += d
 		ss += d * d
 	}
-	return ss - s*s/float64(len(instants))
+	return ss - s*s/float64(len(instants)), high - low
 }
 
 // durations returns, period by period, how long the high state, the low state and the whole lasted.

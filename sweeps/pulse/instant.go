@@ -66,6 +66,15 @@ func (m *instantModel) seen(variance, most, keep float64) {
 	m.grid = min(most, max(0.15*m.grid, 1.15*(variance-m.noise)/(1-keep)))
 }
 
+// widest is how far apart sampling alone can put instants that are evenly spaced: a
+// sample, and less for transitions that samples fall on.
+func (m *instantModel) widest(cell float64) float64 {
+	return 1.05 * min(cell, 2*math.Sqrt(12*m.grid))
+}
+
+// shaken takes the instants' whole scatter for their error: they jitter.
+func (m *instantModel) shaken(variance float64) { m.grid = max(m.grid, variance-m.noise) }
+
 func sq(x float64) float64 { return x * x }
 
 func b2f(b bool) float64 {
