@@ -1,4 +1,4 @@
-// A recorded stream, for tests: 31 points of a night, then the newest vitals.
+// A stream, for tests: 31 points of a made-up night (dev/practice.mjs, recorded by dev/record.mjs), then the newest vitals.
 import { readFileSync } from "node:fs";
 import { applyAll, type Night, noNight } from "./night";
 import type { Entry, StreamMessage, Vitals } from "./nouns";

@@ -1,7 +1,7 @@
 import { expect, test } from "vitest";
 import { entries, night } from "./fixture";
 import { apply, applyAll, countFlagged, logKept, noNight, quantitiesOf } from "./night";
-import type { Entry } from "./nouns";
+import { type Entry, lean } from "./nouns";
 
 const said = (seq: number, run: number, more: Partial<Entry> = {}): Entry => ({ seq, run, at: "2026-12-01T00:00:00Z", elapsed: 0, kind: "log", words: `line ${seq}`, ...more });
 
@@ -20,8 +20,12 @@ test("live, replayed in parts and replayed twice are the same night", () => {
   expect(applyAll(applyAll(noNight, entries.slice(0, 17)), entries.slice(9))).toEqual(night);
 });
 
-test("raw replies are not kept: a page left open all night holds what it draws", () => {
-  expect(JSON.stringify(night.points)).not.toContain('"raw"');
+test("a point is kept without raw replies and unmeasured predictions: a page left open all night holds what it draws", () => {
+  const p = night.points[0]!;
+  const speed = { value: 1, low: 0, high: 2, unit: "rad/s" };
+  const kept = lean({ ...p, predictions: { ...p.predictions, speed }, readings: p.readings.map((r) => ({ ...r, raw: ["+4.1E0"] })) });
+  expect(JSON.stringify(kept)).not.toContain("+4.1E0");
+  expect(Object.keys(kept.predictions)).toEqual(p.readings.map((r) => r.quantity));
 });
 
 test("a run that starts while the page is open takes the old one's place", () => {

@@ -27,9 +27,11 @@ export type State = Run["state"];
 /** A quantity's name. Predictions and the address bring any string, so it is one here. */
 export type Quantity = string;
 
-/** Drops the raw replies: a page left open all night keeps only what it draws. */
+/** Without raw replies and without predictions of what was not measured: a page left open all night keeps only what it draws. */
 export function lean(p: Point): Point {
-  return { ...p, readings: p.readings.map((r) => ({ ...r, raw: undefined })) };
+  const predictions: Point["predictions"] = {};
+  for (const { quantity } of p.readings) if (p.predictions[quantity]) predictions[quantity] = p.predictions[quantity];
+  return { ...p, predictions, readings: p.readings.map((r) => ({ ...r, raw: undefined })) };
 }
 
 export function flagged(p: Point): boolean {

@@ -149,6 +149,11 @@ export function pointWords(p: Point, sameSupply = false): string {
   return `${p.setpoint.recheck ? "Recheck at " : ""}${sameSupply ? ohms(p.setpoint.pot_resistance) : setting(p.setpoint)}${said.length ? ": " + said.join(", ") : ""}${flagged(p) ? ", flagged " : ". Good."}`;
 }
 
+/** An instrument's own name: a meter's role goes without saying beside the others. */
+export function shortly(name: string): string {
+  return name.replace(/^meter /, "");
+}
+
 /** The headline when no run is open. */
 export function headline(run: Run | null): string {
   if (!run) return "Nothing has been measured here yet";

@@ -1,8 +1,8 @@
 // Bench: each instrument, what it is, and between which nodes it stands.
-import { format } from "../data/format";
+import { bound, format } from "../data/format";
 import type { Bench, Instrument } from "../data/nouns";
 import { AlsoHere } from "../parts/instruments";
-import { named } from "../data/words";
+import { named, shortly } from "../data/words";
 import { useAnswer } from "./ask";
 import type { Views } from "./page";
 
@@ -40,10 +40,10 @@ function Row({ n, t, between, now }: { n: number; t: Instrument; between: string
   return (
     <tr>
       <td>{n}</td>
-      <td>{t.name === t.role ? t.name : `${t.role}, ${t.name}`}</td>
+      <td>{t.name === t.role ? t.name : `${t.role}, ${shortly(t.name)}`}</td>
       <td>{between}</td>
       <td>{who}<br /><span class="sub">{[t.dialect && `dialect ${t.dialect}`, t.address].filter(Boolean).join(", ")}</span></td>
-      <td>{now}</td>
+      <td>{bound(now)}</td>
     </tr>
   );
 }
@@ -53,7 +53,7 @@ export function between(b: Bench, t: Instrument): string {
   const w = b.wiring;
   switch (t.role) {
     case "supply": return w.supply.between.join(", ");
-    case "meter": return w.meters.find((m) => m.name === t.name)?.between.join(", ") ?? "";
+    case "meter": return w.meters.find((m) => m.name === shortly(t.name))?.between.join(", ") ?? "";
     case "scope": return (w.scope?.channels ?? []).map((c) => `${c.number}: ${c.between.join(", ")}, ×${c.probe}`).join("; ");
     case "cutoff": return "in the supply lead";
     case "pot": return "as the board’s variable resistor";
@@ -70,7 +70,7 @@ function Limits({ b }: { b: Bench }) {
   if (supply.fuse) lines.push(["fuse", `${format(supply.fuse, "A")}, in the supply lead`]);
   if (pot) lines.push(["pot", `at most ${format(pot.max_terminal_voltage, "V")} and ${format(pot.max_current, "A")}; ${format(pot.end_to_end, "Ω")} end to end; parked at code ${pot.park}`]);
   if (scope) lines.push(["scope", scope.earthed ? "its clip is on earth" : "not on earth"]);
-  for (const m of meters) if (m.due) lines.push([m.name, `reads ${named(m.reads)}; calibrated ${m.calibrated || "never"}, due ${m.due}`]);
+  for (const m of meters) lines.push([m.name, `reads ${named(m.reads)}${m.due ? `; calibrated ${m.calibrated}, due ${m.due}` : ""}`]);
   return (
     <>
       <h2>Limits in force</h2>

@@ -14,7 +14,7 @@ const run: Run = { id: 41, state: "running", reason: "", plan: "Overnight", boar
 const status: Status = { version: "1", practice: true, pace: 20, bench: "Bench 2", may_control: true, cautions: [], started_at: run.started_at, vitals };
 const wired: Bench = {
   wiring: { bench: "Bench 2", practice: true, supply: { between: ["supply", "common"], max_voltage: 13, max_current: 1, over_voltage: 14, fuse: 1 }, meters: [{ name: "average", reads: "average_voltage", between: ["load_hi", "load_lo"], burden: 0, input_resistance: 0, calibrated: "2026-03-01", due: "2027-03-01" }], },
-  instruments: [{ name: "supply", role: "supply", address: "tcp://127.0.0.1:1", dialect: "standard", identity: { maker: "Practice", model: "S", serial: "1", firmware: "1", raw: "" } }, { name: "average", role: "meter", address: "tcp://127.0.0.1:2", dialect: "standard", identity: { maker: "", model: "", serial: "", firmware: "", raw: "a meter" } }],
+  instruments: [{ name: "supply", role: "supply", address: "tcp://127.0.0.1:1", dialect: "standard", identity: { maker: "Practice", model: "S", serial: "1", firmware: "1", raw: "" } }, { name: "meter average", role: "meter", address: "tcp://127.0.0.1:2", dialect: "standard", identity: { maker: "", model: "", serial: "", firmware: "", raw: "a meter" } }],
 };
 const client: Partial<Client> = {
   status: async () => status, runs: async () => [run, { ...run, id: 40, state: "tripped", reason: "motor current above 0.8 A", pace: 1, ended_at: "2026-11-29T01:00:00Z", started_at: "2026-10-28T22:00:00Z" }],

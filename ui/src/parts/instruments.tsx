@@ -1,12 +1,14 @@
 // A line an instrument, and who else is looking.
+import { bound } from "../data/format";
 import type { Vitals } from "../data/nouns";
+import { shortly } from "../data/words";
 
 export function Instruments({ vitals, stale }: { vitals: Vitals | null; stale: boolean }) {
   if (!vitals?.instruments.length) return null;
   return (
     <>
       <h2>{stale ? "Instruments, when last heard" : "Instruments"}</h2>
-      <ul class="state">{vitals.instruments.map((a) => <li key={a.name}><span class="k">{a.name}</span><span>{a.words}</span></li>)}</ul>
+      <ul class="state">{vitals.instruments.map((a) => <li key={a.name}><span class="k">{shortly(a.name)}</span><span>{bound(a.words)}</span></li>)}</ul>
     </>
   );
 }

@@ -1,7 +1,7 @@
 // The newest record: one line in ink, its levels named at the right, its times on brackets.
 import { clockSeconds, count, format, formatU, nbsp, tidy } from "../data/format";
 import { type Point, reading, type Wave, type Waveforms } from "../data/nouns";
-import { spread } from "./place";
+import { labelWidth, spread } from "./place";
 import { linear, ticks } from "./scale";
 import { type Level, levels, outline, twoPeriods, volts } from "./wave";
 import { useWidth } from "./width";
@@ -15,7 +15,7 @@ export function Trace({ record, point }: TraceProps) {
   const w = record.records[0];
   if (!w || w.codes.length < 2) return null;
   const narrow = width < 600;
-  const [left, right, bottom] = [narrow ? 34 : 40, width - (narrow ? 84 : 140), top + 180];
+  const [left, right, bottom] = [narrow ? 34 : 40, width - (narrow ? 92 : 140), top + 180];
   const found = levels(w);
   const win = twoPeriods(w, found);
   const shown = w.codes.slice(win.from, win.to + 1);
@@ -67,7 +67,7 @@ function Times({ w, point, first, x, y, right }: { w: Wave; point: Point; first:
   const high = duty?.value ? x(first + period * duty.value) : null;
   const u = f.u === null ? null : f.u / f.value ** 2;
   const words = `one period ${formatU(1 / f.value, u, "s")}` + (duty && duty.value !== null ? `, duty ${formatU(duty.value, duty.u, "1")}` : "");
-  const mid = Math.max((a + b) / 2, 120);
+  const mid = Math.max((a + b) / 2, labelWidth(words) / 2);
   return (
     <g>
       <path class="brk" d={bracket(a, b, y + 22) + (high ? bracket(a, high, y) : "")} />
