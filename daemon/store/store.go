@@ -73,6 +73,9 @@ func open(ctx context.Context, path string, clock instruments.Clock, steps fs.FS
 	if err := os.MkdirAll(filepath.Dir(path), 0o700); err != nil {
 		return nil, fmt.Errorf("%w; choose a state folder that can be written with --state", err)
 	}
+	if err := ownerOnly(path); err != nil {
+		return nil, err
+	}
 	if s.write, err = connect(path, writerSettings, 1); err != nil {
 		return nil, err
 	}
@@ -88,6 +91,15 @@ func open(ctx context.Context, path string, clock instruments.Clock, steps fs.FS
 	}
 	s.bell.ring(last)
 	return s, s.reserve.fill()
+}
+
+// ownerOnly makes an absent file with mode 0600; SQLite gives its helper files the same.
+func ownerOnly(path string) error {
+	f, err := os.OpenFile(path, os.O_CREATE|os.O_RDWR, 0o600)
+	if err != nil {
+		return fmt.Errorf("%w; look at the owner and mode of the state folder and its files", err)
+	}
+	return f.Close()
 }
 
 // OpenReader opens the journal for reading only, beside a daemon that writes

@@ -152,11 +152,26 @@ func TestTablesAreStrict(t *testing.T) {
 
 func scanName(rows *sql.Rows) (n string, err error) { return n, rows.Scan(&n) }
 
-func TestPathWithOddCharacters(t *testing.T) {
+// TestFilesAreTheOwners: the file and its helpers, in a folder with an odd name, are nobody else's.
+func TestFilesAreTheOwners(t *testing.T) {
 	path := filepath.Join(t.TempDir(), "bench #2?x=1 %41", "nightbench.db")
-	openAt(t, path)
-	if _, err := os.Stat(path); err != nil {
-		t.Error(err)
+	mustRun(t, openAt(t, path))
+	for _, name := range []string{path, path + "-wal", path + "-shm", path + ".reserve"} {
+		if i, err := os.Stat(name); err != nil || i.Mode().Perm() != 0o600 {
+			t.Errorf("%v %v", i, err)
+		}
+	}
+}
+
+func TestStateFolderCantBeWritten(t *testing.T) {
+	file := filepath.Join(t.TempDir(), "file")
+	if err := os.WriteFile(file, nil, 0o600); err != nil {
+		t.Fatal(err)
+	}
+	for _, path := range []string{filepath.Join(file, "nightbench.db"), t.TempDir()} { // below a file; a folder itself
+		if _, err := Open(t.Context(), path, instruments.NewClock(1)); err == nil || !strings.Contains(err.Error(), "state folder") {
+			t.Errorf("%s: %v", path, err)
+		}
 	}
 }
 

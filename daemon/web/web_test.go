@@ -85,7 +85,7 @@ func (c *control) Off(ctx context.Context, by string) (sweeps.Off, error) {
 
 // house is a server on real listeners over a real store.
 type house struct {
-	*testing.T
+	testing.TB
 	store   *store.Store
 	control *control
 	server  *Server
@@ -95,14 +95,14 @@ type house struct {
 	stop    func() // ends Serve and waits for it
 }
 
-func newHouse(t *testing.T, change ...func(*Server)) *house {
+func newHouse(t testing.TB, change ...func(*Server)) *house {
 	t.Helper()
 	dir := t.TempDir()
 	st, err := store.Open(t.Context(), filepath.Join(dir, "nightbench.db"), instruments.NewClock(1))
 	if err != nil {
 		t.Fatal(err)
 	}
-	h := &house{T: t, store: st, control: &control{}, socket: filepath.Join(dir, "socket"), web: &http.Client{Transport: &http.Transport{}}}
+	h := &house{TB: t, store: st, control: &control{}, socket: filepath.Join(dir, "socket"), web: &http.Client{Transport: &http.Transport{}}}
 	h.server = New(Options{
 		Store: st, Control: h.control, Token: token, Version: "v0.1.0", Cautions: []string{"A software button is no emergency stop."}, Clock: instruments.NewClock(20),
 		Page: fstest.MapFS{"index.html": {Data: []byte("<!doctype html><title>leaf</title>")}, "assets/leaf-1a2b.js": {Data: []byte("let leaf")}, "icon.svg": {Data: []byte("<svg/>")}, ".keep": {}},
