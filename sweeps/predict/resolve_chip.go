@@ -152,13 +152,16 @@ func transistorPart(c *Catalogue, d *sweeps.Driver) (TransistorPart, error) {
 	p := TransistorPart{
 		Name: "inline", Kind: string(d.Stage), HFEMin: d.Part.HFEMin,
 		VBE: Figure{Typical: d.Part.VBE}, VCESat: Figure{Typical: d.Part.VCESat},
-		VgsTh: Figure{Typical: d.Part.VgsTh}, RdsScale: Figure{Typical: 1},
+		VgsTh: Figure{Typical: d.Part.VgsTh}, RdsScale: Figure{Typical: 1}, Breakdown: inlineBreakdown,
 	}
 	if d.Stage == sweeps.StageNMOS {
 		p.Rds = [][2]float64{{max(inlineGate, d.Part.VgsTh+1), d.Part.RdsOn}}
 	}
 	return p, p.check()
 }
+
+// inlineBreakdown is taken for an inline transistor, V: the lowest of the catalogue's kind.
+const inlineBreakdown = 30
 
 // inlineGate is the gate voltage, V, at which logic-level parts are specified.
 const inlineGate = 4.5

@@ -178,7 +178,7 @@ func (m *Model) account(o *outcome, p *parts, c *conditions) {
 	if m.board.Timing.Network == sweeps.OutputFed {
 		charging = o.into
 	}
-	load := o.wave.spells[driven].q / period
+	load := (o.wave.spells[driven].q + o.wave.spells[clamped].q) / period // clamped: back into the supply
 	high, low := m.carried(o)
 	o.highLevel, _ = o.output.high(high + charging)
 	o.lowLevel, _ = o.output.sink(low)
