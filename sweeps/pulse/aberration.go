@@ -3,13 +3,14 @@ package pulse
 import (
 	"math"
 
+	"gonum.org/v1/gonum/stat/distuv"
 	"nightbench/sweeps/uncertainty"
 )
 
 // aberrations adds overshoot after rising and undershoot after falling transitions, as
-// ratios of the amplitude. The post-transition region is three transition
-// durations long, at least a third of the state (IEEE Std 181 leaves its length to the user).
-func (a *analysis) aberrations(c cycles) {
+// ratios of the amplitude. The post-transition region is the first third of the state,
+// at least three samples (IEEE Std 181 leaves its length to the user).
+func (a *analysis) aberrations() {
 	w := a.high.level - a.low.level
 	occ := func(high bool) []span { return spans(a.driven.edges, high, len(a.codes)) }
 	a.add(a.aberration("overshoot", occ(true), a.high, w, 1))
@@ -20,44 +21,80 @@ func (a *analysis) aberrations(c cycles) {
 	a.add(a.aberration("undershoot", low, a.low, w, -1))
 }
 
-func (a *analysis) aberration(name string, occ []span, s state, w, sign float64) Quantity {
-	var peaks []float64
-	stride := max(1, len(occ)/64)
-	looked := 1
-	for k := 0; k < len(occ); k += stride {
+// peaks gathers the excursions beyond a level after each of several transitions, in codes.
+type peaks struct {
+	over   []float64
+	sharp  float64 // mean drop from a peak to its higher neighbour
+	looked int     // samples looked at after each transition
+}
+
+const mostPeaks = 64
+
+func (a *analysis) peaks(occ []span, level, sign float64) peaks {
+	var p peaks
+	for k := 0; k < len(occ); k += max(1, len(occ)/mostPeaks) {
 		o := occ[k]
 		if o.from == 0 {
 			continue // begins before the record
 		}
-		n := max(3, (o.to-o.from+1)/3)
-		end := min(o.from+n, o.to)
-		looked = max(looked, end-o.from+1)
-		peaks = append(peaks, a.peak(o.from, end, sign)-sign*s.level)
+		end := min(o.from+max(3, (o.to-o.from+1)/3), o.to)
+		y, drop := a.peak(o.from, end, sign)
+		p.over = append(p.over, y-sign*level)
+		p.sharp += drop
+		p.looked = max(p.looked, end-o.from+1)
 	}
-	if len(peaks) == 0 {
-		peaks = []float64{0}
+	p.sharp /= float64(max(1, len(p.over)))
+	return p
+}
+
+func (a *analysis) aberration(name string, occ []span, s state, w, sign float64) Quantity {
+	p := a.peaks(occ, s.level, sign)
+	n := float64(len(p.over))
+	if n == 0 {
+		p.over, n = []float64{0}, 1
 	}
-	n := float64(len(peaks))
 	sigma := math.Sqrt(max(a.noise, a.q*a.q/12))
-	// The largest of k noisy samples of a flat top lies √(2 ln k) σ above it, that of a sharp peak hardly.
-	flat := math.Sqrt(2*math.Log(float64(max(2, looked)))) * sigma
-	over := mean(peaks)
-	bias := flat / 2
-	if over > 3*flat {
-		bias = 0.4 * sigma
+	over := mean(p.over)
+	flat := highestOf(float64(p.looked)) * sigma
+	// On a flat top the largest of all samples is what noise makes it; a peak well above the
+	// noise is lifted by that of the two or three samples near its top.
+	clear := min(1, max(0, (over-flat)/(2*sigma+flat)))
+	lift := clear*0.6*sigma + (1-clear)*flat
+	x, missed := over-lift, 0.0
+	if p.sharp > 0.2*over && over > flat+2*sigma {
+		// Ringing so fast that samples miss its peak: the highest of all transitions is nearer to it.
+		top := maxOf(p.over) - highestOf(n)*sigma - 0.6*sigma
+		missed = 0.5*min(p.sharp, over)/math.Sqrt(n) + 0.3*max(0, top-x)
+		x = max(x, top)
+		a.flag(FastRinging, "ringing is too fast for the sample interval: overshoot may be larger than given")
 	}
-	x := max(0, over-bias)
-	scatter := max(sigma, deviation(peaks)) / math.Sqrt(n)
-	return a.quantity(name, "1", x/w, 0, 0, 0,
+	scatter := max(sigma*0.6, deviation(p.over)) / math.Sqrt(n)
+	return a.quantity(name, "1", max(0, x)/w, 0, 0, 0,
 		uncertainty.Scatter("noise", uncertainty.Value{U: scatter / w, DOF: max(1, n-1)}),
-		uncertainty.Known("peak of noise", bias/math.Sqrt(3)/w),
-		uncertainty.Known("sample interval", 0.05*x/w),
-		uncertainty.Known("state levels", a.uLevel(s)/w))
+		uncertainty.Known("peak of noise", (0.25*flat+0.2*a.q)/w),
+		uncertainty.Known("sample interval", (missed+0.06*max(0, x))/w),
+		uncertainty.Known("state levels", math.Hypot(a.uLevel(s), a.q/math.Sqrt(12))/w))
+}
+
+// highestOf is the expected largest of n standard normal values (Blom 1958).
+func highestOf(n float64) float64 {
+	if n <= 1 {
+		return 0
+	}
+	return distuv.UnitNormal.Quantile((n - 0.375) / (n + 0.25))
+}
+
+func maxOf(values []float64) float64 {
+	m := values[0]
+	for _, v := range values {
+		m = max(m, v)
+	}
+	return m
 }
 
 // peak is the highest value (of sign × code) in [from, to], the top of the parabola
-// through it and its neighbours.
-func (a *analysis) peak(from, to int, sign float64) float64 {
+// through it and its neighbours, and how far it stands above the higher neighbour.
+func (a *analysis) peak(from, to int, sign float64) (top, drop float64) {
 	best := from
 	for i := from; i <= to; i++ {
 		if sign*float64(a.codes[i]) > sign*float64(a.codes[best]) {
@@ -66,12 +103,13 @@ func (a *analysis) peak(from, to int, sign float64) float64 {
 	}
 	y := sign * float64(a.codes[best])
 	if best == 0 || best == len(a.codes)-1 {
-		return y
+		return y, 0
 	}
 	l, r := sign*float64(a.codes[best-1]), sign*float64(a.codes[best+1])
+	drop = y - max(l, r)
 	bend := l - 2*y + r
-	if bend >= 0 {
-		return y
+	if bend >= 0 || best == from {
+		return y, drop
 	}
-	return y + min(-sq(r-l)/(8*bend), 0.3*(y-min(l, r)))
+	return y + min(-sq(r-l)/(8*bend), 0.3*(y-min(l, r))), drop
 }

@@ -192,7 +192,9 @@ func (a *analysis) timing(c cycles) {
 	a.add(period)
 	a.add(tHigh)
 	a.add(tLow)
-	a.add(a.jitter(c, whole))
+	if c.n() >= 2 {
+		a.add(a.jitter(c, whole))
+	}
 }
 
 // duty is the share of the high state in the whole periods. The boundaries' errors
@@ -233,7 +235,8 @@ func (a *analysis) jitter(c cycles, whole []float64) Quantity {
 	}
 	x := math.Sqrt(max(0, v-own))
 	// u of a variance is √(2/(n−1)) of it; near zero the root turns it into its own root.
-	uv := math.Sqrt(2/max(1, n-1))*max(v, own) + 0.5*own
+	// Jitter well below a sample does not show when all instants keep their place.
+	uv := math.Sqrt(2/max(1, n-1))*max(v, own) + 0.5*own + 0.1*c.limit.grid
 	u := min(math.Sqrt(uv), uv/2/max(x, 1e-300))
 	return a.quantity("jitter", "s", x, 0, 0, 0, uncertainty.Scatter("few periods", uncertainty.Value{U: u, DOF: max(1, n-1)}))
 }

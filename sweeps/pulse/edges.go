@@ -94,7 +94,8 @@ func (s *scanner) locateOne(e *edge) {
 	a := s.high - s.low
 	y10, y50, y90 := s.low+0.1*a, s.low+0.5*a, s.low+0.9*a
 	e.mid = s.instant(*e, y50)
-	e.tenth, e.ninth = s.instant(*e, y10), s.instant(*e, y90)
+	wide := s.widened(*e)
+	e.tenth, e.ninth = s.instant(wide, y10), s.instant(wide, y90)
 	e.inside, e.early = 0, 0
 	for _, c := range s.codes[e.from+1 : e.to] {
 		y := float64(c)
@@ -106,6 +107,17 @@ func (s *scanner) locateOne(e *edge) {
 			e.early++
 		}
 	}
+}
+
+// widened is the transition with a third more at either end: where noise made the state
+// boundaries wide, the samples that end it come before the waveform is clear of the
+// 10 % and 90 % levels.
+func (s *scanner) widened(e edge) edge {
+	more := (e.to - e.from) / 3
+	if s.bound > 0.025*(s.high-s.low) {
+		e.from, e.to = max(0, e.from-more), min(len(s.codes)-1, e.to+more)
+	}
+	return e
 }
 
 // instant returns from + the time the transition spends before the level, with

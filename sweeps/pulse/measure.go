@@ -23,7 +23,7 @@ func (a *analysis) measure() {
 	a.add(rms)
 	a.add(a.ripple())
 	a.transitions(c)
-	a.aberrations(c)
+	a.aberrations()
 	if a.three {
 		a.freewheelAndRest(c)
 	}
@@ -92,7 +92,7 @@ func (a *analysis) ripple() Quantity {
 	slow := max(0, s.spread-s.noise)
 	n := float64(max(2, s.n))
 	// Variances of spread and noise from n samples; rounding adds its own when noise does not cover it.
-	uv := math.Sqrt(sq(s.spread)+1.5*sq(s.noise))*math.Sqrt(2/n) + sq(s.uRound)
+	uv := math.Sqrt(sq(s.spread)+1.5*sq(s.noise))*math.Sqrt(2/n) + sq(s.uRound) + 3*sq(s.uSettle)
 	rms := math.Sqrt(slow)
 	u := min(math.Sqrt(uv), uv/2/max(rms, 1e-300))
 	k := 2 * math.Sqrt2 * a.volt
@@ -130,14 +130,18 @@ func (a *analysis) transition(name string, rising bool, m instantModel) Quantity
 	n := float64(len(values))
 	x := mean(values)
 	w := a.driven.high - a.driven.low
-	// An exponential transition is at its end a fifth as steep as at the middle, a straight one as steep.
+	// An exponential transition is at its end a fifth as steep as at the middle, a straight one as
+	// steep; in between for noise (a half) and for the converter's steps (0.4, hence 2.5).
 	noise := (crossingVariance(math.Sqrt(a.noise)/(0.5*m.slope*a.cell)) + crossingVariance(math.Sqrt(a.noise)/(m.slope*a.cell))) * sq(a.cell)
 	level := x * math.Hypot(a.uLevel(a.high), a.uLevel(a.low)) / w
 	tau := x / a.cell
-	e := scatterBeyond(values, noise+sq(0.3*a.cell/tau))
+	// Bends at the 10 % and 90 % levels are cut short by straight lines: late by 0.55/τ samples for a
+	// symmetric transition, 0.7/τ for an exponential one (simulated).
+	e := scatterBeyond(values, noise+sq(0.5*a.cell/tau))
 	return a.quantity(name, "s", x, 0, 0, x,
 		uncertainty.Scatter("noise", uncertainty.Value{U: math.Sqrt(noise / n), DOF: max(1, float64(a.pairs-1))}),
-		uncertainty.Known("sample interval", 0.3*a.cell/tau),
+		uncertainty.Known("sample interval", 0.65*a.cell/tau),
+		uncertainty.Known("converter steps", 2.5*a.q/math.Sqrt(12)/m.slope),
 		uncertainty.Known("state levels", level),
 		uncertainty.Scatter("scatter of transitions", uncertainty.Value{U: e.mean, DOF: e.dof}))
 }
@@ -186,11 +190,12 @@ func (a *analysis) freewheelAndRest(c cycles) {
 
 // bears says which quantities a flag bears on; flags not listed bear on all.
 var bears = map[string][]string{
-	EdgeTooFast: {},
+	EdgeTooFast: {"overshoot", "undershoot"}, // what lies between samples is not seen
 	Clipped:     {"average_voltage", "high_level", "low_level", "amplitude", "rms", "ripple", "overshoot", "undershoot", "back_emf"},
 	Sagging:     {"high_level", "amplitude", "ripple"},
 	FewCodes:    {"average_voltage", "high_level", "low_level", "amplitude", "rms", "ripple", "overshoot", "undershoot", "back_emf"},
 	Scale:       {"average_voltage", "high_level", "low_level", "amplitude", "rms", "ripple", "back_emf"},
+	FastRinging: {"overshoot", "undershoot"},
 	CoarseTime:  {"duty", "frequency", "period", "t_high", "t_low", "rise_time", "fall_time", "jitter", "conduction"},
 }
 

@@ -91,6 +91,7 @@ const (
 	UnevenTime   = "uneven time stamps"
 	Scale        = "scale"
 	Noisy        = "noisy"
+	FastRinging  = "fast ringing"
 )
 
 // Quantity is one pulse parameter: its estimate and budget, and the flags that bear on it.

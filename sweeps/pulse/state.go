@@ -42,11 +42,11 @@ type state struct {
 	uDroop  float64
 }
 
-// before is the last sample of a state that is clear of the transition ending it: half
-// the transition's length earlier than where it leaves the state boundary, if the state
-// since its first sample is long enough.
+// before is the last sample of a state that is clear of the transition ending it: the
+// transition's length earlier than where it leaves the state boundary, if that leaves three
+// quarters of the state since its first sample.
 func before(e edge, since int) int {
-	return max(e.from-(e.to-e.from)/2, min(e.from, since+(e.from-since)*3/4))
+	return max(e.from-(e.to-e.from), min(e.from, since+(e.from-since)*3/4))
 }
 
 const (

@@ -15,7 +15,6 @@ type synth struct {
 	up, down  response
 	jitter    float64 // s, standard deviation of each transition
 	sag       float64 // share of the amplitude lost at the end of the high state
-	notches   int     // samples forced low in the middle of every fifth high state
 	freewheel float64 // V; three levels when conduct > duty: driven, freewheel, low as rest
 	conduct   float64
 }

@@ -1,0 +1,96 @@
+package pulse
+
+import (
+	"math"
+	"math/rand/v2"
+	"testing"
+
+	"pgregory.net/rapid"
+)
+
+// The parameters beside times and levels: honest too, if more cautious.
+func TestHonestUncertaintyOfTheRest(t *testing.T) {
+	rng := rand.New(rand.NewPCG(1, 9))
+	tallies := map[string]*tally{}
+	add := func(r Result, name string, truth float64) {
+		if tallies[name] == nil {
+			tallies[name] = &tally{}
+		}
+		if q, ok := r.Get(name); ok {
+			tallies[name].add(q, truth)
+		}
+	}
+	for range 2000 {
+		s := draw(rng, 3000)
+		short := min(s.duty, 1-s.duty) * s.period
+		d, e := logUniform(rng, 0.03, 0.12)*short, logUniform(rng, 0.03, 0.12)*short
+		s.up, s.down = ramp(d), gaussian(e)
+		s.jitter = 0.3 * s.interval * float64(rng.IntN(2))
+		r, err := Analyse(s.capture(rng), Options{})
+		if err != nil {
+			t.Fatal(err)
+		}
+		add(r, "rise_time", d)
+		add(r, "fall_time", e)
+		add(r, "jitter", s.jitter*math.Sqrt2)
+		add(r, "overshoot", 0)
+		add(r, "undershoot", 0)
+		add(r, "ripple", 0)
+	}
+	for name, tally := range tallies {
+		t.Logf("%-12s %s", name, tally)
+		if tally.n < 150 || tally.coverage() < 0.93 || tally.ratio() > 1.2 || 500*tally.wrong > tally.n {
+			t.Errorf("%s: %s", name, tally)
+		}
+	}
+}
+
+// Whatever comes in, nothing that is not finite comes out, and no value without an uncertainty.
+func TestNothingUnusableComesOut(t *testing.T) {
+	rapid.Check(t, func(t *rapid.T) {
+		seed := rapid.Uint64().Draw(t, "seed")
+		rng := rand.New(rand.NewPCG(seed, 1))
+		n := rapid.IntRange(3, 400).Draw(t, "samples")
+		reach := rapid.SampledFrom([]int{1, 2, 5, 200, 32767}).Draw(t, "reach")
+		kind := rapid.IntRange(0, 4).Draw(t, "kind")
+		r := Record{PerCode: rapid.SampledFrom([]float64{0.1, -0.1, 1e-12}).Draw(t, "scale"), Interval: 1e-6}
+		walk := 0
+		for i := range n {
+			c := 0
+			switch kind {
+			case 0:
+				c = rng.IntN(2*reach+1) - reach
+			case 1:
+				walk += rng.IntN(3) - 1
+				c = walk * reach / 10
+			case 2:
+				c = reach * (i / 2 % 2)
+			case 3:
+				c = reach * b2i(rng.IntN(9) == 0)
+			case 4:
+				c = int(float64(reach) * math.Sin(float64(i)))
+			}
+			r.Codes = append(r.Codes, int16(max(math.MinInt16, min(math.MaxInt16, c))))
+		}
+		if rapid.Bool().Draw(t, "stamped") {
+			x := 0.0
+			for range n {
+				r.Times = append(r.Times, x)
+				x += 1e-6 * float64(rng.IntN(3))
+			}
+			r.Times[n-1] = x + 1e-6
+		}
+		res, err := Analyse(r, Options{Expected: 9})
+		if err != nil {
+			t.Fatal(err)
+		}
+		for _, q := range res.Quantities {
+			if err := q.Check(); err != nil {
+				t.Fatalf("%s: %v", q.Name, err)
+			}
+			if q.U() <= 0 {
+				t.Fatalf("%s has no uncertainty; %s %v", q.Name, res.Class, res.Flags)
+			}
+		}
+	})
+}
