@@ -7,6 +7,8 @@ import (
 	"nightbench/instruments/practice/circuit"
 	"nightbench/sweeps"
 	"nightbench/sweeps/predict"
+
+	"gonum.org/v1/gonum/interp"
 )
 
 // specimen is one physical board of a design: the true value of every part, drawn within its tolerance from a seed.
@@ -106,20 +108,41 @@ func (s *specimen) timer() (circuit.Timer, error) {
 	return t, nil
 }
 
+// curve is an output table as a real output behaves: smooth and monotone between the
+// published rows. The simulation joins points by straight lines, so that it gets many.
 func curve(supply float64, rows [][2]float64, scale float64) circuit.Curve {
 	c := circuit.Curve{Supply: supply}
-	for _, r := range rows {
-		c.Points = append(c.Points, circuit.Point{Amps: r[0], Volts: r[1] * scale})
+	if len(rows) < 3 {
+		for _, r := range rows {
+			c.Points = append(c.Points, circuit.Point{Amps: r[0], Volts: r[1] * scale})
+		}
+		return c
 	}
+	x, y := make([]float64, len(rows)), make([]float64, len(rows))
+	for i, r := range rows {
+		x[i], y[i] = r[0], r[1]*scale
+	}
+	var smooth interp.FritschButland
+	if err := smooth.Fit(x, y); err != nil {
+		panic(err) // the catalogue's tables rise: its reader checks it
+	}
+	for i := 1; i < len(x); i++ {
+		for k := range 10 {
+			a := x[i-1] + (x[i]-x[i-1])*float64(k)/10
+			c.Points = append(c.Points, circuit.Point{Amps: a, Volts: smooth.Predict(a)})
+		}
+	}
+	last := len(x) - 1
+	c.Points = append(c.Points, circuit.Point{Amps: x[last], Volts: y[last]})
 	return c
 }
 
 func ownCurve(rows []sweeps.CurrentVoltage) circuit.Curve {
-	c := circuit.Curve{Supply: 9}
+	var pairs [][2]float64
 	for _, r := range rows {
-		c.Points = append(c.Points, circuit.Point{Amps: r.Current.SI(), Volts: r.Voltage.SI()})
+		pairs = append(pairs, [2]float64{r.Current.SI(), r.Voltage.SI()})
 	}
-	return c
+	return curve(9, pairs, 1)
 }
 
 // networks maps the board file's words to the simulation's.

@@ -51,7 +51,7 @@ func (d *deriver) roads(q sweeps.Quantity) []road {
 		return d.drops()
 	case sweeps.PotResistance:
 		return []road{d.pot()}
-	case sweeps.HighLevel, sweeps.LowLevel, sweeps.BackEMF, sweeps.Conduction, sweeps.Ripple:
+	case sweeps.BackEMF, sweeps.Conduction:
 		return []road{d.load.road(q)}
 	}
 	return []road{d.timer.road(q)}

@@ -24,7 +24,7 @@ func (d *deriver) directDrop() road {
 	r.name += ", driven level"
 	r.budget = uncertainty.Linear([]float64{-1}, r.budget)
 	r.budget.X += vs
-	if d.lowSide() {
+	if d.lowSide() || d.board.Load.ToSupply {
 		return d.withBurden(r)
 	}
 	// The node is seen from common: here the supply's error stays.

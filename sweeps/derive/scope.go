@@ -31,13 +31,17 @@ func (d *deriver) analyse() {
 		if c.Between[1] != instruments.NodeCommon {
 			continue
 		}
-		switch c.Between[0] {
-		case instruments.NodeTimerOut:
+		switch {
+		case c.Between[0] == instruments.NodeTimerOut:
 			d.timer = d.view(c, vs, false)
-			if d.board.Driver.Stage == sweeps.StageNone && !d.board.Load.ToSupply {
+			switch {
+			case d.lowSide():
+			case d.board.Load.ToSupply:
+				d.load = d.view(c, vs, true) // the load stands between supply and timer_out
+			default:
 				d.load = d.timer // the load stands between timer_out and common
 			}
-		case instruments.NodeLoadLow:
+		case c.Between[0] == instruments.NodeLoadLow && d.lowSide():
 			d.load = d.view(c, vs, true)
 		}
 	}
