@@ -175,3 +175,14 @@ func supplyLog(t *testing.T, state string) (lines []practice.LogLine) {
 	}
 	return lines
 }
+
+// eventually waits until something holds.
+func eventually(t *testing.T, what string, holds func() bool) {
+	t.Helper()
+	for deadline := time.Now().Add(60 * time.Second); time.Now().Before(deadline); time.Sleep(50 * time.Millisecond) {
+		if holds() {
+			return
+		}
+	}
+	t.Fatalf("never came: %s", what)
+}

@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"log/slog"
 	"runtime/debug"
+	"strings"
 
 	"nightbench/daemon/app"
 
@@ -19,7 +20,7 @@ type cli struct {
 }
 
 // cautions are shown at start, on the page and on reports.
-const cautions = app.Cautions
+var cautions = "Cautions. " + strings.Join(app.Cautions, "\n")
 
 // newRoot is the command with all its subcommands.
 func newRoot(last context.Context, args []string) *cobra.Command {

@@ -47,8 +47,8 @@ type Run struct {
 	Measured    int        `json:"measured"` // points in the journal
 	Flagged     int        `json:"flagged"`
 	Pace        float64    `json:"pace"`
-	Seed        uint64     `json:"seed"`
-	Version     string     `json:"version"` // of the program
+	Seed        uint64     `json:"seed,string"` // a string: JavaScript keeps 53 bits of a number
+	Version     string     `json:"version"`     // of the program
 	Quantities  []Quantity `json:"quantities"`
 	Files       []File     `json:"files,omitempty"` // bench, board and plan, verbatim
 	Instruments []string   `json:"instruments,omitempty"`

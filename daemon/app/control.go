@@ -96,6 +96,7 @@ func (d *Daemon) know(off sweeps.Off) {
 	d.mu.Lock()
 	defer d.mu.Unlock()
 	at := off.At
+	runner.KnowOff(&d.idle, off)
 	d.idle.Energised, d.idle.Since, d.idle.ConfirmedBy = sweeps.EnergisedUnconfirmed, &at, nil
 	if off.Confirmed {
 		d.idle.Energised, d.idle.ConfirmedBy = sweeps.EnergisedNo, off.By

@@ -19,9 +19,12 @@ import (
 )
 
 // Cautions are shown at start, on the page and on reports.
-const Cautions = `Cautions. Switching off by software is no emergency stop: keep the mains switch within reach. Secure and
-guard the motor; a dry pump overheats; nothing flammable near; fit the inline fuse; mind polarity, the
-scope's earth and coast-down. Local rules and licensed practice come first.`
+var Cautions = []string{
+	"Switching off by software is no emergency stop: keep the mains switch within reach.",
+	"Secure and guard the motor; a dry pump overheats; nothing flammable near.",
+	"Fit the inline fuse; mind polarity, the scope's earth and coast-down.",
+	"Local rules and licensed practice come first.",
+}
 
 // Options are what a daemon is started with.
 type Options struct {
@@ -128,7 +131,7 @@ func (d *Daemon) openPage(ctx context.Context, u *undo) error {
 	if err != nil {
 		return fmt.Errorf("the page's address: %w; choose another with --listen, port 0 takes any free one", err)
 	}
-	srv := web.New(web.Options{Store: d.store, Control: d, Page: ui.Page(), Token: token, Version: d.o.Version, Cautions: []string{Cautions}, Clock: d.clock, Log: d.o.Log})
+	srv := web.New(web.Options{Store: d.store, Control: d, Page: ui.Page(), Token: token, Version: d.o.Version, Cautions: Cautions, Clock: d.clock, Log: d.o.Log})
 	local, err := web.ListenSocket(Socket(d.state.Dir()))
 	if err != nil {
 		return errors.Join(err, tcp.Close())

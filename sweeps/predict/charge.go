@@ -117,6 +117,21 @@ func (l *law) at(x float64) (v, slope, i float64) {
 	return v, slope, l.sign*total + l.bias - l.leak*v
 }
 
+// backwards is find where only the pins' currents carry the wave past the source:
+// the conducting diode is reversed, x lies between span and 0, and is bisected for.
+func (l *law) backwards(v, span float64) float64 {
+	lo, hi := span, 0.0
+	for range 60 {
+		mid := (lo + hi) / 2
+		if at, _, _ := l.at(mid); l.sign*(at-v) > 0 {
+			lo = mid
+		} else {
+			hi = mid
+		}
+	}
+	return (lo + hi) / 2
+}
+
 // span is the voltage there is to drive current at a capacitor voltage v.
 func (l *law) span(v float64) float64 {
 	source := l.source
@@ -139,6 +154,8 @@ func (l *law) find(v float64) float64 {
 	switch {
 	case l.on.nvt == 0:
 		x = span / all
+	case span <= 0:
+		return l.backwards(v, span)
 	case span > 0 && all > 0:
 		x = min(span, l.on.nvt*math.Log1p(span/(all*l.on.is)))
 	}
@@ -156,11 +173,7 @@ func (l *law) find(v float64) float64 {
 // end is an end point of a phase.
 type end struct{ x, i float64 }
 
-// end is nothing where a diode would have to conduct backwards to get there.
 func (l *law) end(v float64) end {
-	if l.on.nvt > 0 && l.span(v) <= 0 {
-		return end{}
-	}
 	x := l.find(v)
 	_, _, i := l.at(x)
 	return end{x, i}
@@ -181,7 +194,7 @@ func (l *law) time(rule *numeric.Rule, a, b end) float64 {
 
 func (l *law) sum(rule *numeric.Rule, a, b end, depth int) float64 {
 	ratio := a.i / b.i
-	if (ratio > steep || ratio < 1/steep) && depth > 0 {
+	if depth > 0 && (ratio > steep || ratio < 1/steep || l.bends(a.x, b.x)) {
 		m := end{x: (a.x + b.x) / 2}
 		_, _, m.i = l.at(m.x)
 		return l.sum(rule, a, m, depth-1) + l.sum(rule, m, b, depth-1)
@@ -193,6 +206,35 @@ func (l *law) sum(rule *numeric.Rule, a, b end, depth int) float64 {
 		s += rule.W[k] * slope / i
 	}
 	return s * half
+}
+
+// bends tells whether an interval is too wide for the leak's bend: a reversed
+// junction behind a resistance passes from w/r to its saturation current within
+// some n·Vt about w = is·r. The further from the bend, the wider an interval may be.
+func (l *law) bends(a, b float64) bool {
+	o := &l.other
+	if o.is*o.rj < 0.1*o.nvt {
+		return false
+	}
+	at := o.is * o.rj
+	from, to := (l.across(a)*o.see-at)/o.nvt, (l.across(b)*o.see-at)/o.nvt
+	from, to = math.Min(from, to), math.Max(from, to)
+	if from > farReverse {
+		return false
+	}
+	return to-from > 4+math.Max(0, math.Max(from, -to))
+}
+
+// across is the voltage across the two ways at x.
+func (l *law) across(x float64) float64 {
+	if l.on.nvt == 0 {
+		return l.on.r * x
+	}
+	id := l.on.is * math.Expm1(x/l.on.nvt)
+	if l.on.shunt > 0 {
+		id += x / l.on.shunt
+	}
+	return x + l.on.r*id
 }
 
 // coast carries the wave past the level v, where the phase ends, for the time td and

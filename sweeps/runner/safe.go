@@ -45,6 +45,7 @@ func (r *Runner) switchOff(ctx context.Context) sweeps.Off {
 	ctx, cancel := context.WithTimeout(ctx, safeAttempt)
 	defer cancel()
 	off := sweeps.OffFrom(instruments.MakeSafe(ctx, r.o.Clock, r.o.Bench, r.o.Safe))
+	r.tell(func(v *sweeps.Vitals) { KnowOff(v, off) })
 	if !off.Confirmed {
 		r.setEnergised(sweeps.EnergisedUnconfirmed, nil)
 		return off
@@ -63,4 +64,10 @@ func (r *Runner) sayOff(off sweeps.Off) {
 	if !off.Confirmed {
 		r.o.Log.Error("OFF IS NOT CONFIRMED", "run", r.o.Run.ID, "do", off.Words)
 	}
+}
+
+// KnowOff puts what making safe last read into the vitals, in place of older readings.
+func KnowOff(v *sweeps.Vitals, off sweeps.Off) {
+	at := off.At
+	v.Voltage, v.VoltageU, v.Current, v.CurrentU, v.ReadAt = off.Voltage, nil, nil, nil, &at
 }
