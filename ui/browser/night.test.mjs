@@ -2,6 +2,8 @@
 // Outputs off, see the run stopped and the bench safe. BASE_URL and TOKEN name a daemon;
 // without them the practice bench is started: go build -o nightbench ./daemon first.
 import assert from "node:assert/strict";
+import { readFile } from "node:fs/promises";
+import { createRequire } from "node:module";
 import { after, before, test } from "node:test";
 import { aDaemon, openBrowser } from "../scripts/browser.mjs";
 
@@ -84,13 +86,14 @@ test("a cut line is said, and mended by itself with nothing lost or doubled", so
     server.onMessage((m) => (broken ? line.close() : line.send(m)));
   });
   await cut.goto(daemon.base);
-  const had = await moreDots(cut, 0);
+  await moreDots(cut, 0);
   broken = true;
   await cut.getByText(/^Not live since/).first().waitFor(soon);
-  assert.equal(await cut.locator(".sheet.stale").count(), 1);
+  await cut.locator(".sheet.stale").waitFor(soon);
+  const had = await dots(cut);
   broken = false;
+  await cut.locator(".sheet:not(.stale)").waitFor(soon);
   await moreDots(cut, had);
-  assert.equal(await cut.locator(".sheet.stale").count(), 0);
   assert.match(lines[0], /after=-1$/);
   assert.match(lines[lines.length - 1], /after=[1-9]\d*$/);
   const drawn = await cut.locator("details.behind").evaluate(async (d) => {
@@ -122,6 +125,20 @@ test("Outputs off asks nothing, ends the run and leaves the bench safe", soon, a
   assert.equal(vitals.energised, "no");
   assert.ok(vitals.confirmed_by.length > 0, "off without a witness");
   await page.locator("h1").filter({ hasText: `Run ${id} was stopped` }).waitFor(soon);
+});
+
+test("no barrier on any view, in both lights, contrast included", soon, async () => {
+  const axe = await readFile(createRequire(import.meta.url).resolve("axe-core/axe.min.js"), "utf8");
+  for (const colorScheme of ["light", "dark"])
+    for (const path of ["/", "/runs", `/runs/${await runId()}`, "/bench"]) {
+      const view = await browser.newPage({ colorScheme, viewport: { width: 1440, height: 900 } });
+      await view.goto(daemon.base + path);
+      await view.locator(".standing strong").filter({ hasText: /energised|Energised/ }).waitFor(soon);
+      await view.evaluate(axe);
+      const found = await view.evaluate(async () => (await window.axe.run(document)).violations.map((v) => `${v.id}: ${v.nodes.map((n) => n.html).join(" ")}`));
+      assert.deepEqual(found, [], `${path} in ${colorScheme}`);
+      await view.close();
+    }
 });
 
 test("nothing complained: no error, no breach of the policy, nothing loaded from elsewhere", () => {

@@ -17,12 +17,12 @@ export function openBrowser() {
   });
 }
 
-/** A daemon's address and token; `close` ends it if it was started here. */
-export async function aDaemon() {
+/** A daemon's address and token; `close` ends it if it was started here. At pace 5 the sample run lasts about a minute and a half. */
+export async function aDaemon(pace = 5) {
   if (process.env.BASE_URL) return { base: process.env.BASE_URL.replace(/\/$/, ""), token: process.env.TOKEN ?? "", close: async () => {} };
   const state = await mkdtemp(join(tmpdir(), "nightbench-"));
   const program = fileURLToPath(new URL("../../nightbench", import.meta.url));
-  const child = spawn(program, ["demo", "--state", state, "--listen", "127.0.0.1:0", "--pace", "20"], { stdio: ["ignore", "pipe", "pipe"] });
+  const child = spawn(program, ["demo", "--state", state, "--listen", "127.0.0.1:0", "--pace", String(pace)], { stdio: ["ignore", "pipe", "pipe"] });
   const gone = new Promise((done) => child.once("exit", done));
   const close = async () => {
     child.kill("SIGINT");

@@ -78,13 +78,18 @@ test("a token that the daemon does not take is the same as none", async () => {
   expect(bench.mayControl.value).toBe(false);
 });
 
-test("an outcome goes when the output is on again since", async () => {
-  const { bench, heard } = playedBench({ off: async () => off });
+const then = { ...vitals, at: "2026-12-01T02:14:30Z" };
+test.each([
+  ["stays while nothing is newer", true, { ...then, since: "2026-12-01T01:00:00Z" }, true],
+  ["goes when the output is on again since", true, { ...then, since: "2026-12-01T02:14:20Z" }, false],
+  ["goes after a minute", true, { ...then, energised: "no" as const, since: off.at, at: "2026-12-01T02:15:30Z" }, false],
+  ["that calls for the switch stays", false, { ...then, energised: "unconfirmed" as const, at: "2026-12-01T04:00:00Z" }, true],
+  ["that calls for the switch goes once off is confirmed", false, { ...then, energised: "no" as const, since: "2026-12-01T02:30:00Z" }, false],
+])("an outcome %s", async (_, confirmed, heardThen, stays) => {
+  const { bench, heard } = playedBench({ off: async () => ({ ...off, confirmed }) });
   await bench.switchOff();
-  heard.vitals({ ...vitals, energised: "yes", since: "2026-12-01T01:00:00Z" });
-  expect(bench.outcome.value).not.toBeNull();
-  heard.vitals({ ...vitals, energised: "yes", since: "2026-12-01T02:20:00Z" });
-  expect(bench.outcome.value).toBeNull();
+  heard.vitals(heardThen);
+  expect(bench.outcome.value !== null).toBe(stays);
 });
 
 test("not live is said since the last word, and ends with the next", () => {

@@ -102,7 +102,7 @@ export function newBench(client: Client, token: string, open: OpenStream = openS
       },
       vitals(v) {
         vitals.value = v;
-        if (v.energised === "yes" && outcome.value && !outcome.value.pending && v.since && Date.parse(v.since) > outcome.value.at) outcome.value = null;
+        if (outcome.value && over(outcome.value, v)) outcome.value = null;
       },
       caughtUp() {
         takeIn();
@@ -149,6 +149,17 @@ export function newBench(client: Client, token: string, open: OpenStream = openS
 /** Why the button does nothing for someone who only watches. */
 export const watcherWords =
   "This page watches; it has no operator’s token, so “Outputs off” can’t act from here. Open the address that the daemon printed, or use the switch at the bench.";
+
+/** How long the outcome of a press stays beside the state that says the same, ms. */
+const outcomeStays = 60_000;
+
+// An outcome is over when it has stood long enough, or when the output's state is newer than it.
+// One that calls for the switch at the bench stays until off is confirmed.
+function over(o: Outcome, v: Vitals): boolean {
+  if (o.pending) return false;
+  const newer = !!v.since && Date.parse(v.since) > o.at;
+  return o.caution ? newer && v.energised === "no" : Date.parse(v.at) > o.at + outcomeStays || (newer && v.energised === "yes");
+}
 
 /** Whether the newest run is still going on. */
 export function underWay(v: Vitals | null): boolean {

@@ -2,7 +2,7 @@ import { expect, test } from "vitest";
 import { night, vitals } from "./fixture";
 import { nbsp } from "./format";
 import type { Run, Status, Vitals } from "./nouns";
-import { briefProgress, doingNow, flagsOf, headline, type Link, listed, named, pace, pointWords, progress, sentenceCase, standing, tallied } from "./words";
+import { benchNamed, briefProgress, doingNow, flagsOf, headline, type Link, listed, named, pace, pointWords, progress, sentence, sentenceCase, standing, tallied } from "./words";
 
 const plain = (s: string) => s.replaceAll(nbsp, " ");
 const live: Link = { state: "live" };
@@ -61,6 +61,8 @@ test("the headline counts repeats where the run does not say them itself", () =>
 
 test("lists, names, headlines", () => {
   expect([listed([]), listed(["a"]), listed(["a", "b"]), listed(["a", "b", "c"])]).toEqual(["", "a", "a and b", "a, b and c"]);
+  expect([sentence("outputs off, by AK"), sentence("Off."), sentence("")]).toEqual(["Outputs off, by AK.", "Off.", ""]);
+  expect([benchNamed("Bench 2"), benchNamed("Practice bench"), benchNamed("")]).toEqual(["Bench 2", "the practice bench", "the bench"]);
   expect([named("output_drop"), sentenceCase("off")]).toEqual(["output drop", "Off"]);
   expect(headline(null)).toBe("Nothing has been measured here yet");
   expect(headline({ id: 7, state: "tripped" } as Run)).toBe("Run 7 tripped");

@@ -22,6 +22,16 @@ export function sentenceCase(s: string): string {
   return s.charAt(0).toUpperCase() + s.slice(1);
 }
 
+/** Words from elsewhere as a whole sentence: a capital, a full stop, units tied to their numbers. */
+export function sentence(s: string): string {
+  return bound(sentenceCase(s.replace(/\.?$/, s ? "." : "")));
+}
+
+/** The bench in a sentence: "Bench 2", "the practice bench". */
+export function benchNamed(name: string): string {
+  return !name || /^practice bench$/i.test(name) ? `the ${name.toLowerCase() || "bench"}` : name;
+}
+
 /** "supply, meter and cutoff" */
 export function listed(names: readonly string[]): string {
   return names.length < 2 ? (names[0] ?? "") : `${names.slice(0, -1).join(", ")} and ${names[names.length - 1]}`;
@@ -89,7 +99,7 @@ export function progress(v: Vitals | null, link: Link, bench: string): string {
     return `${safe}“Outputs off” may not get through: to be sure, use the switch at the bench.`;
   }
   if (!v) return "";
-  if (!v.run || ended(v.state)) return `Nothing is running on ${bench || "this bench"}.`;
+  if (!v.run || ended(v.state)) return `Nothing is running on ${benchNamed(bench)}.`;
   const flags = v.flagged ? `, ${v.flagged} flagged` : "";
   return [`Run ${v.run}: ${v.measured} of ${count(v.planned, "point")}${flags}.`, timeLeft(v)].filter(Boolean).join(" ");
 }

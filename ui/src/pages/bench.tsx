@@ -2,7 +2,7 @@
 import { bound, format } from "../data/format";
 import type { Bench, Instrument } from "../data/nouns";
 import { AlsoHere } from "../parts/instruments";
-import { named, shortly } from "../data/words";
+import { benchNamed, named, shortly } from "../data/words";
 import { useAnswer } from "./ask";
 import type { Views } from "./page";
 
@@ -14,7 +14,7 @@ export function BenchView({ bench, client }: Views) {
   return (
     <div class="leaf">
       <main>
-        <h1 tabIndex={-1}>{b ? `How ${b.wiring.bench || "the bench"} is wired` : "The bench"}</h1>
+        <h1 tabIndex={-1}>{b ? `How ${benchNamed(b.wiring.bench)} is wired` : "The bench"}</h1>
         {answer.failed && <p class="caution">It could not be read: {answer.failed}</p>}
         {!b && !answer.failed && <p class="sub">Waiting for its wiring.</p>}
         {b && <p class="sub">Each instrument stands between two nodes of the board; what it reads is the first less the second.{b.wiring.practice ? " The instruments here are simulated: this is the practice bench." : ""}</p>}

@@ -5,7 +5,7 @@ import type { Client } from "../data/client";
 import type { Waveforms } from "../data/nouns";
 import { bound, clockSeconds, date, format, nbsp } from "../data/format";
 import { quantitiesOf } from "../data/night";
-import { doingNow, headline, tallied } from "../data/words";
+import { doingNow, headline, sentence, tallied } from "../data/words";
 import { Alarm } from "../parts/alarm";
 import { Figure, type Now } from "../parts/figure";
 import { AlsoHere, Instruments } from "../parts/instruments";
@@ -110,11 +110,6 @@ function useRecord(client: Client, run: number, points: number): Waveforms | nul
 
 function lower(s: string): string {
   return s.charAt(0).toLowerCase() + s.slice(1);
-}
-
-function sentence(s: string): string {
-  const t = s.charAt(0).toUpperCase() + s.slice(1);
-  return t.endsWith(".") ? t : t + ".";
 }
 
 /** "Pace 20 ×", for a run's facts. */

@@ -137,6 +137,22 @@ test("pressing Outputs off says what came of it; a watcher is told why it can't 
   expect(await accessible()).toEqual([]);
 });
 
+test("the state is spoken when it changes, but not twice in 15 s", async () => {
+  const { heard } = await opened("/");
+  expect(text(".spoken[aria-live]")).toMatch(/^Energised\./);
+  vi.useFakeTimers();
+  const pass = (ms: number) => act(async () => void (await vi.advanceTimersByTimeAsync(ms)));
+  await act(async () => heard.lost(Date.parse("2026-12-01T02:14:00Z")));
+  await pass(16_000);
+  expect(text(".spoken[aria-live]")).toMatch(/^Not live since 02:14:00\./);
+  await act(async () => heard.live());
+  await pass(10_000);
+  expect(text(".spoken[aria-live]")).toMatch(/^Not live/);
+  await pass(6_000);
+  expect(text(".spoken[aria-live]")).toMatch(/^Energised\./);
+  vi.useRealTimers();
+});
+
 test("a run that starts while the page is open is the one shown", async () => {
   const { heard } = await opened("/");
   const at = "2026-12-01T08:00:00Z";

@@ -4,7 +4,7 @@ import type { Client } from "../data/client";
 import { date, duration } from "../data/format";
 import { apply, countFlagged, type Line, type Night, noNight, quantitiesOf } from "../data/night";
 import { ended, flagged, type Run } from "../data/nouns";
-import { headline, named, sentenceCase, tallied } from "../data/words";
+import { headline, named, sentence, tallied } from "../data/words";
 import { Figure } from "../parts/figure";
 import { Log } from "../parts/margin";
 import { Picker } from "../parts/picker";
@@ -50,7 +50,7 @@ function withFlagged(n: Night): Line[] {
 function facts(r: Run): string {
   const long = r.ended_at ? `, ${duration((Date.parse(r.ended_at) - Date.parse(r.started_at)) / 1000)} long` : "";
   return [
-    r.reason && r.state !== "done" ? sentenceCase(r.reason.replace(/\.?$/, ".")) : "",
+    r.reason && r.state !== "done" ? sentence(r.reason) : "",
     tallied(r), `Started ${date(r.started_at)}${r.operator ? ` by ${r.operator}` : ""}${long}.`, paceOf(r.pace),
   ].filter(Boolean).join(" ");
 }

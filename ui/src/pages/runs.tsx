@@ -2,7 +2,7 @@
 import { clock, day, month, nbsp } from "../data/format";
 import { ended, type Run } from "../data/nouns";
 import { count } from "../data/format";
-import { named } from "../data/words";
+import { benchNamed, named } from "../data/words";
 import { MiniTally } from "../parts/tally";
 import { useAnswer } from "./ask";
 import type { Views } from "./page";
@@ -17,7 +17,7 @@ export function RunsView({ bench, client }: Views) {
   return (
     <div class="leaf">
       <main>
-        <h1 tabIndex={-1}>{name ? `Nights on ${name}` : "Nights"}</h1>
+        <h1 tabIndex={-1}>{name ? `Nights on ${benchNamed(name)}` : "Nights"}</h1>
         {answer.failed && <p class="caution">The list could not be read: {answer.failed}</p>}
         {!answer.value && !answer.failed && <p class="sub">Waiting for the list.</p>}
         {answer.value?.length === 0 && <p class="sub">None yet. A run is started with <span class="q">nightbench start PLAN</span>.</p>}

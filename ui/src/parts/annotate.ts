@@ -106,9 +106,9 @@ function notBegun(f: Frame, s: Series, room: Room, out: Annotations) {
   const boxes = [0.2, 0.3, 0.1, 0.4, 0.5, 0.05].flatMap((t) => {
     const x = x0 * (x1 / x0) ** t;
     const y = heightAt(f, s, x);
-    return y === null ? [] : [16, 24, 34, -30].map((dy) => ({ x: f.px(x), y: y + dy, w, h: lineHeight }));
+    return y === null ? [] : [16, 24, 34, 46, -30, -42, -54].map((dy) => ({ x: f.px(x), y: y + dy, w, h: lineHeight }));
   });
-  const b = room.place(boxes, 4);
+  const b = room.place(boxes, 1);
   if (b) out.labels.push({ text, x: fix(b.x), y: fix(b.y + 12), anchor: "start", mark: "lab" });
 }
 

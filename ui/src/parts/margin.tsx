@@ -1,8 +1,8 @@
 // The margin: the log, newest first, times hanging beside sentences.
-import { bound, clock, clockSeconds } from "../data/format";
+import { clock, clockSeconds } from "../data/format";
 import type { Line } from "../data/night";
 import { flagged } from "../data/nouns";
-import { pointWords } from "../data/words";
+import { pointWords, sentence } from "../data/words";
 import { Flags } from "./flags";
 
 export interface LogProps { lines: readonly Line[]; now?: string; nowAt?: string; most: number; all?: string }
@@ -39,7 +39,7 @@ function LogLine({ l, same }: { l: Line; same: boolean }) {
   return (
     <li>
       <time dateTime={l.at}>{evidence.has(l.kind) ? clockSeconds(l.at) : clock(l.at)}</time>
-      <span>{l.point ? <PointLine l={l} same={same} /> : bound(l.words)}</span>
+      <span>{l.point ? <PointLine l={l} same={same} /> : sentence(l.words)}</span>
     </li>
   );
 }
