@@ -28,12 +28,13 @@ func (a *analysis) run() {
 	a.result.Flags = append(a.result.Flags, a.flags...)
 	a.checkClipping()
 	g := guessLevels(a.codes, a.h)
-	if g.three == nil || !a.threeLevels(g) {
+	if g.three == nil || a.result.Flagged(Clipped) && a.atRail(g) || !a.threeLevels(g) {
 		if a.flat(g) {
 			a.constant()
 			return
 		}
-		a.twoLevels(g.low, g.high, g.noise)
+		low, high := a.bestPair(g)
+		a.twoLevels(low, high, g.noise)
 	}
 	a.result.Middle = a.volts((a.driven.low + a.driven.high) / 2)
 	a.judgeLevels()
@@ -92,6 +93,36 @@ func (a *analysis) bound(low, high, noise float64) float64 {
 	return min(0.3*(high-low), max(0.02*(high-low), 3.5*noise+0.5*a.q))
 }
 
+// atRail tells whether the lowest or the highest level is the end of the converter's
+// range, where whatever went beyond looks like a level.
+func (a *analysis) atRail(g guess) bool {
+	reach := float64(g.width) + a.q
+	return g.three[0]-reach < float64(a.clipLow) || g.three[2]+reach > float64(a.clipHigh)
+}
+
+// bestPair chooses two levels where the histogram shows three that are not driven,
+// freewheel and rest: the pair nearest to which most samples lie. The third is then ringing or
+// a freewheel too short to see.
+func (a *analysis) bestPair(g guess) (low, high float64) {
+	low, high = g.low, g.high
+	if g.three == nil {
+		return low, high
+	}
+	t := g.three
+	near := func(x float64) int {
+		reach := max(float64(g.width), 3*g.noise, 0.02*(t[2]-t[0]))
+		n, _ := a.h.within(x-reach, x+reach)
+		return n
+	}
+	best := near(low) + near(high)
+	for _, pair := range [][2]float64{{t[0], t[2]}, {t[0], t[1]}, {t[1], t[2]}} {
+		if n := near(pair[0]) + near(pair[1]); 10*n > 11*best {
+			best, low, high = n, pair[0], pair[1]
+		}
+	}
+	return low, high
+}
+
 // twoLevels finds the transitions between two levels and refines the levels from
 // the settled part of each state, as the transitions delimit it.
 func (a *analysis) twoLevels(low, high, noise float64) {
@@ -110,7 +141,9 @@ func (a *analysis) twoLevels(low, high, noise float64) {
 		}
 		a.measureTwo(low, high)
 		moved := max(math.Abs(a.low.level-low), math.Abs(a.high.level-high))
-		low, high, noise = a.low.level, a.high.level, math.Sqrt(a.noise)
+		low, high = a.low.level, a.high.level
+		// Slow changes of a level, such as of the supply, widen its state as noise does, up to a point.
+		noise = max(math.Sqrt(a.noise), min(math.Sqrt(max(a.low.spread, a.high.spread)), 0.03*(high-low)))
 		if moved < 0.002*(high-low) || moved < 0.1*a.q {
 			break
 		}
@@ -121,8 +154,8 @@ func (a *analysis) twoLevels(low, high, noise float64) {
 	}
 }
 
-// tidy locates the instants, removes notches and flags notches and runts. It tells
-// whether notches were removed.
+// tidy locates the instants for the final levels, removes notches and flags notches
+// and runts. It tells whether notches were removed.
 func (a *analysis) tidy(s *scanner) (changed bool) {
 	s.locate()
 	n := s.removeNotches()

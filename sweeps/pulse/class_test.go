@@ -95,6 +95,16 @@ func TestTwoLevel(t *testing.T) {
 	agrees(t, r, "ripple", 0)
 }
 
+func TestUnsettledLevelIsFlagged(t *testing.T) {
+	s := timer()
+	s.duty = 0.5
+	s.up, s.down = exponential(8e-4), exponential(8e-4)
+	r := analyse(t, s.capture(rng()), Options{})
+	if r.Class == TwoLevel && !r.Flagged(Unsettled) {
+		t.Errorf("class %q, flags %v", r.Class, r.Flags)
+	}
+}
+
 func TestTransitionsAndRinging(t *testing.T) {
 	s := timer()
 	s.up, s.down = ramp(8e-5), exponential(6e-5)
@@ -157,6 +167,63 @@ func TestFreewheelAndRest(t *testing.T) {
 	}
 }
 
+// Three samples of freewheel a period are enough; so are a stalled motor, a fast
+// one, commutation ripple on the rest, ringing into the rest, and long records.
+func TestFreewheelAndRestOfAllKinds(t *testing.T) {
+	for name, change := range map[string]func(s *specimen){
+		"short freewheel": func(s *specimen) { s.conduct = 0.33 },
+		"stalled":         func(s *specimen) { s.low = 0.3 },
+		"fast":            func(s *specimen) { s.low = 8 },
+		"ringing":         func(s *specimen) { s.up = ringing(4e-5, 3e-5) },
+		"long":            func(s *specimen) { s.n, s.interval = 100_000, 1.0007e-6 },
+	} {
+		s := timer()
+		s.low, s.freewheel, s.conduct = 5.2, -0.6, 0.42
+		change(&s)
+		r := analyse(t, s.capture(rng()), Options{})
+		if r.Class != FreewheelRest {
+			t.Errorf("%s: class %q, flags %v", name, r.Class, r.Flags)
+		}
+		agrees(t, r, "back_emf", s.low)
+		agrees(t, r, "duty", s.share())
+		agrees(t, r, "low_level", s.freewheel)
+	}
+
+	s := timer()
+	s.low, s.freewheel, s.conduct = 5.2, -0.6, 0.42
+	volts := s.wave(grid0(s.n, 0, s.interval), rng())
+	for i, v := range volts {
+		if v > 5.1 && v < 5.3 {
+			volts[i] += 0.4 * math.Sin(float64(i)/5)
+		}
+	}
+	r := analyse(t, s.record(s.digitise(volts, rng()), 0, s.interval), Options{})
+	is(t, r, FreewheelRest)
+	agrees(t, r, "back_emf", s.low)
+}
+
+// A supply that sinks through the record, mains hum, and brush spikes leave the times alone.
+func TestDisturbedLevels(t *testing.T) {
+	for name, disturb := range map[string]func(i int, v float64) float64{
+		"sinking supply": func(i int, v float64) float64 { return v * (1 - 0.1*float64(i)/1200) },
+		"drift":          func(i int, v float64) float64 { return v + 0.5*float64(i)/1200 },
+		"hum":            func(i int, v float64) float64 { return v + 0.3*math.Sin(float64(i)/320) },
+		"spikes":         func(i int, v float64) float64 { return v + 3*float64(b2i(i%53 == 7)) },
+	} {
+		s := timer()
+		volts := s.wave(grid0(s.n, 0, s.interval), rng())
+		for i := range volts {
+			volts[i] = disturb(i, volts[i])
+		}
+		r := analyse(t, s.record(s.digitise(volts, rng()), 0, s.interval), Options{})
+		if r.Class != TwoLevel {
+			t.Errorf("%s: class %q, flags %v", name, r.Class, r.Flags)
+		}
+		agrees(t, r, "duty", s.share())
+		agrees(t, r, "period", s.period)
+	}
+}
+
 // At load_lo the node is low when driven; against the supply it reads as across the load.
 func TestAgainstSupply(t *testing.T) {
 	s := timer()
@@ -198,13 +265,14 @@ func quantity(t *testing.T, r Result, name string) Quantity {
 
 func TestSaggingTop(t *testing.T) {
 	s := timer()
-	s.sag = 0.2
-	r := analyse(t, s.capture(rng()), Options{})
-	is(t, r, SaggingTop, Sagging)
-	agrees(t, r, "duty", s.duty)
-	agrees(t, r, "average_voltage", s.mean())
-	if len(quantity(t, r, "high_level").Flags) == 0 {
-		t.Error("high level of a sagging top must carry the flag")
+	for _, s.sag = range []float64{0.05, 0.2, 0.4} {
+		r := analyse(t, s.capture(rng()), Options{})
+		is(t, r, SaggingTop, Sagging)
+		agrees(t, r, "duty", s.duty)
+		agrees(t, r, "average_voltage", s.mean())
+		if len(quantity(t, r, "high_level").Flags) == 0 {
+			t.Error("high level of a sagging top must carry the flag")
+		}
 	}
 }
 

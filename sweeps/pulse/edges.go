@@ -29,6 +29,12 @@ type scanner struct {
 }
 
 func (s *scanner) scan() {
+	s.find()
+	s.locate()
+}
+
+// find lists the transitions without their instants.
+func (s *scanner) find() {
 	mid := (s.low + s.high) / 2
 	lowBound, highBound := clamp16(math.Floor(s.low+s.bound)), clamp16(math.Ceil(s.high-s.bound))
 	below := clamp16(math.Floor(mid)) // the highest code not above the middle

@@ -40,6 +40,12 @@ func (a *analysis) judgePeriods(c cycles) {
 	if shortest < 2.5 {
 		a.flag(Undersampled, "the shorter phase lasts about %.1f sample intervals; take a faster time base", shortest)
 	}
+	for _, s := range []state{a.high, a.low} {
+		w := a.high.level - a.low.level
+		if !a.result.Flagged(Sagging) && (s.spread-s.noise > sq(0.08*w) || s.uSettle > 0.03*w) {
+			a.flag(Unsettled, "a level still moves through most of its state (by about %.2g V); it and the instants at half level are doubtful", 2*math.Sqrt(s.spread)*a.volt)
+		}
+	}
 	if a.high.n < 4 || a.low.n < 4 || a.pairs < 6 {
 		a.flag(FewSamples, "only %d samples in the high and %d in the low state; noise is poorly known", a.high.n, a.low.n)
 	}
@@ -57,7 +63,7 @@ func (a *analysis) sag(c cycles) float64 {
 	amplitude := a.high.level - a.low.level
 	// Halves of the last three fifths are 0.3 of the state apart.
 	fall := a.high.droop / 0.3
-	if fall < 0.04*amplitude || a.high.droop < 5*a.high.uDroop || fall < 2*a.q {
+	if fall < 0.03*amplitude || a.high.droop < 5*a.high.uDroop || fall < 2*a.q {
 		return 0
 	}
 	a.flag(Sagging, "the high level falls by about %.3g V through the high state; the level given is its mean, and no drop can be had from average and duty", fall*a.volt)
@@ -195,6 +201,7 @@ var bears = map[string][]string{
 	Sagging:     {"high_level", "amplitude", "ripple"},
 	FewCodes:    {"average_voltage", "high_level", "low_level", "amplitude", "rms", "ripple", "overshoot", "undershoot", "back_emf"},
 	Scale:       {"average_voltage", "high_level", "low_level", "amplitude", "rms", "ripple", "back_emf"},
+	Unsettled:   {"duty", "t_high", "t_low", "high_level", "low_level", "amplitude", "ripple", "rise_time", "fall_time", "overshoot", "undershoot", "back_emf", "conduction"},
 	FastRinging: {"overshoot", "undershoot"},
 	CoarseTime:  {"duty", "frequency", "period", "t_high", "t_low", "rise_time", "fall_time", "jitter", "conduction"},
 }

@@ -92,6 +92,7 @@ const (
 	Scale        = "scale"
 	Noisy        = "noisy"
 	FastRinging  = "fast ringing"
+	Unsettled    = "unsettled level"
 )
 
 // Quantity is one pulse parameter: its estimate and budget, and the flags that bear on it.

@@ -42,11 +42,15 @@ type state struct {
 	uDroop  float64
 }
 
-// before is the last sample of a state that is clear of the transition ending it: the
-// transition's length earlier than where it leaves the state boundary, if that leaves three
-// quarters of the state since its first sample.
+// before is the last sample of a state that is clear of the transition ending it: three
+// times as far before its 50 % instant as its first tenth is, if that leaves three quarters
+// of the state since its first sample. The state boundary does not serve: a sagging
+// top leaves it early.
 func before(e edge, since int) int {
-	return max(e.from-(e.to-e.from), min(e.from, since+(e.from-since)*3/4))
+	start := min(e.tenth, e.ninth)
+	clear := int(math.Floor(e.mid-3*(e.mid-start))) - 1
+	longest := int(math.Ceil(start)) - 1
+	return max(since, min(longest, max(clear, since+(longest-since)*3/4)))
 }
 
 const (
@@ -190,8 +194,8 @@ func (st *state) trend(t sums) {
 	d := t.early/float64(t.nEarly) - t.late/float64(t.nLate)
 	u2 := st.noise * (1/float64(t.nEarly) + 1/float64(t.nLate))
 	st.droop, st.uDroop = d, math.Sqrt(u2)
-	// A level still approaching its end value lies beyond the later half by up to the same again.
-	st.uSettle = math.Sqrt(max(0, d*d-2*u2)) / math.Sqrt(3)
+	// A level still approaching its end value lies beyond the later half by about the same again.
+	st.uSettle = 0.8 * math.Sqrt(max(0, d*d-2*u2))
 }
 
 // rounding sets the uncertainty left by the converter's steps of q codes: q/√12

@@ -20,7 +20,7 @@ func (a *analysis) threeLevels(g guess) bool {
 		a.high = a.settled(spans(a.driven.edges, true, n), high, high-mid)
 		a.low = a.settled(spans(a.freewheel.edges, false, n), low, mid-low)
 		a.rest = a.settled(restSpans(a.driven.edges, a.freewheel.edges), mid, min(high-mid, mid-low))
-		if shorter(spans(a.freewheel.edges, false, n), 6) || shorter(spans(a.driven.edges, true, n), 3) {
+		if !flatBottomed(a.freewheel.edges) || shorter(spans(a.driven.edges, true, n), 3) {
 			return false
 		}
 		if !plateau(a.low, mid-low) || !plateau(a.high, high-mid) || !plateau(a.rest, min(high-mid, mid-low)) {
@@ -74,6 +74,19 @@ func (a *analysis) relocateFalls() {
 // plateau tells whether a state holds its level, as the troughs of ringing do not.
 func plateau(s state, height float64) bool {
 	return s.n >= 4 && s.spread < sq(0.1*height)+2*s.noise
+}
+
+// flatBottomed tells whether the low occurrences last three samples and are not short
+// beside their transitions, as the troughs of ringing are.
+func flatBottomed(edges []edge) bool {
+	var flat, slope []float64
+	for k := 1; k < len(edges); k++ {
+		if fall, rise := edges[k-1], edges[k]; rise.rising {
+			flat = append(flat, float64(rise.from-fall.to+1))
+			slope = append(slope, float64(fall.to-fall.from+rise.to-rise.from))
+		}
+	}
+	return len(flat) > 0 && median(flat) >= 3 && median(flat) >= 0.7*median(slope)
 }
 
 // shorter tells whether most occurrences last fewer than n samples.
