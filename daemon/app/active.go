@@ -4,12 +4,14 @@ import (
 	"context"
 	"crypto/sha256"
 	"encoding/hex"
+	"errors"
 	"fmt"
 	"math/rand/v2"
 	"path/filepath"
 	"time"
 
 	"nightbench/daemon/web"
+	"nightbench/instruments"
 	"nightbench/sweeps"
 	"nightbench/sweeps/runner"
 	"nightbench/sweeps/schedule"
@@ -36,7 +38,7 @@ func (d *Daemon) Start(ctx context.Context, q web.StartRequest) (sweeps.Run, err
 	}
 	run := job.Run
 	run.BoardSerial, run.Operator, run.Note, run.State, run.StartedAt = q.BoardSerial, q.Operator, q.Note, sweeps.Preparing, d.clock.Now()
-	return d.begin(ctx, job, func() (sweeps.Run, error) { return d.store.CreateRun(ctx, run) }, "Started"+by(q.Operator)+".")
+	return d.begin(ctx, job, func() (sweeps.Run, error) { return d.store.CreateRun(ctx, run) }, "Started"+by(q.Operator)+"."+attendance(plan))
 }
 
 // Resume goes on with an interrupted or stopped run, from the files as they were when it began.
@@ -68,7 +70,24 @@ func (d *Daemon) Resume(ctx context.Context, id int64, operator string) (sweeps.
 		old.State = sweeps.Preparing
 		return old, err
 	}
-	return d.begin(ctx, job, open, fmt.Sprintf("Resumed%s at point %d of %d.", by(operator), len(job.Done)+1, len(job.Order)))
+	return d.begin(ctx, job, open, fmt.Sprintf("Resumed%s at point %d of %d.", by(operator), len(job.Done)+1, len(job.Order))+attendance(plan))
+}
+
+// unattended refuses a start that nobody attends on a bench without a second way to
+// cut power: with the host dead or a cable out, a supply goes on driving.
+func unattended(plan sweeps.Plan, w instruments.Wiring, cutoff instruments.Cutoff) error {
+	if w.Practice || cutoff != instruments.NoCutoff || plan.Attended != "" {
+		return nil
+	}
+	return fmt.Errorf("%s: this bench has no cutoff, a second way to cut power, so somebody has to attend: add to [plan] who and until when, like attended = \"AK until 18:00\"", plan.Path)
+}
+
+// attendance is who attends, for the log.
+func attendance(plan sweeps.Plan) string {
+	if plan.Attended == "" {
+		return ""
+	}
+	return " Attended: " + plan.Attended + "."
 }
 
 func by(operator string) string {
@@ -82,6 +101,9 @@ func by(operator string) string {
 func (d *Daemon) job(plan sweeps.Plan, board sweeps.Board, seed uint64) (runner.Options, error) {
 	w := d.bench.Bench.Wiring
 	if err := sweeps.CheckPlan(plan, board, &w); err != nil {
+		return runner.Options{}, web.Fail(web.Invalid, err)
+	}
+	if err := unattended(plan, w, d.bench.Bench.Cutoff); err != nil {
 		return runner.Options{}, web.Fail(web.Invalid, err)
 	}
 	p, err := newPredictor(board, w, seed)
@@ -123,33 +145,77 @@ func filesOf(run sweeps.Run) (sweeps.Plan, sweeps.Board, error) {
 	return sweeps.ParseFiles(planFile, boardFile)
 }
 
-// begin opens the run in the journal and conducts it in a goroutine that end and Stop wait for.
+// begin opens the run in the journal and conducts it in a goroutine that end, Stop
+// and Off wait for.
 func (d *Daemon) begin(ctx context.Context, o runner.Options, open func() (sweeps.Run, error), words string) (sweeps.Run, error) {
-	d.mu.Lock()
-	defer d.mu.Unlock()
-	if d.run != nil {
-		return sweeps.Run{}, conflict("run %d is open: stop it first, or wait for its end", d.run.id)
+	offs, err := d.reserve()
+	if err != nil {
+		return sweeps.Run{}, err
 	}
-	if d.ending {
-		return sweeps.Run{}, conflict("the daemon is ending")
-	}
-	if d.idle.Energised == sweeps.EnergisedUnconfirmed {
-		return sweeps.Run{}, conflict("off is not confirmed: press Outputs off, or see to the supply by hand, before starting")
-	}
+	defer d.release()
+	curves := o.Predict.Curves(o.Order)
 	run, err := open()
 	if err != nil {
 		return sweeps.Run{}, err
 	}
-	o.Run = run
-	started := sweeps.Entry{Run: run.ID, Kind: sweeps.KindStarted, Words: words, Setpoints: o.Order, Curves: o.Predict.Curves(o.Order)}
+	started := sweeps.Entry{Run: run.ID, Kind: sweeps.KindStarted, Words: words, Setpoints: o.Order, Curves: curves}
 	if _, err := d.store.Append(ctx, started); err != nil {
-		return sweeps.Run{}, err
+		return sweeps.Run{}, d.giveUp(run, err)
 	}
+	o.Run = run
 	running, cancel := context.WithCancelCause(context.Background())
 	a := &active{id: run.ID, runner: runner.New(o), cancel: cancel, done: make(chan struct{})}
-	d.run = a
+	if !d.adopt(a, offs) {
+		cancel(nil)
+		return sweeps.Run{}, d.giveUp(run, conflict("Outputs off was pressed, or the daemon is ending, while the run was being prepared"))
+	}
 	go d.conduct(running, a)
 	return run, nil
+}
+
+// reserve makes sure that one run at a time is being started; offs tells later whether somebody pressed Outputs off meanwhile.
+func (d *Daemon) reserve() (offs int, err error) {
+	d.mu.Lock()
+	defer d.mu.Unlock()
+	switch {
+	case d.run != nil:
+		return 0, conflict("run %d is open: stop it first, or wait for its end", d.run.id)
+	case d.starting:
+		return 0, conflict("another run is being started")
+	case d.ending:
+		return 0, conflict("the daemon is ending")
+	case d.idle.Energised == sweeps.EnergisedUnconfirmed:
+		return 0, conflict("off is not confirmed: press Outputs off, or see to the supply by hand, before starting")
+	case d.idle.Energised == sweeps.EnergisedYes:
+		return 0, conflict("the supply's output is on though no run is open: press Outputs off, or find out who feeds the board, before starting")
+	}
+	d.starting = true
+	return d.offs, nil
+}
+
+func (d *Daemon) release() {
+	d.mu.Lock()
+	defer d.mu.Unlock()
+	d.starting = false
+}
+
+// adopt makes a the open run, unless the outputs were switched off since or the daemon ends.
+func (d *Daemon) adopt(a *active, offs int) bool {
+	d.mu.Lock()
+	defer d.mu.Unlock()
+	if d.offs != offs || d.ending {
+		return false
+	}
+	d.run = a
+	return true
+}
+
+// giveUp ends a run that never got a conductor.
+func (d *Daemon) giveUp(run sweeps.Run, why error) error {
+	ctx, cancel := context.WithTimeout(context.Background(), closeBudget)
+	defer cancel()
+	_, err := d.store.Append(ctx, sweeps.Entry{Run: run.ID, Kind: sweeps.KindEnded, State: sweeps.Failed, Words: why.Error()})
+	return errors.Join(why, err)
 }
 
 func (d *Daemon) conduct(ctx context.Context, a *active) {

@@ -74,7 +74,7 @@ func (d *Daemon) Continue(_ context.Context, by string) error {
 
 // Off switches the outputs off, with or without a run, and says what is known then.
 func (d *Daemon) Off(ctx context.Context, by string) (sweeps.Off, error) {
-	if a := d.active(); a != nil {
+	if a := d.pressOff(); a != nil {
 		if err := a.runner.Command(runner.CmdOff, named(by)); err == nil {
 			if err := wait(ctx, a); err != nil {
 				return sweeps.Off{}, err
@@ -86,6 +86,14 @@ func (d *Daemon) Off(ctx context.Context, by string) (sweeps.Off, error) {
 	d.know(off)
 	_, err := d.store.Append(context.WithoutCancel(ctx), sweeps.Entry{Kind: sweeps.KindOff, Words: "Outputs off, by " + named(by) + ". " + off.Words, Off: &off})
 	return off, err
+}
+
+// pressOff counts the press, so that a run being started meanwhile is not, and gives the open run.
+func (d *Daemon) pressOff() *active {
+	d.mu.Lock()
+	defer d.mu.Unlock()
+	d.offs++
+	return d.run
 }
 
 // safe is what safe means on every bench.

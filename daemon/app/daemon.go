@@ -61,10 +61,12 @@ type Daemon struct {
 	begun   time.Time
 	last    context.Context // ends when nobody will wait for off any longer
 
-	mu     sync.Mutex // guards what follows; never held over I/O
-	run    *active
-	idle   sweeps.Vitals
-	ending bool
+	mu       sync.Mutex // guards what follows; never held over I/O
+	run      *active
+	idle     sweeps.Vitals // while no run is open
+	offs     int           // how often Outputs off was pressed
+	starting bool          // a run is being started
+	ending   bool
 }
 
 // Serve opens everything in order, safety first, serves until ctx ends, and

@@ -1,0 +1,45 @@
+package app
+
+import (
+	"strings"
+	"testing"
+	"time"
+
+	"nightbench/instruments"
+	"nightbench/sweeps"
+)
+
+func TestNobodyAttendingNeedsACutoff(t *testing.T) {
+	real, practice := instruments.Wiring{}, instruments.Wiring{Practice: true}
+	if err := unattended(sweeps.Plan{Path: "night.toml"}, real, instruments.NoCutoff); err == nil || !strings.Contains(err.Error(), `attended = "AK until 18:00"`) {
+		t.Errorf("an unattended start on a bench without a cutoff: %v", err)
+	}
+	for name, err := range map[string]error{
+		"attended":       unattended(sweeps.Plan{Attended: "AK until 18:00"}, real, instruments.NoCutoff),
+		"practice bench": unattended(sweeps.Plan{}, practice, instruments.NoCutoff),
+		"with a cutoff":  unattended(sweeps.Plan{}, real, fedCutoff{}),
+	} {
+		if err != nil {
+			t.Errorf("%s: %v", name, err)
+		}
+	}
+}
+
+type fedCutoff struct{ instruments.Cutoff }
+
+func TestSafeByIsTheNextTimeTheClockShowsIt(t *testing.T) {
+	night := time.Date(2026, 12, 1, 22, 0, 0, 0, time.Local)
+	for text, want := range map[string]time.Time{
+		"07:00": time.Date(2026, 12, 2, 7, 0, 0, 0, time.Local),
+		"23:30": time.Date(2026, 12, 1, 23, 30, 0, 0, time.Local),
+		"22:00": time.Date(2026, 12, 2, 22, 0, 0, 0, time.Local),
+		"":      {},
+	} {
+		if got, err := safeBy(text, night); err != nil || !got.Equal(want) {
+			t.Errorf("safe by %q: got %v, %v; want %v", text, got, err, want)
+		}
+	}
+	if _, err := safeBy("7 o'clock", night); err == nil {
+		t.Error("an unreadable time passed")
+	}
+}
