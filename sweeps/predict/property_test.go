@@ -17,7 +17,7 @@ type walker struct {
 	ra, vcc   float64 // 0: nothing from the supply
 	ways      [2]walkerWay
 	bias, c   float64
-	node      float64 // last solution, where the next search begins
+	steps     float64 // to a phase
 }
 
 type walkerWay struct {
@@ -105,21 +105,16 @@ func (w *walker) step(v, h float64) float64 {
 }
 
 // until walks from a voltage to another and td on; false if it never arrives.
-// A step is a sixtieth of the way, or what changes the current by 5 % if that is less; the last is cut to the level.
+// A step is the given share of the way at the present current; the last is cut to the level.
 func (w *walker) until(from, to, td float64) (t, v float64, ok bool) {
 	v = from
 	span := math.Abs(to - from)
-	before, last := 0.0, 0.0 // current and step of the step before
 	for range 20000 {
 		i := w.current(v) / w.c
 		if i*(to-from) <= 0 {
 			return 0, v, false
 		}
-		h := span / math.Abs(i) / 60
-		if change := math.Abs(i-before) / math.Abs(i); last > 0 && change > 0 {
-			h = math.Min(h, last*0.05/change)
-		}
-		before, last = i, h
+		h := span / math.Abs(i) / w.steps
 		next := w.step(v, h)
 		if (next-to)*(from-to) > 0 {
 			v, t = next, t+h
@@ -144,12 +139,13 @@ func (w *walker) until(from, to, td float64) (t, v float64, ok bool) {
 }
 
 // walk gives the times of the third and second phase, from the trigger level.
-func walk(m *Model, s Setting) (high, low float64, ok bool) {
+func walk(m *Model, s Setting, steps float64) (high, low float64, ok bool) {
 	p := m.nominal
 	m.warm(&p, reference)
 	c := s.conditions()
 	th, tr := m.thresholds(&p, &c)
 	charge, discharge := walkers(m, &p, s)
+	charge.steps, discharge.steps = steps, steps
 	_, top, ok := charge.until(tr, th, p.timer.delay)
 	if !ok {
 		return 0, 0, false
@@ -224,7 +220,7 @@ func TestFiveHundredBoardsAgainstIntegration(t *testing.T) {
 		if err != nil {
 			t.Fatal(err)
 		}
-		high, low, ok := walk(m, s)
+		high, low, ok := walk(m, s, 50)
 		if ok != res.Oscillates {
 			t.Fatalf("board %d, %s: oscillates %v, by integration %v", n, networks[n%5], res.Oscillates, ok)
 		}
@@ -232,12 +228,16 @@ func TestFiveHundredBoardsAgainstIntegration(t *testing.T) {
 			stopped++
 			continue
 		}
-		for _, e := range []float64{res.Values[sweeps.THigh]/high - 1, res.Values[sweeps.TLow]/low - 1} {
-			worst = math.Max(worst, math.Abs(e))
-			if math.Abs(e) > 1e-5 {
-				t.Errorf("board %d, %s: off by %.2g: t_high %g and %g, t_low %g and %g, %+v", n, networks[n%5], e,
-					res.Values[sweeps.THigh], high, res.Values[sweeps.TLow], low, m.nominal)
-			}
+		off := func() float64 {
+			return math.Max(math.Abs(res.Values[sweeps.THigh]/high-1), math.Abs(res.Values[sweeps.TLow]/low-1))
+		}
+		if off() > 1e-6 { // a finer walk decides whose error it is
+			high, low, _ = walk(m, s, 400)
+		}
+		worst = math.Max(worst, off())
+		if off() > 1e-5 {
+			t.Errorf("board %d, %s: off by %.2g: t_high %g and %g, t_low %g and %g, %+v", n, networks[n%5], off(),
+				res.Values[sweeps.THigh], high, res.Values[sweeps.TLow], low, m.nominal)
 		}
 	}
 	t.Logf("worst of 500 boards %.2g; %d do not oscillate, by both", worst, stopped)
