@@ -8,7 +8,7 @@ import { aDaemon, openBrowser } from "./browser.mjs";
 
 const { values: opt, positionals } = parseArgs({
   allowPositionals: true,
-  options: { out: { type: "string" }, path: { type: "string", default: "/" }, name: { type: "string", default: "now" }, points: { type: "string", default: "1" } },
+  options: { out: { type: "string" }, path: { type: "string", default: "/" }, name: { type: "string", default: "now" }, points: { type: "string", default: "30" } },
 });
 if (positionals[0]) [process.env.BASE_URL, process.env.TOKEN] = positionals;
 const out = opt.out ?? fileURLToPath(new URL("../pictures", import.meta.url));

@@ -19,6 +19,13 @@ test("energised, with its evidence", () => {
   expect(plain(briefProgress(base))).toBe("63 of 144, 4 h 30 min left");
 });
 
+test("a run that stands still says so instead of a time", () => {
+  const said = (state: Vitals["state"]) => progress({ ...base, flagged: 0, state }, live, "").replace("Run 41: 63 of 144 points. ", "");
+  expect(said("held")).toBe("Held: the output is off until the run is continued.");
+  expect(said("asking")).toBe("It waits for a person.");
+  expect(said("making_safe")).toBe("Making safe.");
+});
+
 test("off is a claim with a witness", () => {
   const v: Vitals = { ...base, energised: "no", since: "2026-12-01T06:31:08Z", confirmed_by: ["supply", "meter", "cutoff"], run: 0, state: undefined };
   expect(standing(v, live).evidence).toBe("Output off since 06:31:08, confirmed by supply, meter and cutoff.");

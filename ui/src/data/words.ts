@@ -108,6 +108,8 @@ export function progress(v: Vitals | null, link: Link, bench: string): string {
 export function timeLeft(v: Vitals): string {
   const safe = v.safe_by ? `safe by ${clock(v.safe_by)} whatever remains.` : "";
   if (v.state === "making_safe") return "Making safe.";
+  if (v.state === "held") return "Held: the output is off until the run is continued.";
+  if (v.state === "asking") return "It waits for a person.";
   if (v.time_left === undefined) return sentenceCase(safe);
   const near = new Date(new Date(v.at).getTime() + v.time_left * 1000);
   const done = v.time_left < 90 ? "" : `, done near ${clock(near)}`;

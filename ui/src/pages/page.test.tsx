@@ -35,6 +35,7 @@ beforeEach(() => {
   document.body.innerHTML = '<div id="page"></div>';
 });
 afterEach(() => {
+  vi.useRealTimers();
   act(() => render(null, document.getElementById("page")!));
   for (const r of routers) r.close();
   routers = [];
@@ -150,7 +151,6 @@ test("the state is spoken when it changes, but not twice in 15 s", async () => {
   expect(text(".spoken[aria-live]")).toMatch(/^Not live/);
   await pass(6_000);
   expect(text(".spoken[aria-live]")).toMatch(/^Energised\./);
-  vi.useRealTimers();
 });
 
 test("a run that starts while the page is open is the one shown", async () => {

@@ -2,6 +2,7 @@
 // SVG of our own rather than a plotting library: the marks (brackets, arrows with a word,
 // hollow dots, labels at the curve's end) are this log's, they take their ink from the
 // page's tokens in both lights and in print, and they can be named to a screen reader.
+import { useMemo } from "preact/hooks";
 import type { Curve, Point, Quantity, Setpoint } from "../data/nouns";
 import { prefixFor } from "../data/format";
 import { sentenceCase, titled } from "../data/words";
@@ -26,25 +27,33 @@ export interface FigureProps {
 
 export function Figure(props: FigureProps) {
   const [box, width] = useWidth<HTMLElement>();
-  const data = figureData(props.quantity, props.points, props.curves, props.setpoints);
-  if (!data.series.length)
-    return <figure ref={box}><figcaption>{sentenceCase(titled(props.quantity))}: no points and no prediction yet.</figcaption></figure>;
-  const f = frame(data, props.setpoints, width);
-  const notes = annotate(f, data, props.now);
-  const name = description(data, props.points);
+  const { quantity, points, curves, setpoints, now } = props;
+  // Drawn again only when something in it changed: the page around it changes twice a second.
+  const drawn = useMemo(() => draw(props, width), [quantity, points, curves, setpoints, width, now?.setpoint.index, now?.repeat, now?.word]);
   return (
     <figure ref={box}>
-      <svg class="fig" width={f.width} height={f.height} viewBox={`0 0 ${f.width} ${f.height}`} role="img" aria-label={name}>
+      {drawn}
+      <Table quantity={quantity} points={points} />
+    </figure>
+  );
+}
+
+function draw({ quantity, points, curves, setpoints, now }: FigureProps, width: number) {
+  const data = figureData(quantity, points, curves, setpoints);
+  if (!data.series.length) return <figcaption>{sentenceCase(titled(quantity))}: no points and no prediction yet.</figcaption>;
+  const f = frame(data, setpoints, width);
+  return (
+    <>
+      <svg class="fig" width={f.width} height={f.height} viewBox={`0 0 ${f.width} ${f.height}`} role="img" aria-label={description(data, points)}>
         <Axes f={f} title={title(data, f)} />
         {data.series.map((s) => <path key={s.supply} class="band" d={f.bandPath(s)} />)}
         {data.series.map((s) => <path key={s.supply} class="pencil" d={f.linePath(s.x, s.value)} />)}
         {data.series.map((s, i) => <Measured key={s.supply} f={f} s={s} dx={f.dodge(i)} />)}
         <Strip f={f} data={data} />
-        <Notes notes={notes} />
+        <Notes notes={annotate(f, data, now)} />
       </svg>
       <figcaption>{caption(data)}</figcaption>
-      <Table quantity={props.quantity} points={props.points} />
-    </figure>
+    </>
   );
 }
 

@@ -1,5 +1,6 @@
 // One stroke a setpoint, in the order of the plan: tall ink measured, short pencil to come,
 // hollow head flagged, cross lost, accent wedge now; uprights part the supplies.
+import { useMemo } from "preact/hooks";
 import { count, format } from "../data/format";
 import { flagged, type Point, type Setpoint } from "../data/nouns";
 import { useWidth } from "./width";
@@ -21,6 +22,11 @@ export function marks(setpoints: readonly Setpoint[], points: readonly Point[]):
 
 export function Tally({ setpoints, points, now, over }: TallyProps) {
   const [box, width] = useWidth<HTMLDivElement>(1312);
+  const drawn = useMemo(() => draw({ setpoints, points, now, over }, width), [setpoints, points, now, over, width]);
+  return <div class="tallybox" ref={box}>{drawn}</div>;
+}
+
+function draw({ setpoints, points, now, over }: TallyProps, width: number) {
   const all = marks(setpoints, points);
   const n = { flagged: all.filter((m) => m === "flagged").length, lost: all.filter((m) => m === "lost").length };
   const step = (width - 1) / Math.max(all.length, 1);
@@ -29,18 +35,16 @@ export function Tally({ setpoints, points, now, over }: TallyProps) {
   const at = now === null || over ? -1 : setpoints.findIndex((s) => s.index === now);
   const parts = setpoints.flatMap((s, i) => (i === 0 || s.supply_voltage !== setpoints[i - 1]!.supply_voltage ? [{ s, i }] : []));
   return (
-    <div class="tallybox" ref={box}>
-      <svg class="fig tally" width={width} height={36} viewBox={`0 0 ${width} 36`} role="img" aria-label={label}>
-        <path class="tl" d={strokes(all, "measured", x, 4) + strokes(all, "flagged", x, 8)} />
-        <path class="tp" d={strokes(all, "coming", x, 12)} />
-        <path class="lostm" d={all.map((m, i) => (m === "lost" ? `M${x(i) - 2.5} 7l5 6m0 -6l-5 6` : "")).join("")} />
-        {all.map((m, i) => m === "flagged" && <circle key={i} class="pth" cx={x(i)} cy={5} r={2.1} />)}
-        <path class="tbase" d={`M0 16H${width}`} />
-        <path class="tsep" d={parts.map(({ i }) => `M${Math.max(0.4, i * step)} 1V20`).join("") + `M${width - 0.5} 1V20`} />
-        {at >= 0 && <path class="nowt" d={`M${x(at)} 17l-4 4.5h8z`} />}
-        {parts.map(({ s, i }, k) => (room(parts, k, step, width) ? <text key={i} class="num" x={i * step} y={32}>{format(s.supply_voltage, "V", 3)}</text> : null))}
-      </svg>
-    </div>
+    <svg class="fig tally" width={width} height={36} viewBox={`0 0 ${width} 36`} role="img" aria-label={label}>
+      <path class="tl" d={strokes(all, "measured", x, 4) + strokes(all, "flagged", x, 8)} />
+      <path class="tp" d={strokes(all, "coming", x, 12)} />
+      <path class="lostm" d={all.map((m, i) => (m === "lost" ? `M${x(i) - 2.5} 7l5 6m0 -6l-5 6` : "")).join("")} />
+      {all.map((m, i) => m === "flagged" && <circle key={i} class="pth" cx={x(i)} cy={5} r={2.1} />)}
+      <path class="tbase" d={`M0 16H${width}`} />
+      <path class="tsep" d={parts.map(({ i }) => `M${Math.max(0.4, i * step)} 1V20`).join("") + `M${width - 0.5} 1V20`} />
+      {at >= 0 && <path class="nowt" d={`M${x(at)} 17l-4 4.5h8z`} />}
+      {parts.map(({ s, i }, k) => (room(parts, k, step, width) ? <text key={i} class="num" x={i * step} y={32}>{format(s.supply_voltage, "V", 3)}</text> : null))}
+    </svg>
   );
 }
 

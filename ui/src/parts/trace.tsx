@@ -1,4 +1,5 @@
 // The newest record: one line in ink, its levels named at the right, its times on brackets.
+import { useMemo } from "preact/hooks";
 import { clockSeconds, count, format, formatU, nbsp, tidy } from "../data/format";
 import { type Point, reading, type Wave, type Waveforms } from "../data/nouns";
 import { labelWidth, spread } from "./place";
@@ -12,6 +13,11 @@ const top = 24;
 
 export function Trace({ record, point }: TraceProps) {
   const [box, width] = useWidth<HTMLElement>();
+  const drawn = useMemo(() => draw({ record, point }, width), [record, point, width]);
+  return <figure ref={box}>{drawn}</figure>;
+}
+
+function draw({ record, point }: TraceProps, width: number) {
   const w = record.records[0];
   if (!w || w.codes.length < 2) return null;
   const narrow = width < 600;
@@ -26,7 +32,7 @@ export function Trace({ record, point }: TraceProps) {
   const height = bottom + 62;
   const labels = spread(named.map((l) => y(l.volts)), 34);
   return (
-    <figure ref={box}>
+    <>
       <svg class="fig" width={width} height={height} viewBox={`0 0 ${width} ${height}`} role="img" aria-label={`${w.node}: ${named.map((l) => `${l.name} ${l.words}`).join(", ")}.`}>
         <text class="cap" x={0} y={13}>{w.node}, V</text>
         {ticks(lo, hi, 4).map((t) => <g key={t}><text class="num" x={left - 8} y={y(t) + 4} text-anchor="end">{tidy(String(t))}</text><path class="brk" d={`M${left - 4} ${y(t)}h4`} /></g>)}
@@ -41,7 +47,7 @@ export function Trace({ record, point }: TraceProps) {
         {point && win.first !== null && <Times w={w} point={point} first={win.first} x={x} y={bottom + 14} right={right} />}
       </svg>
       <figcaption>{says(w, record, win.periods, named)}</figcaption>
-    </figure>
+    </>
   );
 }
 
