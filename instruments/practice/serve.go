@@ -99,12 +99,29 @@ func (i *Instrument) ServePTY() (address string, err error) {
 	if err != nil {
 		return "", fmt.Errorf("practice %s: no pseudo-terminal: %w", i.Name, err)
 	}
-	if err := raw(slave); err != nil {
+	err = raw(slave)
+	if err == nil {
+		master, err = interruptible(master)
+	}
+	if err != nil {
 		return "", errors.Join(fmt.Errorf("practice %s: %w", i.Name, err), master.Close(), slave.Close())
 	}
 	i.bench.keep(slave) // held open, so that a client may come and go
 	i.Serve(master)
 	return "serial://" + slave.Name(), nil
+}
+
+// interruptible gives the same file, where closing ends a read that waits even
+// while a client still holds the other side; a file that was opened blocking does not.
+func interruptible(f *os.File) (*os.File, error) {
+	fd, err := unix.FcntlInt(f.Fd(), unix.F_DUPFD_CLOEXEC, 0)
+	if err != nil {
+		return f, err
+	}
+	if err := unix.SetNonblock(fd, true); err != nil {
+		return f, errors.Join(err, unix.Close(fd))
+	}
+	return os.NewFile(uintptr(fd), f.Name()), f.Close()
 }
 
 // raw switches off all that a terminal does to bytes.
