@@ -5,6 +5,9 @@
 // is a number only when it is one: overload and "no value" are outcomes. After
 // a connection was out of step the settings are read back before they are
 // relied on, since the instrument may have been switched off and on meanwhile.
+//
+// Off, State and Identify may be called from any goroutine at any time; what
+// makes or uses settings (Configure, Read, Capture, SetCode) from one at a time.
 package driver
 
 import (

@@ -131,6 +131,7 @@ func (s *Supply) blind(ctx context.Context, l dialect.Line) error {
 	if err := s.conn.Blind(ctx, command); err != nil {
 		return s.fault(command, err)
 	}
+	s.lost.Store(false) // a lost link has been opened anew on the way
 	return nil
 }
 
