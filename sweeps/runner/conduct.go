@@ -13,40 +13,32 @@ import (
 
 // conduct goes through the plan. It returns the cause that ends the run.
 func (r *Runner) conduct(ctx context.Context) error {
-	first, ok := schedule.Next(r.order, r.points)
+	next, ok := schedule.Next(r.order, r.points)
 	if !ok {
 		return errDone
 	}
-	if err := r.prepare(ctx, first); err != nil {
+	at, err := r.begin(ctx, next, r.o.Plan.WarmUp != nil)
+	if err != nil {
 		return err
 	}
-	if err := r.energise(ctx, first); err != nil {
-		return err
-	}
-	g := crew{cancel: r.cancel}
-	timing, done := context.WithCancel(ctx)
-	g.Go("time limit", func() { r.endInTime(timing) })
-	defer g.wg.Wait()
-	defer done()
-	if err := r.warmUp(ctx); err != nil {
-		return err
-	}
-	return r.steps(ctx)
+	return r.steps(ctx, at)
 }
 
-// steps measures setpoint after setpoint.
-func (r *Runner) steps(ctx context.Context) error {
+// steps measures setpoint after setpoint; at is where the bench stands.
+func (r *Runner) steps(ctx context.Context, at sweeps.Setpoint) error {
 	began, here := r.o.Clock.Now(), 0
-	at := sweeps.Setpoint{Index: -1}
 	for {
 		next, ok := schedule.Next(r.order, r.points)
 		if !ok {
 			return errDone
 		}
-		if err := r.heldUp(ctx, next); err != nil {
-			return err
-		}
 		p, err := r.visit(ctx, at, next)
+		if errors.Is(err, errHold) {
+			if at, err = r.afterHold(ctx, next, false); err != nil {
+				return err
+			}
+			continue
+		}
 		if err != nil {
 			return err
 		}
@@ -60,37 +52,81 @@ func (r *Runner) steps(ctx context.Context) error {
 	}
 }
 
+// begin energises and brings the bench to where next is visited from. It answers where the bench stands.
+func (r *Runner) begin(ctx context.Context, next sweeps.Setpoint, warm bool) (at sweeps.Setpoint, err error) {
+	at = r.before(next)
+	if warm {
+		if at, err = r.atHeld(r.o.Plan.WarmUp.At); err != nil {
+			return at, err
+		}
+	}
+	if err := r.prepare(ctx, at); err != nil {
+		return at, err
+	}
+	if err := r.energise(ctx, at); err != nil {
+		return at, err
+	}
+	switch {
+	case warm:
+		err = r.warmUp(ctx, at)
+	case at != next:
+		r.doing("Returning to "+Place(at), "The point before, so that the next one is reached from the same side.")
+		_, err = r.settle(ctx)
+	}
+	if errors.Is(err, errHold) {
+		return r.afterHold(ctx, next, warm)
+	}
+	return at, err
+}
+
+// afterHold waits a hold out and begins anew; a warm-up that was held is made in full.
+func (r *Runner) afterHold(ctx context.Context, next sweeps.Setpoint, warm bool) (sweeps.Setpoint, error) {
+	if err := r.heldUp(ctx, next); err != nil {
+		return next, err
+	}
+	return r.begin(ctx, next, warm)
+}
+
+// before is the setpoint from which next is reached: the one measured last, so
+// that a run held or resumed returns from the same side.
+func (r *Runner) before(next sweeps.Setpoint) sweeps.Setpoint {
+	if n := len(r.points); n > 0 {
+		return r.points[n-1].Setpoint
+	}
+	return next
+}
+
 // prepare sets everything that must hold before the output goes on, output off.
-func (r *Runner) prepare(ctx context.Context, first sweeps.Setpoint) error {
+func (r *Runner) prepare(ctx context.Context, at sweeps.Setpoint) error {
 	w := r.o.Bench.Wiring
 	s, err := r.o.Bench.Supply.State(ctx)
 	if err != nil {
 		return fmt.Errorf("prepare: %w", err)
 	}
 	if s.Output {
-		return errors.New("prepare: the supply's output is already on; switch it off and find out why before starting")
+		r.setEnergised(sweeps.EnergisedYes, nil)
+		return errors.New("prepare: the supply's output was on already, and not by this run; it is being switched off: find out who feeds the board before starting again")
 	}
 	if err := r.o.Bench.Supply.Protect(ctx, si.Volts(w.Supply.OverVoltage)); err != nil {
 		return fmt.Errorf("prepare: over-voltage: %w", err)
 	}
-	if err := r.o.Bench.Supply.SetCurrentLimit(ctx, si.Amperes(w.Supply.MaxCurrent)); err != nil {
-		return fmt.Errorf("prepare: current limit: %w", err)
+	if err := r.limitTo(ctx, r.currentLimit(at)); err != nil {
+		return fmt.Errorf("prepare: %w", err)
 	}
 	if w.Pot != nil {
-		if err := r.o.Bench.Pot.SetCode(ctx, first.PotCode); err != nil {
+		if err := r.again(ctx, 0, func(ctx context.Context) error { return r.o.Bench.Pot.SetCode(ctx, at.PotCode) }); err != nil {
 			return fmt.Errorf("prepare: pot: %w", err)
 		}
 	}
-	if err := r.o.Bench.Supply.SetVoltage(ctx, si.Volts(first.Supply)); err != nil {
+	if err := r.o.Bench.Supply.SetVoltage(ctx, si.Volts(at.Supply)); err != nil {
 		return fmt.Errorf("prepare: %w", err)
 	}
-	return r.setUpMeasuring(ctx, first)
+	return r.setUpMeasuring(ctx, at)
 }
 
 // energise makes "about to energise" durable, in the journal and in a file, and only then switches on.
 func (r *Runner) energise(ctx context.Context, at sweeps.Setpoint) error {
-	w := r.o.Bench.Wiring.Supply
-	words := fmt.Sprintf("Output on, %s; current limit %s, over-voltage %s.", Place(at), si.Amperes(w.MaxCurrent), si.Volts(w.OverVoltage))
+	words := fmt.Sprintf("Output on, %s; current limit %s, over-voltage %s.", Place(at), si.Amperes(r.limit), si.Volts(r.o.Bench.Wiring.Supply.OverVoltage))
 	if _, err := r.append(sweeps.Entry{Kind: sweeps.KindEnergising, Words: words}); err != nil {
 		return &journalFailed{err}
 	}
@@ -105,25 +141,26 @@ func (r *Runner) energise(ctx context.Context, at sweeps.Setpoint) error {
 		return fmt.Errorf("energise: %w", err)
 	}
 	r.setState(sweeps.Running)
-	return nil
+	return r.arrive(ctx, at.Supply)
 }
 
-// warmUp dwells at the plan's warm-up setting. A resumed run warms up again.
-func (r *Runner) warmUp(ctx context.Context) error {
-	wu := r.o.Plan.WarmUp
-	if wu == nil {
-		return nil
+// warmUp dwells at the plan's warm-up setting, watching what the plan limits.
+func (r *Runner) warmUp(ctx context.Context, at sweeps.Setpoint) error {
+	d := r.o.Plan.WarmUp.For
+	r.say(fmt.Sprintf("Warm-up %s at %s.", d, Place(at)))
+	r.doing("Warming up at "+Place(at), fmt.Sprintf("For %s before the first point.", d))
+	for until := r.o.Clock.Elapsed() + d; r.o.Clock.Elapsed() < until; {
+		if r.holding() {
+			return errHold
+		}
+		if _, err := r.readAll(ctx, -1); err != nil {
+			return err
+		}
+		if err := r.o.Clock.Sleep(ctx, min(time.Second, until-r.o.Clock.Elapsed())); err != nil {
+			return err
+		}
 	}
-	at, err := r.atHeld(wu.At)
-	if err != nil {
-		return err
-	}
-	if err := r.set(ctx, sweeps.Setpoint{Index: -1}, at); err != nil {
-		return err
-	}
-	r.say(fmt.Sprintf("Warm-up %s at %s.", wu.For, Place(at)))
-	r.doing("Warming up at "+Place(at), fmt.Sprintf("For %s before the first point.", wu.For))
-	return r.o.Clock.Sleep(ctx, wu.For)
+	return nil
 }
 
 // atHeld is the setpoint of a warm-up's setting, the pot on the nearest code.
@@ -139,38 +176,6 @@ func (r *Runner) atHeld(h sweeps.Held) (sweeps.Setpoint, error) {
 	}
 	s.PotCode, s.Pot = codes[0], pot.Ohms(codes[0]).SI()
 	return s, nil
-}
-
-// endInTime ends the run so that the bench is safe by the plan's limit.
-func (r *Runner) endInTime(ctx context.Context) {
-	left, why := r.timeLimit()
-	if left == 0 {
-		<-ctx.Done()
-		return
-	}
-	by := r.o.Clock.Now().Add(left)
-	r.tell(func(v *sweeps.Vitals) { v.SafeBy = &by })
-	if r.o.Clock.Wait(ctx, left-min(safeMargin, left/10)) == nil {
-		r.cancel(&Stop{Reason: why})
-	}
-}
-
-// safeMargin of wall time is kept for making safe before a plan's limit.
-const safeMargin = 30 * time.Second
-
-// timeLimit is the wall time the plan leaves, and the reason it will give; 0 is no limit.
-func (r *Runner) timeLimit() (left time.Duration, why string) {
-	p := r.o.Plan
-	if p.AtMost > 0 {
-		left = time.Duration(float64(p.AtMost) / r.o.Clock.Pace())
-		why = fmt.Sprintf("the plan's limit of %s was reached", p.AtMost)
-	}
-	if !r.o.SafeBy.IsZero() {
-		if d := r.o.SafeBy.Sub(r.o.Clock.Now()); left == 0 || d < left {
-			left, why = max(d, time.Millisecond), "the plan's limit, safe by "+p.SafeBy+", was reached"
-		}
-	}
-	return left, why
 }
 
 // Place names a setpoint for people: "9 V, 22 k".

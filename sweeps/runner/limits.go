@@ -32,8 +32,9 @@ func (l *limits) has(q sweeps.Quantity) bool {
 	return false
 }
 
-// observe takes one reading and returns the trip that it completes, if any.
-func (l *limits) observe(q sweeps.Quantity, value float64, raw string, at time.Duration) *Trip {
+// observe takes one reading and returns the trip that it completes, if any. A
+// reading that integrated over an aperture was above for as long when it ended.
+func (l *limits) observe(q sweeps.Quantity, value float64, raw string, at, aperture time.Duration) *Trip {
 	l.mu.Lock()
 	defer l.mu.Unlock()
 	for i, t := range l.trips {
@@ -46,8 +47,8 @@ func (l *limits) observe(q sweeps.Quantity, value float64, raw string, at time.D
 		}
 		since, ok := l.above[i]
 		if !ok {
-			l.above[i] = at
-			since = at
+			since = at - aperture
+			l.above[i] = since
 		}
 		if at-since >= t.For {
 			return &Trip{Raw: raw, Reason: fmt.Sprintf("%s %s is above its limit of %s for %s", q, si.Format(value, q.Unit()), si.Format(t.Limit, q.Unit()), t.For)}

@@ -2,41 +2,41 @@ package runner
 
 import (
 	"context"
-	"fmt"
-	"math"
 	"math/rand/v2"
 
 	"nightbench/instruments"
-	"nightbench/instruments/si"
 	"nightbench/sweeps"
 	"nightbench/sweeps/derive"
 
 	"golang.org/x/sync/errgroup"
 )
 
-// measure takes all repeats of a setpoint, every instrument in a goroutine of its own.
+// measure takes all repeats of a setpoint, every instrument in a goroutine of its
+// own. A hold ends it after the readings in hand, with errHold unless they were the last.
 func (r *Runner) measure(ctx context.Context, at sweeps.Setpoint) (derive.Raw, error) {
 	raw := derive.Raw{Setpoint: at, Meters: make([][]instruments.Sample, len(r.o.Bench.Meters))}
-	repeats := r.o.Plan.Measure.Repeats
 	period := r.expect(at).period
 	g, ctx := errgroup.WithContext(ctx)
-	var c crew
 	each := func(where string, take func() error) {
 		g.Go(func() error {
-			return c.guard(where, func() error { return r.repeat(ctx, repeats, period, take) })
+			return guard(where, func() error { return r.repeat(ctx, period, take) })
 		})
 	}
 	each("supply", func() error {
-		s, err := r.o.Bench.Supply.State(ctx)
-		raw.Supply = append(raw.Supply, s)
-		return err
+		return r.again(ctx, 0, func(ctx context.Context) error {
+			s, err := r.look(ctx)
+			if err == nil {
+				raw.Supply = append(raw.Supply, s)
+			}
+			return err
+		})
 	})
 	for i := range r.o.Bench.Meters {
 		each(r.o.Bench.Wiring.Meters[i].Name, func() error {
 			s, err := r.read(ctx, i)
-			raw.Meters[i] = append(raw.Meters[i], s)
-			if i == 0 && err == nil {
-				r.tell(func(v *sweeps.Vitals) { v.Repeat = len(raw.Meters[i]) })
+			if err == nil {
+				raw.Meters[i] = append(raw.Meters[i], s)
+				r.repeated(i, len(raw.Meters[i]))
 			}
 			return err
 		})
@@ -44,17 +44,52 @@ func (r *Runner) measure(ctx context.Context, at sweeps.Setpoint) (derive.Raw, e
 	if r.o.Bench.Wiring.Scope != nil {
 		each("scope", func() error { return r.capture(ctx, &raw) })
 	}
-	err := g.Wait()
-	if cause := context.Cause(ctx); err != nil && cause != nil {
-		err = cause
+	err := cause(ctx, g.Wait())
+	if err == nil && !r.complete(raw) {
+		err = errHold
 	}
 	return raw, err
 }
 
-// repeat takes n readings, each begun at a random fraction of the period: begun in
+// cause is why a group of readings ended: an error that is only the consequence of another gives way to it.
+func cause(ctx context.Context, err error) error {
+	if err == nil {
+		return nil
+	}
+	if why := context.Cause(ctx); why != nil {
+		return why
+	}
+	return err
+}
+
+// repeated shows how far the first meter has come.
+func (r *Runner) repeated(meter, n int) {
+	if meter == 0 {
+		r.tell(func(v *sweeps.Vitals) { v.Repeat = n })
+	}
+}
+
+// complete tells whether every instrument gave all its repeats.
+func (r *Runner) complete(raw derive.Raw) bool {
+	n := r.o.Plan.Measure.Repeats
+	if len(raw.Supply) < n || r.o.Bench.Wiring.Scope != nil && len(raw.Records) < n {
+		return false
+	}
+	for _, m := range raw.Meters {
+		if len(m) < n {
+			return false
+		}
+	}
+	return true
+}
+
+// repeat takes the plan's repeats, each begun at a random fraction of the period: begun in
 // step with the wave they would beat with it and their scatter would lie.
-func (r *Runner) repeat(ctx context.Context, n int, period float64, take func() error) error {
-	for range n {
+func (r *Runner) repeat(ctx context.Context, period float64, take func() error) error {
+	for range r.o.Plan.Measure.Repeats {
+		if r.holding() {
+			return nil
+		}
 		if err := r.o.Clock.Sleep(ctx, seconds(rand.Float64()*period)); err != nil {
 			return err
 		}
@@ -66,95 +101,11 @@ func (r *Runner) repeat(ctx context.Context, n int, period float64, take func() 
 }
 
 func (r *Runner) capture(ctx context.Context, raw *derive.Raw) error {
-	var f []instruments.Waveform
-	err := again(ctx, r.o.Clock, func() (err error) {
-		f, err = r.o.Bench.Scope.Capture(ctx)
+	return r.again(ctx, r.takes.record, func(ctx context.Context) error {
+		f, err := r.o.Bench.Scope.Capture(ctx)
+		if err == nil {
+			raw.Records = append(raw.Records, f)
+		}
 		return err
 	})
-	raw.Records = append(raw.Records, f)
-	return err
-}
-
-// expected is what the prediction says of a setpoint, as far as settings need it.
-type expected struct{ period, duty float64 }
-
-// expect predicts period and duty. Where the schematic predicts none, a board of 100 Hz is assumed: slow enough for every road.
-func (r *Runner) expect(at sweeps.Setpoint) expected {
-	p, _ := r.o.Predict.At(at.Supply, at.Pot)
-	e := expected{period: p[sweeps.Period].Value, duty: p[sweeps.Duty].Value}
-	if !(e.period > 0) || !(e.duty > 0 && e.duty < 1) {
-		return expected{period: 0.01, duty: 0.5}
-	}
-	return e
-}
-
-// Settings of the measuring instruments (BENCH-PRACTICE's rules: range by peak, aperture
-// from the period, record of ten periods and fifty samples in the shorter phase).
-const (
-	headroom      = 1.2  // of the range over the supply or the stall current
-	apertureShare = 1e-3 // wanted of the aperture term, as a share of the swing
-	leastAperture = 0.1  // s
-	mostAperture  = 2.0  // s
-	periods       = 12
-	samplesAPhase = 50
-	mostPoints    = 20000
-)
-
-// aperture is long enough that the aperture term stays below its share of the swing, s.
-func aperture(e expected) float64 {
-	return math.Min(math.Max(e.duty*(1-e.duty)*e.period/apertureShare, leastAperture), mostAperture)
-}
-
-// setUpMeasuring tells meters and scope what the setpoint needs.
-func (r *Runner) setUpMeasuring(ctx context.Context, at sweeps.Setpoint) error {
-	e := r.expect(at)
-	aperture := aperture(e)
-	for i, m := range r.o.Bench.Meters {
-		s := instruments.MeterSettings{Unit: sweeps.Quantity(r.o.Bench.Wiring.Meters[i].Reads).Unit(), Aperture: aperture}
-		switch s.Unit {
-		case si.Ampere:
-			s.Range = headroom * r.o.Predict.Peak(at.Supply)
-		default:
-			s.Range = headroom * at.Supply
-		}
-		if _, err := m.Configure(ctx, s); err != nil {
-			return fmt.Errorf("meter %q: %w", r.o.Bench.Wiring.Meters[i].Name, err)
-		}
-	}
-	return r.setUpScope(ctx, at, e)
-}
-
-func (r *Runner) setUpScope(ctx context.Context, at sweeps.Setpoint, e expected) error {
-	w := r.o.Bench.Wiring.Scope
-	if w == nil {
-		return nil
-	}
-	short := math.Min(e.duty, 1-e.duty) * e.period
-	s := instruments.ScopeSettings{Duration: periods * e.period}
-	s.Points = int(math.Min(math.Ceil(s.Duration/(short/samplesAPhase)), mostPoints))
-	for _, c := range w.Channels {
-		s.Channels = append(s.Channels, instruments.ScopeChannel{Number: c.Number, Low: -0.1 * at.Supply, High: headroom * at.Supply, Probe: c.Probe})
-	}
-	if len(w.Channels) > 0 {
-		s.Trigger = instruments.ScopeTrigger{Channel: w.Channels[0].Number, Level: at.Supply / 2}
-	}
-	if _, err := r.o.Bench.Scope.Configure(ctx, s); err != nil {
-		return fmt.Errorf("scope: %w", err)
-	}
-	return nil
-}
-
-// AtLeast is the bench time a plan takes at the least, s: warm-up, settling five
-// time constants, and the repeats of the slowest meter, auto-zero counted.
-func AtLeast(plan sweeps.Plan, p Predictor, order []sweeps.Setpoint) float64 {
-	r := &Runner{o: Options{Predict: p}}
-	total := 0.0
-	if plan.WarmUp != nil {
-		total = plan.WarmUp.For.Seconds()
-	}
-	settle := 5 * math.Max(p.Tau(), supplyTau)
-	for _, s := range order {
-		total += settle + float64(plan.Measure.Repeats)*2*aperture(r.expect(s))
-	}
-	return total
 }

@@ -1,8 +1,8 @@
 // Package runner conducts a run: set, settle, measure, derive, check, append,
 // next. One goroutine conducts, one watches the supply, one notices when nobody
 // sees it any more. Whatever happens, there is one way to safe: the run's
-// context is cancelled with a cause, and the conductor's last act makes the
-// bench safe in a context of its own.
+// context is cancelled with a cause, and at once, whether or not the conductor
+// comes back, the bench is made safe in a context of its own.
 package runner
 
 import (
@@ -60,17 +60,26 @@ type Options struct {
 type Runner struct {
 	o      Options
 	order  []sweeps.Setpoint
-	points []sweeps.Point
 	begun  time.Duration // bench time at which the run began
 	limits *limits
+	strain strain
 	hold   chan struct{} // one slot: a person asked for a hold
 	goOn   chan struct{} // one slot: a person asked to continue
-	cancel context.CancelCauseFunc
-	ready  chan struct{} // closed when Conduct has begun
+	offing chan struct{} // one slot: full while nobody makes the bench safe
 
-	mu     sync.Mutex // guards state and vitals; never held over I/O
+	life   context.Context // ends with the cause that ends the run
+	cancel context.CancelCauseFunc
+
+	// The conductor's own.
+	points  []sweeps.Point
+	limit   float64 // A, current limit in force
+	takes   takes   // of one reading, in force
+	predict memo
+
+	mu     sync.Mutex // guards what follows; never held over I/O
 	state  sweeps.State
 	vitals sweeps.Vitals
+	drive  drive
 }
 
 // New makes a run ready to be conducted.
@@ -78,8 +87,10 @@ func New(o Options) *Runner {
 	r := &Runner{
 		o: o, order: o.Order, points: append([]sweeps.Point(nil), o.Done...),
 		limits: newLimits(o.Plan.Trips), state: sweeps.Preparing,
-		hold: make(chan struct{}, 1), goOn: make(chan struct{}, 1), ready: make(chan struct{}),
+		hold: make(chan struct{}, 1), goOn: make(chan struct{}, 1), offing: make(chan struct{}, 1),
 	}
+	r.life, r.cancel = context.WithCancelCause(context.Background())
+	r.offing <- struct{}{}
 	r.vitals = sweeps.Vitals{
 		Energised: sweeps.EnergisedNo, Run: o.Run.ID, State: sweeps.Preparing, Doing: "Preparing",
 		Planned: len(o.Order), Measured: len(o.Done), Flagged: countFlagged(o.Done), Repeats: o.Plan.Measure.Repeats,
@@ -98,52 +109,42 @@ type Outcome struct {
 // ends with off unconfirmed. ctx ends the run (its cause is the reason); last
 // bounds only the making safe, which otherwise goes on until off is confirmed.
 func (r *Runner) Conduct(ctx, last context.Context) Outcome {
-	ctx, cancel := context.WithCancelCause(ctx)
-	r.cancel = cancel
+	if ctx.Err() != nil {
+		r.cancel(context.Cause(ctx))
+	}
+	untie := context.AfterFunc(ctx, func() { r.cancel(context.Cause(ctx)) })
+	defer untie()
 	r.begun = r.o.Clock.Elapsed()
-	close(r.ready)
-	g := crew{cancel: cancel}
-	g.Go("watch", func() { r.watch(ctx) })
-	g.Go("blind", func() { r.guardBlind(ctx) })
-	cancel(g.guard("conductor", func() error { return r.conduct(ctx) }))
-	cause := context.Cause(ctx)
-	end := ending(cause)
-	r.setState(sweeps.MakingSafe)
-	g.Go("note", func() { r.note(end) })
-	off := r.makeSafe(last)
-	g.wg.Wait()
-	return r.close(end, off)
+	g := crew{cancel: r.cancel}
+	g.Go("watch", func() { r.watch(r.life) })
+	g.Go("blind", func() { r.guardBlind(r.life) })
+	g.Go("time limit", func() { r.endInTime(r.life) })
+	g.Go("conductor", func() { r.cancel(r.meaning(r.conduct(r.life))) })
+	<-r.life.Done()
+	cause := context.Cause(r.life)
+	r.logPanic(cause)
+	end, pen := ending(cause), r.newPen(&g)
+	r.enter(sweeps.MakingSafe)
+	r.doing("Making the bench safe", end.Reason)
+	pen.note(end, cause)
+	off := r.makeSafe(last, pen)
+	close(pen.entries)
+	g.wait(last)
+	return r.close(r.secondThought(last, end), off)
 }
 
 // close writes the run's last entry.
 func (r *Runner) close(end Outcome, off sweeps.Off) Outcome {
 	end.Off = off
-	r.setState(end.State)
 	if _, err := r.append(sweeps.Entry{Kind: sweeps.KindEnded, State: end.State, Words: end.Reason}); err != nil {
 		r.o.Log.Error("the run's end could not be written", "run", r.o.Run.ID, "err", err)
 	}
+	r.enter(end.State)
+	if off.Confirmed {
+		r.doing("The run is over", end.Reason)
+	}
 	return end
 }
-
-// append writes to the journal in a bounded context of its own: the run's may be over.
-func (r *Runner) append(e sweeps.Entry) (sweeps.Entry, error) {
-	ctx, cancel := context.WithTimeout(context.Background(), journalBudget)
-	defer cancel()
-	e.Run = r.o.Run.ID
-	e.At = r.o.Clock.Now()
-	e.Elapsed = (r.o.Clock.Elapsed() - r.begun).Seconds()
-	return r.o.Journal.Append(ctx, e)
-}
-
-// say writes a sentence to the log of the run. A journal that fails ends the run.
-func (r *Runner) say(words string) {
-	if _, err := r.append(sweeps.Entry{Kind: sweeps.KindLog, Words: words}); err != nil {
-		r.cancel(&journalFailed{err})
-	}
-}
-
-// journalBudget bounds one write; a disk that takes longer is as good as failed.
-const journalBudget = 10 * time.Second
 
 func countFlagged(points []sweeps.Point) (n int) {
 	for _, p := range points {

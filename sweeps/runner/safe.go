@@ -15,54 +15,61 @@ const (
 	safeAgain   = time.Second
 )
 
-// note writes why the bench is being made safe, beside the making safe itself: it never holds it up.
-func (r *Runner) note(end Outcome) {
-	switch end.State {
-	case sweeps.Tripped, sweeps.Failed:
-		if _, err := r.append(sweeps.Entry{Kind: sweeps.KindTrip, Words: end.Reason}); err != nil {
-			r.o.Log.Error("the reason could not be written", "run", r.o.Run.ID, "reason", end.Reason, "err", err)
-		}
-	}
-}
-
-// makeSafe is the one way to safe. It goes on until off is confirmed or last ends.
-func (r *Runner) makeSafe(last context.Context) sweeps.Off {
-	said := false
-	for {
+// makeSafe is the one way to safe. It goes on until off is confirmed or last
+// ends. The journal hears of the first failure and of the end, the log of every attempt.
+func (r *Runner) makeSafe(last context.Context, p *pen) sweeps.Off {
+	for first := true; ; first = false {
 		off := r.switchOff(last)
-		if off.Confirmed || !said {
-			said = true
-			r.sayOff(off)
+		if first || off.Confirmed {
+			p.off(off)
 		}
-		if off.Confirmed || r.o.Clock.Wait(last, safeAgain) != nil {
+		if off.Confirmed {
+			return off
+		}
+		r.doing("OFF IS NOT CONFIRMED", off.Words)
+		r.o.Log.Error("OFF IS NOT CONFIRMED", "run", r.o.Run.ID, "do", off.Words)
+		if r.o.Clock.Wait(last, safeAgain) != nil {
 			return off
 		}
 	}
 }
 
-// switchOff makes one attempt and says what is now known of the output.
-func (r *Runner) switchOff(ctx context.Context) sweeps.Off {
+// switchOff makes one attempt, one at a time, and says what is now known of the output.
+func (r *Runner) switchOff(ctx context.Context) (off sweeps.Off) {
+	<-r.offing
+	defer func() { r.offing <- struct{}{} }()
+	r.drives(drive{})
 	ctx, cancel := context.WithTimeout(ctx, safeAttempt)
 	defer cancel()
-	off := sweeps.OffFrom(instruments.MakeSafe(ctx, r.o.Clock, r.o.Bench, r.o.Safe))
-	r.tell(func(v *sweeps.Vitals) { KnowOff(v, off) })
+	err := guard("making safe", func() error {
+		off = sweeps.OffFrom(instruments.MakeSafe(ctx, r.o.Clock, r.o.Bench, r.o.Safe))
+		return nil
+	})
+	if err != nil {
+		r.logPanic(err)
+		off = sweeps.Off{By: []string{}, At: r.o.Clock.Now(), Words: "NOT CONFIRMED OFF: " + err.Error() + ". Treat the board as energised. " + r.o.Safe.Words}
+	}
+	r.sawOff(off)
 	if !off.Confirmed {
-		r.setEnergised(sweeps.EnergisedUnconfirmed, nil)
 		return off
 	}
-	r.setEnergised(sweeps.EnergisedNo, off.By)
 	if err := r.o.Mark.Clear(); err != nil {
 		r.o.Log.Error("the energised record could not be cleared; the next start will make safe again", "err", err)
 	}
 	return off
 }
 
-func (r *Runner) sayOff(off sweeps.Off) {
-	if _, err := r.append(sweeps.Entry{Kind: sweeps.KindOff, Words: off.Words, Off: &off}); err != nil {
-		r.o.Log.Error("the making safe could not be written", "run", r.o.Run.ID, "err", err)
+// sawOff keeps what making safe found.
+func (r *Runner) sawOff(off sweeps.Off) {
+	if off.Voltage != nil {
+		r.tell(func(v *sweeps.Vitals) {
+			v.Voltage, v.VoltageU, v.Current, v.CurrentU, v.ReadAt = off.Voltage, nil, nil, nil, &off.At
+		})
 	}
-	if !off.Confirmed {
-		r.o.Log.Error("OFF IS NOT CONFIRMED", "run", r.o.Run.ID, "do", off.Words)
+	if off.Confirmed {
+		r.setEnergised(sweeps.EnergisedNo, off.By)
+	} else {
+		r.setEnergised(sweeps.EnergisedUnconfirmed, nil)
 	}
 }
 

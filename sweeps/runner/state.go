@@ -66,7 +66,6 @@ func words(s sweeps.State) string {
 
 // Command asks the run for something; by names who asks. Refusals are errors in words.
 func (r *Runner) Command(c Command, by string) error {
-	<-r.ready
 	r.mu.Lock()
 	_, err := After(r.state, c)
 	r.mu.Unlock()
@@ -101,13 +100,20 @@ func (r *Runner) State() sweeps.State {
 	return r.state
 }
 
-// setState moves the run on and writes it to the journal, ended states apart: their entry comes with the end.
-func (r *Runner) setState(s sweeps.State) {
+// enter moves the run on. Once it is being made safe, only an end follows.
+func (r *Runner) enter(s sweeps.State) (entered bool) {
 	r.mu.Lock()
-	changed := r.state != s
+	defer r.mu.Unlock()
+	if r.state == sweeps.MakingSafe && !s.Ended() {
+		return false
+	}
 	r.state, r.vitals.State = s, s
-	r.mu.Unlock()
-	if !changed || s.Ended() {
+	return true
+}
+
+// setState moves the run on and writes it to the journal.
+func (r *Runner) setState(s sweeps.State) {
+	if !r.enter(s) {
 		return
 	}
 	if _, err := r.append(sweeps.Entry{Kind: sweeps.KindState, State: s, Words: said[s]}); err != nil {

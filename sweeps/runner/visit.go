@@ -5,7 +5,6 @@ import (
 	"fmt"
 	"time"
 
-	"nightbench/instruments"
 	"nightbench/instruments/si"
 	"nightbench/sweeps"
 	"nightbench/sweeps/derive"
@@ -14,6 +13,9 @@ import (
 // visit sets a setpoint coming from another, lets it settle, measures it and
 // derives its point.
 func (r *Runner) visit(ctx context.Context, from, to sweeps.Setpoint) (sweeps.Point, error) {
+	if r.holding() {
+		return sweeps.Point{}, errHold
+	}
 	r.tell(func(v *sweeps.Vitals) { v.Setpoint, v.Repeat = &to, 0 })
 	r.doing("Settling at "+Place(to), travel(to))
 	if err := r.set(ctx, from, to); err != nil {
@@ -46,18 +48,13 @@ func travel(s sweeps.Setpoint) string {
 
 // set brings the bench from one setpoint to another. Only what differs is told.
 func (r *Runner) set(ctx context.Context, from, to sweeps.Setpoint) error {
-	if from.Index < 0 || from.Supply != to.Supply {
-		if err := r.o.Bench.Supply.SetVoltage(ctx, si.Volts(to.Supply)); err != nil {
-			return err
-		}
-		if from.Index >= 0 {
-			r.say("Supply to " + si.Format(to.Supply, si.Volt) + ".")
-		}
+	if err := r.feed(ctx, from, to); err != nil {
+		return err
 	}
-	if r.o.Bench.Wiring.Pot != nil && (from.Index < 0 || from.PotCode != to.PotCode) {
-		return again(ctx, r.o.Clock, func() error { return r.o.Bench.Pot.SetCode(ctx, to.PotCode) })
+	if r.o.Bench.Wiring.Pot == nil || from.PotCode == to.PotCode {
+		return nil
 	}
-	return nil
+	return r.again(ctx, 0, func(ctx context.Context) error { return r.o.Bench.Pot.SetCode(ctx, to.PotCode) })
 }
 
 // point turns what was measured into a point: readings, predictions at the measured supply, flags.
@@ -79,15 +76,27 @@ func (r *Runner) point(at sweeps.Setpoint, raw derive.Raw, unsettled *sweeps.Fla
 	return p
 }
 
-// again tries f, and once more after a moment where it failed: a lost instrument
-// gets one retry of a second, no more.
-func again(ctx context.Context, clock instruments.Clock, f func() error) error {
-	err := f()
-	if err == nil || ctx.Err() != nil {
-		return err
+// A lost instrument gets one retry of a second (wall), beyond what the reading itself takes.
+const (
+	retryAfter  = 200 * time.Millisecond
+	retryWithin = time.Second
+)
+
+// again tries f, and once more after a moment where it failed. A failure that the
+// second try mended is written down. takes is the bench time f needs by itself, s.
+func (r *Runner) again(ctx context.Context, takes float64, f func(context.Context) error) error {
+	first := f(ctx)
+	if first == nil || ctx.Err() != nil {
+		return first
 	}
-	if clock.Wait(ctx, 200*time.Millisecond) != nil {
-		return err
+	if r.o.Clock.Wait(ctx, retryAfter) != nil {
+		return first
 	}
-	return f()
+	ctx, cancel := context.WithTimeout(ctx, retryWithin+r.wall(seconds(takes)))
+	defer cancel()
+	if second := f(ctx); second != nil {
+		return fmt.Errorf("%w; tried once more: %w", first, second)
+	}
+	r.say(fmt.Sprintf("%v. The second try went well.", first))
+	return nil
 }

@@ -3,9 +3,11 @@ package runner
 import (
 	"context"
 	"fmt"
+	"sync"
 	"time"
 
 	"nightbench/instruments"
+	"nightbench/instruments/si"
 	"nightbench/sweeps"
 )
 
@@ -13,23 +15,31 @@ import (
 const (
 	watchEvery = 500 * time.Millisecond // supply state at 2 Hz
 	blindAfter = 2 * time.Second        // no good supply state for this long while energised is a trip
-	// limitingFor is how long the supply may be in current limit before it counts
-	// as a trip: a motor's inrush is over by then. Bench time; common practice, no source.
-	limitingFor = 3 * time.Second
 )
+
+// A strain on the supply has to last, in bench time and in looks at it, before
+// it counts: a motor's inrush is over by then. Common practice, no source.
+const (
+	strainFor   = 3 * time.Second
+	strainLooks = 3
+)
+
+// latched is the reason of a protection of the supply's own.
+const latched = "the supply's own protection tripped and holds the output off; find out why before clearing it"
 
 // watch looks at the supply for as long as the run lasts and trips on what it sees.
 func (r *Runner) watch(ctx context.Context) {
-	var limitingSince time.Duration
 	for {
-		s, err := r.o.Bench.Supply.State(ctx)
-		if err == nil {
-			r.sawSupply(s)
-			limitingSince = r.judge(s, limitingSince)
+		// A look that fails is not the end yet: guardBlind counts from the last good one.
+		if _, err := r.look(ctx); err != nil && ctx.Err() == nil {
+			r.o.Log.Warn("the supply's state could not be read", "run", r.o.Run.ID, "err", err)
 		}
 		wait := watchEvery
 		if d, ok := r.limits.pending(r.o.Clock.Elapsed()); ok {
-			wait = min(wait, time.Duration(float64(d)/r.o.Clock.Pace()))
+			wait = min(wait, max(r.wall(d), time.Millisecond))
+		}
+		if r.strain.any() {
+			wait = min(wait, r.wall(strainFor/4))
 		}
 		if r.o.Clock.Wait(ctx, wait) != nil {
 			return
@@ -37,48 +47,109 @@ func (r *Runner) watch(ctx context.Context) {
 	}
 }
 
-// judge trips on a supply state; it returns since when the supply has been limiting, 0 when it isn't.
-func (r *Runner) judge(s instruments.SupplyState, limitingSince time.Duration) time.Duration {
+// look reads the supply's state and judges it. Whoever reads it reads it here.
+func (r *Runner) look(ctx context.Context) (instruments.SupplyState, error) {
+	before := r.driving()
+	s, err := r.o.Bench.Supply.State(ctx)
+	if err != nil {
+		return s, err
+	}
+	if s.Voltage.Outcome == instruments.Measured && s.Current.Outcome == instruments.Measured {
+		r.sawSupply(s)
+	}
 	now := r.o.Clock.Elapsed()
 	r.check(sweeps.SupplyCurrent, s.Current, now)
 	r.check(sweeps.SupplyVoltage, s.Voltage, now)
-	if r.energised() == sweeps.EnergisedYes && s.Tripped {
-		r.cancel(&Trip{Reason: "the supply's own protection tripped and holds the output off", Raw: s.Voltage.Raw + "; " + s.Current.Raw})
+	raw := s.Voltage.Raw + "; " + s.Current.Raw
+	if r.energised() != sweeps.EnergisedYes {
+		return s, nil
 	}
-	if !s.Limiting || !s.Output {
-		return 0
+	if s.Tripped {
+		r.cancel(&Trip{Reason: latched, Raw: raw})
 	}
-	if limitingSince == 0 {
-		return now
+	if why := r.strain.limiting.see(now, s.Limiting && s.Output, &r.strain.mu); why {
+		r.cancel(&Trip{Reason: fmt.Sprintf("limiting: the supply has been in current limit for more than %s: a short, a stalled motor, or a limit set too low", strainFor), Raw: raw})
 	}
-	if now-limitingSince > limitingFor {
-		r.cancel(&Trip{Reason: fmt.Sprintf("the supply has been in current limit for more than %s: a short, a stalled motor, or a limit set too low", limitingFor), Raw: s.Current.Raw})
+	if d := r.driving(); d.on && d == before {
+		r.compare(s, d, now)
 	}
-	return limitingSince
+	return s, nil
+}
+
+// compare holds a state against what the run has the supply do.
+func (r *Runner) compare(s instruments.SupplyState, d drive, now time.Duration) {
+	if !s.Output {
+		r.cancel(&Trip{Reason: "the supply's output went off by itself: switched off at its panel, or it lost power meanwhile", Raw: s.Voltage.Raw})
+		return
+	}
+	off := s.Voltage.Outcome == instruments.Measured && !onTarget(s.Voltage, d.volts)
+	if r.strain.astray.see(now, off, &r.strain.mu) {
+		r.cancel(&Trip{Raw: s.Voltage.Raw, Reason: fmt.Sprintf("supply off target: set to %s, it reads %s for more than %s",
+			si.Volts(d.volts), si.Format(s.Voltage.Value, si.Volt), strainFor)})
+	}
+}
+
+// strain is what the supply may suffer for a moment and no longer.
+type strain struct {
+	mu               sync.Mutex // guards both
+	limiting, astray lasting
+}
+
+// any tells whether something is being waited out.
+func (s *strain) any() bool {
+	s.mu.Lock()
+	defer s.mu.Unlock()
+	return s.limiting.looks > 0 || s.astray.looks > 0
+}
+
+// lasting is a condition seen without a break: since when, and in how many looks.
+type lasting struct {
+	since time.Duration
+	looks int
+}
+
+// see takes one look; true when the condition has lasted too long.
+func (l *lasting) see(now time.Duration, yes bool, mu *sync.Mutex) bool {
+	mu.Lock()
+	defer mu.Unlock()
+	if !yes {
+		*l = lasting{}
+		return false
+	}
+	if l.looks++; l.looks == 1 {
+		l.since = now
+	}
+	return l.looks >= strainLooks && now-l.since >= strainFor
 }
 
 // check holds one reading against the plan's limits.
 func (r *Runner) check(q sweeps.Quantity, s instruments.Sample, at time.Duration) {
 	if s.Outcome == instruments.Overload && r.limits.has(q) {
-		r.cancel(&Trip{Reason: fmt.Sprintf("%s overloads its range of %g %s", q, s.Range, s.Unit), Raw: s.Raw})
+		r.cancel(&Trip{Reason: fmt.Sprintf("%s overloads its range of %s", q, si.Format(s.Range, s.Unit)), Raw: s.Raw})
 		return
 	}
 	if s.Outcome != instruments.Measured {
 		return
 	}
-	if t := r.limits.observe(q, s.Value, s.Raw, at); t != nil {
+	if t := r.limits.observe(q, s.Value, s.Raw, at, seconds(s.Aperture)); t != nil {
 		r.cancel(t)
 	}
 }
 
 // guardBlind trips when no good supply state came for blindAfter while energised.
 func (r *Runner) guardBlind(ctx context.Context) {
-	for r.o.Clock.Wait(ctx, blindAfter/8) == nil {
-		if r.energised() != sweeps.EnergisedYes {
-			continue
+	for {
+		wait := blindAfter
+		if r.energised() == sweeps.EnergisedYes {
+			age := r.supplyAge()
+			if age >= blindAfter {
+				r.cancel(blind(age))
+				return
+			}
+			wait -= age
 		}
-		if age := r.supplyAge(); age > blindAfter {
-			r.cancel(&Trip{Reason: fmt.Sprintf("blind: no good supply state for %.1f s while energised", age.Seconds())})
+		if r.o.Clock.Wait(ctx, wait) != nil {
+			return
 		}
 	}
 }
