@@ -1,9 +1,7 @@
 package main
 
 import (
-	"fmt"
-	"strings"
-	"text/tabwriter"
+	"errors"
 
 	"nightbench/instruments/si"
 	"nightbench/sweeps"
@@ -16,98 +14,169 @@ import (
 const (
 	bandDraws = 1000
 	bandSeed  = 1
+	mostDraws = 1_000_000
 )
 
+// predictOptions are the flags of predict.
+type predictOptions struct {
+	supply, pot, temperature, sweep string
+	draws                           int
+	sensitivities, stress           bool
+}
+
 func (c *cli) predict() *cobra.Command {
-	var supply, pot string
+	var o predictOptions
 	cmd := c.withJSON(&cobra.Command{
 		Use:   "predict BOARD --supply 9V [--pot 33k]",
 		Short: "Compute what a board's schematic gives, with its 95 % band",
 		Args:  cobra.ExactArgs(1),
 	})
-	cmd.Flags().StringVar(&supply, "supply", "", "supply voltage, like 9V")
-	cmd.Flags().StringVar(&pot, "pot", "", "resistance of the bench's pot, like 33k, taken as exact")
-	cmd.RunE = func(cmd *cobra.Command, args []string) error {
-		board, err := sweeps.ReadBoard(args[0])
-		if err != nil {
-			return err
-		}
-		at, err := settingOf(board, supply, pot)
-		if err != nil {
-			return err
-		}
-		m, err := predict.New(board, predict.Options{})
-		if err != nil {
-			return &exit{exitUsage, err}
-		}
-		if _, err := m.At(at); err != nil {
-			return &exit{exitUsage, err}
-		}
-		values, flags := m.Draw(bandDraws, bandSeed).At(at)
-		if c.json {
-			return printJSON(cmd.OutOrStdout(), predictionOf(board, at, values, flags))
-		}
-		return printPrediction(cmd, board, at, values, flags)
-	}
+	f := cmd.Flags()
+	f.StringVar(&o.supply, "supply", "", "supply voltage, like 9V")
+	f.StringVar(&o.pot, "pot", "", "resistance of the bench's pot, like 33k, taken as exact; for a wiper network the share of the track in the charging path, like 0.35")
+	f.StringVar(&o.temperature, "temperature", "27 degC", "ambient temperature")
+	f.IntVar(&o.draws, "band", bandDraws, "how many boards to draw within tolerance for the 95 % band")
+	f.BoolVar(&o.sensitivities, "sensitivities", false, "how much each part moves each quantity, in percent a percent")
+	f.BoolVar(&o.stress, "stress", false, "each part's load against its rating, running and with the rotor held")
+	f.StringVar(&o.sweep, "sweep", "", "a curve along the pot: pot_resistance=1k:100k:25:log (or lin; pot_position=0.05:0.95:19:lin)")
+	cmd.RunE = func(cmd *cobra.Command, args []string) error { return c.runPredict(cmd, args[0], o) }
 	return cmd
 }
 
-// settingOf reads the flags; what is missing or not asked for is said.
-func settingOf(board sweeps.Board, supply, pot string) (predict.Setting, error) {
-	s := predict.Setting{Temperature: predict.Reference}
-	var v si.Voltage
-	if supply == "" {
-		return s, usage("predict: --supply is missing; write it like --supply 9V")
-	}
-	if err := v.UnmarshalText([]byte(supply)); err != nil {
-		return s, usage("--supply: %w", err)
-	}
-	s.Supply = v.SI()
-	switch {
-	case board.Timing.UsesPot() && pot == "":
-		return s, usage("predict: this board has the bench's pot in its timing network; say where it stands, like --pot 33k")
-	case !board.Timing.UsesPot() && pot != "":
-		return s, usage("predict: this board has no pot; leave --pot out")
-	case pot == "":
-		return s, nil
-	}
-	var r si.Resistance
-	if err := r.UnmarshalText([]byte(pot)); err != nil {
-		return s, usage("--pot: %w", err)
-	}
-	s.Pot = r.SI()
-	return s, nil
-}
-
-// predictionOf is a prediction as JSON.
-func predictionOf(board sweeps.Board, at predict.Setting, values map[sweeps.Quantity]sweeps.Prediction, flags []sweeps.Flag) result {
-	r := result{Board: board.Name, Setpoint: map[string]any{"supply_voltage": at.Supply, "temperature": at.Temperature}, Quantities: map[sweeps.Quantity]any{}, Flags: orNone(flags)}
-	if board.Timing.UsesPot() {
-		r.Setpoint["pot_resistance"] = at.Pot
-	}
-	for q, p := range values {
-		r.Quantities[q] = p
-	}
-	return r
-}
-
-func printPrediction(cmd *cobra.Command, board sweeps.Board, at predict.Setting, values map[sweeps.Quantity]sweeps.Prediction, flags []sweeps.Flag) error {
-	where := si.Format(at.Supply, si.Volt)
-	if board.Timing.UsesPot() {
-		where += ", pot " + si.Format(at.Pot, si.Ohm)
-	}
-	say(cmd, "%s %s at %s, parts at %g °C; 95 %% band of %d boards drawn within tolerance", board.Name, board.Revision, where, at.Temperature, bandDraws)
-	t := tabwriter.NewWriter(cmd.OutOrStdout(), 0, 0, 2, ' ', 0)
-	for _, q := range sweeps.Quantities {
-		if p, ok := values[q.Name]; ok {
-			fmt.Fprintf(t, "%s\t%s\t%s\n", strings.ReplaceAll(string(q.Name), "_", " "), si.Format(p.Value, p.Unit), si.FormatRange(p.Low, p.High, p.Unit))
-		}
-	}
-	if err := t.Flush(); err != nil {
+func (c *cli) runPredict(cmd *cobra.Command, path string, o predictOptions) error {
+	board, err := sweeps.ReadBoard(path)
+	if err != nil {
 		return err
 	}
-	for _, f := range flags {
-		say(cmd, "* %s: %s", f.Name, f.Words)
+	if o.draws < 1 || o.draws > mostDraws {
+		return usage("--band %d: give how many boards to draw, from 1 to %d", o.draws, mostDraws)
 	}
-	return nil
+	settings, err := settingsOf(board, o)
+	if err != nil {
+		return err
+	}
+	m, err := predict.New(board, predict.Options{})
+	if err != nil {
+		return &exit{exitUsage, err}
+	}
+	var all []prediction
+	ensemble := m.Draw(o.draws, bandSeed)
+	for _, s := range settings {
+		p, err := predictAt(m, ensemble, s, o)
+		if err != nil {
+			return &exit{exitUsage, err}
+		}
+		all = append(all, p)
+	}
+	switch {
+	case c.json && o.sweep == "":
+		return printJSON(cmd.OutOrStdout(), all[0])
+	case c.json:
+		return printJSON(cmd.OutOrStdout(), struct {
+			Board string       `json:"board"`
+			Curve []prediction `json:"curve"`
+		}{board.Name, all})
+	case o.sweep != "":
+		return printCurve(cmd, board, all)
+	}
+	return printPrediction(cmd, board, all[0], o)
+}
+
+// prediction is what predict prints: a result, and what was asked for besides.
+type prediction struct {
+	result
+	Sensitivities []predict.Sensitivity `json:"sensitivities,omitempty"`
+	Stress        *predict.StressTable  `json:"stress,omitempty"`
+
+	at     predict.Setting
+	values map[sweeps.Quantity]sweeps.Prediction
+}
+
+// predictAt computes one setting. What a plan would be refused for stands among the flags.
+func predictAt(m *predict.Model, e *predict.Ensemble, s predict.Setting, o predictOptions) (prediction, error) {
+	if _, err := m.At(s); err != nil {
+		return prediction{}, err
+	}
+	p := prediction{at: s}
+	var flags []sweeps.Flag
+	p.values, flags = e.At(s)
+	findings, err := m.Judge([]predict.Setting{s})
+	if err != nil {
+		return p, err
+	}
+	for _, f := range findings {
+		if f.Refuse {
+			flags = append(flags, sweeps.Flag{Name: f.Name, Words: "a plan would be refused: " + f.Words})
+		}
+	}
+	p.result = predictionOf(m.Board(), s, p.values, flags)
+	var errs []error
+	if o.sensitivities {
+		p.Sensitivities, err = m.Sensitivities(s)
+		errs = append(errs, err)
+	}
+	if o.stress {
+		table, err := m.Stress(s)
+		p.Stress = &table
+		errs = append(errs, err)
+	}
+	return p, errors.Join(errs...)
+}
+
+// settingsOf reads the flags; what is missing or not asked for is said.
+func settingsOf(board sweeps.Board, o predictOptions) ([]predict.Setting, error) {
+	var s predict.Setting
+	var v si.Voltage
+	var t si.Temperature
+	if o.supply == "" {
+		return nil, usage("predict: --supply is missing; write it like --supply 9V")
+	}
+	if err := v.UnmarshalText([]byte(o.supply)); err != nil {
+		return nil, usage("--supply: %w", err)
+	}
+	if err := t.UnmarshalText([]byte(o.temperature)); err != nil {
+		return nil, usage("--temperature: %w", err)
+	}
+	s.Supply, s.Temperature = v.SI(), t.SI()
+	if o.sweep != "" {
+		return sweepOf(board, s, o)
+	}
+	switch {
+	case board.Timing.UsesPot() && o.pot == "":
+		return nil, usage("predict: this board has the bench's pot in its timing network; say where it stands, like --pot %s", potLike(board))
+	case !usesSetting(board) && o.pot != "":
+		return nil, usage("predict: this board has no pot; leave --pot out")
+	case o.pot == "":
+		return []predict.Setting{s}, nil
+	}
+	var err error
+	s.Pot, err = potValue(board, o.pot)
+	if err != nil {
+		return nil, usage("--pot: %w", err)
+	}
+	return []predict.Setting{s}, nil
+}
+
+// usesSetting tells whether a pot's setting means anything on this board: its own wiper's does too.
+func usesSetting(b sweeps.Board) bool {
+	return b.Timing.UsesPot() || b.Timing.Network == sweeps.Wiper
+}
+
+func potLike(b sweeps.Board) string {
+	if b.Timing.Network == sweeps.Wiper {
+		return "0.35"
+	}
+	return "33k"
+}
+
+// potValue reads ohms, or for a wiper network a share of the track.
+func potValue(b sweeps.Board, text string) (float64, error) {
+	if b.Timing.Network == sweeps.Wiper {
+		var x si.Ratio
+		err := x.UnmarshalText([]byte(text))
+		return x.SI(), err
+	}
+	var r si.Resistance
+	err := r.UnmarshalText([]byte(text))
+	return r.SI(), err
 }

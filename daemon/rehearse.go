@@ -89,10 +89,9 @@ func printRehearsal(cmd *cobra.Command, plan sweeps.Plan, board sweeps.Board, r 
 	if err := t.Flush(); err != nil {
 		return err
 	}
-	for _, s := range r.Setpoints {
-		for _, f := range s.Flags {
-			say(cmd, "* %s: %s: %s", s.Place, f.Name, f.Words)
-		}
+	for _, f := range r.Findings {
+		at := si.Format(f.Setting.Supply, si.Volt) + ", " + si.Short(f.Setting.Pot)
+		say(cmd, "caution: %s: %s (at %d of %d setpoints, worst at %s)", f.Name, f.Words, f.Count, len(r.Setpoints), at)
 	}
 	for _, n := range r.NotJudged {
 		say(cmd, "not judged: %s", n)

@@ -54,8 +54,8 @@ func TestReadBoardReadsEveryKey(t *testing.T) {
 		t.Errorf("head: %+v", b)
 	}
 	ti := b.Timing
-	if ti.Network != sweeps.Steered || ti.Charge.Value.SI() != 10e3 || ti.Charge.Value.Tolerance != 0.01 || !ti.Discharge.Pot || !ti.UsesPot() ||
-		ti.Stop.SI() != 470 || !near(ti.Capacitor.SI(), 22e-9) || ti.Capacitor.Tolerance != 0.05 ||
+	if ti.Network != sweeps.Steered || ti.Charge.Value.SI() != 33e3 || ti.Charge.Value.Tolerance != 0.01 || !ti.Discharge.Pot || !ti.UsesPot() ||
+		ti.Stop.SI() != 4700 || !near(ti.Capacitor.SI(), 6.8e-9) || ti.Capacitor.Tolerance != 0.05 ||
 		ti.ChargeDiode != (sweeps.Diode{Name: "1N4148"}) || ti.DischargeDiode != (sweeps.Diode{Name: "1N4148"}) || ti.Control != nil {
 		t.Errorf("timing: %+v", ti)
 	}

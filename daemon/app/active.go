@@ -114,6 +114,9 @@ func (d *Daemon) job(plan sweeps.Plan, board sweeps.Board, seed uint64) (runner.
 	if err != nil {
 		return runner.Options{}, web.Fail(web.Invalid, err)
 	}
+	if _, err := p.judge(order); err != nil {
+		return runner.Options{}, web.Fail(web.Invalid, fmt.Errorf("%s: %w", plan.Path, err))
+	}
 	o := runner.Options{Bench: d.bench.Bench, Clock: d.clock, Journal: d.store, Mark: d.mark, Predict: p, Board: board, Plan: plan, Order: order, Safe: safe(), Log: d.o.Log}
 	if o.SafeBy, err = safeBy(plan.SafeBy, d.clock.Now()); err != nil {
 		return runner.Options{}, err

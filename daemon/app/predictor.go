@@ -1,9 +1,12 @@
 package app
 
 import (
+	"errors"
+	"fmt"
 	"slices"
 
 	"nightbench/instruments"
+	"nightbench/instruments/si"
 	"nightbench/sweeps"
 	"nightbench/sweeps/predict"
 )
@@ -13,7 +16,7 @@ const draws = 1000
 
 // predictor predicts for a run: at the bench's burden, with the pot's tolerance, always the same boards.
 type predictor struct {
-	board    sweeps.Board
+	model    *predict.Model
 	ensemble *predict.Ensemble
 	burden   float64 // Ω in the motor's loop
 }
@@ -29,7 +32,7 @@ func newPredictor(board sweeps.Board, w instruments.Wiring, seed uint64) (*predi
 	if err != nil {
 		return nil, err
 	}
-	return &predictor{board: board, ensemble: m.Draw(draws, seed), burden: Burden(w)}, nil
+	return &predictor{model: m, ensemble: m.Draw(draws, seed), burden: Burden(w)}, nil
 }
 
 // Burden is what the current meters put in series with the motor, Ω.
@@ -71,18 +74,31 @@ func (p *predictor) Curves(order []sweeps.Setpoint) []sweeps.Curve {
 	return curves
 }
 
-// Tau is the motor's mechanical time constant J·R/K², s; 0 for a resistor.
-func (p *predictor) Tau() float64 {
-	l := p.board.Load
-	if l.Kind != sweeps.Motor {
-		return 0
-	}
-	k := l.TorqueConstant.SI()
-	return l.Inertia.SI() * (l.Resistance.SI() + p.burden) / (k * k)
-}
+// Tau is the motor's mechanical time constant, s; 0 for a resistor.
+func (p *predictor) Tau() float64 { return p.model.Tau() }
 
-// Peak is the load's current with nothing but its least resistance in the way, A: a locked rotor's.
-func (p *predictor) Peak(supply float64) float64 {
-	r := p.board.Load.Resistance
-	return supply / (r.SI()*(1-r.Tolerance) + p.burden)
+// Peak bounds the load's current at a supply voltage, A: the rotor held.
+func (p *predictor) Peak(supply float64) float64 { return p.model.Peak(supply) }
+
+// judge goes through the setpoints before any is visited: what a plan is refused
+// or cautioned for. The error names what it is refused for.
+func (p *predictor) judge(order []sweeps.Setpoint) ([]predict.Finding, error) {
+	settings := make([]predict.Setting, len(order))
+	for i, s := range order {
+		settings[i] = p.setting(s.Supply, s.Pot)
+	}
+	findings, err := p.model.Judge(settings)
+	if err != nil {
+		return nil, err
+	}
+	var refused []error
+	for _, f := range findings {
+		if f.Refuse {
+			refused = append(refused, fmt.Errorf("%s, %s: %s", si.Format(f.Setting.Supply, si.Volt), si.Short(f.Setting.Pot), f.Words))
+		}
+	}
+	if len(refused) > 0 {
+		return findings, fmt.Errorf("the plan is refused: %w", errors.Join(refused...))
+	}
+	return findings, nil
 }

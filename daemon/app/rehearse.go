@@ -1,17 +1,21 @@
 package app
 
 import (
+	"fmt"
+
 	"nightbench/instruments"
 	"nightbench/sweeps"
+	"nightbench/sweeps/predict"
 	"nightbench/sweeps/runner"
 	"nightbench/sweeps/schedule"
 )
 
 // Rehearsal is a plan gone through against the prediction.
 type Rehearsal struct {
-	Setpoints []Rehearsed `json:"setpoints"`
-	Seconds   float64     `json:"seconds"`    // bench time it takes at the least
-	NotJudged []string    `json:"not_judged"` // what a missing bench file left open
+	Setpoints []Rehearsed       `json:"setpoints"`
+	Findings  []predict.Finding `json:"findings"`   // cautions; what refuses the plan is an error
+	Seconds   float64           `json:"seconds"`    // bench time it takes at the least
+	NotJudged []string          `json:"not_judged"` // what a missing bench file left open
 }
 
 // Rehearsed is one setpoint with what is predicted there.
@@ -45,6 +49,9 @@ func Rehearse(plan sweeps.Plan, board sweeps.Board, w *instruments.Wiring) (Rehe
 	order, err := schedule.Order(plan, bench.Pot, 1)
 	if err != nil {
 		return Rehearsal{}, err
+	}
+	if r.Findings, err = p.judge(order); err != nil {
+		return Rehearsal{}, fmt.Errorf("%s: %w", plan.Path, err)
 	}
 	for _, s := range order {
 		values, flags := p.At(s.Supply, s.Pot)
