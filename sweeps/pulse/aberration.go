@@ -68,6 +68,9 @@ func (a *analysis) aberration(name string, occ []span, s state, w, sign float64)
 		x = max(x, top)
 		a.flag(FastRinging, "ringing is too fast for the sample interval: overshoot may be larger than given")
 	}
+	if x > 0.6*w {
+		a.flagThird()
+	}
 	scatter := max(sigma*0.6, deviation(p.over)) / math.Sqrt(n)
 	return a.quantity(name, "1", max(0, x)/w, 0, 0, 0,
 		uncertainty.Scatter("noise", uncertainty.Value{U: scatter / w, DOF: max(1, n-1)}),

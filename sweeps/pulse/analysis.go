@@ -33,6 +33,9 @@ func (a *analysis) run() {
 			a.constant()
 			return
 		}
+		if g.three != nil {
+			a.flagThird()
+		}
 		low, high := a.bestPair(g)
 		a.twoLevels(low, high, g.noise)
 	}
@@ -91,6 +94,10 @@ func (h histogram) moments(from, to float64) (n int, mean, variance float64) {
 // amplitude, or as much as noise and rounding need, but never a third of it.
 func (a *analysis) bound(low, high, noise float64) float64 {
 	return min(0.3*(high-low), max(0.02*(high-low), 3.5*noise+0.5*a.q))
+}
+
+func (a *analysis) flagThird() {
+	a.flag(ThirdLevel, "there may be a third level, too short or too close to another to be told from ringing; a faster time base or a smaller range would show it")
 }
 
 // atRail tells whether the lowest or the highest level is the end of the converter's

@@ -60,7 +60,7 @@ func guessLevels(codes []int16, h histogram) guess {
 		}
 		split = next
 	}
-	g.more(h, low, high)
+	g.more(codes, h, low, high)
 	return g
 }
 
@@ -70,18 +70,20 @@ type peak struct {
 }
 
 // more looks for a third level: three peaks of the histogram with valleys between them.
-func (g *guess) more(h histogram, low, high int) {
+func (g *guess) more(codes []int16, h histogram, low, high int) {
 	var peaks []peak
-	apart := max(3*float64(g.width), 0.02*float64(high-low))
-	least := max(3, h.n/150)
-	for _, p := range h.peaks(low, high, g.width, apart) {
-		if p.count >= least {
+	// Narrower windows than for the modes: levels five times the noise apart must show a valley.
+	width := max(h.step, int(math.Ceil(min(float64(g.width), max(1.2*g.noise, float64(high-low)/100)))))
+	apart := max(4*g.noise, 3*float64(h.step), 0.02*float64(high-low))
+	least := max(3, h.n/250)
+	for _, p := range h.peaks(low, high, width, apart) {
+		if p.count >= least && stays(codes, p.at, max(float64(width), 2*g.noise+float64(h.step))) {
 			peaks = append(peaks, p)
 		}
 	}
 	peaks = peaks[:min(len(peaks), 6)]
 	slices.SortFunc(peaks, func(a, b peak) int { return int(math.Copysign(1, a.at-b.at)) })
-	peaks = h.separate(peaks, g.width)
+	peaks = h.separate(peaks, width)
 	if len(peaks) < 3 {
 		return
 	}
@@ -89,6 +91,25 @@ func (g *guess) more(h histogram, low, high int) {
 	between := peaks[1 : len(peaks)-1]
 	best := slices.MaxFunc(between, func(a, b peak) int { return a.count - b.count })
 	g.three = []float64{first.at, best.at, last.at}
+}
+
+// stays tells whether samples within reach of a level tend to come in a row, as those of a
+// state do and those caught on transitions do not.
+func stays(codes []int16, level, reach float64) bool {
+	const most = 20000
+	from, to := int(math.Floor(level-reach)), int(math.Ceil(level+reach))
+	in, next := 0, 0
+	stride := 1 + len(codes)/most
+	for i := 0; i+1 < len(codes); i += stride {
+		if c := int(codes[i]); c < from || c > to {
+			continue
+		}
+		in++
+		if c := int(codes[i+1]); c >= from && c <= to {
+			next++
+		}
+	}
+	return 2*next >= in && next > 0
 }
 
 // peaks lists windows of local maxima of the count, fullest first, at least apart from one another.

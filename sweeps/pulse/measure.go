@@ -40,12 +40,7 @@ func (a *analysis) judgePeriods(c cycles) {
 	if shortest < 2.5 {
 		a.flag(Undersampled, "the shorter phase lasts about %.1f sample intervals; take a faster time base", shortest)
 	}
-	for _, s := range []state{a.high, a.low} {
-		w := a.high.level - a.low.level
-		if !a.result.Flagged(Sagging) && (s.spread-s.noise > sq(0.08*w) || s.uSettle > 0.03*w) {
-			a.flag(Unsettled, "a level still moves through most of its state (by about %.2g V); it and the instants at half level are doubtful", 2*math.Sqrt(s.spread)*a.volt)
-		}
-	}
+	a.judgeSettling()
 	if a.high.n < 4 || a.low.n < 4 || a.pairs < 6 {
 		a.flag(FewSamples, "only %d samples in the high and %d in the low state; noise is poorly known", a.high.n, a.low.n)
 	}
@@ -55,6 +50,19 @@ func (a *analysis) judgePeriods(c cycles) {
 	}
 	if spread > 0.5 && c.n() >= 4 {
 		a.result.Class = NotPulses
+	}
+}
+
+// judgeSettling flags levels that are not one level.
+func (a *analysis) judgeSettling() {
+	w := a.high.level - a.low.level
+	for _, s := range []state{a.high, a.low} {
+		moving := s.spread-s.noise > sq(0.08*w) || s.uSettle > 0.03*w ||
+			math.Abs(s.droop) > 0.012*w && math.Abs(s.droop) > 5*s.uDroop
+		stepped := math.Abs(s.shelf) > 0.04*w && math.Abs(s.shelf) > 5*s.uShelf
+		if (moving || stepped) && !a.result.Flagged(Sagging) {
+			a.flag(Unsettled, "a level still moves through its state (by about %.2g V): it and the instants at half level are doubtful", max(2*math.Sqrt(s.spread), math.Abs(s.shelf))*a.volt)
+		}
 	}
 }
 
@@ -202,6 +210,7 @@ var bears = map[string][]string{
 	FewCodes:    {"average_voltage", "high_level", "low_level", "amplitude", "rms", "ripple", "overshoot", "undershoot", "back_emf"},
 	Scale:       {"average_voltage", "high_level", "low_level", "amplitude", "rms", "ripple", "back_emf"},
 	Unsettled:   {"duty", "t_high", "t_low", "high_level", "low_level", "amplitude", "ripple", "rise_time", "fall_time", "overshoot", "undershoot", "back_emf", "conduction"},
+	ThirdLevel:  {"duty", "t_high", "t_low", "high_level", "low_level", "amplitude", "ripple", "overshoot", "undershoot", "conduction"},
 	FastRinging: {"overshoot", "undershoot"},
 	CoarseTime:  {"duty", "frequency", "period", "t_high", "t_low", "rise_time", "fall_time", "jitter", "conduction"},
 }

@@ -93,6 +93,7 @@ const (
 	Noisy        = "noisy"
 	FastRinging  = "fast ringing"
 	Unsettled    = "unsettled level"
+	ThirdLevel   = "third level"
 )
 
 // Quantity is one pulse parameter: its estimate and budget, and the flags that bear on it.

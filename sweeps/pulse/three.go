@@ -20,7 +20,7 @@ func (a *analysis) threeLevels(g guess) bool {
 		a.high = a.settled(spans(a.driven.edges, true, n), high, high-mid)
 		a.low = a.settled(spans(a.freewheel.edges, false, n), low, mid-low)
 		a.rest = a.settled(restSpans(a.driven.edges, a.freewheel.edges), mid, min(high-mid, mid-low))
-		if !flatBottomed(a.freewheel.edges) || shorter(spans(a.driven.edges, true, n), 3) {
+		if !flatBottomed(a.freewheel.edges) || !rests(a.driven.edges, a.freewheel.edges) || shorter(spans(a.driven.edges, true, n), 3) {
 			return false
 		}
 		if !plateau(a.low, mid-low) || !plateau(a.high, high-mid) || !plateau(a.rest, min(high-mid, mid-low)) {
@@ -87,6 +87,21 @@ func flatBottomed(edges []edge) bool {
 		}
 	}
 	return len(flat) > 0 && median(flat) >= 3 && median(flat) >= 0.7*median(slope)
+}
+
+// rests tells whether the rest is not short beside the rises to it and from it, as a
+// stretch of one long rise is.
+func rests(driven, freewheel []edge) bool {
+	var flat, slope []float64
+	for _, o := range restSpans(driven, freewheel) {
+		flat = append(flat, float64(o.to-o.from+1))
+	}
+	for _, edges := range [][]edge{driven, freewheel} {
+		for _, e := range risings(edges) {
+			slope = append(slope, float64(e.to-e.from))
+		}
+	}
+	return len(flat) > 0 && median(flat) >= 0.7*2*median(slope)
 }
 
 // shorter tells whether most occurrences last fewer than n samples.
