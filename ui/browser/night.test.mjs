@@ -60,7 +60,7 @@ test("a watcher in another window sees the points too, and is told why the butto
   const watcher = await open("/", "", elsewhere);
   await moreDots(watcher, 0);
   await watcher.getByRole("button", { name: "Outputs off" }).click({ force: true });
-  await watcher.getByText("no operator’s token").last().waitFor(soon);
+  await watcher.locator(".outcome").filter({ hasText: "no operator’s token" }).waitFor(soon);
   const wide = await watcher.evaluate(() => document.documentElement.scrollWidth);
   assert.ok(wide <= 390, `the page is ${wide} px wide on a phone`);
   assert.deepEqual(watcher.trouble, []);

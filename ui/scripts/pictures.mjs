@@ -25,7 +25,7 @@ try {
       page.on("console", (m) => m.type() === "error" && trouble.push(m.text()));
       await page.goto(`${daemon.base}${opt.path}#token=${daemon.token}`);
       await page.waitForSelector("h1");
-      if (opt.path === "/") await page.waitForFunction((n) => document.querySelectorAll("main figure circle.pt").length >= n, Number(opt.points), { timeout: 120_000 });
+      if (opt.path === "/") await page.waitForFunction((n) => document.querySelectorAll("main figure .dots circle").length >= n, Number(opt.points), { timeout: 120_000 });
       await page.waitForTimeout(1_500); // the newest record comes after the points
       // Stretched to the whole page, so that a bar at the foot of the window is at the foot of the picture.
       await page.setViewportSize({ width, height: Math.max(height, await page.evaluate(() => document.documentElement.scrollHeight)) });

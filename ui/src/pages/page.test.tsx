@@ -133,8 +133,10 @@ test("pressing Outputs off says what came of it; a watcher is told why it can't 
   const button = document.querySelector<HTMLButtonElement>(".offbox button")!;
   expect(button.getAttribute("aria-disabled")).toBe("true");
   expect(text("#off-why")).toContain("no operator’s token");
+  expect(text(".standing .say")).toContain("no operator’s token");
   await act(async () => button.click());
   expect(text(".outcome")).toContain("no operator’s token");
+  expect(text(".offbox .brief")).toContain("no operator’s token");
   expect(await accessible()).toEqual([]);
 });
 

@@ -3,7 +3,7 @@
 import { format, ohms, setting } from "../data/format";
 import type { Now } from "./figure";
 import type { Frame } from "./frame";
-import { type Box, labelWidth, Room, spread } from "./place";
+import { type Box, labelWidth, Room, some, spread } from "./place";
 import { interpolate } from "./scale";
 import type { Dot, FigureData, Pass, Series } from "./series";
 
@@ -12,6 +12,8 @@ export interface Stroke { d: string; mark: string }
 export interface Annotations { labels: Label[]; lines: Stroke[] }
 
 const lineHeight = 15;
+/** Dots beside which a label is tried. */
+const tries = 12;
 
 export function annotate(f: Frame, data: FigureData, now: Now | null): Annotations {
   const out: Annotations = { labels: [], lines: [] };
@@ -23,7 +25,7 @@ export function annotate(f: Frame, data: FigureData, now: Now | null): Annotatio
   ends(f, data, out);
   if (now) nowBracket(f, data, now, room, out);
   for (const s of data.series) {
-    if (s.dots.length) for (const p of s.passes) arrow(f, data, s, p, room, out);
+    if (s.dots.length) for (const p of ways(s.passes)) arrow(f, data, s, p, room, out);
     else if (now?.setpoint.supply_voltage !== s.supply) notBegun(f, s, room, out);
   }
   for (const s of data.series) flags(f, s, room, out);
@@ -49,14 +51,19 @@ function heightAt(f: Frame, s: Series, ohmsAt: number): number | null {
   return near && f.py(near.y);
 }
 
-/** An arrow along the curve, with its word, once a pass: up above it, down below. */
+/** The newest pass of each direction: where a curve is gone over often, its first passes need no more words. */
+function ways(passes: readonly Pass[]): Pass[] {
+  return ["up", "down"].flatMap((way) => passes.filter((p) => p.direction === way).slice(-1));
+}
+
+/** An arrow along the curve, with its word, once a direction: up above it, down below. */
 function arrow(f: Frame, data: FigureData, s: Series, p: Pass, room: Room, out: Annotations) {
   const run = p.runs.reduce((a, b) => (b.length > a.length ? b : a));
   if (run.length < 3 || (p.direction !== "up" && p.direction !== "down")) return;
   const side = p.direction === "up" ? -1 : 1;
   const inner = [...run].sort((a, b) => a.x - b.x).slice(1, -1);
-  const boxes = inner.flatMap((d, i) => {
-    const slope = slopeAt(run, inner, i, f);
+  const boxes = some(inner, tries).flatMap((d) => {
+    const slope = slopeAt(run, inner, inner.indexOf(d), f);
     return [15, 22].map((away) => ({ ...arrowBox(f.px(d.x), f.py(d.y) + side * away, slope, side), ohms: d.x }));
   });
   const b = room.place(boxes, 8);
@@ -119,7 +126,7 @@ function flags(f: Frame, s: Series, room: Room, out: Annotations) {
   for (const [name, dots] of [...groups].slice(0, 3)) {
     const text = `${dots.length > 1 ? `${dots.length} ` : ""}${name}, ${format(s.supply, "V", 3)}`;
     const w = labelWidth(text);
-    const boxes = dots.flatMap((d) => [[-w - 22, 22], [14, -36], [-w - 14, -38], [14, 24], [-w / 2, 34], [-w / 2, -48]].map(([dx, dy]) => ({ x: f.px(d.x) + dx!, y: f.py(d.y) + dy!, w, h: lineHeight, d })));
+    const boxes = some(dots, tries).flatMap((d) => [[-w - 22, 22], [14, -36], [-w - 14, -38], [14, 24], [-w / 2, 34], [-w / 2, -48]].map(([dx, dy]) => ({ x: f.px(d.x) + dx!, y: f.py(d.y) + dy!, w, h: lineHeight, d })));
     const b = room.place(boxes, 3);
     if (!b) continue;
     const [dx, dy] = [f.px(b.d.x), f.py(b.d.y)];

@@ -7,15 +7,26 @@ export function labelWidth(s: string): number {
   return s.length * 6.6;
 }
 
+// Marks are kept in columns this wide, one to a cell this fine, px: a night of thousands of points stays quick.
+const column = 16;
+const cell = 3;
+
 export class Room {
-  private readonly marks: [number, number][] = [];
+  private readonly columns = new Map<number, [number, number][]>();
+  private readonly cells = new Set<number>();
   private readonly taken: Box[] = [];
 
   constructor(private readonly within: Box) {}
 
   /** A mark that words should not cover. */
   mark(x: number, y: number) {
-    this.marks.push([x, y]);
+    const key = Math.round(x / cell) * 10_000 + Math.round(y / cell);
+    if (this.cells.has(key)) return;
+    this.cells.add(key);
+    const c = Math.floor(x / column);
+    const there = this.columns.get(c);
+    if (there) there.push([x, y]);
+    else this.columns.set(c, [[x, y]]);
   }
 
   /** Marks along a polyline, closer than a letter is wide. */
@@ -49,9 +60,17 @@ export class Room {
     if (b.x < v.x || b.y < v.y || b.x + b.w > v.x + v.w || b.y + b.h > v.y + v.h) return 1000;
     let c = 0;
     for (const t of this.taken) if (b.x < t.x + t.w && t.x < b.x + b.w && b.y < t.y + t.h && t.y < b.y + b.h) c += 100;
-    for (const [x, y] of this.marks) if (x > b.x - 3 && x < b.x + b.w + 3 && y > b.y - 2 && y < b.y + b.h + 2) c++;
+    const [x0, x1] = [b.x - 3, b.x + b.w + 3];
+    for (let k = Math.floor(x0 / column); k <= x1 / column; k++)
+      for (const [x, y] of this.columns.get(k) ?? []) if (x > x0 && x < x1 && y > b.y - 2 && y < b.y + b.h + 2) c++;
     return c;
   }
+}
+
+/** At most n of them, evenly spread: enough places to try. */
+export function some<T>(all: readonly T[], n: number): T[] {
+  const step = Math.max(1, all.length / n);
+  return Array.from({ length: Math.min(n, all.length) }, (_, i) => all[Math.floor(i * step)]!);
 }
 
 /** Moves labels apart to at least `gap`, keeping their order and staying near. */

@@ -1,7 +1,7 @@
 // The standing lines, on every view: the word for energised with its evidence, then
 // run, points and time left, then the tally, and "Outputs off" at the right.
 import { useEffect, useState } from "preact/hooks";
-import type { BenchModel } from "../data/bench";
+import { type BenchModel, watcherWords } from "../data/bench";
 import { clockSeconds } from "../data/format";
 import { ended } from "../data/nouns";
 import { briefProgress, progress, type Standing as Sentence } from "../data/words";
@@ -25,9 +25,10 @@ export function Standing({ bench }: { bench: BenchModel }) {
             {s.live && <>; supply reads <span class="q">{s.live}</span>{v?.read_at ? ` at ${clockSeconds(v.read_at)}` : ""}.</>}
           </p>
           <p class="sub">{progress(v, link, name)}</p>
-          {outcome && <p class={outcome.caution ? "outcome caution" : "outcome"} id="off-outcome" role={outcome.caution ? "alert" : undefined}>{outcome.words}</p>}
+          {outcome && <p class={outcome.caution ? "outcome caution" : "outcome"} role={outcome.caution ? "alert" : undefined}>{outcome.words}</p>}
+          {!outcome && !bench.mayControl.value && <p class="sub">{watcherWords}</p>}
         </div>
-        <OutputsOff bench={bench} brief={[s.brief, link.state === "lost" ? lastHeard(v?.energised) : briefProgress(v)]} />
+        <OutputsOff bench={bench} brief={outcome ? [outcome.words] : [s.brief, link.state === "lost" ? lastHeard(v?.energised) : briefProgress(v)]} />
       </div>
       {night.setpoints.length > 0 && !over && <Tally setpoints={night.setpoints} points={night.points} now={v?.setpoint?.index ?? null} over={over} />}
       <Spoken sentence={s} outcome={outcome?.words ?? ""} />
