@@ -70,6 +70,7 @@ type TimerPart struct {
 	Words               string       `toml:"words"`
 	PushPull            bool         `toml:"push_pull"` // MOS output: conducts both ways
 	MaxSupply           Figure       `toml:"max_supply"`
+	RecommendedSupply   Figure       `toml:"recommended_supply"` // from low to typical
 	MaxOutputCurrent    Figure       `toml:"max_output_current"`
 	MaxDischargeCurrent Figure       `toml:"max_discharge_current"`
 	MaxPower            Figure       `toml:"max_power"`

@@ -51,13 +51,14 @@ func (m *Model) flags(o *outcome, s Setting) []sweeps.Flag {
 // supplyError is how far a supply set to a board's rating may read beyond it and still be at it: more than any bench supply's own error.
 const supplyError = 2e-3
 
+// flagSupply allows a supply 1 % off: setpoints are at the rated ends, and measured values scatter.
 func (m *Model) flagSupply(s Setting, add func(string, string, ...any)) {
 	lo, hi := m.board.RatedSupply[0].SI(), m.board.RatedSupply[1].SI()
 	if hi > 0 && (s.Supply < lo*(1-supplyError) || s.Supply > hi*(1+supplyError)) {
 		add(SupplyRange, "%s is outside the board's rated %s to %s", show(s.Supply, si.Volt), show(lo, si.Volt), show(hi, si.Volt))
 	}
-	if limit := m.rated.timer.MaxSupply.Typical; limit > 0 && s.Supply > limit {
-		add(SupplyRange, "%s is above the %s the %s timer stands", show(s.Supply, si.Volt), show(limit, si.Volt), m.rated.timer.Name)
+	if r := m.rated.timer.RecommendedSupply.spread(); r.high > 0 && (s.Supply < r.low*0.99 || s.Supply > r.high*1.01) {
+		add(SupplyRange, "%s is outside the %s to %s recommended for the %s timer", show(s.Supply, si.Volt), show(r.low, si.Volt), show(r.high, si.Volt), m.rated.timer.Name)
 	}
 }
 
