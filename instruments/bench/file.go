@@ -20,6 +20,7 @@ type Port struct {
 	Address link.Address
 	Dialect string // "auto": by identity; else a dialect's name, or the path of the user's own file
 	Channel int    // supply only: the channel of the supply, from 1
+	Serial  string // the serial number that has to answer; empty: any
 }
 
 // Auto is the dialect of an instrument that is recognised by its identity.
@@ -109,6 +110,7 @@ func (r *reader) port(t *userfile.Table) Port {
 	p := Port{Dialect: Auto}
 	t.Optional().String("dialect", &p.Dialect)
 	r.dialect(t, p.Dialect)
+	t.Optional().String("serial", &p.Serial)
 	var text string
 	if !t.String("address", &text) {
 		return p

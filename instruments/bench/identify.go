@@ -72,6 +72,9 @@ func (i *instrument) reach(ctx context.Context, o Options) error {
 	if err != nil {
 		return unanswered(err)
 	}
+	if want := i.port.Serial; want != "" && want != id.Serial {
+		return fmt.Errorf("%w: %s answers, and the bench file says serial = %q; are two instruments of one kind swapped?", driver.ErrWrong, id, want)
+	}
 	asked := i.d
 	if err := i.recognise(id); err != nil {
 		return err

@@ -221,6 +221,8 @@ func TestOpenFails(t *testing.T) {
 		"PracticeBeforeARealSupply": {func(w *wired) { w.supply.Device.Identity = "Growhouse,PSU-1,7,1" },
 			[]string{"[supply]\n", "[supply]\ndialect = \"standard-supply\"\n"}, 1,
 			ErrPace, []string{"practice = true"}},
+		"AnotherSerial": {func(*wired) {}, []string{"[[meter]]\n", "[[meter]]\nserial = \"T9\"\n"}, 1,
+			driver.ErrWrong, []string{"meter average", "serial T2", `serial = "T9"`, "swapped"}},
 		"AnotherPart":     {func(*wired) {}, []string{"codes = 257", "codes = 300"}, 1, driver.ErrWrong, []string{"257 codes"}},
 		"AnotherChannel":  {func(*wired) {}, []string{"[supply]\n", "[supply]\nchannel = 2\n"}, 1, dialect.ErrCannot, []string{"channel = 2", "standard-supply"}},
 		"GarbageIsNobody": {func(w *wired) { w.scope.Device.Identity = "\x80\xff\x81" }, nil, 1, scpi.ErrFraming, []string{"scope", "baud rate"}},
