@@ -61,7 +61,7 @@ func (t *tally) check(tb testing.TB, name string, most, least float64) {
 	if r := t.ratio(); r < least || r > 1.1 {
 		tb.Errorf("%s: rms of error/u is %.2f", name, r)
 	}
-	if 1000*t.wrong > t.n {
+	if 1000*t.wrong > max(t.n, 1000) {
 		tb.Errorf("%s: %d of %d values are wrong by more than 5u without a flag", name, t.wrong, t.n)
 	}
 	if t.missing > 0 {
@@ -76,7 +76,7 @@ func run(tb testing.TB, cases int, seed uint64, names []string, make func(*rand.
 	for _, n := range names {
 		tallies[n] = &tally{}
 	}
-	for range cases {
+	for range int(share * float64(cases)) {
 		s := make(rng)
 		r, err := Analyse(s.capture(rng), Options{})
 		if err != nil {
@@ -173,7 +173,7 @@ func drawMotor(rng *rand.Rand) specimen {
 func TestMotorsAreRecognised(t *testing.T) {
 	rng := rand.New(rand.NewPCG(3, 3))
 	cases, known, wrong := 0, 0, 0
-	for range 3000 {
+	for range int(3000 * share) {
 		s := drawMotor(rng)
 		s.duty = uniform(rng, 0.03, 0.9)
 		s.conduct = s.duty + (1-s.duty)*uniform(rng, 0.05, 0.9)
@@ -193,7 +193,7 @@ func TestMotorsAreRecognised(t *testing.T) {
 		wrong += b2i(math.Abs(q.X-s.share()) > 5*q.U() && len(q.Flags) == 0)
 	}
 	t.Logf("%d motors, %d recognised, %d wrong without a flag", cases, known, wrong)
-	if cases < 1000 || 100*known < 97*cases || 500*wrong > cases {
+	if float64(cases) < 2000*share || 100*known < 97*cases || 500*wrong > cases {
 		t.Errorf("%d motors, %d recognised, %d wrong without a flag", cases, known, wrong)
 	}
 }

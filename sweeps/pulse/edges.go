@@ -74,17 +74,21 @@ func (s *scanner) find() {
 
 // leave returns the first index from i on at the other side of the middle.
 func (s *scanner) leave(i int, below int16, high bool) int {
-	codes := s.codes
+	rest := s.codes[i:]
 	if high {
-		for i < len(codes) && codes[i] > below {
-			i++
+		for k, c := range rest {
+			if c <= below {
+				return i + k
+			}
 		}
-		return i
+		return len(s.codes)
 	}
-	for i < len(codes) && codes[i] <= below {
-		i++
+	for k, c := range rest {
+		if c > below {
+			return i + k
+		}
 	}
-	return i
+	return len(s.codes)
 }
 
 func clamp16(x float64) int16 { return int16(min(math.MaxInt16, max(math.MinInt16, x))) }
