@@ -38,14 +38,14 @@ func (r *Runner) driving() drive {
 // itself takes. Within the bench's own limit, always.
 const (
 	limitShare = 1.3
-	ownCurrent = 50e-3 // A, timer and network, where no supply current is predicted: common practice, no source
+	ownCurrent = 50e-3 // A, at the least for timer and network: a limit below it would starve the board's capacitors. Common practice, no source
 	limitStep  = 1e-3  // A, rounded up to
 )
 
 // currentLimit is the supply's limit at a setpoint, A.
 func (r *Runner) currentLimit(at sweeps.Setpoint) float64 {
 	own := ownCurrent
-	if p, ok := r.predicted(at)[sweeps.SupplyCurrent]; ok && p.High > 0 {
+	if p, ok := r.predicted(at)[sweeps.SupplyCurrent]; ok && p.High > own {
 		own = p.High
 	}
 	a := math.Ceil(limitShare*(r.o.Predict.Peak(at.Supply)+own)/limitStep) * limitStep
