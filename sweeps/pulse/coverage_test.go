@@ -55,10 +55,11 @@ func (t *tally) String() string {
 func (t *tally) check(tb testing.TB, name string, most, least float64) {
 	tb.Helper()
 	tb.Logf("%-16s %s", name, t)
-	if c := t.coverage(); c < 0.93 || c > most {
+	chance := 2 * math.Sqrt(0.05*0.95/float64(max(1, t.n))) // of the share covered, from so few cases
+	if c := t.coverage(); c < 0.94-chance || c > most+chance {
 		tb.Errorf("%s: 95 %% intervals cover %.1f %%", name, 100*c)
 	}
-	if r := t.ratio(); r < least || r > 1.1 {
+	if r := t.ratio(); r < least-chance || r > 1.1+chance {
 		tb.Errorf("%s: rms of error/u is %.2f", name, r)
 	}
 	if 1000*t.wrong > max(t.n, 1000) {
@@ -100,7 +101,7 @@ func TestHonestUncertainty(t *testing.T) {
 	names := []string{"duty", "period", "frequency", "t_high", "t_low", "average_voltage", "high_level", "low_level", "amplitude"}
 	tallies := run(t, 5000, 1, names, func(rng *rand.Rand) specimen { return draw(rng, 3000) })
 	for _, n := range names {
-		tallies[n].check(t, n, 0.982, 0.78)
+		tallies[n].check(t, n, 0.976, 0.79)
 	}
 }
 
@@ -108,7 +109,7 @@ func TestHonestUncertaintyOfThreeLevels(t *testing.T) {
 	names := []string{"duty", "period", "average_voltage", "high_level", "low_level", "back_emf", "conduction"}
 	tallies := run(t, 1000, 3, names, drawMotor)
 	for _, n := range names {
-		tallies[n].check(t, n, 0.995, 0.55)
+		tallies[n].check(t, n, 0.99, 0.58)
 	}
 }
 
