@@ -1,12 +1,12 @@
 package app
 
 import (
-	"fmt"
 	"sync"
 	"time"
 
 	"nightbench/instruments/bench"
 	"nightbench/instruments/scpi"
+	"nightbench/instruments/si"
 	"nightbench/sweeps"
 )
 
@@ -29,7 +29,7 @@ func (a *answers) expect(info []bench.Info) {
 
 // hear takes one exchange. It is called from the goroutine of the link.
 func (a *answers) hear(instrument string, e scpi.Exchange) {
-	words := fmt.Sprintf("answers in %s", roundly(e.Elapsed))
+	words := "answers in " + si.Format(roundly(e.Elapsed).Seconds(), si.Second)
 	if e.Err != nil {
 		words = "does not answer: " + e.Err.Error()
 	}
