@@ -106,7 +106,7 @@ func (m *Model) checkTurnsOn() error {
 	}
 	p := m.nominal
 	m.warm(&p, reference)
-	out := output{supply, m.drop, m.low, p.timer.dropScale, p.timer.lowScale, 0}
+	out := output{supply, m.drop, m.low, p.timer.dropScale, p.timer.lowScale, 0, false}
 	d := m.control(&p, &out, 0)
 	if m.on(&p, &d) {
 		return nil

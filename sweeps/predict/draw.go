@@ -53,13 +53,20 @@ func (e *Ensemble) At(s Setting) (map[sweeps.Quantity]sweeps.Prediction, []sweep
 			out[q] = sweeps.Prediction{Value: b.value[i], Low: b.low[i], High: b.high[i], Unit: q.Unit()}
 		}
 	}
-	return out, e.flags(&nominal, s, b.stopped)
+	return out, e.flags(&nominal, s, &b)
 }
 
-func (e *Ensemble) flags(nominal *outcome, s Setting, stopped int) []sweeps.Flag {
+// flags adds, to those of a nominal board that works, how many of the drawn ones do not.
+func (e *Ensemble) flags(nominal *outcome, s Setting, b *band) []sweeps.Flag {
 	fs := e.m.flags(nominal, s)
-	if nominal.stop == oscillates && stopped > 0 {
-		fs = append(fs, sweeps.Flag{Name: NoOscillation, Words: fmt.Sprintf("may not oscillate: %d of %d boards drawn within tolerance do not", stopped, len(e.draws))})
+	add := func(name, format string, n int) {
+		fs = append(fs, sweeps.Flag{Name: name, Words: fmt.Sprintf(format+": %d of %d boards drawn within tolerance do not", n, len(e.draws))})
+	}
+	if nominal.stop == oscillates && b.stopped > 0 {
+		add(NoOscillation, "may not oscillate", b.stopped)
+	}
+	if !nominal.stalled && nominal.stop == oscillates && b.standing > 0 {
+		add(Stalled, "the motor may not turn", b.standing)
 	}
 	return fs
 }
@@ -68,25 +75,30 @@ func (e *Ensemble) flags(nominal *outcome, s Setting, stopped int) []sweeps.Flag
 type band struct {
 	value, low, high row
 	stopped          int // draws that do not oscillate
+	standing         int // draws whose motor stands still
 }
 
 // bands computes all draws at a setting, on all processors, into rows.
 func (e *Ensemble) bands(s Setting, nominal *outcome, rows []row) band {
 	c := s.conditions()
-	stopped := make([]int, workers)
+	counts := make([]struct{ stopped, standing int }, workers)
 	each(len(e.draws), func(w, from, to int) {
 		for k := from; k < to; k++ {
 			o := e.m.solve(&e.draws[k], c)
 			rows[k] = o.row()
-			if o.stop != oscillates {
-				stopped[w]++
+			switch {
+			case o.stop != oscillates:
+				counts[w].stopped++
+			case o.stalled:
+				counts[w].standing++
 			}
 		}
 	})
 	b := band{value: nominal.row()}
 	b.low, b.high = b.value, b.value
-	for _, n := range stopped {
-		b.stopped += n
+	for _, n := range counts {
+		b.stopped += n.stopped
+		b.standing += n.standing
 	}
 	each(len(predicted), func(_, from, to int) {
 		column := make([]float64, 0, len(rows))

@@ -96,6 +96,14 @@ func (d *diode) freewheel(i float64) source {
 	return source{-(v - r*i), r}
 }
 
+// gain is what the collector can carry over the base: the typical gain where it is known, else the least.
+func (q *transistor) gain() float64 {
+	if q.betaF > 0 {
+		return q.betaF
+	}
+	return q.hfeMin
+}
+
 // saturation is the collector–emitter voltage of a saturated transistor, and its
 // slope: Ebers–Moll, V = Vt·ln[(1/αR + x/βR)/(1 − x/βF)] with x = Ic/Ib, plus
 // resistance; a constant where only that is known.

@@ -76,10 +76,7 @@ func (m *Model) flagDriver(o *outcome, add func(string, string, ...any)) {
 			add(NotFullyOn, "not fully on: %s at the gate, the on-resistance is specified from %s", show(o.gate, si.Volt), show(m.rds[0][0], si.Volt))
 		}
 	case sweeps.StageNPN, sweeps.StageDarlington:
-		if limit := q.hfeMin * o.base; o.wave.peak > limit {
-			add(Unsaturated, "out of saturation: the collector would carry %s, hFE %.0f times %s of base current give %s; up to %s lost in the transistor",
-				show(o.wave.peak, si.Ampere), q.hfeMin, show(o.base, si.Ampere), show(limit, si.Ampere), show(limit*max(0, o.supply-limit*m.nominal.load.r), si.Watt))
-		}
+		m.flagSaturation(o, q, add)
 	}
 	pin := o.base
 	if stage == sweeps.StageNone {
@@ -91,6 +88,21 @@ func (m *Model) flagDriver(o *outcome, add func(string, string, ...any)) {
 	if stage != sweeps.StageNone && m.nominal.load.l > 0 && m.nominal.fb.is == 0 && on.q > 0 {
 		add(NoFlyback, "no flyback diode: the load's current is cut by the transistor's breakdown at %s", show(q.breakdown, si.Volt))
 	}
+}
+
+// flagSaturation compares the collector's peak with what the least gain gives; the
+// dissipation is of a transistor that limits at that current and takes the rest of the supply.
+func (m *Model) flagSaturation(o *outcome, q *transistor, add func(string, string, ...any)) {
+	limit := q.hfeMin * o.base
+	if o.wave.peak <= limit {
+		return
+	}
+	level := "a sample of least gain would not saturate"
+	if o.starved {
+		level = "out of saturation, no level is predicted"
+	}
+	add(Unsaturated, "%s: the collector would carry %s, hFE %.0f times %s of base current give %s; up to %s lost in the transistor", level,
+		show(o.wave.peak, si.Ampere), q.hfeMin, show(o.base, si.Ampere), show(limit, si.Ampere), show(limit*max(0, o.supply-limit*m.nominal.load.r), si.Watt))
 }
 
 func (m *Model) flagMotor(o *outcome, s Setting, add func(string, string, ...any)) {

@@ -1,12 +1,5 @@
 package predict
 
-import (
-	"fmt"
-
-	"nightbench/instruments/si"
-	"nightbench/sweeps"
-)
-
 // StressFinding is the name of a finding about a rating; other findings have a flag's name.
 const StressFinding = "stress"
 
@@ -14,7 +7,7 @@ const StressFinding = "stress"
 type Finding struct {
 	Name    string  `json:"name"`
 	Refuse  bool    `json:"refuse"` // the plan must not run; otherwise a caution
-	Words   string  `json:"words"`  // of the worst setting
+	Words   string  `json:"words"`  // of the worst setting, without saying where
 	Setting Setting `json:"setting"`
 	Count   int     `json:"count"` // settings it concerns
 	weight  float64
@@ -56,7 +49,7 @@ func (m *Model) Judge(settings []Setting) ([]Finding, error) {
 			return nil, err
 		}
 		for _, flag := range r.Flags {
-			f.add(flag.Name, 0, Finding{Name: flag.Name, Words: at(s, m) + flag.Words, Setting: s})
+			f.add(flag.Name, 0, Finding{Name: flag.Name, Words: flag.Words, Setting: s})
 		}
 		if !r.Oscillates {
 			continue
@@ -98,20 +91,9 @@ func (m *Model) judgeStress(f *findings, s Setting) error {
 		}
 		for _, row := range t.rows {
 			if share := row.Share(); share > Caution {
-				f.add(t.words+row.Part+row.What, share, Finding{Name: StressFinding, Refuse: share > 1, Setting: s, Words: at(s, m) + t.words + row.String()})
+				f.add(t.words+row.Part+row.What, share, Finding{Name: StressFinding, Refuse: share > 1, Setting: s, Words: t.words + row.String()})
 			}
 		}
 	}
 	return nil
-}
-
-// at says where, for the head of a finding: "at 9 V, 10 kΩ: ".
-func at(s Setting, m *Model) string {
-	switch {
-	case m.board.Timing.Network == sweeps.Wiper:
-		return fmt.Sprintf("at %s, pot at %.3g: ", show(s.Supply, si.Volt), s.Pot)
-	case m.board.Timing.UsesPot():
-		return fmt.Sprintf("at %s, %s: ", show(s.Supply, si.Volt), show(s.Pot, si.Ohm))
-	}
-	return fmt.Sprintf("at %s: ", show(s.Supply, si.Volt))
 }

@@ -19,8 +19,12 @@ func (m *Model) laws(p *parts, at *conditions, out *output, carriedHigh, carried
 		otherUp, otherDown = nothing, nothing
 	}
 	bias := p.timer.triggerCurrent - p.timer.thresholdCurrent
-	charge = law{sign: 1, on: up, other: otherDown, bias: bias, c: p.capacitor}
-	discharge = law{sign: -1, on: down, other: otherUp, bias: bias, c: p.capacitor}
+	leak := 0.0
+	if p.leak > 0 {
+		leak = 1 / p.leak
+	}
+	charge = law{sign: 1, on: up, other: otherDown, bias: bias, leak: leak, c: p.capacitor}
+	discharge = law{sign: -1, on: down, other: otherUp, bias: bias, leak: leak, c: p.capacitor}
 	if m.board.Timing.Network == sweeps.OutputFed {
 		charge.r, discharge.r = rs.common, rs.common
 		charge.output, discharge.output = out, out

@@ -9,7 +9,7 @@ import (
 // The quantities predicted, in the order of a row of values.
 var predicted = [...]sweeps.Quantity{
 	sweeps.Duty, sweeps.Frequency, sweeps.Period, sweeps.THigh, sweeps.TLow,
-	sweeps.AverageVoltage, sweeps.HighLevel, sweeps.LowLevel, sweeps.OutputDrop, sweeps.Ripple,
+	sweeps.AverageVoltage, sweeps.HighLevel, sweeps.LowLevel, sweeps.OutputDrop,
 	sweeps.RiseTime, sweeps.FallTime,
 	sweeps.MotorCurrent, sweeps.OutputCurrent, sweeps.SupplyVoltage, sweeps.SupplyCurrent, sweeps.SupplyPower,
 	sweeps.BackEMF, sweeps.Conduction, sweeps.Speed, sweeps.PotResistance, sweeps.ControlVoltage, sweeps.Ambient,
@@ -26,7 +26,6 @@ const (
 	qHighLevel
 	qLowLevel
 	qOutputDrop
-	qRipple
 	qRiseTime
 	qFallTime
 	qMotorCurrent
@@ -45,8 +44,7 @@ const (
 // Quantities lists what is predicted, in a fixed order. Levels, duty and times are
 // the timer output's (pin 3 to common); average_voltage and output_drop are the load's
 // own terminals'; motor_current is the load's whatever it is; output_current is
-// what pin 3 delivers (or sinks, for a load to the supply), averaged over the period;
-// ripple is the peak-to-peak voltage at the timer's output.
+// what pin 3 delivers (or sinks, for a load to the supply), averaged over the period.
 func Quantities() []sweeps.Quantity { return append([]sweeps.Quantity(nil), predicted[:]...) }
 
 // row is a value for each predicted quantity; not a number where there is none.
@@ -76,7 +74,6 @@ func (o *outcome) row() row {
 	r[qTLow] = o.low
 	r[qHighLevel] = o.highLevel
 	r[qLowLevel] = o.lowLevel
-	r[qRipple] = o.highLevel - o.lowLevel
 	if o.edge > 0 {
 		r[qRiseTime] = o.edge
 		r[qFallTime] = o.edge
@@ -85,7 +82,12 @@ func (o *outcome) row() row {
 	return r
 }
 
+// loadRow is what the load decides. Of a transistor out of saturation there is
+// nothing to say but its dissipation: it has no level.
 func (o *outcome) loadRow(r *row) {
+	if o.starved {
+		return
+	}
 	on := &o.wave.spells[driven]
 	r[qAverageVoltage] = o.wave.voltage()
 	if on.t > 0 && o.isOn {

@@ -2,6 +2,7 @@ package predict
 
 import (
 	"fmt"
+	"math"
 	"sort"
 
 	"gonum.org/v1/gonum/interp"
@@ -101,12 +102,13 @@ type output struct {
 	drop, low       levels
 	dropScale, lows float64
 	shift           float64 // V added to the drop, from temperature
+	bothWays        bool    // a MOS output, which conducts backwards at the resistance it has at no current
 }
 
 // high is the high level while i amperes are sourced, and the resistance it falls with. It never falls below ground.
 func (o *output) high(i float64) (v, r float64) {
-	d, s := o.drop.at(i, o.supply)
-	d = max(0, d*o.dropScale+o.shift)
+	d, s := o.drop.at(math.Max(i, 0), o.supply)
+	d = math.Max(0, d*o.dropScale+o.shift) + o.back(i)*s*o.dropScale
 	if d > o.supply {
 		return 0, 0
 	}
@@ -115,11 +117,20 @@ func (o *output) high(i float64) (v, r float64) {
 
 // sink is the low level while i amperes are sunk, and the resistance it rises with. It never rises above the supply.
 func (o *output) sink(i float64) (v, r float64) {
-	l, s := o.low.at(i, o.supply)
-	if l *= o.lows; l > o.supply {
+	l, s := o.low.at(math.Max(i, 0), o.supply)
+	if l = l*o.lows + o.back(i)*s*o.lows; l > o.supply {
 		return o.supply, 0
 	}
 	return l, s * o.lows
+}
+
+// back is the part of a current that flows backwards and moves the level: none in
+// a bipolar output, whose level at no current then holds.
+func (o *output) back(i float64) float64 {
+	if o.bothWays {
+		return math.Min(i, 0)
+	}
+	return 0
 }
 
 // level is high or low at a current counted away from the output when high, into it when low.

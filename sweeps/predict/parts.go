@@ -14,6 +14,7 @@ type parts struct {
 	stop, stopUp, stopDown, wiper    float64 // Ω
 	pot                              float64 // what the pot really has over what it is said to have
 	capacitor                        float64
+	leak                             float64 // Ω across the capacitor, 0: none
 
 	timer                           timer
 	chargeDiode, dischargeDiode, fb diode

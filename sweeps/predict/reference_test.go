@@ -78,7 +78,7 @@ func (a *accuracy) percentile(p float64) float64 {
 }
 
 func (a *accuracy) String() string {
-	return fmt.Sprintf("%-28s %3d values   median %7.4f %%   90 %% below %7.4f %%   worst %7.4f %%   promised %6.3f %%",
+	return fmt.Sprintf("%-42s %4d values   median %8.2g %%   90 %% within %8.2g %%   worst %8.2g %%   promised %6.3f %%",
 		a.name, len(a.errs), 100*a.percentile(0.5), 100*a.percentile(0.9), 100*a.percentile(1), 100*a.bound)
 }
 
@@ -144,7 +144,7 @@ func tableTiming(t *testing.T, r record) (sweeps.Board, Setting) {
 	return b, Setting{Supply: r.num(t, "vcc"), Pot: r.num(t, "wiper"), Temperature: Reference}
 }
 
-func TestTimingTable(t *testing.T) {
+func timingTable(t *testing.T) []*accuracy {
 	high, low := &accuracy{name: "timing.csv t_high", bound: 0.003}, &accuracy{name: "timing.csv t_low", bound: 0.003}
 	for i, r := range table(t, "timing.csv") {
 		b, s := tableTiming(t, r)
@@ -157,10 +157,10 @@ func TestTimingTable(t *testing.T) {
 	if p := all.percentile(0.9); p > 0.001 {
 		t.Errorf("90 %% of the values should lie within 0.1 %%, they lie within %.3f %%", 100*p)
 	}
-	t.Log("\n" + high.String() + "\n" + low.String())
+	return []*accuracy{high, low}
 }
 
-func TestMotorTable(t *testing.T) {
+func motorTable(t *testing.T) []*accuracy {
 	current, speed := &accuracy{name: "motor.csv current", bound: 0.002}, &accuracy{name: "motor.csv speed", bound: 0.002}
 	voltage := &accuracy{name: "motor.csv voltage", bound: 0.005}
 	for i, r := range table(t, "motor.csv") {
@@ -175,7 +175,7 @@ func TestMotorTable(t *testing.T) {
 		speed.add(t, emf/l.k, r.num(t, "speed"), what)
 		voltage.add(t, w.voltage(), r.num(t, "v_avg"), what)
 	}
-	t.Log("\n" + current.String() + "\n" + speed.String() + "\n" + voltage.String())
+	return []*accuracy{current, speed, voltage}
 }
 
 // tableBoard is a row of board.csv: output 0.6 V and 6 ohm below the supply, 10 ohm
@@ -207,8 +207,7 @@ func tableBoard(t *testing.T, r record) (sweeps.Board, Setting) {
 	return b, Setting{Supply: r.num(t, "vcc"), Temperature: Reference}
 }
 
-func TestBoardTable(t *testing.T) {
-	var all []*accuracy
+func boardTable(t *testing.T) (all []*accuracy) {
 	for _, q := range []struct {
 		column string
 		name   sweeps.Quantity
@@ -226,7 +225,5 @@ func TestBoardTable(t *testing.T) {
 			a.add(t, v[q.name], r.num(t, q.column), fmt.Sprintf("row %d", i+1))
 		}
 	}
-	for _, a := range all {
-		t.Log(a)
-	}
+	return all
 }

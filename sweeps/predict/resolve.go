@@ -56,6 +56,7 @@ func (m *Model) resolveTiming() {
 			m.vary(s.name, si.Ohm, spreadOf(s.r), s.at)
 		}
 	}
+	m.vary("leak_resistance", si.Ohm, exactly(0), func(p *parts) *float64 { return &p.leak })
 	m.vary("capacitor", si.Farad, spreadOf(t.Capacitor), func(p *parts) *float64 { return &p.capacitor })
 }
 

@@ -73,6 +73,7 @@ type outcome struct {
 	supplyCurrent, outputCurrent float64
 	mechanical float64 // s, J·R/K²
 	stalled    bool
+	starved    bool // too little base current: the transistor does not saturate
 	isOn       bool
 	k          float64 // V s/rad; 0: the load is no motor
 	usesPot    bool
@@ -83,7 +84,7 @@ type outcome struct {
 func (m *Model) solve(nominal *parts, c conditions) (o outcome) {
 	p := *nominal
 	m.warm(&p, c.kelvin)
-	o.output = output{c.supply, m.drop, m.low, p.timer.dropScale, p.timer.lowScale, p.timer.dropShift}
+	o.output = output{c.supply, m.drop, m.low, p.timer.dropScale, p.timer.lowScale, p.timer.dropShift, m.rated.timer.PushPull}
 	o.supply, o.temperature, o.pot, o.edge = c.supply, c.kelvin-273.15, c.pot, p.timer.edge
 	o.k, o.usesPot = p.load.k, m.board.Timing.UsesPot()
 	if m.board.Timing.Network == sweeps.OutputFed {
@@ -152,6 +153,7 @@ func (m *Model) drive(o *outcome, p *parts, c *conditions, high, low float64) {
 		e.settle()
 	}
 	o.stalled = p.load.k > 0 && o.emf == 0
+	o.starved = o.base > 0 && o.wave.peak > p.switchPart.gain()*o.base
 	o.mechanical = p.load.tau(o.sources[driven].r + c.burden)
 }
 

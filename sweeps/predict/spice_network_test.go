@@ -53,44 +53,48 @@ func straightOutput(b *sweeps.Board, drop, rHigh, rLow float64) {
 	b.Timer.Low = []sweeps.CurrentVoltage{row(0, 0), row(1, rLow)}
 }
 
-// TestSpiceNetworks simulates eight boards of each network, those of the tables too,
+// simulatedNetworks simulates eight boards of each network, those of the tables too,
 // with the discharge pin's offset and pin currents, which the tables lack.
-func TestSpiceNetworks(t *testing.T) {
+func simulatedNetworks(t *testing.T) (all []*accuracy) {
 	needSpice(t)
 	for k, network := range []sweeps.Network{sweeps.Plain, sweeps.Bypassed, sweeps.Steered, sweeps.Wiper, sweeps.OutputFed} {
-		t.Run(string(network), func(t *testing.T) {
-			high, low := &accuracy{name: "simulated t_high", bound: 0.005}, &accuracy{name: "simulated t_low", bound: 0.005}
-			r := rand.New(rand.NewPCG(uint64(k), 3))
-			for n := 0; n < 8; {
-				timing, share := randomTiming(r, network)
-				b := bareBoard(timing)
-				dischargePin(&b, between(r, 8, 30))
-				b.Timer.DischargeOffset = &si.TolVoltage{Nominal: si.Volts(0.037)}
-				b.Timer.TriggerCurrent = &si.TolCurrent{Nominal: si.Amperes(0.5e-6)}
-				straightOutput(&b, 0.1, 50, 30)
-				m := mustNew(t, b, Options{})
-				s := Setting{Supply: 5 + 10*r.Float64(), Pot: share, Temperature: Reference}
-				res, err := m.At(s)
-				if err != nil {
-					t.Fatal(err)
-				}
-				v := res.Values
-				if !res.Oscillates || v[sweeps.Duty] < 0.02 || v[sweeps.Duty] > 0.98 { // the step would have to follow the short phase
-					continue
-				}
-				n++
-				d := &deck{stop: 3.2 * v[sweeps.Period], step: math.Min(v[sweeps.THigh], v[sweeps.TLow]) / 500}
-				spiceTiming(d, m, s)
-				if network == sweeps.OutputFed {
-					d.add("bo o 0 i=v(h)>0.5 ? (v(o)-%g)/50 : v(o)/30\nrl0 o 0 1e6", s.Supply-0.1)
-				}
-				tr := d.simulate(t, "v(h)", "v(x)")
-				h, l := tr.rhythm(t)
-				what := fmt.Sprintf("case %d at %.3g V, %+v", n, s.Supply, m.nominal)
-				high.add(t, v[sweeps.THigh], h, what)
-				low.add(t, v[sweeps.TLow], l, what)
-			}
-			t.Log("\n" + high.String() + "\n" + low.String())
-		})
+		all = append(all, simulatedNetwork(t, network, rand.New(rand.NewPCG(uint64(k), 3)), Reference)...)
 	}
+	return append(all, simulatedNetwork(t, sweeps.Steered, rand.New(rand.NewPCG(9, 3)), Reference+25)...)
+}
+
+func simulatedNetwork(t *testing.T, network sweeps.Network, r *rand.Rand, temperature float64) []*accuracy {
+	t.Helper()
+	name := fmt.Sprintf("simulated %s at %g degC", network, temperature)
+	high, low := &accuracy{name: name + " t_high", bound: 0.005}, &accuracy{name: name + " t_low", bound: 0.005}
+	for n := 0; n < 8; {
+		timing, share := randomTiming(r, network)
+		b := bareBoard(timing)
+		dischargePin(&b, between(r, 8, 30))
+		b.Timer.DischargeOffset = &si.TolVoltage{Nominal: si.Volts(0.037)}
+		b.Timer.TriggerCurrent = &si.TolCurrent{Nominal: si.Amperes(0.5e-6)}
+		straightOutput(&b, 0.1, 50, 30)
+		m := mustNew(t, b, Options{})
+		s := Setting{Supply: 5 + 10*r.Float64(), Pot: share, Temperature: temperature}
+		res, err := m.At(s)
+		if err != nil {
+			t.Fatal(err)
+		}
+		v := res.Values
+		if !res.Oscillates || v[sweeps.Duty] < 0.02 || v[sweeps.Duty] > 0.98 { // the step would have to follow the short phase
+			continue
+		}
+		n++
+		d := &deck{stop: 3.2 * v[sweeps.Period], step: math.Min(v[sweeps.THigh], v[sweeps.TLow]) / 523.7, temperature: temperature}
+		spiceTiming(d, m, s)
+		if network == sweeps.OutputFed {
+			d.add("bo o 0 i=v(h)>0.5 ? (v(o)-%g)/50 : v(o)/30\nrl0 o 0 1e6", s.Supply-0.1)
+		}
+		tr := d.simulate(t, "v(h)", "v(x)")
+		h, l := tr.rhythm(t)
+		what := fmt.Sprintf("case %d at %.3g V, %+v", n, s.Supply, m.nominal)
+		high.add(t, v[sweeps.THigh], h, what)
+		low.add(t, v[sweeps.TLow], l, what)
+	}
+	return []*accuracy{high, low}
 }

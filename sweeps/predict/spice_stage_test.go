@@ -4,7 +4,6 @@ import (
 	"fmt"
 	"math"
 	"math/rand/v2"
-	"strings"
 	"testing"
 
 	"nightbench/instruments/si"
@@ -115,35 +114,32 @@ func spiceStage(d *deck, m *Model, s Setting, speed float64) {
 	}
 }
 
-// TestSpiceStages simulates eight whole boards of each stage, half of them with motors.
-func TestSpiceStages(t *testing.T) {
+// simulatedStages simulates eight whole boards of each stage, half of them with motors.
+func simulatedStages(t *testing.T) (all []*accuracy) {
 	needSpice(t)
 	for k, c := range []stageCase{{sweeps.StageNone, false}, {sweeps.StageNone, true}, {sweeps.StageNPN, false}, {sweeps.StageDarlington, false}, {sweeps.StageNMOS, false}} {
-		name := string(c.stage)
+		name := "simulated stage " + string(c.stage)
 		if c.toSupply {
-			name += " to the supply"
+			name += " to supply"
 		}
-		t.Run(name, func(t *testing.T) {
-			current, voltage := &accuracy{name: name + " current", bound: 0.02}, &accuracy{name: name + " voltage", bound: 0.02}
-			supply := &accuracy{name: name + " supply", bound: 0.02}
-			r := rand.New(rand.NewPCG(uint64(k), 7))
-			for n := range 8 {
-				b := randomStage(t, r, c, n%2 == 1)
-				m := mustNew(t, b, Options{})
-				s := Setting{Supply: []float64{5, 9, 12, 15}[r.IntN(4)], Temperature: Reference}
-				v := mustAt(t, m, s)
-				if n%2 == 1 && v[sweeps.Speed] == 0 {
-					t.Fatalf("case %d stands still", n)
-				}
-				got := balanced(t, m, s, v)
-				what := fmt.Sprintf("case %d at %g V, duty %.2f, load %+v", n, s.Supply, v[sweeps.Duty], m.nominal.load)
-				current.add(t, v[sweeps.MotorCurrent], got.current, what)
-				voltage.add(t, v[sweeps.AverageVoltage], got.voltage, what)
-				supply.add(t, v[sweeps.SupplyCurrent], got.supply, what)
+		current, voltage, supply := &accuracy{name: name + ", load A", bound: 0.02}, &accuracy{name: name + ", load V", bound: 0.02}, &accuracy{name: name + ", supply A", bound: 0.02}
+		r := rand.New(rand.NewPCG(uint64(k), 7))
+		for n := range 8 {
+			m := mustNew(t, randomStage(t, r, c, n%2 == 1), Options{})
+			s := Setting{Supply: []float64{5, 9, 12, 15}[r.IntN(4)], Temperature: Reference}
+			v := mustAt(t, m, s)
+			if n%2 == 1 && v[sweeps.Speed] == 0 {
+				t.Fatalf("case %d stands still", n)
 			}
-			t.Log("\n" + strings.Join([]string{current.String(), voltage.String(), supply.String()}, "\n"))
-		})
+			got := balanced(t, m, s, v)
+			what := fmt.Sprintf("case %d at %g V, duty %.2f, load %+v", n, s.Supply, v[sweeps.Duty], m.nominal.load)
+			current.add(t, v[sweeps.MotorCurrent], got.current, what)
+			voltage.add(t, v[sweeps.AverageVoltage], got.voltage, what)
+			supply.add(t, v[sweeps.SupplyCurrent], got.supply, what)
+		}
+		all = append(all, current, voltage, supply)
 	}
+	return all
 }
 
 // means are a simulated board's, over its last whole period.
@@ -154,7 +150,7 @@ func simulateStage(t *testing.T, m *Model, s Setting, v map[sweeps.Quantity]floa
 	t.Helper()
 	l := &m.nominal.load
 	periods := 3.2 + math.Ceil(6*l.l/l.r/v[sweeps.Period])
-	d := &deck{stop: periods * v[sweeps.Period], step: math.Min(v[sweeps.THigh], v[sweeps.TLow]) / 200}
+	d := &deck{stop: periods * v[sweeps.Period], step: math.Min(v[sweeps.THigh], v[sweeps.TLow]) / 211.3, temperature: s.Temperature}
 	spiceTiming(d, m, s)
 	spiceStage(d, m, s, speed)
 	tr := d.simulate(t, "v(h)", "i(vi)", "v(vl)", "i(vs)")

@@ -21,10 +21,10 @@ import (
 
 // deck is a netlist being written, and what to measure of it.
 type deck struct {
-	lines []string
-	stop  float64 // s
-	step  float64
-	from  float64 // s, means are taken from here over whole periods
+	lines       []string
+	stop        float64 // s
+	step        float64
+	temperature float64 // degC
 }
 
 func (d *deck) add(format string, a ...any) { d.lines = append(d.lines, fmt.Sprintf(format, a...)) }
@@ -65,7 +65,7 @@ func (d *deck) run(t *testing.T, options string, step float64, vectors []string)
 	dir := t.TempDir()
 	out := filepath.Join(dir, "out.txt")
 	text := "* board\n" + strings.Join(d.lines, "\n") + fmt.Sprintf(`
-.options %s temp=27 tnom=27
+.options %s temp=%g tnom=27
 .control
 set wr_singlescale
 set numdgt=12
@@ -74,7 +74,7 @@ wrdata %s %s
 quit
 .endc
 .end
-`, options, step, d.stop, step, out, strings.Join(vectors, " "))
+`, options, d.temperature, step, d.stop, step, out, strings.Join(vectors, " "))
 	file := filepath.Join(dir, "deck.cir")
 	if err := os.WriteFile(file, []byte(text), 0o600); err != nil {
 		t.Fatal(err)
@@ -175,7 +175,7 @@ func spiceTiming(d *deck, m *Model, s Setting) {
 	tm := &m.board.Timing
 	d.add("vs s 0 %g", s.Supply)
 	diode := func(name string, part *diode) {
-		d.add(".model %s d(is=%g n=%g rs=%g)", name, part.is, part.n, part.rs)
+		d.add(".model %s d(is=%g n=%g rs=%g eg=%g xti=%g)", name, part.is, part.n, part.rs, part.eg, part.xti)
 	}
 	diode("dc", &p.chargeDiode)
 	diode("dd", &p.dischargeDiode)

@@ -37,11 +37,29 @@ func (m *Model) Start(s Setting) (Start, error) {
 }
 
 // Thresholds are the pot settings at which the motor just starts from rest, and at
-// which it just goes on running. They coincide where PWM is slow: then a running
-// motor stands still within each period.
+// which it just goes on running.
 type Thresholds struct {
 	Start *float64 `json:"start"` // nil: it starts everywhere or nowhere in the range
 	Stall *float64 `json:"stall"`
+	Words string   `json:"words"`
+}
+
+// coincident is how near two thresholds are to be one, relative.
+const coincident = 1e-3
+
+// words says what the two mean together.
+func (t *Thresholds) words() string {
+	switch {
+	case t.Start == nil && t.Stall == nil:
+		return "the motor neither starts nor stalls anywhere between"
+	case t.Start == nil:
+		return "the motor stalls, but starts from rest everywhere or nowhere between"
+	case t.Stall == nil:
+		return "the motor goes on running, or stands, all the way between"
+	case math.Abs(*t.Start / *t.Stall - 1) < coincident:
+		return "start and stall coincide: no hysteresis is to be expected"
+	}
+	return "between the two thresholds the motor goes on running but does not start from rest"
 }
 
 // Thresholds bisects between two pot settings (as in Setting.Pot), at the rest of s.
@@ -52,8 +70,11 @@ func (m *Model) Thresholds(s Setting, from, to float64) (Thresholds, error) {
 	if out.Start, err = flips(from, to, at, Start.Starts); err != nil {
 		return Thresholds{}, err
 	}
-	out.Stall, err = flips(from, to, at, func(s Start) bool { return s.Runs })
-	return out, err
+	if out.Stall, err = flips(from, to, at, func(s Start) bool { return s.Runs }); err != nil {
+		return Thresholds{}, err
+	}
+	out.Words = out.words()
+	return out, nil
 }
 
 // flips finds where a yes turns to no, to a millionth; nil where both ends say the same.
