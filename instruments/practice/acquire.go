@@ -19,11 +19,14 @@ type acquisition struct {
 	source   int     // channel that triggers; 0: immediate
 	level    float64
 	falling  bool
+	auto     bool // an automatic trigger where none comes
+	see      func(n int, in *input, y []float64, interval float64)
 
-	origin float64                // s, of the first sample from the trigger
-	y      [scopeInputs][]float64 // volts by channel
-	have   bool
-	codes  [scopeInputs][]int16
+	triggered bool
+	origin    float64                // s, of the first sample from the trigger
+	y         [scopeInputs][]float64 // volts by channel
+	have      bool
+	codes     [scopeInputs][]int16
 }
 
 func (a *acquisition) over() bool {
@@ -48,12 +51,14 @@ func (a *acquisition) take(ctx context.Context, w *world) {
 	if a.source > 0 {
 		length *= 2
 	}
-	for {
+	for began := w.now(); ; {
 		block := a.watch(w, probes, length)
 		if !a.await(ctx, w, block, length) {
 			return
 		}
-		if a.cut(block.Y) {
+		a.feel(block.Y)
+		late := a.auto && w.now()-began >= autoWait
+		if a.cut(block.Y) || late && a.cutAt(block.Y, 0, 0) {
 			return
 		}
 	}
@@ -82,6 +87,17 @@ func (a *acquisition) await(ctx context.Context, w *world, r *circuit.Record, le
 	return true
 }
 
+// feel takes the block through the front end, so that the trigger sees what the converter sees.
+func (a *acquisition) feel(rows [][]float64) {
+	row := 0
+	for i := range a.inputs {
+		if a.inputs[i].wired {
+			a.see(i, &a.inputs[i], rows[row], a.interval)
+			row++
+		}
+	}
+}
+
 // cut looks for the trigger in a block and takes the record round it.
 func (a *acquisition) cut(rows [][]float64) bool {
 	first, origin := 0, 0.0
@@ -91,8 +107,14 @@ func (a *acquisition) cut(rows [][]float64) bool {
 		if !ok || at-before+a.points > len(rows[0]) {
 			return false
 		}
+		a.triggered = true
 		first, origin = at-before, -(float64(before)+fraction)*a.interval
 	}
+	return a.cutAt(rows, first, origin)
+}
+
+// cutAt takes the record from a sample on. It is always true.
+func (a *acquisition) cutAt(rows [][]float64, first int, origin float64) bool {
 	row := 0
 	for i, in := range a.inputs {
 		if in.wired {

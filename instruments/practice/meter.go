@@ -3,8 +3,9 @@ package practice
 import (
 	"context"
 	"fmt"
-	"math"
 	"math/rand/v2"
+	"slices"
+	"sync/atomic"
 
 	"nightbench/instruments/practice/circuit"
 	"nightbench/instruments/scpi"
@@ -17,20 +18,21 @@ const lineFrequency = 50.0
 // meterRange is one range: its full scale, and the limits of error as shares of reading and range.
 type meterRange struct{ full, reading, ofRange, over float64 }
 
-// The ranges of a 6½-digit meter, one year (figures of the standard-meter dialect: HP 34401A).
+// The ranges of a 6½-digit meter, one year (figures of the standard-meter dialect: HP 34401A; ohms from memory).
 var (
 	voltRanges = []meterRange{
 		{0.1, 50e-6, 35e-6, 1.2}, {1, 40e-6, 7e-6, 1.2}, {10, 35e-6, 5e-6, 1.2}, {100, 45e-6, 6e-6, 1.2}, {1000, 45e-6, 10e-6, 1},
 	}
 	ampereRanges = []meterRange{{10e-3, 500e-6, 200e-6, 1.2}, {100e-3, 500e-6, 50e-6, 1.2}, {1, 1000e-6, 100e-6, 1.2}, {3, 1200e-6, 200e-6, 1}}
+	ohmRanges    = []meterRange{{100, 100e-6, 40e-6, 1.2}, {1e3, 100e-6, 10e-6, 1.2}, {10e3, 100e-6, 10e-6, 1.2}, {100e3, 100e-6, 10e-6, 1.2}, {1e6, 100e-6, 10e-6, 1.2}}
 	cycles       = []float64{0.02, 0.2, 1, 10, 100}
 )
 
-// meterNoise is the rms noise of a reading as a share of the range at 1 PLC; it falls with the root of the aperture.
-const meterNoise = 0.5e-6
-
-// meterAnswer is the time to understand a message and begin the reply, s.
-const meterAnswer = 2e-3
+// Times of the meter, s.
+const (
+	meterAnswer = 2e-3  // to understand a message and begin the reply
+	rangeTime   = 30e-3 // to settle after a change of range (Keithley 2016 specification: under 30 ms)
+)
 
 // meter is a multimeter that keeps to the contract of the standard-meter dialect.
 // Its leads are fixed: asked for the other function it measures nothing sensible, and says overload.
@@ -40,8 +42,14 @@ type meter struct {
 	rng   *rand.Rand
 	place Meter
 
-	unit           si.Unit
-	volts, amperes function
+	unit      si.Unit
+	functions map[si.Unit]*function
+	autoZero  bool
+	zeroed    float64 // what the last zero took off, as a share of the range
+	wander    float64 // −1 … 1 of zeroDrift
+	last      string  // reading, for FETCh?
+	shunt     float64 // Ω in series beyond the declared burden
+	loose     atomic.Bool
 }
 
 // function is one function's settings, and its errors as shares of the stated limits.
@@ -54,43 +62,68 @@ type function struct {
 	zero   float64
 }
 
+// functionNames are the functions as FUNC takes and answers them.
+var functionNames = []struct {
+	unit          si.Unit
+	header, short string
+}{{si.Volt, "VOLTage[:DC]", "VOLT:DC"}, {si.Ampere, "CURRent[:DC]", "CURR:DC"}, {si.Ohm, "RESistance", "RES"}}
+
 func newMeter(w *world, r *rand.Rand, place Meter) *meter {
-	m := &meter{Device: scpi.NewDevice("Nightbench,practice-meter,DM-"+place.Name+",1.0", 20), world: w, rng: r, place: place}
-	m.volts = function{ranges: voltRanges, gain: 2*r.Float64() - 1, zero: 2*r.Float64() - 1}
-	m.amperes = function{ranges: ampereRanges, gain: 2*r.Float64() - 1, zero: 2*r.Float64() - 1}
+	m := &meter{Device: scpi.NewDevice("Nightbench,practice-meter,DM-"+place.Name+",1.0", 20), world: w, rng: r, place: place, functions: map[si.Unit]*function{}}
+	for _, f := range []struct {
+		unit   si.Unit
+		ranges []meterRange
+	}{{si.Volt, voltRanges}, {si.Ampere, ampereRanges}, {si.Ohm, ohmRanges}} {
+		m.functions[f.unit] = &function{ranges: f.ranges, gain: 2*r.Float64() - 1, zero: 2*r.Float64() - 1}
+	}
+	m.wander = 2*r.Float64() - 1
 	m.Reset = m.reset
 	m.reset()
 	m.Set("[SENSe:]FUNCtion", m.setFunction, scpi.Text{})
 	m.Get("[SENSe:]FUNCtion", func(*scpi.Call) (string, error) { return scpi.FormatString(m.functionName()), nil })
-	m.register("VOLTage", "V", &m.volts)
-	m.register("CURRent", "A", &m.amperes)
+	m.register("VOLTage[:DC]", "V", m.functions[si.Volt])
+	m.register("CURRent[:DC]", "A", m.functions[si.Ampere])
+	m.register("RESistance", "OHM", m.functions[si.Ohm])
+	m.registerZero()
 	m.Get("READ", func(c *scpi.Call) (string, error) { return m.read(c.Context) })
+	m.Get("FETCh", func(*scpi.Call) (string, error) {
+		if m.last == "" {
+			return "", scpi.NewFault(scpi.DataStale, "no reading")
+		}
+		return m.last, nil
+	})
 	return m
 }
 
 func (m *meter) instrument() *Instrument {
-	return &Instrument{answer: func(ctx context.Context, message []byte) []byte {
-		if m.world.clock.Sleep(ctx, seconds(meterAnswer)) != nil {
-			return nil
-		}
-		return m.Execute(ctx, message)
-	}}
+	return &Instrument{device: m.Device, again: m.reset, own: map[Kind]func() func(){LeadOff: m.loosen},
+		answer: func(ctx context.Context, message []byte) []byte {
+			if m.world.clock.Sleep(ctx, seconds(meterAnswer)) != nil {
+				return nil
+			}
+			return m.Execute(ctx, message)
+		}}
 }
 
 func (m *meter) reset() {
-	m.unit = si.Volt
-	for _, f := range []*function{&m.volts, &m.amperes} {
+	m.unit, m.autoZero, m.last = si.Volt, true, ""
+	for _, f := range m.functions {
 		f.in, f.nplc, f.auto = len(f.ranges)-1, 10, true
 	}
+	m.feel()
 }
 
 func (m *meter) register(name, unit string, f *function) {
 	most := f.ranges[len(f.ranges)-1].full
-	m.Value("[SENSe:]"+name+"[:DC]:RANGe[:UPPer]", scpi.Numeric{Unit: unit, Max: most}, func(*scpi.Call) float64 { return f.ranges[f.in].full },
-		func(_ *scpi.Call, v float64) error { f.in, f.auto = f.rangeFor(v), false; return nil })
-	m.Set("[SENSe:]"+name+"[:DC]:RANGe:AUTO", func(c *scpi.Call) error { f.auto = c.Bool(0); return nil }, scpi.Boolean{})
-	m.Get("[SENSe:]"+name+"[:DC]:RANGe:AUTO", func(*scpi.Call) (string, error) { return scpi.Bit(f.auto), nil })
-	m.Value("[SENSe:]"+name+"[:DC]:NPLCycles", scpi.Numeric{Min: cycles[0], Max: cycles[len(cycles)-1], Default: 10}, func(*scpi.Call) float64 { return f.nplc },
+	m.Value("[SENSe:]"+name+":RANGe[:UPPer]", scpi.Numeric{Unit: unit, Max: most}, func(*scpi.Call) float64 { return f.ranges[f.in].full },
+		func(_ *scpi.Call, v float64) error {
+			f.in, f.auto, m.last = f.rangeFor(v), false, ""
+			m.feel()
+			return nil
+		})
+	m.Set("[SENSe:]"+name+":RANGe:AUTO", func(c *scpi.Call) error { f.auto = c.Bool(0); return nil }, scpi.Boolean{})
+	m.Get("[SENSe:]"+name+":RANGe:AUTO", func(*scpi.Call) (string, error) { return scpi.Bit(f.auto), nil })
+	m.Value("[SENSe:]"+name+":NPLCycles", scpi.Numeric{Min: cycles[0], Max: cycles[len(cycles)-1], Default: 10}, func(*scpi.Call) float64 { return f.nplc },
 		func(_ *scpi.Call, v float64) error { f.nplc = nextUp(cycles, v); return nil })
 }
 
@@ -115,75 +148,72 @@ func nextUp(values []float64, v float64) float64 {
 }
 
 func (m *meter) setFunction(c *scpi.Call) error {
-	switch text := c.Text(0); {
-	case scpi.MatchHeader("VOLTage[:DC]", text):
-		m.unit = si.Volt
-	case scpi.MatchHeader("CURRent[:DC]", text):
-		m.unit = si.Ampere
-	default:
-		return scpi.NewFault(scpi.IllegalParameter, fmt.Sprintf("FUNC %q", text))
+	text := c.Text(0)
+	for _, f := range functionNames {
+		if scpi.MatchHeader(f.header, text) {
+			m.unit, m.last = f.unit, ""
+			m.feel()
+			return nil
+		}
 	}
-	return nil
+	return scpi.NewFault(scpi.IllegalParameter, fmt.Sprintf("FUNC %q", text))
 }
 
 func (m *meter) functionName() string {
-	if m.unit == si.Ampere {
-		return "CURR:DC"
+	for _, f := range functionNames {
+		if f.unit == m.unit {
+			return f.short
+		}
 	}
-	return "VOLT:DC"
+	panic("a function without a name")
 }
 
-func (m *meter) function() *function {
-	if m.unit == si.Ampere {
-		return &m.amperes
+func (m *meter) function() *function { return m.functions[m.unit] }
+
+// smallShunt is what the 10 mA range has in series beyond the 0.1 Ω of the others, Ω
+// (Keithley 2016 specification: 10 Ω and 0.1 Ω).
+const smallShunt = 9.9
+
+// feel lets the board feel the meter's shunt, which depends on function and range.
+func (m *meter) feel() {
+	want := 0.0
+	if m.place.Unit == si.Ampere && m.unit == si.Ampere && m.function().in == 0 {
+		want = smallShunt
 	}
-	return &m.volts
+	if m.place.Probe != circuit.Through(circuit.LoadCurrent) || want == m.shunt {
+		return
+	}
+	more := want - m.shunt
+	m.shunt = want
+	m.world.do(func(s *circuit.Sim) { must(s.Change(func(b *circuit.Board) { b.Load.Burden += more })) })
 }
 
-// read integrates the running wave over the aperture, then the zero for as long again (auto-zero).
-func (m *meter) read(ctx context.Context) (string, error) {
-	f := m.function()
-	aperture := f.nplc / lineFrequency
-	mean, err := m.world.mean(ctx, m.place.Probe, aperture)
-	if err != nil {
-		return "", err
+// loosen takes a lead off. A current meter's leads carry the load's current: it is interrupted.
+func (m *meter) loosen() (lift func()) {
+	carries := m.place.Probe == circuit.Through(circuit.LoadCurrent)
+	swing := func(off bool, ohms float64) {
+		m.loose.Store(off)
+		if carries {
+			m.world.do(func(s *circuit.Sim) { must(s.Change(func(b *circuit.Board) { b.Load.Resistance += ohms })) })
+		}
 	}
-	if err := m.world.clock.Sleep(ctx, seconds(aperture)); err != nil {
-		return "", err
-	}
-	if m.unit != m.place.Unit {
-		return scpi.NR3(9.9e37), nil
-	}
-	if f.auto {
-		f.in = f.rangeFor(math.Max(math.Abs(mean.Min), math.Abs(mean.Max)))
-	}
-	return scpi.NR3(m.shown(mean, f)), nil
+	swing(true, broken)
+	return func() { swing(false, -broken) }
 }
 
-// shown is what the display says: errors of its own, noise, steps, and overload
-// where the mean is beyond the range or the peaks drive the front end out of it.
-func (m *meter) shown(mean *circuit.Mean, f *function) float64 {
-	r := f.ranges[f.in]
-	x := mean.Value()
-	if math.Abs(x) > r.over*r.full || math.Max(math.Abs(mean.Min), math.Abs(mean.Max)) > 2*r.full {
-		return math.Copysign(9.9e37, x)
+// loads is the resistance the meter puts across its leads, Ω: 10 MΩ unless stated,
+// which a timing capacitor feels and a load does not.
+func (p Meter) loads(b *circuit.Board) {
+	onCapacitor := slices.Contains([]circuit.Probe{circuit.Between(circuit.Capacitor, circuit.Common), circuit.Between(circuit.Common, circuit.Capacitor)}, p.Probe)
+	if p.Unit != si.Volt || !onCapacitor {
+		return
 	}
-	x += f.gain*r.reading*x + f.zero*r.ofRange*r.full
-	x += m.rng.NormFloat64() * meterNoise * r.full / math.Sqrt(f.nplc)
-	return quantise(x, r.full*stepShare(f.nplc))
-}
-
-// stepShare is the display's step as a share of the range.
-func stepShare(nplc float64) float64 {
-	switch {
-	case nplc >= 100:
-		return 0.3e-6
-	case nplc >= 10:
-		return 1e-6
-	case nplc >= 1:
-		return 3e-6
-	case nplc >= 0.2:
-		return 10e-6
+	r := p.InputResistance
+	if r == 0 {
+		r = 10e6
 	}
-	return 100e-6
+	if b.Timing.Leak > 0 {
+		r = r * b.Timing.Leak / (r + b.Timing.Leak)
+	}
+	b.Timing.Leak = r
 }

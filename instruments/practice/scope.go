@@ -2,11 +2,11 @@ package practice
 
 import (
 	"context"
-	"encoding/binary"
 	"fmt"
 	"math/rand/v2"
 	"strconv"
 	"strings"
+	"sync/atomic"
 
 	"nightbench/instruments/practice/circuit"
 	"nightbench/instruments/scpi"
@@ -17,26 +17,38 @@ const (
 	scopeInputs   = 4
 	mostSamples   = 1_000_000
 	fewestSamples = 10
-	codesAScreen  = 250.0 // LOW at −125, UPP at +125
-	scopeGain     = 0.02  // limit of error
-	scopeOffset   = 0.01  // limit, as a share of the screen
-	scopeNoise    = 0.4   // rms, in codes
-	scopeAnswer   = 3e-3  // s
-	beforeTrigger = 0.1   // share of the record before the trigger
+	mostRate      = 1e9 // samples a second
+	scopeAnswer   = 3e-3
+	beforeTrigger = 0.1 // share of the record before the trigger
+	autoWait      = 0.1 // s without a trigger after which an automatic one comes
 )
+
+// Scope says in what practice scopes differ. The zero Scope keeps to the dialect.
+type Scope struct {
+	Bits      int     // of the converter: 8 (or 0) or 12
+	Bandwidth float64 // Hz; 0: 100 MHz
+	Form      Form    // how records and measurements are told; empty: Standard
+	Percent   bool    // duty is told in percent instead of as a ratio
+	NoValue   string  // what is told where there is nothing to measure; empty: 9.91E37, the standard's not-a-number
+	Tail      string  // behind a block; empty: NL
+}
 
 // scope is a digitising scope that keeps to the contract of the standard-scope dialect.
 type scope struct {
 	*scpi.Device
 	bench  *Bench
 	rng    *rand.Rand
+	kind   Scope
 	inputs [scopeInputs]input
+	slid   atomic.Bool // the probes' slides have been moved
+	loose  atomic.Bool // a clip has come off
 
 	points   int
 	duration float64
 	source   int // channel that triggers; 0: immediate
 	level    float64
 	falling  bool
+	auto     bool         // an automatic trigger where none comes
 	running  *acquisition // newest; nil before the first
 }
 
@@ -44,19 +56,22 @@ type scope struct {
 type input struct {
 	probe      circuit.Probe
 	wired      bool
+	fitted     float64 // the probe's own factor; 0: whatever the scope is told
 	low, high  float64
 	factor     float64
 	coupling   string
+	limited    bool    // 20 MHz
 	gain, zero float64 // −1 … 1 of the limits
 }
 
-func newScope(b *Bench, r *rand.Rand, channels []Channel) *scope {
-	s := &scope{Device: scpi.NewDevice("Nightbench,practice-scope,DS-1,1.0", 20), bench: b, rng: r}
+func newScope(b *Bench, r *rand.Rand, kind Scope, channels []Channel) *scope {
+	s := &scope{Device: scpi.NewDevice(kind.identity(), 20), bench: b, rng: r, kind: kind.withDefaults()}
 	for i := range s.inputs {
 		s.inputs[i].gain, s.inputs[i].zero = 2*r.Float64()-1, 2*r.Float64()-1
 	}
 	for _, c := range channels {
-		s.inputs[c.Number-1].probe, s.inputs[c.Number-1].wired = c.Probe, true
+		in := &s.inputs[c.Number-1]
+		in.probe, in.wired, in.fitted = c.Probe, true, c.Factor
 	}
 	s.Reset = s.reset
 	s.Pending = func() bool { return s.running != nil && !s.running.over() }
@@ -65,28 +80,62 @@ func newScope(b *Bench, r *rand.Rand, channels []Channel) *scope {
 	s.registerInputs()
 	s.registerSweep()
 	s.registerTrigger()
-	s.registerTrace()
+	s.registerForm()
+	s.registerMeasure()
 	return s
+}
+
+func (k Scope) withDefaults() Scope {
+	if k.Bits == 0 {
+		k.Bits = 8
+	}
+	if k.Bandwidth == 0 {
+		k.Bandwidth = 100e6
+	}
+	if k.Form == "" {
+		k.Form = Standard
+	}
+	if k.NoValue == "" {
+		k.NoValue = "9.91E37"
+	}
+	if k.Tail == "" {
+		k.Tail = "\n"
+	}
+	return k
+}
+
+// identity names the converter and the form too, since either needs a dialect of its own.
+func (k Scope) identity() string {
+	model := "practice-scope"
+	if k.Bits == 12 {
+		model = "practice-12-bit-scope"
+	}
+	if k.Form != "" && k.Form != Standard {
+		model = "practice-" + string(k.Form) + "-scope"
+	}
+	return "Nightbench," + model + ",DS-1,1.0"
 }
 
 func (s *scope) reset() {
 	s.abort()
 	s.running = nil
-	s.points, s.duration, s.source, s.level, s.falling = 1000, 10e-3, 0, 0, false
+	s.points, s.duration, s.source, s.level, s.falling, s.auto = 1000, 10e-3, 0, 0, false, false
 	for i := range s.inputs {
 		in := &s.inputs[i]
-		in.low, in.high, in.factor, in.coupling = -5, 5, 1, "DC"
+		in.low, in.high, in.factor, in.coupling, in.limited = -5, 5, 1, "DC", false
 	}
 }
 
 func (s *scope) instrument() *Instrument {
 	return &Instrument{
+		device: s.Device, again: s.reset, mains: s.power,
+		own: map[Kind]func() func(){LeadOff: toggle(&s.loose), ProbeTen: toggle(&s.slid)},
 		answer: func(ctx context.Context, message []byte) []byte {
 			if s.bench.world.clock.Sleep(ctx, seconds(scopeAnswer)) != nil {
 				return nil
 			}
 			s.waitFor(ctx, message)
-			return s.Execute(ctx, message)
+			return s.tail(s.Execute(ctx, message))
 		},
 		urgent: func(message []byte) bool {
 			if !scpi.MatchHeader("ABORt", strings.TrimSpace(string(message))) {
@@ -98,10 +147,24 @@ func (s *scope) instrument() *Instrument {
 	}
 }
 
-// waitFor holds back what arrives while a record is being taken, save what asks nothing of it.
+// toggle sets a switch, and takes it back.
+func toggle(b *atomic.Bool) func() func() {
+	return func() func() { b.Store(true); return func() { b.Store(false) } }
+}
+
+// power ends an acquisition when the mains goes.
+func (s *scope) power(on bool) {
+	if !on {
+		s.bench.abortScope()
+	}
+}
+
+// waitFor holds back what asks for a record while one is being taken.
 func (s *scope) waitFor(ctx context.Context, message []byte) {
-	if strings.Contains(strings.ToUpper(string(message)), "TRAC") {
-		if s.finish(ctx) != nil {
+	text := strings.ToUpper(string(message))
+	for _, word := range []string{"TRAC", "WAV", "CURV", "WF", "DATA", "MEAS"} {
+		if strings.Contains(text, word) {
+			_ = s.finish(ctx) // a bench that closes answers nothing
 			return
 		}
 	}
@@ -118,6 +181,8 @@ func (s *scope) registerInputs() {
 		func(c *scpi.Call, v float64) error { in(c).factor = v; return nil })
 	s.Set("INPut<1-4>:COUPling", func(c *scpi.Call) error { in(c).coupling = c.Word(0); return nil }, scpi.Choice{Words: []string{"DC", "AC", "GND"}})
 	s.Get("INPut<1-4>:COUPling", func(c *scpi.Call) (string, error) { return in(c).coupling, nil })
+	s.Set("INPut<1-4>:FILTer[:LPASs][:STATe]", func(c *scpi.Call) error { in(c).limited = c.Bool(0); return nil }, scpi.Boolean{})
+	s.Get("INPut<1-4>:FILTer[:LPASs][:STATe]", func(c *scpi.Call) (string, error) { return scpi.Bit(in(c).limited), nil })
 }
 
 func (s *scope) registerSweep() {
@@ -125,6 +190,7 @@ func (s *scope) registerSweep() {
 		func(*scpi.Call) float64 { return float64(s.points) }, func(_ *scpi.Call, v float64) error { s.points = int(v); return nil })
 	s.Value("SENSe:SWEep:TIME", scpi.Numeric{Unit: "S", Min: 1e-6, Max: 1000, Default: 10e-3},
 		func(*scpi.Call) float64 { return s.duration }, func(_ *scpi.Call, v float64) error { s.duration = v; return nil })
+	s.Get("SENSe:SWEep:TINTerval", func(*scpi.Call) (string, error) { return scpi.NR3(s.duration / float64(s.points)), nil })
 	s.Set("FORMat[:DATA]", func(c *scpi.Call) error {
 		if c.Number(1) != 16 {
 			return scpi.NewFault(scpi.IllegalParameter, "only INT,16")
@@ -163,32 +229,26 @@ func (s *scope) registerTrigger() {
 		}
 		return "POS", nil
 	})
+	s.Set("TRIGger:ATRigger[:STATe]", func(c *scpi.Call) error { s.auto = c.Bool(0); return nil }, scpi.Boolean{})
+	s.Get("TRIGger:ATRigger[:STATe]", func(*scpi.Call) (string, error) { return scpi.Bit(s.auto), nil })
+	s.Get("TRIGger:STATe", func(*scpi.Call) (string, error) { return s.state(), nil })
 	s.Set("INITiate[:IMMediate]", func(*scpi.Call) error { return s.start() })
 	s.Set("ABORt", func(*scpi.Call) error { s.abort(); return nil })
 }
 
-func (s *scope) registerTrace() {
-	channel := scpi.Choice{Words: []string{"CH1", "CH2", "CH3", "CH4"}}
-	s.Get("TRACe[:DATA]", func(c *scpi.Call) (string, error) {
-		codes, err := s.codes(c.Word(0))
-		if err != nil {
-			return "", err
-		}
-		data := make([]byte, 0, 2*len(codes))
-		for _, k := range codes {
-			data = binary.BigEndian.AppendUint16(data, uint16(k))
-		}
-		return scpi.FormatBlock(data), nil
-	}, channel)
-	s.Get("TRACe:PREamble", func(c *scpi.Call) (string, error) {
-		r, err := s.record()
-		if err != nil {
-			return "", err
-		}
-		in := r.inputs[c.Word(0)[2]-'1']
-		return strings.Join([]string{strconv.Itoa(r.points), scpi.NR3(r.interval), scpi.NR3(r.origin),
-			scpi.NR3((in.high - in.low) / codesAScreen), scpi.NR3((in.high + in.low) / 2)}, ","), nil
-	}, channel)
+// state is WAIT while a record is being taken, TD or AUTO when it was triggered or not, STOP without one.
+func (s *scope) state() string {
+	switch r := s.running; {
+	case r == nil:
+		return "STOP"
+	case !r.over():
+		return "WAIT"
+	case !r.have:
+		return "STOP"
+	case r.source > 0 && r.triggered:
+		return "TD"
+	}
+	return "AUTO"
 }
 
 // record is the last complete record.
@@ -197,41 +257,6 @@ func (s *scope) record() (*acquisition, error) {
 		return nil, scpi.NewFault(scpi.DataStale, "no record")
 	}
 	return s.running, nil
-}
-
-// codes are one channel's converter codes of the last record; digitised once, so that asking twice gives the same.
-func (s *scope) codes(word string) ([]int16, error) {
-	r, err := s.record()
-	if err != nil {
-		return nil, err
-	}
-	n := int(word[2] - '1')
-	if r.codes[n] == nil {
-		r.codes[n] = s.digitise(&r.inputs[n], r.y[n])
-	}
-	return r.codes[n], nil
-}
-
-// digitise turns volts at the tip into codes: errors of the channel, coupling, noise, steps, clipping.
-func (s *scope) digitise(in *input, y []float64) []int16 {
-	codes := make([]int16, len(y))
-	mean := 0.0
-	for _, v := range y {
-		mean += v / float64(len(y))
-	}
-	span, middle := in.high-in.low, (in.high+in.low)/2
-	for i, v := range y {
-		switch in.coupling {
-		case "AC":
-			v -= mean
-		case "GND":
-			v = 0
-		}
-		v = v*(1+in.gain*scopeGain) + in.zero*scopeOffset*span
-		k := quantise((v-middle)/span*codesAScreen+s.rng.NormFloat64()*scopeNoise, 1)
-		codes[i] = int16(min(max(k, -128), 127))
-	}
-	return codes
 }
 
 // start begins a new acquisition in a goroutine of the bench; the last record is gone.
@@ -244,12 +269,16 @@ func (s *scope) start() error {
 			return scpi.NewFault(scpi.SettingsConflict, fmt.Sprintf("SENS%d:VOLT:RANG", i+1))
 		}
 	}
+	interval := s.duration / float64(s.points)
+	if interval < 1/mostRate*(1-1e-9) {
+		return scpi.NewFault(scpi.SettingsConflict, "more than 1 GS/s: SENS:SWE")
+	}
 	ctx, cancel := context.WithCancel(s.bench.ctx)
-	a := &acquisition{cancel: cancel, done: make(chan struct{}), inputs: s.inputs, points: s.points, interval: s.duration / float64(s.points),
-		source: s.source, level: s.level, falling: s.falling}
+	a := &acquisition{cancel: cancel, done: make(chan struct{}), inputs: s.inputs, points: s.points, interval: interval,
+		source: s.source, level: s.level, falling: s.falling, auto: s.auto, see: s.see}
 	s.running = a
 	s.bench.onAbort(cancel)
-	s.bench.wg.Go(func() { defer close(a.done); defer cancel(); a.take(ctx, s.bench.world) })
+	s.bench.spawn(func() { defer close(a.done); defer cancel(); a.take(ctx, s.bench.world) })
 	return nil
 }
 

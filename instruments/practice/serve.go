@@ -2,19 +2,17 @@ package practice
 
 import (
 	"bytes"
-	"context"
 	"errors"
-	"fmt"
 	"io"
-	"net"
 	"os"
 	"time"
 
-	"github.com/creack/pty"
 	"golang.org/x/sys/unix"
+
+	"nightbench/instruments/scpi"
 )
 
-// mostMessage bounds a message; what is longer is thrown away up to its NL, as an instrument's input buffer would.
+// mostMessage bounds a message; what is longer is thrown away up to its NL and queues -363, as an instrument's input buffer would.
 const mostMessage = 4096
 
 // patience is how long a reply waits for a client that does not read, wall time.
@@ -22,31 +20,38 @@ const patience = 2 * time.Second
 
 // Serve speaks on a stream until it ends or the bench is closed. It returns at once.
 func (i *Instrument) Serve(stream io.ReadWriteCloser) {
-	i.bench.keep(stream)
+	forget := i.bench.keep(stream)
 	messages := make(chan []byte, 64)
-	i.bench.wg.Go(func() {
+	i.bench.spawn(func() {
 		defer close(messages)
 		i.listen(stream, messages)
 	})
-	i.bench.wg.Go(func() {
+	i.bench.spawn(func() {
+		defer forget()
 		for m := range messages {
-			reply := i.answer(i.bench.ctx, m)
-			if len(reply) > 0 && i.bench.ctx.Err() == nil {
-				write(stream, reply)
-			}
+			i.hear(stream, m)
 		}
 	})
 }
 
-// keep remembers what has to be closed; a bench that is closed already closes it at once.
-func (b *Bench) keep(c io.Closer) {
+// keep remembers what has to be closed; a bench that is closed already closes it at
+// once. What has been closed is forgotten, so that clients may come and go all night.
+func (b *Bench) keep(c io.Closer) (forget func()) {
 	b.mu.Lock()
 	defer b.mu.Unlock()
 	if b.ctx.Err() != nil {
 		c.Close()
-		return
+		return func() {}
 	}
-	b.open = append(b.open, c)
+	b.open[c] = true
+	return func() {
+		b.mu.Lock()
+		defer b.mu.Unlock()
+		if b.open[c] {
+			delete(b.open, c)
+			c.Close() // its client has gone, or it has been told what to know
+		}
+	}
 }
 
 // listen cuts the stream into messages by NL. Urgent ones are obeyed here, past those that wait.
@@ -64,7 +69,7 @@ func (i *Instrument) listen(stream io.Reader, messages chan<- []byte) {
 			}
 			m := bytes.Clone(line)
 			line = line[:0]
-			if len(m) > mostMessage || i.urgent != nil && i.urgent(m) {
+			if !i.dead.Load() && i.urgent != nil && i.urgent(m) {
 				continue
 			}
 			select {
@@ -79,6 +84,68 @@ func (i *Instrument) listen(stream io.Reader, messages chan<- []byte) {
 	}
 }
 
+// hear carries one message out and sends what comes of it, through the faults of the wire.
+func (i *Instrument) hear(stream io.Writer, m []byte) {
+	if i.dead.Load() {
+		return // no mains: nobody hears it
+	}
+	echo, others := i.bench.heard(i.Name)
+	if echo {
+		write(stream, append(bytes.Clone(m), '\n'))
+	}
+	for _, says := range others {
+		i.reply(stream, i.say([]byte(says)))
+	}
+	i.reply(stream, i.say(m))
+}
+
+// say carries one message out when it is the instrument's turn: what came in turn first, then the message.
+func (i *Instrument) say(m []byte) []byte {
+	select {
+	case i.turn <- struct{}{}:
+	case <-i.bench.ctx.Done():
+		return nil
+	}
+	defer func() { <-i.turn }()
+	i.catchUp()
+	if len(m) > mostMessage {
+		i.device.Push(scpi.NewFault(scpi.InputOverrun, ""))
+		return nil
+	}
+	return i.answer(i.bench.ctx, m)
+}
+
+// inTurn has f done before the next message is carried out.
+func (i *Instrument) inTurn(f func()) {
+	i.mu.Lock()
+	defer i.mu.Unlock()
+	i.due = append(i.due, f)
+}
+
+func (i *Instrument) catchUp() {
+	i.mu.Lock()
+	due := i.due
+	i.due = nil
+	i.mu.Unlock()
+	for _, f := range due {
+		f()
+	}
+}
+
+// reply sends a reply as the faults of the wire leave it.
+func (i *Instrument) reply(stream io.Writer, reply []byte) {
+	if len(reply) == 0 || i.bench.ctx.Err() != nil {
+		return
+	}
+	s := i.bench.spoil(i.Name, reply)
+	if s.wait > 0 && i.bench.world.clock.Wait(i.bench.ctx, s.wait) != nil {
+		return
+	}
+	if len(s.out) > 0 && !i.dead.Load() {
+		write(stream, s.out)
+	}
+}
+
 // write sends a reply; a client that does not read loses it, as a serial line would.
 func write(stream io.Writer, reply []byte) {
 	type deadliner interface{ SetWriteDeadline(time.Time) error }
@@ -90,25 +157,6 @@ func write(stream io.Writer, reply []byte) {
 	if _, err := stream.Write(reply); err != nil && !errors.Is(err, os.ErrDeadlineExceeded) {
 		return // the stream is over; listen notices
 	}
-}
-
-// ServePTY opens a pseudo-terminal, raw, and serves the instrument on it. The
-// address is that of the side a client opens.
-func (i *Instrument) ServePTY() (address string, err error) {
-	master, slave, err := pty.Open()
-	if err != nil {
-		return "", fmt.Errorf("practice %s: no pseudo-terminal: %w", i.Name, err)
-	}
-	err = raw(slave)
-	if err == nil {
-		master, err = interruptible(master)
-	}
-	if err != nil {
-		return "", errors.Join(fmt.Errorf("practice %s: %w", i.Name, err), master.Close(), slave.Close())
-	}
-	i.bench.keep(slave) // held open, so that a client may come and go
-	i.Serve(master)
-	return "serial://" + slave.Name(), nil
 }
 
 // interruptible gives the same file, where closing ends a read that waits even
@@ -135,23 +183,4 @@ func raw(f *os.File) error {
 	t.Lflag &^= unix.ECHO | unix.ECHONL | unix.ICANON | unix.ISIG | unix.IEXTEN
 	t.Cflag = t.Cflag&^(unix.CSIZE|unix.PARENB) | unix.CS8
 	return unix.IoctlSetTermios(int(f.Fd()), unix.TCSETS, t)
-}
-
-// ServeTCP listens on a loopback address and serves the instrument to one client after the other.
-func (i *Instrument) ServeTCP(ctx context.Context, listen string) (address string, err error) {
-	l, err := (&net.ListenConfig{}).Listen(ctx, "tcp", listen)
-	if err != nil {
-		return "", fmt.Errorf("practice %s: %w", i.Name, err)
-	}
-	i.bench.keep(l)
-	i.bench.wg.Go(func() {
-		for {
-			conn, err := l.Accept()
-			if err != nil {
-				return
-			}
-			i.Serve(conn)
-		}
-	})
-	return "tcp://" + l.Addr().String(), nil
 }

@@ -4,6 +4,7 @@ import (
 	"context"
 	"math"
 	"math/rand/v2"
+	"slices"
 	"sync"
 	"time"
 
@@ -19,6 +20,14 @@ type world struct {
 	mu    sync.Mutex
 	sim   *circuit.Sim
 	after func() // looks at what the advance brought: protections; may be nil
+	ticks []*tick
+}
+
+// tick is something due at an instant of bench time, whoever advances the board over it.
+type tick struct {
+	at    float64 // s; +Inf: not due
+	every float64 // s to the next one; 0: once
+	do    func(*circuit.Sim)
 }
 
 // now is bench time in s.
@@ -32,12 +41,57 @@ func (w *world) do(f func(s *circuit.Sim)) {
 	f(w.sim)
 }
 
+// advance takes the board to an instant, and on the way does what falls due.
 func (w *world) advance(until float64) {
+	for {
+		t := w.next(until)
+		if t == nil {
+			break
+		}
+		w.sim.Advance(t.at)
+		if t.at += t.every; t.every == 0 {
+			t.at = math.Inf(1)
+		}
+		t.do(w.sim)
+	}
 	w.sim.Advance(until)
 	if w.after != nil {
 		w.after()
 	}
 }
+
+// next is the earliest tick due until then; nil where there is none.
+func (w *world) next(until float64) (first *tick) {
+	for _, t := range w.ticks {
+		if t.at <= until && (first == nil || t.at < first.at) {
+			first = t
+		}
+	}
+	return first
+}
+
+// timer adds a tick that is not due yet; whoever sets its at holds the world's lock.
+func (w *world) timer(do func(*circuit.Sim)) *tick {
+	t := &tick{at: math.Inf(1), do: do}
+	w.mu.Lock()
+	defer w.mu.Unlock()
+	w.ticks = append(w.ticks, t)
+	return t
+}
+
+// every does something each period (s) from now on, until it is stopped.
+func (w *world) every(period float64, do func(*circuit.Sim)) (stop func()) {
+	t := w.timer(do)
+	w.do(func(s *circuit.Sim) { t.every, t.at = period, s.Now()+period })
+	return func() {
+		w.mu.Lock()
+		defer w.mu.Unlock()
+		w.ticks = slices.DeleteFunc(w.ticks, func(o *tick) bool { return o == t })
+	}
+}
+
+// wall is bench time that a time on the wall takes, s: what guards a link is not sped up.
+func (w *world) wall(s float64) float64 { return s * w.clock.Pace() }
 
 // mean integrates a probe over an aperture (s) that begins now, waits for its end and gives the result.
 func (w *world) mean(ctx context.Context, p circuit.Probe, aperture float64) (*circuit.Mean, error) {

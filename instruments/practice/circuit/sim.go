@@ -216,6 +216,15 @@ func (s *Sim) Board() Board { return s.b }
 // High tells whether the timer's output is high.
 func (s *Sim) High() bool { return s.high }
 
+// Winding is the load's resistance at its present temperature, ohm; what an
+// ohmmeter across it reads while the board has no power.
+func (s *Sim) Winding() float64 {
+	if s.b.Load.Kind == Motor {
+		return s.winding()
+	}
+	return s.b.Load.Resistance
+}
+
 // Limiting tells whether the supply holds its current rather than its voltage.
 func (s *Sim) Limiting() bool { return s.enabled && s.region == current }
 
