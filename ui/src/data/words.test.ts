@@ -63,6 +63,7 @@ test("a point in words; the supply is said where it changes", () => {
 test("the headline counts repeats where the run does not say them itself", () => {
   expect(plain(doingNow({ ...base, doing: "Measuring at 9 V, 21.6 k", repeat: 3, repeats: 8 }))).toBe("Measuring at 9 V, 21.6 k; 3 of 8 repeats");
   expect(plain(doingNow({ ...base, doing: "Settling at 9 V, 21.6 k", repeat: 0, repeats: 8 }))).toBe("Settling at 9 V, 21.6 k");
+  expect(doingNow({ ...base, doing: "", repeat: 0, state: "making_safe" })).toBe("Making safe");
   expect(doingNow({ ...base, doing: "2 of 8 repeats", repeat: 2, repeats: 8 })).toBe("2 of 8 repeats");
 });
 

@@ -147,7 +147,7 @@ export function flagsOf(p: Point): (Flag & { on: string[] })[] {
 /** What the run does this minute, with the repeats done where they are counted. */
 export function doingNow(v: Vitals): string {
   const repeats = v.repeat > 0 && v.repeats > 1 && !v.doing.includes("repeat") ? `; ${v.repeat} of ${v.repeats} repeats` : "";
-  return bound((v.doing || "Preparing") + repeats);
+  return bound((v.doing || sentenceCase(named(v.state ?? "preparing"))) + repeats);
 }
 
 /** "9 V, 18 k: 6.21(6) V, duty 0.353(2). Good."; the supply is left out where the line before has it. A flagged point ends "flagged ". */
