@@ -3,7 +3,7 @@ package app
 import (
 	"errors"
 	"fmt"
-	"slices"
+	"math"
 
 	"nightbench/instruments"
 	"nightbench/instruments/si"
@@ -54,24 +54,40 @@ func (p *predictor) At(supply, pot float64) (map[sweeps.Quantity]sweeps.Predicti
 	return p.ensemble.At(p.setting(supply, pot))
 }
 
-// Curves predicts along the pot for each supply voltage of the order.
+// curvePoints draw a curve that looks smooth on the page.
+const curvePoints = 49
+
+// Curves predicts along the pot for each supply voltage of the order: from the
+// least to the largest resistance visited there, evenly in the logarithm.
 func (p *predictor) Curves(order []sweeps.Setpoint) []sweeps.Curve {
 	var supplies []float64
-	pots := map[float64][]float64{}
+	ends := map[float64][2]float64{}
 	for _, s := range order {
-		if !slices.Contains(supplies, s.Supply) {
+		e, seen := ends[s.Supply]
+		if !seen {
 			supplies = append(supplies, s.Supply)
+			e = [2]float64{s.Pot, s.Pot}
 		}
-		if !slices.Contains(pots[s.Supply], s.Pot) {
-			pots[s.Supply] = append(pots[s.Supply], s.Pot)
-		}
+		ends[s.Supply] = [2]float64{min(e[0], s.Pot), max(e[1], s.Pot)}
 	}
 	var curves []sweeps.Curve
 	for _, v := range supplies {
-		slices.Sort(pots[v])
-		curves = append(curves, p.ensemble.CurveAt(p.setting(v, 0), pots[v]))
+		curves = append(curves, p.ensemble.CurveAt(p.setting(v, 0), spread(ends[v][0], ends[v][1])))
 	}
 	return curves
+}
+
+// spread are resistances from low to high, evenly in the logarithm; one where there is no span.
+func spread(low, high float64) []float64 {
+	if !(low > 0) || high <= low {
+		return []float64{low}
+	}
+	all := make([]float64, curvePoints)
+	for i := range all {
+		all[i] = low * math.Pow(high/low, float64(i)/(curvePoints-1))
+	}
+	all[curvePoints-1] = high
+	return all
 }
 
 // Tau is the motor's mechanical time constant, s; 0 for a resistor.

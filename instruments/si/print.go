@@ -104,12 +104,12 @@ func FormatRange(low, high float64, u Unit) string {
 	return one(low) + " to " + one(high) + suffix(p, u)
 }
 
-// Short prints a resistance as people write it in a sentence, figures and prefix only: "22 k", "470".
+// Short prints a resistance as people write it in a sentence, figures and prefix: "22 k"; a unit only where there is no prefix: "470 Ω".
 func Short(ohms float64) string {
 	p, f := prefixFor(ohms, Ohm)
 	s := tidy(strconv.FormatFloat(round(ohms/f, 3), 'f', -1, 64))
 	if p == "" {
-		return s
+		return s + nbsp + string(Ohm)
 	}
 	return s + nbsp + p
 }
