@@ -26,11 +26,46 @@ import (
 	"nightbench/instruments/practice/circuit"
 	"nightbench/instruments/si"
 	"nightbench/sweeps"
-	"nightbench/sweeps/example"
 	"nightbench/sweeps/predict"
 	"nightbench/sweeps/runner"
 	"nightbench/sweeps/schedule"
 )
+
+// boardFile is the dosing pump driver, revision B, as its schematic has it; its capacitor (nF) is put in.
+const boardFile = `
+[board]
+name = "Dosing pump driver"
+revision = "B"
+rated_supply = ["7 V", "12 V"]
+
+[timer]
+part = "bipolar"
+
+[timing]
+network = "steered"
+charge = "10k 1%%"
+discharge = "pot"                       # the bench's pot stands here
+stop = "470 1%%"                         # in series with the pot: bounds the current through its wiper
+capacitor = "%gn 5%%"                    # film
+charge_diode = "1N4148"
+discharge_diode = "1N4148"
+
+[driver]
+stage = "nmos"
+part = { rds_on = 0.05, vgs_th = 1.5 }  # a logic-level MOSFET, ohms and volts
+gate_resistor = "100 5%%"
+flyback = "1N5819"
+
+[load]
+kind = "motor"
+resistance = "12 10%%"
+inductance = "5 mH 20%%"
+torque_constant = "8 mV s/rad"
+static_torque = "0.6 mN m"
+coulomb_torque = "0.4 mN m"
+viscous_torque = "0.2 uN m s"
+inertia = "5 g cm2"                     # with the pump's rotor: the speed hardly ripples
+`
 
 // A night is a run in a bubble: practice instruments behind pipes, the real
 // drivers, a real journal, and a clock that jumps. Bench and wall time are the
@@ -45,19 +80,20 @@ type night struct {
 	supply   *record           // the practice supply's own log
 	mark     *spyMark
 	log      *record
+	lie      atomic.Pointer[func(*instruments.SupplyState)] // about the supply's state while it is on
+	board    string                                         // the board file that goes with the true board
 	options  runner.Options
 	run      *runner.Runner
 	last     context.Context
 	giveUp   context.CancelFunc
 }
 
-// pump is the true board of the example, every part at its nominal value
-// (sweeps/example/pump-driver-b.toml; the timer as in the built-in catalogue's figures, rounded).
+// pump is the true board, every part at its nominal value (the timer as in the built-in catalogue's figures, rounded).
 // light is the pump on a clock instead of a timer: a tenth of the computing, for
 // what does not depend on how the duty comes about.
 func light() circuit.Board {
 	b := pump()
-	b.Timing = circuit.Timing{Network: circuit.Clocked, Period: 2e-3, Duty: 0.4}
+	b.Timing = circuit.Timing{Network: circuit.Clocked, Period: 6e-3, Duty: 0.4, Capacitance: 100e-9} // the capacitance goes into the board file only
 	return b
 }
 
@@ -79,23 +115,24 @@ func pump() circuit.Board {
 	}
 }
 
-// inNight runs f in a bubble. Leaving it fails when a goroutine is left behind.
-func inNight(t *testing.T, plan string, f func(n *night)) {
+// onBoard runs f in a bubble. Leaving it fails when a goroutine is left behind.
+func onBoard(t *testing.T, b circuit.Board, plan string, f func(n *night)) {
 	t.Helper()
 	synctest.Test(t, func(t *testing.T) {
 		n := &night{T: t, clock: instruments.NewClock(1), cables: map[string]*cable{}, supply: &record{}, log: &record{}}
-		n.wire()
+		n.board = fmt.Sprintf(boardFile, b.Timing.Capacitance*1e9)
+		n.wire(b)
 		n.open(plan)
 		f(n)
 	})
 }
 
 // wire builds the practice bench and opens it through the real drivers over pipes.
-func (n *night) wire() {
+func (n *night) wire(b circuit.Board) {
 	n.Helper()
 	var err error
 	n.practice, err = practice.New(practice.Config{
-		Board: light(), Clock: n.clock, Seed: 7, SupplyLog: n.supply,
+		Board: b, Clock: n.clock, Seed: 7, SupplyLog: n.supply,
 		Pot: practice.Pot{Codes: 257, Track: 100e3, Wiper: 75, Start: 128},
 		Meters: []practice.Meter{
 			{Name: "average", Probe: circuit.Between(circuit.LoadHi, circuit.LoadLo), Unit: si.Volt},
@@ -105,7 +142,7 @@ func (n *night) wire() {
 	})
 	n.must(err)
 	n.Cleanup(func() { n.practice.Close() })
-	lines := strings.Split(example.Text(example.Bench), "\n")
+	lines := strings.Split(benchFile, "\n")
 	port := 0
 	for i, l := range lines {
 		switch {
@@ -147,7 +184,7 @@ func (n *night) open(text string) {
 	n.store, err = store.Open(n.Context(), filepath.Join(dir, "nightbench.db"), n.clock)
 	n.must(err)
 	n.Cleanup(func() { n.must(n.store.Close(context.Background())) })
-	plan, board, err := sweeps.ParseFiles(sweeps.File{Name: "plan.toml", Text: text}, sweeps.File{Name: "board.toml", Text: example.Text(example.BoardPump)})
+	plan, board, err := sweeps.ParseFiles(sweeps.File{Name: "plan.toml", Text: text}, sweeps.File{Name: "board.toml", Text: n.board})
 	n.must(err)
 	w := n.opened.Bench.Wiring
 	n.must(sweeps.CheckPlan(plan, board, &w))
@@ -158,6 +195,15 @@ func (n *night) open(text string) {
 	run, err := n.store.CreateRun(n.Context(), sweeps.Run{State: sweeps.Preparing, StartedAt: n.clock.Now(), Plan: plan.Name, Planned: len(order), Pace: 1, Quantities: plan.Measure.Quantities})
 	n.must(err)
 	n.mark = &spyMark{night: n}
+	through := &supply{Supply: n.opened.Bench.Supply}
+	through.state = func(ctx context.Context) (instruments.SupplyState, error) {
+		s, err := through.Supply.State(ctx)
+		if lie := n.lie.Load(); lie != nil && s.Output {
+			(*lie)(&s)
+		}
+		return s, err
+	}
+	n.opened.Bench.Supply = through
 	n.last, n.giveUp = context.WithCancel(context.Background())
 	n.Cleanup(n.giveUp)
 	n.options = runner.Options{

@@ -90,6 +90,9 @@ func (s *settling) drift(span float64) (drift, se, mean float64, ok bool) {
 		return 0, 0, 0, false
 	}
 	at, value := s.at[first:], s.value[first:]
+	if !(at[len(at)-1] > at[0]) {
+		return 0, 0, 0, false
+	}
 	n := float64(len(at))
 	var mt, mv, stt, stv, svv float64
 	for i := range at {
@@ -101,9 +104,6 @@ func (s *settling) drift(span float64) (drift, se, mean float64, ok bool) {
 		stt += dt * dt
 		stv += dt * dv
 		svv += dv * dv
-	}
-	if stt == 0 {
-		return 0, 0, 0, false
 	}
 	slope := stv / stt
 	rest := math.Max(svv-slope*stv, 0)

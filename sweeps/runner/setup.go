@@ -71,7 +71,8 @@ func (r *Runner) setUpMeasuring(ctx context.Context, at sweeps.Setpoint) error {
 		default:
 			s.Range = headroom * at.Supply
 		}
-		if _, err := m.Configure(ctx, s); err != nil {
+		err := r.again(ctx, 0, func(ctx context.Context) error { _, err := m.Configure(ctx, s); return err })
+		if err != nil {
 			return fmt.Errorf("meter %q: %w", r.o.Bench.Wiring.Meters[i].Name, err)
 		}
 	}
@@ -92,7 +93,8 @@ func (r *Runner) setUpScope(ctx context.Context, at sweeps.Setpoint, e expected)
 	if len(w.Channels) > 0 {
 		s.Trigger = instruments.ScopeTrigger{Channel: w.Channels[0].Number, Level: at.Supply / 2}
 	}
-	if _, err := r.o.Bench.Scope.Configure(ctx, s); err != nil {
+	err := r.again(ctx, 0, func(ctx context.Context) error { _, err := r.o.Bench.Scope.Configure(ctx, s); return err })
+	if err != nil {
 		return fmt.Errorf("scope: %w", err)
 	}
 	return nil
