@@ -2,6 +2,7 @@ package scpi
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"strconv"
 	"time"
@@ -18,11 +19,22 @@ const blockQuiet = 20 * time.Millisecond
 // the bytes may come NL, CR NL, two NL or nothing; anything else means that
 // the count was wrong, and the block is not used.
 func (c *Conn) QueryBlock(ctx context.Context, query string, most int) (block []byte, err error) {
+	return c.QueryBlockAs(ctx, query, BlockForm{Lead: c.opt.BlockLead}, most)
+}
+
+// BlockForm says what stands around a block.
+type BlockForm struct {
+	Lead string // text that may stand before the #
+	Tail string // what has to come after the bytes: "\n", "\n\n"; empty: terminators or nothing
+}
+
+// QueryBlockAs is QueryBlock for a block in a form of its own.
+func (c *Conn) QueryBlockAs(ctx context.Context, query string, form BlockForm, most int) (block []byte, err error) {
 	if err := checkMessage(query, true); err != nil {
 		return nil, err
 	}
 	err = c.exchange(ctx, query, func(t *link.Turn) (string, error) {
-		block, err = c.readBlock(ctx, t, most)
+		block, err = c.readBlock(ctx, t, form, most)
 		return fmt.Sprintf("block of %d bytes", len(block)), err
 	})
 	if err != nil {
@@ -31,8 +43,8 @@ func (c *Conn) QueryBlock(ctx context.Context, query string, most int) (block []
 	return block, nil
 }
 
-func (t *talk) readBlock(ctx context.Context, turn *link.Turn, most int) ([]byte, error) {
-	count, err := t.readCount(ctx, turn)
+func (t *talk) readBlock(ctx context.Context, turn *link.Turn, form BlockForm, most int) ([]byte, error) {
+	count, err := t.readCount(ctx, turn, form.Lead)
 	switch {
 	case err != nil:
 		return nil, err
@@ -43,6 +55,9 @@ func (t *talk) readBlock(ctx context.Context, turn *link.Turn, most int) ([]byte
 	if err != nil {
 		return nil, fmt.Errorf("%w: block cut short, got %d of %d bytes: %w", ErrFraming, len(block), count, err)
 	}
+	if tail, err := turn.ReadFull(ctx, len(form.Tail)); err != nil || string(tail) != form.Tail {
+		return block, errors.Join(fmt.Errorf("%w: %q came after the %d bytes announced, and %q has to", ErrFraming, tail, count, form.Tail), err)
+	}
 	more, err := turn.Listen(ctx, blockQuiet)
 	if err == nil && len(more) > 0 {
 		err = fmt.Errorf("%w: %q came after the %d bytes announced", ErrFraming, clip(more), count)
@@ -52,8 +67,8 @@ func (t *talk) readBlock(ctx context.Context, turn *link.Turn, most int) ([]byte
 
 // readCount reads the head of a block: the lead of this family, #, one digit
 // n, and n digits.
-func (t *talk) readCount(ctx context.Context, turn *link.Turn) (int, error) {
-	if err := t.readLead(ctx, turn); err != nil {
+func (t *talk) readCount(ctx context.Context, turn *link.Turn, lead string) (int, error) {
+	if err := t.readLead(ctx, turn, lead); err != nil {
 		return 0, err
 	}
 	n, err := turn.ReadFull(ctx, 1)
@@ -78,7 +93,7 @@ func (t *talk) readCount(ctx context.Context, turn *link.Turn) (int, error) {
 
 // readLead reads up to the first #. Terminators left by the reply before may
 // stand at the very start.
-func (t *talk) readLead(ctx context.Context, turn *link.Turn) error {
+func (t *talk) readLead(ctx context.Context, turn *link.Turn, want string) error {
 	lead := []byte{}
 	for {
 		if len(lead) == 0 {
@@ -88,14 +103,14 @@ func (t *talk) readLead(ctx context.Context, turn *link.Turn) error {
 		switch {
 		case err != nil:
 			return err
-		case b[0] == '#' && (len(lead) == 0 || string(lead) == t.opt.BlockLead):
+		case b[0] == '#' && (len(lead) == 0 || string(lead) == want):
 			return nil
 		case len(lead) == 0 && (b[0] == '\n' || b[0] == '\r'):
 			continue
 		}
 		lead = append(lead, b[0])
-		if len(lead) > len(t.opt.BlockLead) || string(lead) != t.opt.BlockLead[:len(lead)] {
-			return fmt.Errorf("%w: a block must begin with %q, %q came", ErrFraming, t.opt.BlockLead+"#", lead)
+		if len(lead) > len(want) || string(lead) != want[:len(lead)] {
+			return fmt.Errorf("%w: a block must begin with %q, %q came", ErrFraming, want+"#", lead)
 		}
 	}
 }

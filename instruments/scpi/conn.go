@@ -24,6 +24,7 @@ import (
 type Conn struct {
 	*talk
 	timeout time.Duration
+	rest    time.Duration
 }
 
 // talk is what the handles of one connection share. Fields below link belong
@@ -32,11 +33,12 @@ type talk struct {
 	link *link.Link
 	opt  Options
 
-	doubts   atomic.Int64 // how often step was put in doubt since it was proven
-	identity string       // the remembered reply to the identity query
-	unsure   int          // markers sent by the longest proof that failed
-	last     time.Time    // end of the latest exchange, for the gap
-	strays   string       // waiting before the question in hand
+	doubts   atomic.Int64  // how often step was put in doubt since it was proven
+	identity string        // the remembered reply to the identity query
+	unsure   int           // markers sent by the longest proof that failed
+	last     time.Time     // end of the latest exchange, for the gap
+	rest     time.Duration // what the latest exchange wants after it, beyond the gap
+	strays   string        // waiting before the question in hand
 }
 
 // New makes a connection over a link, which stays the caller's to close.
@@ -48,7 +50,14 @@ func New(l *link.Link, opt Options) *Conn {
 
 // Within is the same connection with another time-out for a reply: long
 // enough for a slow reading, say.
-func (c *Conn) Within(d time.Duration) *Conn { return &Conn{talk: c.talk, timeout: d} }
+func (c *Conn) Within(d time.Duration) *Conn { return &Conn{talk: c.talk, timeout: d, rest: c.rest} }
+
+// Resting is the same connection for exchanges after which the instrument
+// needs at least d before it listens again: a reset, an output that comes on.
+// Whoever speaks next, on any handle, waits; Blind does not.
+func (c *Conn) Resting(d time.Duration) *Conn {
+	return &Conn{talk: c.talk, timeout: c.timeout, rest: d}
+}
 
 // InStep says whether replies are known to belong to their questions.
 func (c *Conn) InStep() bool { return c.doubts.Load() == 0 }
@@ -178,6 +187,7 @@ func (c *Conn) exchange(ctx context.Context, message string, read func(*link.Tur
 		c.doubt()
 	}
 	c.end(e)
+	c.talk.rest = c.rest
 	return c.wrap(message, e.Err)
 }
 
@@ -214,13 +224,14 @@ func (t *talk) echo(ctx context.Context, turn *link.Turn, message string) error 
 	return err
 }
 
-// wait keeps the instrument's gap.
+// wait keeps the instrument's gap, or the longer rest after what was said last.
 func (t *talk) wait(ctx context.Context) error {
-	d := t.opt.Gap - t.opt.Now().Sub(t.last)
-	if t.opt.Gap <= 0 || d <= 0 {
+	gap := max(t.opt.Gap, t.rest)
+	d := gap - t.opt.Now().Sub(t.last)
+	if gap <= 0 || d <= 0 {
 		return nil
 	}
-	timer := time.NewTimer(min(d, t.opt.Gap))
+	timer := time.NewTimer(min(d, gap))
 	defer timer.Stop()
 	select {
 	case <-timer.C:
@@ -232,7 +243,7 @@ func (t *talk) wait(ctx context.Context) error {
 
 // end closes the books on one exchange.
 func (t *talk) end(e Exchange) {
-	t.last, t.strays = t.opt.Now(), ""
+	t.last, t.rest, t.strays = t.opt.Now(), 0, ""
 	t.report(e)
 }
 

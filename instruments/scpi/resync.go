@@ -157,7 +157,18 @@ func (t *talk) ask(ctx context.Context, turn *link.Turn, query string) (string, 
 		e.Reply, e.Err = turn.ReadLine(ctx)
 	}
 	t.end(e)
-	return e.Reply, e.Err
+	return bare(query, e.Reply), e.Err
+}
+
+// bare drops a response header, which some instruments send until they are
+// told not to: *OPC 1 for *OPC? (Siglent SDS1104X-E Programming Guide p. 84).
+// Then the same instrument is recognised with headers on and off.
+func bare(query, reply string) string {
+	header, ok := strings.CutSuffix(query, "?")
+	if rest, found := strings.CutPrefix(reply, header+" "); ok && found {
+		return strings.TrimSpace(rest)
+	}
+	return reply
 }
 
 func isLetter(r rune) bool { return r >= 'A' && r <= 'Z' || r >= 'a' && r <= 'z' }
