@@ -2,8 +2,11 @@ package predict
 
 import (
 	"math"
+	"os/exec"
 	"testing"
 	"time"
+
+	"nightbench/sweeps"
 )
 
 // The promises of speed are ratios within one run: a setpoint against math.Exp,
@@ -85,4 +88,29 @@ func BenchmarkSolve(b *testing.B) {
 		}) / 200
 	}
 	b.ReportMetric(float64(d.Nanoseconds()), "ns/solve")
+}
+
+// BenchmarkAgainstSimulator compares a setpoint with a transient simulation of the
+// same steered board, timing alone and to a step of a thousandth of the shorter phase.
+func BenchmarkAgainstSimulator(b *testing.B) {
+	if _, err := exec.LookPath("ngspice"); err != nil {
+		b.Skip("ngspice is not installed")
+	}
+	m := mustNew(b, pump(), Options{})
+	s := Setting{Supply: 9, Pot: 10e3, Temperature: Reference}
+	v := mustAt(b, m, s)
+	point := fastest(50, func() {
+		for range 200 {
+			r, _ := m.At(s)
+			sink += r.Values["duty"]
+		}
+	}) / 200
+	var simulated time.Duration
+	for b.Loop() {
+		d := &deck{stop: 3 * v[sweeps.Period], step: min(v[sweeps.THigh], v[sweeps.TLow]) / 1000, temperature: Reference}
+		spiceTiming(d, m, s)
+		simulated = fastest(3, func() { d.simulate(b, "v(h)") })
+	}
+	b.ReportMetric(simulated.Seconds(), "s/simulation")
+	b.ReportMetric(float64(simulated)/float64(point), "setpoints/simulation")
 }

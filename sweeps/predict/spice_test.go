@@ -48,7 +48,7 @@ var manners = []struct {
 }
 
 // simulate runs the deck and reads the vectors back.
-func (d *deck) simulate(t *testing.T, vectors ...string) trace {
+func (d *deck) simulate(t testing.TB, vectors ...string) trace {
 	t.Helper()
 	for _, way := range manners {
 		tr := d.run(t, way.options, d.step*way.step, vectors)
@@ -60,7 +60,7 @@ func (d *deck) simulate(t *testing.T, vectors ...string) trace {
 	return trace{}
 }
 
-func (d *deck) run(t *testing.T, options string, step float64, vectors []string) trace {
+func (d *deck) run(t testing.TB, options string, step float64, vectors []string) trace {
 	t.Helper()
 	dir := t.TempDir()
 	out := filepath.Join(dir, "out.txt")
@@ -85,7 +85,7 @@ quit
 	return readTrace(t, out, vectors)
 }
 
-func readTrace(t *testing.T, path string, vectors []string) trace {
+func readTrace(t testing.TB, path string, vectors []string) trace {
 	t.Helper()
 	f, err := os.Open(path)
 	if err != nil {
