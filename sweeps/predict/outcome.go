@@ -43,7 +43,7 @@ const (
 
 // Quantities lists what is predicted, in a fixed order. Levels, duty and times are
 // the timer output's (pin 3 to common); average_voltage and output_drop are the load's
-// own terminals'; motor_current is the load's whatever it is; output_current is
+// own terminals', the first unless Options.Average has it elsewhere; motor_current is the load's whatever it is; output_current is
 // what pin 3 delivers (or sinks, for a load to the supply), averaged over the period.
 func Quantities() []sweeps.Quantity { return append([]sweeps.Quantity(nil), predicted[:]...) }
 
@@ -89,7 +89,7 @@ func (o *outcome) loadRow(r *row) {
 		return
 	}
 	on := &o.wave.spells[driven]
-	r[qAverageVoltage] = o.wave.voltage()
+	r[qAverageVoltage] = o.average
 	if on.t > 0 && o.isOn {
 		r[qOutputDrop] = o.supply - on.volts/on.t
 	}

@@ -14,6 +14,7 @@ import (
 	"math"
 	"slices"
 
+	"nightbench/instruments"
 	"nightbench/instruments/si"
 	"nightbench/sweeps"
 	"nightbench/sweeps/internal/numeric"
@@ -25,16 +26,17 @@ const Reference = 27.0
 // Options are what a prediction needs besides the board. The zero value will do
 // for a board whose pot is exact.
 type Options struct {
-	Parts            fs.FS            // the user's own catalogue, *.toml at its root; nil: none
-	Catalogue        *Catalogue       // already read; nil: built-in and Parts
-	PotTolerance     float64          // relative half-width of the bench's pot; 0 where its ohms were measured
-	WiperResistance  float64          // Ω, network wiper
-	Track            si.TolResistance // end to end, network wiper with the bench's pot
-	PotMaxCurrent    float64          // A through the wiper; 0: unknown
-	PotMaxVoltage    float64          // V at any pot terminal; 0: unknown
-	MotorMaxCurrent  float64          // A, continuous; 0: unknown
-	MotorMaxPower    float64          // W lost in the winding; 0: unknown
-	quadraturePoints int              // 0: as usual; tests double it
+	Parts            fs.FS               // the user's own catalogue, *.toml at its root; nil: none
+	Catalogue        *Catalogue          // already read; nil: built-in and Parts
+	PotTolerance     float64             // relative half-width of the bench's pot; 0 where its ohms were measured
+	WiperResistance  float64             // Ω, network wiper
+	Track            si.TolResistance    // end to end, network wiper with the bench's pot
+	Average          instruments.Between // nodes between which average_voltage is metered; zero: the load's terminals
+	PotMaxCurrent    float64             // A through the wiper; 0: unknown
+	PotMaxVoltage    float64             // V at any pot terminal; 0: unknown
+	MotorMaxCurrent  float64             // A, continuous; 0: unknown
+	MotorMaxPower    float64             // W lost in the winding; 0: unknown
+	quadraturePoints int                 // 0: as usual; tests double it
 }
 
 // quadraturePoints is enough for 1e-9 within an interval whose current changes sixfold.
@@ -70,6 +72,12 @@ func New(board sweeps.Board, o Options) (*Model, error) {
 	n := o.quadraturePoints
 	if n == 0 {
 		n = quadraturePoints
+	}
+	if o.Average == (instruments.Between{}) {
+		o.Average = loadTerminals
+	}
+	if err := checkAverage(o.Average); err != nil {
+		return nil, fmt.Errorf("board %q: %w", board.Name, err)
 	}
 	m := &Model{board: board, o: o, rule: numeric.GaussLegendre(n)}
 	if err := m.resolve(c); err != nil {

@@ -10,6 +10,7 @@ import (
 	"strconv"
 	"testing"
 
+	"nightbench/instruments"
 	"nightbench/instruments/si"
 	"nightbench/sweeps"
 )
@@ -212,16 +213,18 @@ func boardTable(t *testing.T) (all []*accuracy) {
 		column string
 		name   sweeps.Quantity
 		bound  float64
+		o      Options
 	}{
-		{"duty", sweeps.Duty, 0.005}, {"frequency", sweeps.Frequency, 0.005},
-		{"motor_current", sweeps.MotorCurrent, 0.015}, {"motor_voltage", sweeps.AverageVoltage, 0.015},
-		{"speed", sweeps.Speed, 0.015}, {"supply_current", sweeps.SupplyCurrent, 0.015},
+		{"duty", sweeps.Duty, 0.005, Options{}}, {"frequency", sweeps.Frequency, 0.005, Options{}},
+		{"motor_current", sweeps.MotorCurrent, 0.015, Options{}}, {"motor_voltage", sweeps.AverageVoltage, 0.015, Options{}},
+		{"speed", sweeps.Speed, 0.015, Options{}}, {"supply_current", sweeps.SupplyCurrent, 0.015, Options{}},
+		{"output_average", sweeps.AverageVoltage, 0.015, Options{Average: instruments.Between{instruments.NodeTimerOut, instruments.NodeCommon}}},
 	} {
 		a := &accuracy{name: "board.csv " + q.column, bound: q.bound}
 		all = append(all, a)
 		for i, r := range table(t, "board.csv") {
 			b, s := tableBoard(t, r)
-			v := mustAt(t, mustNew(t, b, Options{}), s)
+			v := mustAt(t, mustNew(t, b, q.o), s)
 			a.add(t, v[q.name], r.num(t, q.column), fmt.Sprintf("row %d", i+1))
 		}
 	}

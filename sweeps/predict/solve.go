@@ -70,7 +70,7 @@ type outcome struct {
 	output output
 	supply, temperature,
 	pot, highLevel, lowLevel,
-	supplyCurrent, outputCurrent float64
+	supplyCurrent, outputCurrent, average float64
 	mechanical float64 // s, J·R/K²
 	stalled    bool
 	starved    bool // too little base current: the transistor does not saturate
@@ -193,6 +193,7 @@ func (m *Model) account(o *outcome, p *parts, c *conditions) {
 	}
 	o.outputCurrent += charging * o.high / period
 	o.supplyCurrent += load + m.idle(o, p, c)
+	o.average = m.mean(o, c, m.o.Average[0]) - m.mean(o, c, m.o.Average[1])
 }
 
 // offLevel is the output's level in the phase that does not drive the load: beyond
