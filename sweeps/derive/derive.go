@@ -16,6 +16,10 @@ type road struct {
 	ok     bool
 	flags  []sweeps.Flag
 	raw    []string
+
+	channel bool    // it came by a scope channel
+	below   bool    // the probe saw a level well below common
+	pivot   float64 // V, from which it is counted down to what the probe saw; 0: the probe saw it itself
 }
 
 // Readings are the wanted quantities in the order wanted.
@@ -42,7 +46,7 @@ type deriver struct {
 func (d *deriver) roads(q sweeps.Quantity) []road {
 	switch q {
 	case sweeps.AverageVoltage:
-		return append(d.metered(q), d.load.road(q))
+		return append(d.metered(q), d.loadLevel(q))
 	case sweeps.MotorCurrent, sweeps.OutputCurrent, sweeps.ControlVoltage:
 		return d.metered(q)
 	case sweeps.SupplyVoltage, sweeps.SupplyCurrent, sweeps.SupplyPower:
@@ -51,7 +55,9 @@ func (d *deriver) roads(q sweeps.Quantity) []road {
 		return d.drops()
 	case sweeps.PotResistance:
 		return []road{d.pot()}
-	case sweeps.BackEMF, sweeps.Conduction:
+	case sweeps.BackEMF:
+		return []road{d.loadLevel(q)}
+	case sweeps.Conduction:
 		return []road{d.load.road(q)}
 	}
 	return []road{d.timer.road(q)}
@@ -77,7 +83,7 @@ func reading(q sweeps.Quantity, roads []road) sweeps.Reading {
 	out.Flags, out.Raw = append(out.Flags, b.flags...), b.raw
 	for i, r := range roads {
 		if i != best && r.ok && uncertainty.Disagreement(b.budget, r.budget) > disagree {
-			out.Flags = append(out.Flags, apart(q, b, r))
+			out.Flags = append(out.Flags, apart(b, r))
 		}
 	}
 	return out
@@ -98,16 +104,22 @@ func lost(q sweeps.Quantity, roads []road) sweeps.Reading {
 	return r
 }
 
-// apart says that two roads disagree, and the likely cause by its signature.
-func apart(q sweeps.Quantity, a, b road) sweeps.Flag {
-	n := uncertainty.Disagreement(a.budget, b.budget)
-	words := fmt.Sprintf("%s and %s differ by %.1f u", a.name, b.name, n)
-	ratio := math.Abs(b.budget.X / a.budget.X)
+// apart says that two roads disagree, and the likely cause by its signature at the
+// probe: what is seen against the supply is turned back to what the probe saw.
+func apart(a, b road) sweeps.Flag {
+	words := fmt.Sprintf("%s and %s differ by %.1f u", a.name, b.name, uncertainty.Disagreement(a.budget, b.budget))
+	scope, other := a, b
+	if b.channel {
+		scope, other = b, a
+	}
+	saw, should := math.Abs(scope.pivot-scope.budget.X), math.Abs(scope.pivot-other.budget.X)
 	switch {
-	case near(ratio, 10) || near(ratio, 0.1):
-		words += "; their ratio is 10: a probe factor is likely"
-	case math.Abs(b.budget.X) < 0.05*math.Abs(a.budget.X) && q == sweeps.AverageVoltage:
-		words += "; the scope sees no mean: AC coupling is likely"
+	case !scope.channel:
+		words += "; a range, or a wrong connection, is likely"
+	case near(saw/should, 10) || near(saw/should, 0.1):
+		words += fmt.Sprintf("; what the probe saw is %.2g times what it should be: a probe factor is likely", saw/should)
+	case scope.below || saw < 0.05*should:
+		words += "; the scope sees no mean, or less than common: AC coupling is likely"
 	default:
 		words += "; aperture against period, or a range, is likely"
 	}

@@ -2,15 +2,24 @@ package derive
 
 import (
 	"math"
+	"slices"
 
 	"nightbench/sweeps"
 	"nightbench/sweeps/pulse"
 	"nightbench/sweeps/uncertainty"
 )
 
-// drops are the roads to the output drop: supply less load voltage in the driven phase.
+// drops are the roads to the output drop: supply less load voltage in the driven
+// phase. Where both are there and agree, their weighted mean comes first: the
+// scope's zero enters them with opposite signs and largely cancels.
 func (d *deriver) drops() []road {
-	return []road{d.directDrop(), d.averageDrop()}
+	direct, average := d.directDrop(), d.averageDrop()
+	if !direct.ok || !average.ok || uncertainty.Disagreement(direct.budget, average.budget) > disagree {
+		return []road{average, direct}
+	}
+	both := road{name: average.name + " with " + direct.name, ok: true, raw: average.raw, budget: uncertainty.Mean(direct.budget, average.budget)}
+	both.flags = slices.Concat(direct.flags, average.flags)
+	return []road{both, average, direct}
 }
 
 // directDrop reads the driven level on the scope. Seen against the supply the
@@ -20,18 +29,52 @@ func (d *deriver) directDrop() road {
 	if !r.ok {
 		return r
 	}
-	vs := d.raw.SupplyVoltage()
 	r.name += ", driven level"
-	r.budget = uncertainty.Linear([]float64{-1}, r.budget)
-	r.budget.X += vs
-	if d.lowSide() || d.board.Load.ToSupply {
+	r.pivot, r.channel = 0, true
+	if d.against() {
+		vs := d.raw.SupplyVoltage()
+		r.budget = uncertainty.Linear([]float64{-1}, r.budget)
+		r.budget.X += vs
 		return d.withBurden(r)
 	}
 	// The node is seen from common: here the supply's error stays.
-	if s := d.supplied(sweeps.SupplyVoltage); s.ok {
-		r.budget = r.budget.Add(uncertainty.Known("supply voltage", s.budget.U()).Keyed("supply voltage"))
+	s := d.supplied(sweeps.SupplyVoltage)
+	if !s.ok {
+		return road{name: r.name, flags: s.flags, raw: s.raw}
 	}
+	r.budget = uncertainty.Difference(s.budget, r.budget)
 	return r
+}
+
+// against tells whether the load is seen as the voltage from the supply down to the probe.
+func (d *deriver) against() bool { return d.lowSide() || d.board.Load.ToSupply }
+
+// loadLevel is the scope's road to a voltage across the load. Seen against the supply it has the supply's error too.
+func (d *deriver) loadLevel(q sweeps.Quantity) road {
+	r := d.load.road(q)
+	r.channel, r.below = true, d.belowCommon()
+	if !r.ok || !d.against() {
+		return r
+	}
+	s := d.supplied(sweeps.SupplyVoltage)
+	if !s.ok {
+		return road{name: r.name, flags: s.flags, raw: s.raw}
+	}
+	r.pivot = s.budget.X
+	r.budget = r.budget.Add(s.budget.Components...)
+	return r
+}
+
+// belowCommon tells whether a channel saw a level no node of the board has: more
+// than a twentieth of the supply below common.
+func (d *deriver) belowCommon() bool {
+	vs := d.raw.SupplyVoltage()
+	if d.against() {
+		high, ok := d.load.get(sweeps.HighLevel)
+		return ok && high.X > 1.05*vs
+	}
+	low, ok := d.load.get(sweeps.LowLevel)
+	return ok && low.X < -0.05*vs
 }
 
 // lowSide tells whether a transistor switches the load's low side, so that the load is seen against the supply.

@@ -3,11 +3,14 @@ package derive
 import (
 	"fmt"
 	"math"
+	"slices"
 
 	"nightbench/instruments"
 	"nightbench/sweeps"
 	"nightbench/sweeps/pulse"
 	"nightbench/sweeps/uncertainty"
+
+	"gonum.org/v1/gonum/stat/distuv"
 )
 
 // view is one pair of nodes as the scope saw it, over all repeats.
@@ -89,7 +92,7 @@ func record(name string, f instruments.Waveform) pulse.Record {
 }
 
 // get is a quantity over all records: the mean, the causes the records share, and
-// for the rest the larger of their scatter and of what each record claims.
+// for the rest what each record claims, unless they scatter by more.
 func (v view) get(q sweeps.Quantity) (uncertainty.Budget, bool) {
 	var each []uncertainty.Budget
 	for _, r := range v.results {
@@ -107,23 +110,25 @@ func overRepeats(each []uncertainty.Budget) uncertainty.Budget {
 	if len(each) == 1 {
 		return each[0]
 	}
-	n := float64(len(each))
 	values := make([]float64, len(each))
-	claimed := 0.0 // mean variance of what the records do not share
+	claimed := uncertainty.Budget{} // of the mean: what the records do not share
 	for i, b := range each {
 		values[i] = b.X
 		for _, c := range b.Components {
 			if c.Key == "" {
-				claimed += c.Share() * c.Share() / n
+				claimed = claimed.Add(c.Times(1 / float64(len(each))))
 			}
 		}
 	}
-	scatter, err := uncertainty.Repeats(values)
+	seen, err := uncertainty.Repeats(values)
 	if err != nil {
 		return each[0]
 	}
-	scatter.U = math.Max(scatter.U, math.Sqrt(claimed/n))
-	out := uncertainty.New(scatter.X, uncertainty.Scatter("scatter of records", scatter))
+	own := uncertainty.Scatter("scatter of records", seen)
+	if !exceeds(seen, claimed.U()) {
+		own = uncertainty.Scatter("scatter within records", uncertainty.Value{U: claimed.U(), DOF: claimed.DOF()})
+	}
+	out := uncertainty.New(seen.X, own)
 	for _, c := range each[0].Components {
 		if c.Key != "" {
 			out = out.Add(c)
@@ -132,9 +137,20 @@ func overRepeats(each []uncertainty.Budget) uncertainty.Budget {
 	return out
 }
 
+// exceeds tells whether repeats scatter more than the records by themselves explain:
+// by chance one in ten would (χ² test of a variance against a known one). Taking
+// the larger of the two always would cover too much, the scatter of few being a poor guide.
+func exceeds(seen uncertainty.Value, claimed float64) bool {
+	if claimed == 0 {
+		return true
+	}
+	ratio := seen.U / claimed
+	return ratio*ratio*seen.DOF > distuv.ChiSquared{K: seen.DOF}.Quantile(0.9)
+}
+
 // road is the view's way to q.
 func (v view) road(q sweeps.Quantity) road {
-	r := road{name: v.name, flags: v.flags}
+	r := road{name: v.name, flags: slices.Clone(v.flags)}
 	b, ok := v.get(q)
 	if !ok {
 		r.flags = append(r.flags, v.why(q)...)
