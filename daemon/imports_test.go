@@ -31,6 +31,7 @@ var edges = map[string][]string{
 	"sweeps/example":                {},
 	"sweeps/predict":                {"instruments", "instruments/si", "sweeps", "sweeps/uncertainty", "sweeps/internal/numeric"},
 	"sweeps/pulse":                  {"instruments", "instruments/si", "sweeps", "sweeps/uncertainty", "sweeps/internal/numeric"},
+	"sweeps/pulse/capture":          {"instruments/si", "sweeps/pulse"},
 	"sweeps/derive":                 {"instruments", "instruments/si", "sweeps", "sweeps/uncertainty", "sweeps/pulse"},
 	"sweeps/schedule":               {"instruments", "instruments/si", "sweeps"},
 	"sweeps/runner":                 {"instruments", "instruments/si", "sweeps", "sweeps/derive", "sweeps/schedule"},

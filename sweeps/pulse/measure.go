@@ -212,6 +212,7 @@ var bears = map[string][]string{
 	Unsettled:   {"duty", "t_high", "t_low", "high_level", "low_level", "amplitude", "ripple", "rise_time", "fall_time", "overshoot", "undershoot", "back_emf", "conduction"},
 	ThirdLevel:  {"duty", "t_high", "t_low", "high_level", "low_level", "amplitude", "ripple", "overshoot", "undershoot", "conduction"},
 	FastRinging: {"overshoot", "undershoot"},
+	TimeBase:    {"frequency", "period", "t_high", "t_low", "rise_time", "fall_time", "jitter"},
 	CoarseTime:  {"duty", "frequency", "period", "t_high", "t_low", "rise_time", "fall_time", "jitter", "conduction"},
 }
 

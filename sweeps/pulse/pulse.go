@@ -38,6 +38,8 @@ type Record struct {
 	OffsetU    float64 // V, standard uncertainty of Zero
 	TimeBaseU  float64 // relative standard uncertainty of Interval
 
+	Flags []Flag // what whoever read the capture already knows of it
+
 	pivot  float64 // V, where an error of gain has no effect
 	turned bool    // the voltages are a supply's less the probe's
 }
@@ -89,6 +91,7 @@ const (
 	FewSamples   = "few samples"
 	CoarseTime   = "coarse time stamps"
 	UnevenTime   = "uneven time stamps"
+	TimeBase     = "time base"
 	Scale        = "scale"
 	Noisy        = "noisy"
 	FastRinging  = "fast ringing"

@@ -4,6 +4,7 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"slices"
 )
 
 // trace is a record made uniform: codes that rise with the voltage, whatever the
@@ -25,7 +26,7 @@ var (
 )
 
 func newTrace(r Record) (trace, error) {
-	t := trace{Record: r, clipLow: math.MinInt32, clipHigh: math.MaxInt32}
+	t := trace{Record: r, flags: slices.Clone(r.Flags), clipLow: math.MinInt32, clipHigh: math.MaxInt32}
 	n := max(len(r.Codes), len(r.Volts))
 	if n < 3 {
 		return t, errShort
