@@ -4,6 +4,7 @@ import (
 	"embed"
 	"fmt"
 	"io/fs"
+	"slices"
 	"strings"
 	"sync"
 
@@ -13,8 +14,8 @@ import (
 //go:embed files/*.toml
 var files embed.FS
 
-// All reads the dialects that come with the program, by name.
-var All = sync.OnceValues(func() ([]*Dialect, error) {
+// ofProgram reads the dialects that come with the program, by name.
+var ofProgram = sync.OnceValues(func() ([]*Dialect, error) {
 	names, err := fs.Glob(files, "files/*.toml")
 	if err != nil {
 		return nil, err
@@ -34,8 +35,15 @@ var All = sync.OnceValues(func() ([]*Dialect, error) {
 	return all, nil
 })
 
-// Names are the names of the dialects that come with the program, those of one
-// role, or with an empty role all.
+// All are the user's own dialects, which are asked first who they know, and
+// those that come with the program.
+func All() ([]*Dialect, error) {
+	ours, err := ofProgram()
+	own, _ := Own()
+	return slices.Concat(own, ours), err
+}
+
+// Names are the names of all dialects, those of one role, or with an empty role all.
 func Names(role Role) (names []string) {
 	all, _ := All() // a file of ours that can't be read fails every test of this package
 	for _, d := range all {
@@ -50,7 +58,11 @@ func Names(role Role) (names []string) {
 // path of the user's own file.
 func Find(role Role, name string) (*Dialect, error) {
 	if strings.HasSuffix(name, ".toml") {
-		return readOwn(role, name)
+		d, err := ReadFile(name)
+		if err != nil {
+			return nil, err
+		}
+		return d, d.serves(role)
 	}
 	all, err := All()
 	if err != nil {
@@ -61,24 +73,15 @@ func Find(role Role, name string) (*Dialect, error) {
 			return d, d.serves(role)
 		}
 	}
+	if err := brokenOwn(name); err != nil {
+		return nil, err
+	}
 	hint := ""
 	if near := userfile.Nearest(name, Names(role)); near != "" {
 		hint = fmt.Sprintf(" (did you mean %q?)", near)
 	}
 	return nil, fmt.Errorf("%w %q%s; use auto, %s, or the path of a file of your own that ends in .toml",
 		ErrUnknown, name, hint, strings.Join(Names(role), ", "))
-}
-
-func readOwn(role Role, path string) (*Dialect, error) {
-	f, err := userfile.Read(path)
-	if err != nil {
-		return nil, err
-	}
-	d, err := read(f)
-	if err != nil {
-		return nil, err
-	}
-	return d, d.serves(role)
 }
 
 // serves refuses a dialect of another role.

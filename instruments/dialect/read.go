@@ -4,10 +4,7 @@ import (
 	"crypto/sha256"
 	"encoding/hex"
 	"fmt"
-	"time"
 
-	"nightbench/instruments/link"
-	"nightbench/instruments/si"
 	"nightbench/instruments/userfile"
 )
 
@@ -23,7 +20,7 @@ func Parse(name string, text []byte) (*Dialect, error) {
 // read takes a dialect out of a file whose form is right.
 func read(f *userfile.File) (*Dialect, error) {
 	sum := sha256.Sum256([]byte(f.Source))
-	r := &reader{d: &Dialect{Text: f.Source, Hash: hex.EncodeToString(sum[:]), Sources: map[string]string{}, Commands: map[string]Line{}}}
+	r := &reader{d: &Dialect{Text: f.Source, Hash: hex.EncodeToString(sum[:]), Sources: map[string]string{}, Commands: map[string]Line{}, Scaling: map[string]Line{}}}
 	if !r.head(f.Table("dialect")) {
 		return nil, f.Failed() // without a role no other key can be judged
 	}
@@ -35,7 +32,9 @@ func read(f *userfile.File) (*Dialect, error) {
 	r.channel(f.Optional().Table("channel"))
 	r.commands(f.Table("command"))
 	r.sequences(f.Optional())
+	r.screen(f.Optional().Table("screen"))
 	r.figures(f.Optional())
+	r.conditions(f.Optional().Table("conditions"))
 	switch r.d.Head.Role {
 	case RoleSupply:
 		r.protection(f.Optional().Table("protection"))
@@ -43,6 +42,8 @@ func read(f *userfile.File) (*Dialect, error) {
 		r.meter(f)
 	case RoleScope:
 		r.waveform(f.Table("waveform"))
+		r.scaling(f)
+		r.wholeScope(f.Table("command"))
 	}
 	if err := f.Err(); err != nil {
 		return nil, err
@@ -59,6 +60,7 @@ func (r *reader) head(t *userfile.Table) bool {
 	ok = userfile.Word(t, "role", &h.Role, RoleSupply, RoleMeter, RoleScope, RolePot) && ok
 	t.Optional().String("about", &h.About)
 	t.Optional().Bool("accepts_any", &h.AcceptsAny)
+	t.Optional().String("tried", &h.Tried)
 	return ok
 }
 
@@ -68,19 +70,21 @@ func (r *reader) sources(t *userfile.Table) {
 		if t.String(tag, &document) {
 			r.d.Sources[tag] = document
 		}
-		if tag == "ours" || tag == "unchecked" {
+		if tag == Ours || tag == Unchecked {
 			t.Fail(tag, "is a word with a meaning of its own; give the document another tag")
 		}
 	}
 }
 
 // source reads who says so, which every line must carry.
-func (r *reader) source(t *userfile.Table, v *string) {
-	if !t.String("source", v) {
+func (r *reader) source(t *userfile.Table, v *string) { r.sourceOf(t, "source", v) }
+
+func (r *reader) sourceOf(t *userfile.Table, key string, v *string) {
+	if !t.String(key, v) {
 		return
 	}
-	if _, known := r.d.Sources[*v]; !known && *v != "ours" && *v != "unchecked" {
-		t.Fail("source", `no such tag in [sources]; add it there, or use "unchecked" for what is from memory, "ours" for an addition of your own`)
+	if _, known := r.d.Sources[*v]; !known && *v != Ours && *v != Unchecked {
+		t.Fail(key, `no such tag in [sources]; add it there, or use "unchecked" for what is from memory, "ours" for an addition of your own`)
 	}
 }
 
@@ -98,81 +102,6 @@ func (r *reader) identities(f *userfile.Table) {
 	}
 }
 
-// terminators are the ends of a message sent, by name.
-var terminators = map[string]string{"nl": "\n", "cr": "\r", "crnl": "\r\n", "": ""}
-
-func (r *reader) link(t *userfile.Table) {
-	o, l := t.Optional(), &r.d.Link
-	var end string
-	userfile.Word(o, "terminator", &end, "nl", "cr", "crnl")
-	l.Terminator = terminators[end]
-	r.duration(o, "timeout", &l.Timeout)
-	r.duration(o, "gap", &l.Gap)
-	o.Bool("echo", &l.Echo)
-	r.serialLine(o, &l.Line)
-	var clear []int
-	o.Ints("clear_bytes", &clear, 0, 255)
-	for _, b := range clear {
-		l.ClearBytes = append(l.ClearBytes, byte(b))
-	}
-}
-
-// serialLine reads serial settings in the form that an address has them.
-func (r *reader) serialLine(o *userfile.Table, v *string) {
-	if !o.String("line", v) {
-		return
-	}
-	if _, err := link.Parse("serial:///dev/any?" + *v); err != nil {
-		o.Fail("line", `give serial settings as an address has them, like "baud=9600&stop=2": `+err.Error())
-	}
-}
-
-// duration reads a time above zero.
-func (r *reader) duration(t *userfile.Table, key string, v *time.Duration) {
-	var x si.Time
-	if !t.Text(key, &x) {
-		return
-	}
-	if x.SI() <= 0 {
-		t.Fail(key, "give a time above 0 s")
-	}
-	*v = time.Duration(x.SI() * float64(time.Second))
-}
-
-func (r *reader) errors(t *userfile.Table) {
-	e := &r.d.Errors
-	userfile.Word(t, "form", &e.Form, "queue", "none")
-	if e.Form == "none" {
-		return
-	}
-	t.String("ask", &e.Ask)
-	t.Int("depth", &e.Depth, 1, 1000)
-	r.source(t, &e.Source)
-}
-
-func (r *reader) completion(t *userfile.Table) {
-	if !t.Present() {
-		return
-	}
-	c := &Completion{}
-	userfile.Word(t, "style", &c.Style, "held", "polled")
-	t.String("ask", &c.Ask)
-	if c.Style == "polled" {
-		t.String("until", &c.Until)
-	}
-	r.source(t, &c.Source)
-	r.d.Completion = c
-}
-
-func (r *reader) channel(t *userfile.Table) {
-	if !t.Present() {
-		return
-	}
-	c := &Channel{}
-	c.Select = r.line(t.Table("select"), "select", spec{does: "select a channel", needs: sends, channel: true})
-	r.d.Channel = c
-}
-
 func (r *reader) protection(t *userfile.Table) {
 	if !t.Present() {
 		return
@@ -183,14 +112,13 @@ func (r *reader) protection(t *userfile.Table) {
 	r.d.Protection = p
 }
 
-// sequences reads the lines sent at opening and closing.
+// sequences reads the lines sent at opening, after a reset and at closing.
 func (r *reader) sequences(f *userfile.Table) {
-	free := spec{does: "be opened or closed", needs: sends, channel: true}
-	for _, t := range f.Tables("open") {
-		r.d.Open = append(r.d.Open, r.line(t, "open", free))
-	}
-	for _, t := range f.Tables("close") {
-		r.d.Close = append(r.d.Close, r.line(t, "close", free))
+	free := spec{does: "be opened or closed", needs: anyHalf, channel: true}
+	for name, into := range map[string]*[]Line{"open": &r.d.Open, "setup": &r.d.Setup, "close": &r.d.Close} {
+		for _, t := range f.Tables(name) {
+			*into = append(*into, r.line(t, name, free))
+		}
 	}
 }
 
@@ -212,15 +140,18 @@ func (r *reader) commands(t *userfile.Table) {
 	}
 }
 
-// oneFunction wants a meter to measure something, and each function whole.
+// oneFunction wants a meter to measure something, each function whole and with a reading.
 func (r *reader) oneFunction(t *userfile.Table) {
+	has := func(name string) bool { _, ok := r.d.Commands[name]; return ok }
 	var any bool
 	for _, of := range []string{"voltage", "current"} {
-		_, function := r.d.Commands[of+"_function"]
-		_, ranges := r.d.Commands[of+"_range"]
+		function := has(of + "_function")
 		any = any || function
-		if function != ranges {
+		if function != has(of+"_range") {
 			t.Fail("", fmt.Sprintf("%s_function and %s_range belong together; give both or neither", of, of))
+		}
+		if function && !has("read") && !has(of+"_read") {
+			t.Fail("", fmt.Sprintf("there is no way to take a reading: give read, or %s_read", of))
 		}
 	}
 	if !any {

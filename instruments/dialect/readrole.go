@@ -21,12 +21,7 @@ func (r *reader) figures(f *userfile.Table) {
 			continue
 		}
 		o, unit := t.Optional(), units[g.Of]
-		var reading, ofRange si.Ratio
-		o.Text("reading", &reading)
-		o.Text("of_range", &ofRange)
-		g.Accuracy = instruments.Accuracy{Reading: reading.SI(), Range: ofRange.SI()}
-		r.quantity(o, "offset", unit, &g.Accuracy.Offset)
-		r.quantity(o, "resolution", unit, &g.Accuracy.Resolution)
+		r.limits(t, unit, &g)
 		r.quantity(o, "range", unit, &g.Range)
 		r.quantity(o, "highest", unit, &g.Highest)
 		if a := g.Accuracy; a.Reading <= 0 && a.Range <= 0 && a.Offset <= 0 {
@@ -45,6 +40,34 @@ func (r *reader) figures(f *userfile.Table) {
 				of, strings.Join(slices.Sorted(maps.Keys(units)), ", ")))
 		}
 	}
+}
+
+// limits reads a limit of error in any of its forms.
+func (r *reader) limits(t *userfile.Table, unit si.Unit, g *Figure) {
+	o := t.Optional()
+	var reading, ofRange si.Ratio
+	o.Text("reading", &reading)
+	o.Text("of_range", &ofRange)
+	g.Accuracy = instruments.Accuracy{Reading: reading.SI(), Range: ofRange.SI()}
+	r.quantity(o, "offset", unit, &g.Accuracy.Offset)
+	r.quantity(o, "resolution", unit, &g.Accuracy.Resolution)
+	var counts, divisions float64
+	if o.Number("counts", &counts) {
+		if g.Accuracy.Resolution <= 0 {
+			t.Fail("counts", "needs resolution, which is one count")
+		}
+		g.Accuracy.Offset += counts * g.Accuracy.Resolution
+	}
+	if o.Number("divisions", &divisions) {
+		if r.d.Screen == nil {
+			t.Fail("divisions", "needs [screen], which says how many it has")
+		} else {
+			g.Accuracy.Range += divisions / r.d.Screen.Divisions
+		}
+	}
+	var from string
+	userfile.Word(o, "gain_from", &from, "zero", "offset")
+	g.FromOffset = from == "offset"
 }
 
 // meter reads how long readings take and which speeds there are, slowest last.
@@ -80,24 +103,4 @@ func (r *reader) speedSetting(t *userfile.Table, from string, v *float64) {
 	if *v <= 0 {
 		t.Fail("", "give an aperture above 0")
 	}
-}
-
-func (r *reader) waveform(t *userfile.Table) {
-	w := &Waveform{}
-	userfile.Word(t, "family", &w.Family, "code-linear")
-	userfile.Word(t, "samples", &w.Samples, "int16", "int8")
-	userfile.Word(t, "byte_order", &w.ByteOrder, "big", "little")
-	var low, high int
-	t.Int("clip_low", &low, -32768, 32767)
-	t.Int("clip_high", &high, -32768, 32767)
-	w.ClipLow, w.ClipHigh = int16(low), int16(high)
-	if low >= high {
-		t.Fail("clip_high", "has to be above clip_low")
-	}
-	t.Int("most_points", &w.MostPoints, 1, 1<<30)
-	var base si.Ratio
-	t.Text("time_base", &base)
-	w.TimeBase = base.SI()
-	r.source(t, &w.Source)
-	r.d.Waveform = w
 }

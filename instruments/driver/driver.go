@@ -43,6 +43,7 @@ type instrument struct {
 type health struct {
 	lost   atomic.Bool // the link is gone and has to be opened anew
 	shaken atomic.Bool // settings have to be read back before they are relied on
+	greet  atomic.Bool // the opening lines have to be sent again
 }
 
 func newInstrument(conn *scpi.Conn, d *dialect.Dialect, o Options) instrument {
@@ -51,16 +52,15 @@ func newInstrument(conn *scpi.Conn, d *dialect.Dialect, o Options) instrument {
 	return i
 }
 
-// Settings gives the scpi options that a dialect asks for.
+// Settings gives the scpi options that a dialect asks for. Only a query whose
+// reply is known beforehand can prove that a connection is in step.
 func Settings(d *dialect.Dialect) scpi.Options {
 	o := scpi.Options{ErrorQuery: d.Errors.Ask, ErrorDepth: d.Errors.Depth, ResyncLimit: resyncLimit,
 		Gap: d.Link.Gap, Echo: d.Link.Echo}
-	if c := d.Completion; c == nil {
+	if c := d.Completion; c == nil || c.Style == "dwell" {
 		o.NoMarker = true
-	} else if c.Style == "held" {
-		o.Marker = scpi.Marker{Query: c.Ask, Replies: []string{"1", "+1"}}
 	} else {
-		o.Marker = scpi.Marker{Query: c.Ask, Replies: []string{c.Until}}
+		o.Marker = scpi.Marker{Query: c.Ask, Replies: c.Until}
 	}
 	if l, ok := d.Commands["identify"]; ok {
 		o.IdentityQuery = l.Ask
@@ -106,7 +106,7 @@ func (i *instrument) open(ctx context.Context) (notes []string, err error) {
 func (i *instrument) sequence(ctx context.Context, lines []dialect.Line) error {
 	var errs []error
 	for _, l := range lines {
-		errs = append(errs, i.write(ctx, i.put(0).Fill(l.Send)))
+		errs = append(errs, i.utter(ctx, l, i.put(0)))
 	}
 	return errors.Join(errs...)
 }
@@ -122,6 +122,11 @@ func (i *instrument) reset(ctx context.Context) error {
 			return err
 		}
 		if err := i.within(resetTime).done(ctx); err != nil {
+			return err
+		}
+	}
+	for _, l := range i.d.Setup {
+		if err := i.say(ctx, l, i.put(0)); err != nil {
 			return err
 		}
 	}
@@ -147,7 +152,7 @@ func (i *instrument) line(name string) (dialect.Line, error) {
 func (i *instrument) has(name string) bool { _, ok := i.d.Commands[name]; return ok }
 
 // put is a value on the instrument's own channel.
-func (i *instrument) put(v float64) dialect.Put { return dialect.Put{Value: v, Channel: i.channel} }
+func (i *instrument) put(v float64) dialect.Put { return i.d.Put(v, i.channel) }
 
 // within is the same instrument with a longer time-out. The time is added to
 // the time of a reply, so that a fast clock never makes it shorter than a link needs.

@@ -84,7 +84,7 @@ func TestErrorSaysWhoWhatAndWhatToTry(t *testing.T) {
 
 func TestParseFlag(t *testing.T) {
 	bit := func(n int, base string) dialect.Line {
-		return dialect.Line{Reply: dialect.ReplyBit, Bit: n, Base: base}
+		return dialect.Line{Reply: dialect.ReplyBit, Bits: []int{n}, Base: base, YesIs: 1}
 	}
 	words := dialect.Line{Reply: dialect.ReplyBool, Yes: []string{"ON", "YES"}, No: []string{"OFF"}}
 	for _, c := range []struct {
@@ -103,7 +103,7 @@ func TestParseFlag(t *testing.T) {
 		{words, "OFF", false, false},
 		{words, "1", false, true},
 	} {
-		got, err := parseFlag(c.line, c.reply)
+		got, err := parseFlag(c.line, c.reply, 1)
 		if got != c.want || (err != nil) != c.fails {
 			t.Errorf("%v of %q: got %v, %v", c.line, c.reply, got, err)
 		}

@@ -5,8 +5,6 @@ import (
 	"context"
 	"fmt"
 	"math"
-	"slices"
-	"strings"
 
 	"nightbench/instruments"
 	"nightbench/instruments/dialect"
@@ -181,7 +179,7 @@ func (m *Meter) sameFunction(ctx context.Context, of string) error {
 	if err != nil {
 		return err
 	}
-	if !slices.ContainsFunc(l.Want, func(want string) bool { return strings.EqualFold(want, found) }) {
+	if !m.wanted(l, m.put(0), found) {
 		m.set = instruments.MeterSettings{}
 		return &Error{Instrument: m.name, Command: l.Ask, Found: found, Err: ErrSettingsLost,
 			Try: "was it switched off and on? configure it again"}
@@ -201,7 +199,11 @@ func (m *Meter) Read(ctx context.Context) (instruments.Sample, error) {
 		}
 		m.shaken.Store(false)
 	}
-	l, err := m.instrument.line("read")
+	name := "read"
+	if own := functions[m.set.Unit] + "_read"; m.has(own) {
+		name = own
+	}
+	l, err := m.instrument.line(name)
 	if err != nil {
 		return instruments.Sample{}, err
 	}

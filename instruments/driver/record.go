@@ -2,19 +2,25 @@ package driver
 
 import (
 	"context"
-	"encoding/binary"
 	"fmt"
+	"maps"
 	"math"
+	"slices"
+	"strings"
 
 	"nightbench/instruments"
 	"nightbench/instruments/dialect"
 	"nightbench/instruments/scpi"
+	"nightbench/instruments/si"
 )
 
 // fetch reads one channel of the last record, with the scaling it was made with.
 func (s *Scope) fetch(ctx context.Context, c instruments.ScopeChannel) (instruments.Waveform, error) {
-	p := dialect.Put{Channel: c.Number}
-	scale, err := s.scaling(ctx, p)
+	p := s.d.Put(0, c.Number)
+	if err := s.ensureEach(ctx, p, "record_source"); err != nil {
+		return instruments.Waveform{}, err
+	}
+	fields, err := s.scaling(ctx, p)
 	if err != nil {
 		return instruments.Waveform{}, err
 	}
@@ -22,84 +28,139 @@ func (s *Scope) fetch(ctx context.Context, c instruments.ScopeChannel) (instrume
 	if err != nil {
 		return instruments.Waveform{}, err
 	}
-	query := p.Fill(l.Ask)
-	size := map[string]int{"int8": 1, "int16": 2}[s.d.Waveform.Samples]
-	block, err := s.conn.QueryBlock(ctx, query, s.d.Waveform.MostPoints*size)
+	values, err := s.samples(ctx, l, p)
 	if err != nil {
-		return instruments.Waveform{}, s.fault(query, err)
+		return instruments.Waveform{}, err
 	}
-	points := int(scale["points"])
-	if len(block) != points*size || points != s.set.Points {
-		return instruments.Waveform{}, &Error{Instrument: s.name, Command: query, Err: ErrReply,
-			Found: fmt.Sprintf("%d bytes for %d points, %d were asked for", len(block), points, s.set.Points),
+	points, announced := fields["points"]
+	if !announced {
+		points = float64(s.set.Points)
+	}
+	if len(values) != int(points) || len(values) != s.set.Points {
+		return instruments.Waveform{}, &Error{Instrument: s.name, Command: p.Fill(l.Ask), Err: ErrReply,
+			Found: fmt.Sprintf("%d samples; %g are announced, %d were asked for", len(values), points, s.set.Points),
 			Try:   "the record is not used; take a new one"}
 	}
-	return s.waveform(c, scale, samples(block, s.d.Waveform)), nil
+	return s.waveform(c, fields, values)
 }
 
 // scaling asks how the codes of the last record are to be read.
 func (s *Scope) scaling(ctx context.Context, p dialect.Put) (map[string]float64, error) {
-	l, err := s.line("scaling")
-	if err != nil {
-		return nil, err
+	fields := map[string]float64{}
+	if s.has("scaling") {
+		if err := s.fields(ctx, s.d.Commands["scaling"], p, fields); err != nil {
+			return nil, err
+		}
 	}
-	scale := map[string]float64{}
-	err = s.ask(ctx, l, p, func(reply string) error {
-		parts := scpi.SplitList(reply)
+	for _, name := range slices.Sorted(maps.Keys(s.d.Scaling)) {
+		if err := s.fields(ctx, s.d.Scaling[name], p, fields); err != nil {
+			return nil, err
+		}
+	}
+	if n, ok := fields["points"]; ok && (n != math.Trunc(n) || n < 2) {
+		return nil, &Error{Instrument: s.name, Command: "scaling of its record", Err: ErrReply, Found: fmt.Sprint(fields), Try: "take a new record"}
+	}
+	return fields, nil
+}
+
+// fields asks for one field, or for several in one reply.
+func (s *Scope) fields(ctx context.Context, l dialect.Line, p dialect.Put, into map[string]float64) error {
+	if l.Reply != dialect.ReplyNumbers {
+		v, err := s.measured(ctx, l, p)
+		into[l.Name] = v
+		return err
+	}
+	return s.ask(ctx, l, p, func(answer string) error {
+		parts := scpi.SplitList(answer)
+		if l.Separator != "," {
+			parts = strings.Split(answer, l.Separator)
+		}
 		if len(parts) != len(l.Fields) {
-			return fmt.Errorf("%w: %q holds %d fields instead of %d", scpi.ErrForm, reply, len(parts), len(l.Fields))
+			return fmt.Errorf("%w: %q holds %d fields instead of %d", scpi.ErrForm, answer, len(parts), len(l.Fields))
 		}
 		for n, name := range l.Fields {
-			v, err := scpi.ParseNumber(parts[n])
+			if name == "-" {
+				continue
+			}
+			v, err := parseNumber(dialect.Line{Scale: 1, Unit: l.Unit}, strings.TrimSpace(parts[n]))
 			if err != nil {
 				return err
 			}
 			if v.Outcome != scpi.Measured {
 				return fmt.Errorf("%w: %s is %q", scpi.ErrForm, name, parts[n])
 			}
-			scale[name] = v.Value
+			into[name] = v.Value
 		}
 		return nil
 	})
-	if err != nil {
+}
+
+// samples reads the samples of a record, in one part or several.
+func (s *Scope) samples(ctx context.Context, l dialect.Line, p dialect.Put) ([]float64, error) {
+	w := s.d.Waveform
+	if w.MostARead == 0 {
+		return s.part(ctx, l, p, w.MostPoints)
+	}
+	var all []float64
+	for first := 1; first <= s.set.Points; first += w.MostARead {
+		if err := s.choosePart(ctx, p, first, min(first+w.MostARead-1, s.set.Points)); err != nil {
+			return nil, err
+		}
+		some, err := s.part(ctx, l, p, w.MostARead)
+		if err != nil {
+			return nil, err
+		}
+		all = append(all, some...)
+	}
+	return all, nil
+}
+
+// choosePart says which part comes next, so that the first is never behind the
+// last on the way: back to the start the first goes ahead, on from there the last.
+func (s *Scope) choosePart(ctx context.Context, p dialect.Put, first, last int) error {
+	names, ends := []string{"part_last", "part_first"}, []int{last, first}
+	if first == 1 {
+		slices.Reverse(names)
+		slices.Reverse(ends)
+	}
+	for n, name := range names {
+		p.Value = float64(ends[n])
+		if _, err := s.instrument.set(ctx, name, p, si.One); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+// tails are what has to come after the bytes of a block.
+var tails = map[string]string{"nl": "\n", "nl nl": "\n\n"}
+
+// textSample is allowed for one sample as text: sign, nine digits, exponent, comma.
+const textSample = 24
+
+// part reads one part of a record, of at most so many samples.
+func (s *Scope) part(ctx context.Context, l dialect.Line, p dialect.Put, most int) ([]float64, error) {
+	w, query := s.d.Waveform, p.Fill(l.Ask)
+	if w.Head == "none" {
+		var values []float64
+		err := s.ask(ctx, l, p, func(answer string) (err error) { values, err = decode([]byte(answer), w); return err })
+		return values, err
+	}
+	if err := s.ready(ctx); err != nil {
 		return nil, err
 	}
-	if !(scale["xincrement"] > 0) || scale["yincrement"] == 0 || scale["points"] != math.Trunc(scale["points"]) || scale["points"] < 2 {
-		return nil, &Error{Instrument: s.name, Command: p.Fill(l.Ask), Err: ErrReply, Found: fmt.Sprint(scale), Try: "take a new record"}
+	form := scpi.BlockForm{Lead: p.Fill(w.Lead), Tail: tails[w.Tail]}
+	size := w.Size()
+	if size == 0 {
+		size = textSample
 	}
-	return scale, nil
-}
-
-// samples turns the bytes of a block into codes.
-func samples(block []byte, w *dialect.Waveform) []int16 {
-	if w.Samples == "int8" {
-		codes := make([]int16, len(block))
-		for i, b := range block {
-			codes[i] = int16(int8(b))
-		}
-		return codes
+	block, err := s.conn.QueryBlockAs(ctx, query, form, most*size)
+	if err != nil {
+		return nil, s.fault(query, err)
 	}
-	var order binary.ByteOrder = binary.BigEndian
-	if w.ByteOrder == "little" {
-		order = binary.LittleEndian
+	values, err := decode(block, w)
+	if err != nil {
+		return nil, &Error{Instrument: s.name, Command: query, Err: err, Try: "the record is not used; take a new one"}
 	}
-	codes := make([]int16, len(block)/2)
-	for i := range codes {
-		codes[i] = int16(order.Uint16(block[2*i:]))
-	}
-	return codes
-}
-
-// waveform puts a record together (family code-linear).
-func (s *Scope) waveform(c instruments.ScopeChannel, scale map[string]float64, codes []int16) instruments.Waveform {
-	figure, _ := s.d.Figure("voltage", 0)
-	accuracy := figure.Accuracy
-	accuracy.Resolution = max(accuracy.Resolution, math.Abs(scale["yincrement"]))
-	return instruments.Waveform{
-		Channel: c.Number, Codes: codes,
-		Start: scale["xorigin"], Interval: scale["xincrement"],
-		VoltsPerCode: scale["yincrement"], VoltsAtZero: scale["yorigin"],
-		ClipLow: s.d.Waveform.ClipLow, ClipHigh: s.d.Waveform.ClipHigh,
-		Accuracy: accuracy, FullScale: c.High - c.Low, TimeBase: s.d.Waveform.TimeBase,
-	}
+	return values, nil
 }

@@ -2,14 +2,11 @@ package driver
 
 import (
 	"context"
-	"errors"
 	"fmt"
 	"slices"
-	"time"
 
 	"nightbench/instruments"
 	"nightbench/instruments/dialect"
-	"nightbench/instruments/link"
 	"nightbench/instruments/scpi"
 	"nightbench/instruments/si"
 )
@@ -55,12 +52,11 @@ func (s *Scope) Configure(ctx context.Context, want instruments.ScopeSettings) (
 			return s.set, err
 		}
 	}
-	points, err := s.instrument.set(ctx, "points", s.put(float64(want.Points)), si.One)
-	if err != nil {
+	var err error
+	if got.Points, err = s.setPoints(ctx, want.Points); err != nil {
 		return s.set, err
 	}
-	got.Points = int(points)
-	if got.Duration, err = s.instrument.set(ctx, "duration", s.put(want.Duration), si.Second); err != nil {
+	if got.Duration, err = s.setDuration(ctx, want.Duration); err != nil {
 		return s.set, err
 	}
 	if err := s.setTrigger(ctx, &got.Trigger); err != nil {
@@ -86,7 +82,11 @@ func (s *Scope) possible(want instruments.ScopeSettings) error {
 		}
 		trigger = trigger || c.Number == want.Trigger.Channel
 	}
-	switch most := s.d.Waveform.MostPoints; {
+	most := s.d.Waveform.MostPoints
+	if s.d.Waveform.Points > 0 || len(s.d.Commands["points"].Choices) > 0 {
+		most = want.Points // it has its own counts, and answers which is in force
+	}
+	switch {
 	case len(want.Channels) == 0:
 		return bad("no channel is to be recorded")
 	case !trigger:
@@ -99,50 +99,11 @@ func (s *Scope) possible(want instruments.ScopeSettings) error {
 	return nil
 }
 
-// setChannel couples a channel DC, tells it the probe, and sets its screen.
-func (s *Scope) setChannel(ctx context.Context, c *instruments.ScopeChannel) (err error) {
-	p := func(v float64) dialect.Put { return dialect.Put{Value: v, Channel: c.Number} }
-	if s.has("coupling") {
-		if err := s.ensure(ctx, "coupling", p(0)); err != nil {
-			return err
-		}
-	}
-	if c.Probe > 0 && (s.has("probe") || c.Probe != 1) {
-		if c.Probe, err = s.instrument.set(ctx, "probe", p(c.Probe), si.One); err != nil {
-			return err
-		}
-	}
-	height := c.High - c.Low
-	if c.High, err = s.edge(ctx, "range_high", p(c.High), height); err != nil {
-		return err
-	}
-	c.Low, err = s.edge(ctx, "range_low", p(c.Low), height)
-	return err
-}
-
-// edge sets one end of the screen. Its departure is judged against the height
-// of the screen, since an end may be 0 V.
-func (s *Scope) edge(ctx context.Context, name string, p dialect.Put, height float64) (float64, error) {
-	l, found, err := s.assign(ctx, name, p)
-	if err != nil {
-		return 0, err
-	}
-	if off := found - p.Value; max(off, -off) > max(l.Within, 1e-6)*height {
-		return 0, s.refused(ctx, p.Fill(l.Send), si.Format(found, si.Volt))
-	}
-	return found, nil
-}
-
 // setTrigger makes the positive-going crossing of a level the trigger.
 func (s *Scope) setTrigger(ctx context.Context, t *instruments.ScopeTrigger) (err error) {
-	p := dialect.Put{Value: t.Level, Channel: t.Channel}
-	if err := s.ensure(ctx, "trigger_source", p); err != nil {
+	p := s.d.Put(t.Level, t.Channel)
+	if err := s.ensureEach(ctx, p, "trigger_source", "trigger_slope", "trigger_wait"); err != nil {
 		return err
-	}
-	if s.has("trigger_slope") {
-		if err := s.ensure(ctx, "trigger_slope", p); err != nil {
-			return err
-		}
 	}
 	l, found, err := s.assign(ctx, "trigger_level", p)
 	if err != nil {
@@ -171,6 +132,11 @@ func (s *Scope) Capture(ctx context.Context) ([]instruments.Waveform, error) {
 	if err != nil {
 		return nil, err
 	}
+	if s.d.Waveform.NeedsStop {
+		if err := s.ensure(ctx, "stop", s.put(0)); err != nil {
+			return nil, err
+		}
+	}
 	at := s.clock.Now()
 	var waves []instruments.Waveform
 	for _, c := range s.set.Channels {
@@ -184,64 +150,6 @@ func (s *Scope) Capture(ctx context.Context) ([]instruments.Waveform, error) {
 	return waves, nil
 }
 
-// acquire takes a triggered record, or else an automatic one.
-func (s *Scope) acquire(ctx context.Context) (triggered bool, err error) {
-	err = s.start(ctx, s.triggerTime())
-	if err == nil || !errors.Is(err, link.ErrTimeout) || ctx.Err() != nil {
-		return err == nil, err
-	}
-	if err := s.abandon(ctx); err != nil {
-		return false, err
-	}
-	trigger := dialect.Put{Value: s.set.Trigger.Level, Channel: s.set.Trigger.Channel}
-	if err := s.ensure(ctx, "trigger_none", trigger); err != nil {
-		return false, err
-	}
-	if err := s.start(ctx, s.base()+s.recordTime()); err != nil {
-		return false, err
-	}
-	s.shaken.Store(false) // a trigger that does not come is no failure
-	return false, s.ensure(ctx, "trigger_source", trigger)
-}
-
-// start begins a record and waits until it is complete, at most for limit.
-func (s *Scope) start(ctx context.Context, limit time.Duration) error {
-	l, err := s.line("start")
-	if err != nil {
-		return err
-	}
-	if err := s.tell(ctx, l, s.put(0)); err != nil {
-		return err
-	}
-	waiting := *s
-	waiting.conn = s.conn.Within(limit)
-	if s.d.Completion != nil && s.d.Completion.Style == "polled" {
-		var cancel context.CancelFunc
-		ctx, cancel = context.WithTimeoutCause(ctx, limit, link.ErrTimeout)
-		defer cancel()
-	}
-	if err := waiting.done(ctx); err != nil {
-		return s.fault(s.put(0).Fill(l.Send), err)
-	}
-	return nil
-}
-
-// abandon gives up a record that no trigger came for. It is sent without
-// getting in step first, since the reply that step waits for is being held back.
-func (s *Scope) abandon(ctx context.Context) error {
-	l, err := s.line("abort")
-	if err != nil {
-		return err
-	}
-	if err := s.conn.Blind(ctx, l.Send); err != nil {
-		return s.fault(l.Send, err)
-	}
-	if err := s.conn.Resync(ctx); err != nil {
-		return s.fault(l.Send, err)
-	}
-	return nil
-}
-
 // verify reads back settings that a reset would change, after the connection
 // was out of step.
 func (s *Scope) verify(ctx context.Context) error {
@@ -250,12 +158,18 @@ func (s *Scope) verify(ctx context.Context) error {
 		name  string
 		value float64
 		unit  si.Unit
-	}{{"duration", s.set.Duration, si.Second}, {"points", float64(s.set.Points), si.One}, {"range_high", first.High, si.Volt}} {
+	}{
+		{"duration", s.set.Duration, si.Second}, {"time_scale", s.set.Duration / s.wide(), si.Second}, {"points", float64(s.set.Points), si.One},
+		{"range_high", first.High, si.Volt}, {"vertical_scale", (first.High - first.Low) / s.high(), si.Volt},
+	} {
+		if !s.has(want.name) {
+			continue
+		}
 		l, err := s.line(want.name)
 		if err != nil {
 			return err
 		}
-		p := dialect.Put{Channel: first.Number}
+		p := s.d.Put(0, first.Number)
 		found, err := s.measured(ctx, l, p)
 		if err != nil {
 			return err
@@ -267,4 +181,19 @@ func (s *Scope) verify(ctx context.Context) error {
 		}
 	}
 	return nil
+}
+
+// high and wide are the divisions of the screen; 1 where it has none.
+func (s *Scope) high() float64 {
+	if s.d.Screen == nil {
+		return 1
+	}
+	return s.d.Screen.Divisions
+}
+
+func (s *Scope) wide() float64 {
+	if s.d.Screen == nil {
+		return 1
+	}
+	return s.d.Screen.TimeDivisions
 }

@@ -167,7 +167,7 @@ func TestScopeCapture(t *testing.T) {
 		s := openScope(t, f)
 		must(t, second(s.Configure(t.Context(), twoChannels())))
 		_, err := s.Capture(t.Context())
-		wants(t, err, ErrReply, "3998 bytes", "2000 points")
+		wants(t, err, ErrReply, "1999 samples", "2000 are announced")
 	})
 	inBubble(t, "BeforeConfigure", func(t *testing.T) {
 		s := openScope(t, drivertest.NewScope())
@@ -224,28 +224,12 @@ func TestScalingOfAnotherShapeIsRefused(t *testing.T) {
 	}
 }
 
-func TestSamples(t *testing.T) {
-	for name, c := range map[string]struct {
-		w     dialect.Waveform
-		block []byte
-		want  []int16
-	}{
-		"BigEndian":    {dialect.Waveform{Samples: "int16", ByteOrder: "big"}, []byte{0xff, 0x80, 0x00, 0x7f, 0x0a, 0x0a}, []int16{-128, 127, 2570}},
-		"LittleEndian": {dialect.Waveform{Samples: "int16", ByteOrder: "little"}, []byte{0x80, 0xff, 0x7f, 0x00}, []int16{-128, 127}},
-		"Bytes":        {dialect.Waveform{Samples: "int8"}, []byte{0xfc, 0x7f}, []int16{-4, 127}}, // two's complement: 0xFC is -4
-	} {
-		if got := samples(c.block, &c.w); !slices.Equal(got, c.want) {
-			t.Errorf("%s: got %v, want %v", name, got, c.want)
-		}
-	}
-}
-
 func TestPolledCompletion(t *testing.T) {
 	inBubble(t, "AsksUntilDone", func(t *testing.T) {
 		f := drivertest.NewSupply()
 		conn, d := connect(t, &f.Listener, dialect.RoleSupply, "standard-supply")
 		own := *d
-		own.Completion = &dialect.Completion{Style: "polled", Ask: "*OPC?", Until: "1"}
+		own.Completion = &dialect.Completion{Style: "polled", Ask: "*OPC?", Until: []string{"1"}}
 		i := newInstrument(conn, &own, options("supply"))
 		must(t, conn.Resync(t.Context()))
 		before, n := f.Count("*OPC?"), 0

@@ -84,7 +84,7 @@ func (s *Supply) Protect(ctx context.Context, v si.Voltage) error {
 		return err
 	}
 	if s.has("over_voltage_arm") {
-		return s.ensure(ctx, "over_voltage_arm", s.put(1))
+		return s.ensure(ctx, "over_voltage_arm", s.put(0))
 	}
 	return nil
 }
@@ -95,6 +95,11 @@ func (s *Supply) SetOutput(ctx context.Context, on bool) error {
 	l, err := s.line(name)
 	if err != nil {
 		return err
+	}
+	if on && s.has("enable") {
+		if err := s.ensure(ctx, "enable", s.put(0)); err != nil {
+			return err
+		}
 	}
 	if err := s.tell(ctx, l, s.put(0)); err != nil {
 		return err
@@ -114,8 +119,8 @@ func (s *Supply) SetOutput(ctx context.Context, on bool) error {
 // Off sends the shortest output-off at once and waits for nothing. On a dead
 // link it is sent again on a new one.
 func (s *Supply) Off(ctx context.Context) error {
-	if s.d.Channel != nil {
-		if err := s.blind(ctx, s.d.Channel.Select); err != nil {
+	if c := s.d.Channel; c != nil && c.Select != nil {
+		if err := s.blind(ctx, *c.Select); err != nil {
 			return err
 		}
 	}
@@ -131,7 +136,9 @@ func (s *Supply) blind(ctx context.Context, l dialect.Line) error {
 	if err := s.conn.Blind(ctx, command); err != nil {
 		return s.fault(command, err)
 	}
-	s.lost.Store(false) // a lost link has been opened anew on the way
+	if s.lost.Swap(false) { // it has been opened anew on the way
+		s.greet.Store(true)
+	}
 	return nil
 }
 
