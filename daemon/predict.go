@@ -3,6 +3,7 @@ package main
 import (
 	"errors"
 
+	"nightbench/daemon/app"
 	"nightbench/instruments/si"
 	"nightbench/sweeps"
 	"nightbench/sweeps/predict"
@@ -12,8 +13,8 @@ import (
 
 // bandDraws and bandSeed are how a band is drawn where nobody asks for another: reproducible.
 const (
-	bandDraws = 1000
-	bandSeed  = 1
+	bandDraws = app.BandDraws
+	bandSeed  = app.BandSeed
 	mostDraws = 1_000_000
 )
 

@@ -20,3 +20,12 @@ func ParseFiles(plan, board File) (Plan, Board, error) {
 	}
 	return p, b, nil
 }
+
+// ParseBoard reads a board alone from a copy kept with a run.
+func ParseBoard(board File) (Board, error) {
+	f, err := userfile.Parse(board.Name, []byte(board.Text))
+	if err != nil {
+		return Board{}, err
+	}
+	return boardOf(f)
+}

@@ -133,7 +133,7 @@ func (d *Daemon) openPage(ctx context.Context, u *undo) error {
 	if err != nil {
 		return fmt.Errorf("the page's address: %w; choose another with --listen, port 0 takes any free one", err)
 	}
-	srv := web.New(web.Options{Store: d.store, Control: d, Page: ui.Page(), Token: token, Version: d.o.Version, Cautions: Cautions, Clock: d.clock, Log: d.o.Log})
+	srv := web.New(web.Options{Store: d.store, Control: d, Predict: newBoards(d.store), Page: ui.Page(), Token: token, Version: d.o.Version, Cautions: Cautions, Clock: d.clock, Log: d.o.Log})
 	local, err := web.ListenSocket(Socket(d.state.Dir()))
 	if err != nil {
 		return errors.Join(err, tcp.Close())

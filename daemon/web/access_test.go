@@ -50,7 +50,7 @@ func calls(t *testing.T) (all []call) {
 	api, _ := description(t)
 	bodies := map[string]string{"/api/runs": `{"plan":"/bench/plan.toml"}`}
 	for path, item := range api.OpenAPI().Paths {
-		filled := strings.ReplaceAll(path, "{id}", "1")
+		filled := strings.NewReplacer("{id}", "1", "{hash}", ofBoard).Replace(path)
 		if item.Get != nil {
 			all = append(all, call{http.MethodGet, filled, ""})
 		}
@@ -62,7 +62,7 @@ func calls(t *testing.T) (all []call) {
 			all = append(all, call{http.MethodPost, filled, body})
 		}
 	}
-	for _, p := range []string{"/", "/runs", "/runs/1", "/bench", "/assets/leaf-1a2b.js", "/icon.svg"} {
+	for _, p := range []string{"/", "/runs", "/runs/1", "/bench", "/boards", "/boards/" + ofBoard, "/assets/leaf-1a2b.js", "/icon.svg"} {
 		all = append(all, call{http.MethodGet, p, ""})
 	}
 	return all

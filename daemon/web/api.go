@@ -22,9 +22,11 @@ func (s *Server) newAPI(mux *http.ServeMux) huma.API {
 	}
 	api := humago.New(mux, config)
 	s.readCalls(api)
+	s.boardCalls(api)
 	s.controlCalls(api)
 	describeStream(api)
 	neverNull(api.OpenAPI().Components.Schemas)
+	seedAsText(api.OpenAPI().Components.Schemas)
 	return api
 }
 

@@ -89,7 +89,7 @@ func TestAnswersKeepTheDescription(t *testing.T) {
 				if op == nil {
 					continue
 				}
-				got := h.ask(method, strings.ReplaceAll(path, "{id}", "1"), `{"plan":"/p"}`, operator)
+				got := h.ask(method, strings.NewReplacer("{id}", "1", "{hash}", ofBoard).Replace(path), `{"plan":"/p"}`, operator)
 				keeps(t, api, op, got, method+" "+path)
 			}
 		}

@@ -71,6 +71,11 @@ func neverNull(r huma.Registry) {
 	}
 }
 
+// seedAsText says what the encoding makes of a run's seed: JavaScript keeps 53 bits of a number.
+func seedAsText(r huma.Registry) {
+	r.Map()["Run"].Properties["seed"] = &huma.Schema{Type: huma.TypeString, Pattern: `^\d+$`, Description: "Of the order of visit and the bands; a whole number of up to 64 bits."}
+}
+
 // describeStream puts the stream and its messages into the same description,
 // so that the page's types come from one file. The messages are told apart by
 // their one-value kind.

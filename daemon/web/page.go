@@ -24,7 +24,7 @@ or <a href="/api/status">what the bench is doing</a> as JSON.</p>
 `
 
 // routes are the views of the page; each is index.html, which looks at the address itself.
-var routes = []string{"/", "/runs", "/runs/{id}", "/bench"}
+var routes = []string{"/", "/runs", "/runs/{id}", "/bench", "/boards", "/boards/{hash}"}
 
 // page serves the built page, its files at the root.
 func page(files fs.FS) http.Handler {

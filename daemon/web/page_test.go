@@ -14,7 +14,7 @@ import (
 
 func TestPage(t *testing.T) {
 	h := newHouse(t)
-	for _, view := range []string{"/", "/runs", "/runs/12", "/bench"} {
+	for _, view := range []string{"/", "/runs", "/runs/12", "/bench", "/boards", "/boards/" + ofBoard} {
 		got := h.ask("GET", view, "", nil)
 		if got.status != http.StatusOK || !strings.Contains(got.body, "leaf") || got.header.Get("Content-Type") != "text/html; charset=utf-8" || got.header.Get("Cache-Control") != "no-cache" {
 			t.Errorf("%s: %d %s %v", view, got.status, got.body, got.header)

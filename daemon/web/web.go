@@ -64,6 +64,7 @@ type Controller interface {
 type Options struct {
 	Store    Journal
 	Control  Controller
+	Predict  Predictor
 	Page     fs.FS  // index.html at its root; without one a plain page says how to build it
 	Token    string // the operator's; empty: only the socket may control
 	Version  string
