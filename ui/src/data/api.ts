@@ -21,6 +21,40 @@ export interface paths {
         patch?: never;
         trace?: never;
     };
+    "/api/boards": {
+        parameters: {
+            query?: never;
+            header?: never;
+            path?: never;
+            cookie?: never;
+        };
+        /** Boards that runs were made of */
+        get: operations["boards"];
+        put?: never;
+        post?: never;
+        delete?: never;
+        options?: never;
+        head?: never;
+        patch?: never;
+        trace?: never;
+    };
+    "/api/boards/{hash}": {
+        parameters: {
+            query?: never;
+            header?: never;
+            path?: never;
+            cookie?: never;
+        };
+        /** One board: schematic, predicted curves, sensitivities, stress */
+        get: operations["board"];
+        put?: never;
+        post?: never;
+        delete?: never;
+        options?: never;
+        head?: never;
+        patch?: never;
+        trace?: never;
+    };
     "/api/continue": {
         parameters: {
             query?: never;
@@ -250,6 +284,164 @@ export interface components {
         Bench: {
             instruments: components["schemas"]["Instrument"][];
             wiring: components["schemas"]["Wiring"];
+        };
+        Board: {
+            /** @description The file's name when the newest run began. */
+            file: string;
+            /** @description SHA-256 of the file. */
+            hash: string;
+            /** Format: date-time */
+            last_run: string;
+            name: string;
+            revision: string;
+            /** @description Made of it, newest first. */
+            runs: number[];
+            /** @description Of the specimens, as given when the runs were started. */
+            serials: string[];
+        };
+        BoardCurve: {
+            at: number[];
+            quantities: {
+                [key: string]: components["schemas"]["CurveOfQuantity"];
+            };
+            /**
+             * Format: double
+             * @description Left out where the curve runs along it.
+             */
+            supply_voltage?: number;
+        };
+        BoardDetail: {
+            /**
+             * @description What the curves run along.
+             * @enum {string}
+             */
+            along: "pot_resistance" | "pot_position" | "supply_voltage";
+            board: components["schemas"]["Board"];
+            curves: components["schemas"]["BoardCurve"][];
+            /**
+             * Format: int64
+             * @description Boards drawn within tolerance for the bands.
+             */
+            draws: number;
+            /** @description What a plan over the curves' settings would be cautioned or refused for. */
+            findings: components["schemas"]["BoardFinding"][];
+            flags: components["schemas"]["Flag"][];
+            /** @description The greatest share of a rating over the curves' settings. */
+            hardest?: components["schemas"]["BoardHardest"];
+            /** @description Where along the pot it starts and stalls, in words. */
+            motor?: string;
+            /** @description Of the timing: plain, bypassed, steered, wiper or output-fed. */
+            network: string;
+            oscillation: components["schemas"]["BoardOscillation"];
+            /** @description Lowest and highest, in volts. */
+            rated_supply: number[];
+            schematic: components["schemas"]["Schematic"];
+            /** @description None where the board does not oscillate. */
+            sensitivities: components["schemas"]["BoardSensitivity"][];
+            /** @description Of all that follows. */
+            setting: components["schemas"]["BoardSetting"];
+            /**
+             * Format: double
+             * @description The pot's setting at which it just goes on running.
+             */
+            stalls?: number;
+            /**
+             * Format: double
+             * @description The pot's setting at which the motor just starts from rest.
+             */
+            starts?: number;
+            /** @description None where the board does not oscillate. */
+            stress: components["schemas"]["BoardStress"][];
+            values: {
+                [key: string]: components["schemas"]["Prediction"];
+            };
+        };
+        BoardFinding: {
+            /**
+             * Format: int64
+             * @description Settings it concerns.
+             */
+            count: number;
+            name: string;
+            /** @description A plan would be refused; otherwise a caution. */
+            refuse: boolean;
+            /** @description The worst. */
+            setting: components["schemas"]["BoardSetting"];
+            words: string;
+        };
+        BoardHardest: {
+            /** @description The rotor held is the harder case. */
+            held: boolean;
+            setting: components["schemas"]["BoardSetting"];
+            stress: components["schemas"]["BoardStress"];
+        };
+        BoardOscillation: {
+            at?: components["schemas"]["BoardSetting"];
+            /**
+             * Format: int64
+             * @description And where it does but some boards within tolerance do not.
+             */
+            doubtful: number;
+            /**
+             * Format: int64
+             * @description Of those, where the board of nominal parts does not oscillate.
+             */
+            never: number;
+            /**
+             * Format: int64
+             * @description Looked at.
+             */
+            settings: number;
+            /** @description Of the first such setting. */
+            words?: string;
+        };
+        BoardSensitivity: {
+            part: string;
+            unit: string;
+            values: {
+                [key: string]: number;
+            };
+        };
+        BoardSetting: {
+            /**
+             * Format: double
+             * @description In ohms, or the share of the track in the charging path, as along says; left out where there is none.
+             */
+            pot?: number;
+            /** Format: double */
+            supply_voltage: number;
+            /**
+             * Format: double
+             * @description Of the surroundings, in degrees Celsius.
+             */
+            temperature: number;
+        };
+        BoardStress: {
+            /**
+             * Format: double
+             * @description With the rotor held; the same for a load that does not turn.
+             */
+            held: number;
+            /** Format: double */
+            held_share?: number;
+            part: string;
+            /**
+             * Format: double
+             * @description Left out where none is known.
+             */
+            rating?: number;
+            /** Format: double */
+            running: number;
+            /**
+             * Format: double
+             * @description Of the rating.
+             */
+            running_share?: number;
+            unit: string;
+            what: string;
+        };
+        Boards: {
+            boards: components["schemas"]["Board"][];
         };
         ByRequest: {
             by?: string;
@@ -492,8 +684,8 @@ export interface components {
             quantities: ("duty" | "frequency" | "period" | "t_high" | "t_low" | "average_voltage" | "high_level" | "low_level" | "output_drop" | "ripple" | "rise_time" | "fall_time" | "jitter" | "overshoot" | "motor_current" | "output_current" | "supply_voltage" | "supply_current" | "supply_power" | "back_emf" | "conduction" | "speed" | "pot_resistance" | "control_voltage" | "ambient")[];
             reason: string;
             revision: string;
-            /** Format: int64 */
-            seed: number;
+            /** @description Of the order of visit and the bands; a whole number of up to 64 bits. */
+            seed: string;
             /** Format: date-time */
             started_at: string;
             /** @enum {string} */
@@ -507,6 +699,23 @@ export interface components {
         };
         Runs: {
             runs: components["schemas"]["Run"][];
+        };
+        Schematic: {
+            nodes: components["schemas"]["SchematicNode"][];
+            parts: components["schemas"]["SchematicPart"][];
+        };
+        SchematicNode: {
+            also?: string[];
+            inner?: boolean;
+            name: string;
+        };
+        SchematicPart: {
+            kind: string;
+            name: string;
+            terminals: components["schemas"]["Terminal"][];
+            tolerance?: string;
+            value: string;
+            written?: string;
         };
         ScopeChannelWiring: {
             between: string[];
@@ -576,6 +785,10 @@ export interface components {
             max_voltage: number;
             /** Format: double */
             over_voltage: number;
+        };
+        Terminal: {
+            node: string;
+            pin?: string;
         };
         Vitals: {
             /** Format: date-time */
@@ -681,6 +894,137 @@ export interface operations {
             };
             /** @description Not Found */
             404: {
+                headers: {
+                    [name: string]: unknown;
+                };
+                content: {
+                    "application/problem+json": components["schemas"]["ErrorModel"];
+                };
+            };
+            /** @description Internal Server Error */
+            500: {
+                headers: {
+                    [name: string]: unknown;
+                };
+                content: {
+                    "application/problem+json": components["schemas"]["ErrorModel"];
+                };
+            };
+            /** @description Service Unavailable */
+            503: {
+                headers: {
+                    [name: string]: unknown;
+                };
+                content: {
+                    "application/problem+json": components["schemas"]["ErrorModel"];
+                };
+            };
+        };
+    };
+    boards: {
+        parameters: {
+            query?: never;
+            header?: never;
+            path?: never;
+            cookie?: never;
+        };
+        requestBody?: never;
+        responses: {
+            /** @description OK */
+            200: {
+                headers: {
+                    [name: string]: unknown;
+                };
+                content: {
+                    "application/json": components["schemas"]["Boards"];
+                };
+            };
+            /** @description Forbidden */
+            403: {
+                headers: {
+                    [name: string]: unknown;
+                };
+                content: {
+                    "application/problem+json": components["schemas"]["ErrorModel"];
+                };
+            };
+            /** @description Not Found */
+            404: {
+                headers: {
+                    [name: string]: unknown;
+                };
+                content: {
+                    "application/problem+json": components["schemas"]["ErrorModel"];
+                };
+            };
+            /** @description Internal Server Error */
+            500: {
+                headers: {
+                    [name: string]: unknown;
+                };
+                content: {
+                    "application/problem+json": components["schemas"]["ErrorModel"];
+                };
+            };
+            /** @description Service Unavailable */
+            503: {
+                headers: {
+                    [name: string]: unknown;
+                };
+                content: {
+                    "application/problem+json": components["schemas"]["ErrorModel"];
+                };
+            };
+        };
+    };
+    board: {
+        parameters: {
+            query?: {
+                /** @description Volts; left out or 0: one of the newest run's. */
+                supply?: number;
+                /** @description Ohms, or the share of the track in the charging path; left out: amid what the newest run visits. */
+                pot?: number;
+                /** @description Degrees Celsius. */
+                temperature?: number;
+            };
+            header?: never;
+            path: {
+                /** @description The board file's SHA-256. */
+                hash: string;
+            };
+            cookie?: never;
+        };
+        requestBody?: never;
+        responses: {
+            /** @description OK */
+            200: {
+                headers: {
+                    [name: string]: unknown;
+                };
+                content: {
+                    "application/json": components["schemas"]["BoardDetail"];
+                };
+            };
+            /** @description Forbidden */
+            403: {
+                headers: {
+                    [name: string]: unknown;
+                };
+                content: {
+                    "application/problem+json": components["schemas"]["ErrorModel"];
+                };
+            };
+            /** @description Not Found */
+            404: {
+                headers: {
+                    [name: string]: unknown;
+                };
+                content: {
+                    "application/problem+json": components["schemas"]["ErrorModel"];
+                };
+            };
+            /** @description Unprocessable Entity */
+            422: {
                 headers: {
                     [name: string]: unknown;
                 };
