@@ -9,7 +9,7 @@ import (
 
 // check refuses a board that cannot work whatever the setpoint; the words name nodes and numbers.
 func (m *Model) check() error {
-	for _, test := range []func() error{m.checkParts, m.checkNetwork, m.checkStage, m.checkLoad} {
+	for _, test := range []func() error{m.checkParts, m.checkNetwork, m.checkStage, m.checkLoad, m.checkMeans} {
 		if err := test(); err != nil {
 			return fmt.Errorf("board %q: %w", m.board.Name, err)
 		}
@@ -106,7 +106,7 @@ func (m *Model) checkTurnsOn() error {
 	}
 	p := m.nominal
 	m.warm(&p, reference)
-	out := output{supply, m.drop, m.low, p.timer.dropScale, p.timer.lowScale, 0, false}
+	out := output{supply, m.drop, m.low, p.timer.dropScale, p.timer.lowScale, 0, false, 0}
 	d := m.control(&p, &out, 0)
 	if m.on(&p, &d) {
 		return nil
@@ -133,6 +133,33 @@ func (m *Model) checkLoad() error {
 		return fmt.Errorf("load.to is for stage none; behind a transistor the load stands between supply and collector or drain")
 	case l.k > 0 && l.static > 0 && l.static < l.coulomb:
 		return fmt.Errorf("load.static_torque %s is below coulomb_torque %s: what stands is never easier to move than what turns", show(l.static, si.NewtonMetre), show(l.coulomb, si.NewtonMetre))
+	}
+	return nil
+}
+
+// checkMeans drives the load without a pause at the lowest rated supply: what is
+// beyond its driver there is so at every setpoint.
+func (m *Model) checkMeans() error {
+	supply := m.board.RatedSupply[0].SI()
+	if supply <= 0 {
+		return nil
+	}
+	c := conditions{supply: supply, pot: 0.5, kelvin: reference, held: HeldHigh}
+	name, limit := string(m.board.Driver.Stage), m.rated.transistor.MaxCurrent.Typical
+	if m.board.Driver.Stage == sweeps.StageNone {
+		name, limit = "timer's output O", m.rated.timer.MaxOutputCurrent.Typical
+		if m.board.Load.ToSupply {
+			c.held = HeldLow
+		}
+	}
+	o := m.solve(&m.nominal, c)
+	switch {
+	case o.starved:
+		return fmt.Errorf("load: on %s already it would draw %s, but %s into the base lets the %s carry %s; lower driver.base_resistor",
+			show(supply, si.Volt), show(o.wave.peak, si.Ampere), show(o.base, si.Ampere), name, show(m.nominal.switchPart.gain()*o.base, si.Ampere))
+	case limit > 0 && o.wave.peak > limit:
+		return fmt.Errorf("load: on %s already it draws %s, more than the %s the %s may carry",
+			show(supply, si.Volt), show(o.wave.peak, si.Ampere), show(limit, si.Ampere), name)
 	}
 	return nil
 }

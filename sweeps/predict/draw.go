@@ -111,7 +111,7 @@ func (e *Ensemble) bands(s Setting, nominal *outcome, rows []row) band {
 			}
 		}
 	})
-	b.widen(nominal)
+	b.widen(e.m, nominal)
 	return b
 }
 
@@ -125,21 +125,35 @@ func columnOf(into []float64, rows []row, i int) []float64 {
 	return into
 }
 
-// widen makes room for what constant speed leaves out: half the peak-to-peak
-// change of speed in a period, T/τm·D(1−D)/2 of the value, on all the motor decides.
-func (b *band) widen(o *outcome) {
-	ratio := o.ripple()
-	if ratio < rippleLimit || o.k == 0 || o.stop != oscillates {
+// widen makes room for what the laws leave out. A speed that is not constant: half
+// the peak-to-peak change in a period, T/τm·D(1−D)/2 of the value, on all that the
+// motor decides. A winding that shares the output with the timing network: on everything but what is set.
+func (b *band) widen(m *Model, o *outcome) {
+	if o.stop != oscillates {
 		return
 	}
-	d := o.high / (o.high + o.low)
-	share := math.Min(0.5, ratio*d*(1-d)/2)
-	for _, i := range []int{qAverageVoltage, qMotorCurrent, qSupplyCurrent, qSupplyPower, qBackEMF, qConduction, qSpeed, qOutputDrop} {
-		extra := share * math.Abs(b.value[i])
-		b.low[i] -= extra
-		b.high[i] += extra
+	if share := m.shared(); share > 0 && o.held == Oscillating {
+		for i := range b.value {
+			if i != qSupplyVoltage && i != qPotResistance && i != qControlVoltage && i != qAmbient {
+				b.grow(i, share)
+			}
+		}
 	}
+	if ratio := o.ripple(); ratio >= rippleLimit && o.k > 0 {
+		d := o.high / (o.high + o.low)
+		for _, i := range []int{qAverageVoltage, qMotorCurrent, qSupplyCurrent, qSupplyPower, qBackEMF, qConduction, qSpeed, qOutputDrop} {
+			b.grow(i, math.Min(0.5, ratio*d*(1-d)/2))
+		}
+	}
+	b.high[qDuty] = math.Min(1, b.high[qDuty])
 	b.high[qConduction] = math.Min(1, b.high[qConduction])
+}
+
+// grow moves both limits of a quantity out by a share of its value.
+func (b *band) grow(i int, share float64) {
+	extra := share * math.Abs(b.value[i])
+	b.low[i] -= extra
+	b.high[i] += extra
 }
 
 // workers is how many goroutines compute at once.

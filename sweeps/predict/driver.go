@@ -41,10 +41,10 @@ func (m *Model) on(p *parts, d *driver) bool {
 }
 
 // connect sets the sources, straightened at the mean currents while driven and while freewheeling.
-func (m *Model) connect(d *driver, p *parts, c *conditions, out *output, iOn, iFree, extra float64) {
+func (m *Model) connect(d *driver, p *parts, c *conditions, out *output, iOn, iFree, extra, idle float64) {
 	stage := m.board.Driver.Stage
 	if stage == sweeps.StageNone {
-		m.connectOutput(d, p, c, out, iOn, iFree, extra)
+		m.connectOutput(d, p, c, out, iOn, iFree, extra, idle)
 		return
 	}
 	v, r := 0.0, 0.0
@@ -68,14 +68,20 @@ func (m *Model) connect(d *driver, p *parts, c *conditions, out *output, iOn, iF
 // connectOutput is a load on the timer's own output, to ground or to the supply.
 // A MOS output conducts both ways at its on-resistance; a bipolar one takes current
 // backwards only through a junction, and brakes the winding through the other rail's side.
-func (m *Model) connectOutput(d *driver, p *parts, c *conditions, out *output, iOn, iFree, extra float64) {
+// extra is what the timing network adds to the output's current while driven, idle while not.
+func (m *Model) connectOutput(d *driver, p *parts, c *conditions, out *output, iOn, iFree, extra, idle float64) {
 	toGround := !m.board.Load.ToSupply
 	v, r := out.level(toGround, iOn+extra)
-	idle, rIdle := out.level(!toGround, 0)
+	rest, rRest := out.level(!toGround, 0)
 	if toGround {
-		d.sources[driven], d.sources[braked] = source{v + r*iOn, r}, source{idle, rIdle}
+		d.sources[driven], d.sources[braked] = source{v + r*iOn, r}, source{rest, rRest}
 	} else {
-		d.sources[driven], d.sources[braked] = source{c.supply - v + r*iOn, r}, source{c.supply - idle, rIdle}
+		d.sources[driven], d.sources[braked] = source{c.supply - v + r*iOn, r}, source{c.supply - rest, rRest}
+	}
+	if out.pull > 0 { // the timing network's charge comes through the load
+		v, _ := out.level(true, idle)
+		d.sources[free] = source{c.supply - v, 0}
+		return
 	}
 	if m.rated.timer.PushPull {
 		d.sources[clamped], d.sources[free] = d.sources[driven], d.sources[braked]

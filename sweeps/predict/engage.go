@@ -9,7 +9,8 @@ type engaged struct {
 	o       *outcome
 	p       *parts
 	c       *conditions
-	extra   float64
+	extra   float64 // A of the timing network on the output, while the load is driven
+	idle    float64 // and while not
 	y       cycle
 	on, fly float64 // A, where the curves are straightened
 }
@@ -23,7 +24,7 @@ func (e *engaged) turn(emf float64) (moved float64) {
 }
 
 func (e *engaged) straighten() {
-	e.m.connect(&e.o.driver, e.p, e.c, &e.o.output, e.on, e.fly, e.extra)
+	e.m.connect(&e.o.driver, e.p, e.c, &e.o.output, e.on, e.fly, e.extra, e.idle)
 	e.y.sources = e.o.sources
 }
 

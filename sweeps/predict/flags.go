@@ -18,6 +18,7 @@ const (
 	Unsaturated   = "unsaturated"    // not enough base current for the collector's peak
 	OutputLimit   = "output_limit"   // more current than the timer's output may carry
 	SupplyRange   = "supply_range"   // outside the supply the board or its timer is rated for
+	SharedOutput  = "shared_output"  // an output-fed network on the same output as a winding: wider band
 	NoFlyback     = "no_flyback"     // an inductive load's current is cut by the transistor's breakdown
 )
 
@@ -42,6 +43,9 @@ func (m *Model) flags(o *outcome, s Setting) []sweeps.Flag {
 		return fs
 	}
 	m.flagDriver(o, add)
+	if share := m.shared(); share > 0 {
+		add(SharedOutput, "the winding's current moves the output that feeds the timing network: times are good to %.0f %% only, the band is widened; give the load a transistor", 100*share)
+	}
 	if o.k > 0 && o.isOn {
 		m.flagMotor(o, s, add)
 	}
@@ -120,9 +124,23 @@ func (m *Model) flagMotor(o *outcome, s Setting, add func(string, string, ...any
 	}
 }
 
+// shared is by how much, relative, a winding on the output of an output-fed network
+// moves times and means: freewheeling holds the node beyond a rail, which the laws
+// of the timing network leave out. Bounds of what circuit simulation of a dozen such boards showed.
+func (m *Model) shared() float64 {
+	l := &m.nominal.load
+	switch {
+	case m.board.Timing.Network != sweeps.OutputFed || m.board.Driver.Stage != sweeps.StageNone || l.k == 0 && l.l == 0:
+		return 0
+	case m.board.Load.ToSupply:
+		return 0.2
+	}
+	return 0.1
+}
+
 // ripple is T/τm, 0 where no inertia is given.
 func (o *outcome) ripple() float64 {
-	if o.mechanical <= 0 {
+	if o.mechanical <= 0 || o.held != Oscillating {
 		return 0
 	}
 	return (o.high + o.low) / o.mechanical

@@ -167,7 +167,7 @@ func TestJudgeRefusesAboveRatings(t *testing.T) {
 }
 
 func TestDriverFlags(t *testing.T) {
-	rb := ohms(100e3)
+	rb := ohms(4.7e3)
 	for _, c := range []struct {
 		name  string
 		board func(b *sweeps.Board)

@@ -66,20 +66,31 @@ func (o *outcome) row() row {
 	if o.stop != oscillates {
 		return r
 	}
+	if o.held == Oscillating {
+		o.timeRow(&r)
+	}
+	if o.high > 0 {
+		r[qHighLevel] = o.highLevel
+	}
+	if o.low > 0 {
+		r[qLowLevel] = o.lowLevel
+	}
+	o.loadRow(&r)
+	return r
+}
+
+// timeRow is what the timing network decides.
+func (o *outcome) timeRow(r *row) {
 	period := o.high + o.low
 	r[qDuty] = o.high / period
 	r[qFrequency] = 1 / period
 	r[qPeriod] = period
 	r[qTHigh] = o.high
 	r[qTLow] = o.low
-	r[qHighLevel] = o.highLevel
-	r[qLowLevel] = o.lowLevel
 	if o.edge > 0 {
 		r[qRiseTime] = o.edge
 		r[qFallTime] = o.edge
 	}
-	o.loadRow(&r)
-	return r
 }
 
 // loadRow is what the load decides. Of a transistor out of saturation there is

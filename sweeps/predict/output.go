@@ -103,6 +103,7 @@ type output struct {
 	dropScale, lows float64
 	shift           float64 // V added to the drop, from temperature
 	bothWays        bool    // a MOS output, which conducts backwards at the resistance it has at no current
+	pull            float64 // Ω of a resistor from the output to the supply, its load; 0: none
 }
 
 // high is the high level while i amperes are sourced, and the resistance it falls with. It never falls below ground.
@@ -135,10 +136,31 @@ func (o *output) back(i float64) float64 {
 
 // level is high or low at a current counted away from the output when high, into it when low.
 func (o *output) level(isHigh bool, i float64) (v, r float64) {
-	if isHigh {
-		return o.high(i)
+	switch {
+	case !isHigh:
+		return o.sink(i)
+	case o.pull > 0:
+		return o.pulled(i)
 	}
-	return o.sink(i)
+	return o.high(i)
+}
+
+// pulled is the high level with a load to the supply, which sources part of the
+// current; all of it as long as that leaves the node above the output's own level.
+func (o *output) pulled(i float64) (v, r float64) {
+	own, _ := o.high(0)
+	if all := o.supply - o.pull*i; !o.bothWays && all >= own {
+		return all, o.pull
+	}
+	x := i
+	for range 20 {
+		v, r = o.high(x)
+		step := (x + (o.supply-v)/o.pull - i) / (1 + r/o.pull)
+		if x -= step; math.Abs(step) <= 1e-12 {
+			break
+		}
+	}
+	return v, r / (1 + r/o.pull)
 }
 
 // into solves the current that the high output, sourcing extra amperes besides,

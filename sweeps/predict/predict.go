@@ -98,12 +98,26 @@ type Setting struct {
 	Pot         float64 `json:"pot"`            // Ω between the pot's two used terminals; network wiper: share of the track in the charging path
 	Temperature float64 `json:"temperature"`    // °C; Reference where nobody measured
 	Burden      float64 `json:"burden"`         // Ω in series in the motor's loop, a meter's
+	Output      Output  `json:"timer_output,omitempty"`
 }
+
+// Output says what the timer's output does: it oscillates, or a person or a wire
+// holds it, which is how a static drop is measured.
+type Output string
+
+// The outputs.
+const (
+	Oscillating Output = ""
+	HeldHigh    Output = "high"
+	HeldLow     Output = "low"
+)
 
 // check refuses a setting no board can be in.
 func (m *Model) checkSetting(s Setting) error {
 	t := &m.board.Timing
 	switch {
+	case s.Output != Oscillating && s.Output != HeldHigh && s.Output != HeldLow:
+		return fmt.Errorf("timer output %q: hold it %q or %q, or leave it to oscillate", s.Output, HeldHigh, HeldLow)
 	case !(s.Supply > 0) || math.IsInf(s.Supply, 1):
 		return fmt.Errorf("supply of %g V: give a voltage above 0 V", s.Supply)
 	case !(s.Burden >= 0) || math.IsInf(s.Burden, 1):
@@ -119,14 +133,18 @@ func (m *Model) checkSetting(s Setting) error {
 }
 
 // conditions is a setting as the laws use it.
-type conditions struct{ supply, pot, kelvin, burden float64 }
+type conditions struct {
+	supply, pot, kelvin, burden float64
+	held                        Output
+}
 
 func (s Setting) conditions() conditions {
-	return conditions{s.Supply, s.Pot, s.Temperature + 273.15, s.Burden}
+	return conditions{s.Supply, s.Pot, s.Temperature + 273.15, s.Burden, s.Output}
 }
 
 // Result is what a board does at a setting. A quantity that has no value there is
-// absent from Values; a board that does not oscillate has only what it rests at.
+// absent from Values; a board that does not oscillate has only what it rests at, one
+// whose output is held no times.
 type Result struct {
 	Values     map[sweeps.Quantity]float64 `json:"values"`
 	Flags      []sweeps.Flag               `json:"flags"`
@@ -139,7 +157,7 @@ func (m *Model) At(s Setting) (Result, error) {
 		return Result{}, fmt.Errorf("board %q: %w", m.board.Name, err)
 	}
 	o := m.solve(&m.nominal, s.conditions())
-	return Result{Values: o.values(), Flags: m.flags(&o, s), Oscillates: o.stop == oscillates}, nil
+	return Result{Values: o.values(), Flags: m.flags(&o, s), Oscillates: o.stop == oscillates && s.Output == Oscillating}, nil
 }
 
 func keys(m map[string]float64) []string {

@@ -49,12 +49,12 @@ func TestDatasheetExample(t *testing.T) {
 func TestBipolarOutputTables(t *testing.T) {
 	m := mustNew(t, pump(), Options{})
 	for _, c := range []struct{ supply, current, high float64 }{{5, 0.1, 3.3}, {15, 0.1, 13.3}, {15, 0.2, 12.5}} {
-		o := output{c.supply, m.drop, m.low, 1, 1, 0, false}
+		o := output{c.supply, m.drop, m.low, 1, 1, 0, false, 0}
 		v, _ := o.high(c.current)
 		near(t, "high level", v, c.high, 1e-9)
 	}
 	for _, c := range []struct{ supply, current, low float64 }{{5, 5e-3, 0.1}, {5, 8e-3, 0.15}, {15, 10e-3, 0.1}, {15, 50e-3, 0.4}, {15, 100e-3, 2}, {15, 200e-3, 2.5}} {
-		o := output{c.supply, m.drop, m.low, 1, 1, 0, false}
+		o := output{c.supply, m.drop, m.low, 1, 1, 0, false, 0}
 		v, _ := o.sink(c.current)
 		near(t, "low level", v, c.low, 1e-9)
 	}

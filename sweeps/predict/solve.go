@@ -77,6 +77,7 @@ type outcome struct {
 	isOn       bool
 	k          float64 // V s/rad; 0: the load is no motor
 	usesPot    bool
+	held       Output
 	edge       float64
 }
 
@@ -84,10 +85,17 @@ type outcome struct {
 func (m *Model) solve(nominal *parts, c conditions) (o outcome) {
 	p := *nominal
 	m.warm(&p, c.kelvin)
-	o.output = output{c.supply, m.drop, m.low, p.timer.dropScale, p.timer.lowScale, p.timer.dropShift, m.rated.timer.PushPull}
+	o.output = output{c.supply, m.drop, m.low, p.timer.dropScale, p.timer.lowScale, p.timer.dropShift, m.rated.timer.PushPull, 0}
+	if m.board.Load.ToSupply && p.load.k == 0 && p.load.l == 0 {
+		o.output.pull = p.load.r + c.burden
+	}
 	o.supply, o.temperature, o.pot, o.edge = c.supply, c.kelvin-273.15, c.pot, p.timer.edge
 	o.k, o.usesPot = p.load.k, m.board.Timing.UsesPot()
-	if m.board.Timing.Network == sweeps.OutputFed {
+	switch {
+	case c.held != Oscillating:
+		m.solveHeld(&o, &p, &c)
+		return o
+	case m.board.Timing.Network == sweeps.OutputFed:
 		m.solveFed(&o, &p, &c)
 		return o
 	}
@@ -98,6 +106,18 @@ func (m *Model) solve(nominal *parts, c conditions) (o outcome) {
 		m.account(&o, &p, &c)
 	}
 	return o
+}
+
+// solveHeld is a board whose output stays where it is: a period of one second, all of it high or low.
+func (m *Model) solveHeld(o *outcome, p *parts, c *conditions) {
+	o.held = c.held
+	o.threshold, o.trigger = m.thresholds(p, c)
+	o.high, o.low = 1, 0
+	if c.held == HeldLow {
+		o.high, o.low = 0, 1
+	}
+	m.drive(o, p, c, 0, 0)
+	m.account(o, p, c)
 }
 
 // solveFed solves timing and load together, each loading the output for the other: at most 20 rounds.
@@ -140,9 +160,9 @@ func (s *spell) mean() float64 {
 func (m *Model) drive(o *outcome, p *parts, c *conditions, high, low float64) {
 	o.driver = m.control(p, &o.output, high)
 	o.isOn = m.on(p, &o.driver)
-	e := engaged{m: m, o: o, p: p, c: c, extra: high, y: m.cycle(o, p, c)}
+	e := engaged{m: m, o: o, p: p, c: c, extra: high, idle: low, y: m.cycle(o, p, c)}
 	if m.board.Load.ToSupply {
-		e.extra = low
+		e.extra, e.idle = low, high
 	}
 	e.on = 0.5 * c.supply / (p.load.r + c.burden)
 	if p.load.k > 0 {
@@ -182,7 +202,7 @@ func (m *Model) account(o *outcome, p *parts, c *conditions) {
 	}
 	load := (o.wave.spells[driven].q + o.wave.spells[clamped].q) / period // clamped: back into the supply
 	high, low := m.carried(o)
-	o.highLevel, _ = o.output.high(high + charging)
+	o.highLevel, _ = o.output.level(true, high+charging)
 	o.lowLevel, _ = o.output.sink(low)
 	if m.board.Driver.Stage == sweeps.StageNone {
 		o.outputCurrent = load
@@ -196,14 +216,20 @@ func (m *Model) account(o *outcome, p *parts, c *conditions) {
 	o.average = m.mean(o, c, m.o.Average[0]) - m.mean(o, c, m.o.Average[1])
 }
 
-// offLevel is the output's level in the phase that does not drive the load: beyond
-// the rail while current freewheels, if that takes most of the phase.
+// offLevel is the output's level in the phase that does not drive a winding: beyond
+// the rail while current freewheels, at the other side's drop while it brakes, off
+// the supply by the back-EMF at rest; whichever lasts longest.
 func (m *Model) offLevel(o *outcome) {
-	f := &o.wave.spells[free]
-	if f.t <= o.wave.spells[braked].t+o.wave.spells[resting].t {
+	longest := &o.wave.spells[free]
+	for _, s := range []state{braked, resting} {
+		if o.wave.spells[s].t > longest.t {
+			longest = &o.wave.spells[s]
+		}
+	}
+	if longest.t == 0 || o.k == 0 {
 		return
 	}
-	v := f.volts / f.t
+	v := longest.volts / longest.t
 	if m.board.Load.ToSupply {
 		o.highLevel = o.supply - v
 		return

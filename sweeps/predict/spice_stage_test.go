@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"math/rand/v2"
+	"strings"
 	"testing"
 
 	"nightbench/instruments/si"
@@ -14,6 +15,7 @@ import (
 type stageCase struct {
 	stage    sweeps.Stage
 	toSupply bool
+	fed      bool // the timing network hangs on the same output
 }
 
 // read sets quantities from text, as a board file would.
@@ -36,6 +38,10 @@ func randomStage(t *testing.T, r *rand.Rand, c stageCase, motor bool) sweeps.Boa
 	}
 	dischargePin(&b, 15)
 	straightOutput(&b, 1.2, 6, 10)
+	if c.fed {
+		b.Timing = timing(sweeps.OutputFed, between(r, 1e3, 10e3), between(r, 1e3, 10e3), between(r, 22e-9, 100e-9), tableDiodes["1N4148"])
+		b.Timing.Common = fixedR(between(r, 100, 1e3))
+	}
 	b.Driver.Stage = c.stage
 	b.Load.ToSupply = c.toSupply
 	base := ohms(between(r, 330, 1e3))
@@ -89,9 +95,9 @@ func spiceStage(d *deck, m *Model, s Setting, speed float64) {
 			va, vb = "s", "o"
 		}
 	case sweeps.StageNPN:
-		d.add(bjt+"\nrbb o b %g\nq1 c b 0 qn", p.switchPart.base)
+		d.add(bjt+"\nrbb o bb %g\nq1 c bb 0 qn", p.switchPart.base)
 	case sweeps.StageDarlington:
-		d.add(bjt+"\nrbb o b %g\nq1 c b e qn\nq2 c e 0 qn\nree e 0 100k\nce e 0 20p\ncb b 0 20p", p.switchPart.base)
+		d.add(bjt+"\nrbb o bb %g\nq1 c bb e qn\nq2 c e 0 qn\nree e 0 100k\nce e 0 20p\ncb bb 0 20p", p.switchPart.base)
 	case sweeps.StageNMOS:
 		d.add(".model nm nmos(level=1 vto=1.2 kp=%g)\nm1 c o 0 0 nm w=1 l=1", 1/(0.05*(4.5-1.2)))
 	}
@@ -117,33 +123,42 @@ func spiceStage(d *deck, m *Model, s Setting, speed float64) {
 // simulatedStages simulates eight whole boards of each stage, half of them with motors.
 func simulatedStages(t *testing.T) (all []*accuracy) {
 	needSpice(t)
-	for k, c := range []stageCase{{sweeps.StageNone, false}, {sweeps.StageNone, true}, {sweeps.StageNPN, false}, {sweeps.StageDarlington, false}, {sweeps.StageNMOS, false}} {
+	for k, c := range []stageCase{
+		{stage: sweeps.StageNone}, {stage: sweeps.StageNone, toSupply: true}, {stage: sweeps.StageNPN}, {stage: sweeps.StageDarlington}, {stage: sweeps.StageNMOS},
+		{stage: sweeps.StageNone, fed: true}, {stage: sweeps.StageNone, toSupply: true, fed: true}, {stage: sweeps.StageNPN, fed: true},
+	} {
 		name := "simulated stage " + string(c.stage)
 		if c.toSupply {
 			name += " to supply"
 		}
+		if c.fed {
+			name += ", output-fed"
+		}
+		high := &accuracy{name: name + ", t_high", bound: 0.005}
 		current, voltage, supply := &accuracy{name: name + ", load A", bound: 0.02}, &accuracy{name: name + ", load V", bound: 0.02}, &accuracy{name: name + ", supply A", bound: 0.02}
 		r := rand.New(rand.NewPCG(uint64(k), 7))
 		for n := range 8 {
-			m := mustNew(t, randomStage(t, r, c, n%2 == 1), Options{})
+			motor := n%2 == 1 && !(c.fed && c.stage == sweeps.StageNone) // a winding on a shared output is flagged instead
+			m := mustNew(t, randomStage(t, r, c, motor), Options{})
 			s := Setting{Supply: []float64{5, 9, 12, 15}[r.IntN(4)], Temperature: Reference}
 			v := mustAt(t, m, s)
-			if n%2 == 1 && v[sweeps.Speed] == 0 {
+			if motor && v[sweeps.Speed] == 0 {
 				t.Fatalf("case %d stands still", n)
 			}
 			got := balanced(t, m, s, v)
 			what := fmt.Sprintf("case %d at %g V, duty %.2f, load %+v", n, s.Supply, v[sweeps.Duty], m.nominal.load)
+			high.add(t, v[sweeps.THigh], got.high, what)
 			current.add(t, v[sweeps.MotorCurrent], got.current, what)
 			voltage.add(t, v[sweeps.AverageVoltage], got.voltage, what)
 			supply.add(t, v[sweeps.SupplyCurrent], got.supply, what)
 		}
-		all = append(all, current, voltage, supply)
+		all = append(all, high, current, voltage, supply)
 	}
 	return all
 }
 
 // means are a simulated board's, over its last whole period.
-type means struct{ current, voltage, supply float64 }
+type means struct{ current, voltage, supply, high float64 }
 
 // simulateStage runs a board with its shaft held at a speed, for six electrical time constants at least.
 func simulateStage(t *testing.T, m *Model, s Setting, v map[sweeps.Quantity]float64, speed float64) means {
@@ -156,10 +171,11 @@ func simulateStage(t *testing.T, m *Model, s Setting, v map[sweeps.Quantity]floa
 	tr := d.simulate(t, "v(h)", "i(vi)", "v(vl)", "i(vs)")
 	up := tr.crossings("v(h)", 0.5, true)
 	if len(up) < 3 {
-		t.Fatalf("only %d periods simulated", len(up))
+		t.Fatalf("only %d periods simulated, predicted %v\n%s", len(up), v, strings.Join(d.lines, "\n"))
 	}
-	from, to := up[len(up)-2], up[len(up)-1]
-	return means{tr.mean("i(vi)", from, to), tr.mean("v(vl)", from, to), -tr.mean("i(vs)", from, to)}
+	from, to := up[len(up)-2], up[len(up)-1] // the last whole period
+	high, _ := tr.rhythm(t)
+	return means{tr.mean("i(vi)", from, to), tr.mean("v(vl)", from, to), -tr.mean("i(vs)", from, to), high}
 }
 
 // balanced is the simulated board at the speed where its mean torque equals
@@ -179,5 +195,5 @@ func balanced(t *testing.T, m *Model, s Setting, v map[sweeps.Quantity]float64) 
 	fb, b := excess(1.01 * w)
 	f := fa / (fa - fb) // share of the way from a to b
 	mix := func(x, y float64) float64 { return x + f*(y-x) }
-	return means{mix(a.current, b.current), mix(a.voltage, b.voltage), mix(a.supply, b.supply)}
+	return means{mix(a.current, b.current), mix(a.voltage, b.voltage), mix(a.supply, b.supply), mix(a.high, b.high)}
 }
