@@ -32,18 +32,19 @@ var edges = map[string][]string{
 	"sweeps/predict":                {"instruments", "instruments/si", "sweeps", "sweeps/uncertainty", "sweeps/internal/numeric"},
 	"sweeps/pulse":                  {"instruments", "instruments/si", "sweeps", "sweeps/uncertainty", "sweeps/internal/numeric"},
 	"sweeps/pulse/capture":          {"instruments/si", "sweeps/pulse"},
+	"sweeps/pulse/figure":           {"instruments/si", "sweeps/pulse"},
 	"sweeps/derive":                 {"instruments", "instruments/si", "sweeps", "sweeps/uncertainty", "sweeps/pulse"},
 	"sweeps/schedule":               {"instruments", "instruments/si", "sweeps"},
 	"sweeps/runner":                 {"instruments", "instruments/si", "sweeps", "sweeps/derive", "sweeps/schedule"},
 	"daemon/store":                  {"instruments", "instruments/si", "sweeps", "migrations"},
 	"daemon/web":                    {"instruments", "instruments/si", "sweeps", "daemon/store"},
 	"daemon/app": {
-		"instruments", "instruments/si", "instruments/bench", "instruments/scpi", "instruments/practice", "instruments/practice/circuit",
+		"instruments", "instruments/si", "instruments/userfile", "instruments/bench", "instruments/scpi", "instruments/practice", "instruments/practice/circuit",
 		"sweeps", "sweeps/predict", "sweeps/schedule", "sweeps/runner", "daemon/store", "daemon/web", "ui",
 	},
 	"daemon": {
 		"instruments", "instruments/si", "instruments/userfile", "instruments/bench", "sweeps", "sweeps/example", "sweeps/predict", "sweeps/runner",
-		"daemon/app", "daemon/store", "daemon/web",
+		"sweeps/pulse", "sweeps/pulse/capture", "sweeps/pulse/figure", "daemon/app", "daemon/store", "daemon/web",
 	},
 }
 

@@ -38,7 +38,7 @@ func newRoot(last context.Context, args []string) *cobra.Command {
 	root.SetFlagErrorFunc(func(_ *cobra.Command, err error) error { return usage("%w; see --help", err) })
 	root.PersistentFlags().StringVar(&c.state, "state", "", "state folder: database, token, socket (default: nightbench in the XDG state folder)")
 	root.AddCommand(
-		c.demo(), c.serve(), c.newFiles(), c.rehearse(), c.start(), c.stop(), c.hold(), c.resume(), c.runs(), c.show(), c.predict(),
+		c.demo(), c.serve(), c.newFiles(), c.rehearse(), c.start(), c.stop(), c.hold(), c.resume(), c.runs(), c.show(), c.predict(), c.pulse(),
 	)
 	for _, sub := range root.Commands() {
 		asUsage(sub)

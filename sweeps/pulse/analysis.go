@@ -30,7 +30,11 @@ func (a *analysis) run() {
 	g := guessLevels(a.codes, a.h)
 	if g.three == nil || a.result.Flagged(Clipped) && a.atRail(g) || !a.threeLevels(g) {
 		if a.flat(g) {
-			a.constant()
+			if a.wanders() {
+				a.notPulses()
+			} else {
+				a.constant()
+			}
 			return
 		}
 		if g.three != nil {
@@ -73,6 +77,14 @@ func (a *analysis) flat(g guess) bool {
 		limit = 4.5
 	}
 	return m1-m0 < limit*within
+}
+
+// wanders tells a ramp or a walk from a level with noise or hum on it: it moves far more
+// than neighbouring samples do, and by a fair part of its height.
+func (a *analysis) wanders() bool {
+	_, mean, variance := a.h.moments(float64(a.h.low), float64(a.h.high()))
+	moves := math.Sqrt(variance)
+	return moves > 3*max(neighbourNoise(a.codes), a.q) && moves*a.volt > 0.1*max(math.Abs(a.volts(mean)), math.Abs(a.options.Expected))
 }
 
 // moments returns count, mean and variance of the codes within [from, to].

@@ -53,10 +53,10 @@ func (a *analysis) slow() bool {
 func (a *analysis) notPulses() {
 	a.result.Class = NotPulses
 	switch {
-	case len(a.driven.edges) < 3 && !a.slow():
+	case len(a.driven.edges) < 3 && a.driven.codes != nil && !a.slow():
 		a.flag(FewPeriods, "the record holds %d transitions, less than one whole period; take a longer record", len(a.driven.edges))
 	default:
-		a.flag(string(NotPulses), "most of the time the waveform is between its levels")
+		a.flag(string(NotPulses), "the waveform has no two levels to which it keeps")
 	}
 	a.add(a.meanOfAll())
 }

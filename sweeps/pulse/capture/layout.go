@@ -35,7 +35,7 @@ func findLayout(head [][]byte) (layout, error) {
 	var best block
 	for _, sep := range separators {
 		b := findBlock(head, sep)
-		if b.rows > best.rows || b.rows == best.rows && b.strange < best.strange {
+		if b.size() > best.size() || b.size() == best.size() && b.strange < best.strange {
 			best = b
 		}
 	}
@@ -62,45 +62,56 @@ func (b block) broken(head [][]byte) (line int, broken bool) {
 	return b.first, above >= 3 || above >= 1 && len(b.cols) >= 2
 }
 
-// bottoms is how many lines at the end of the head may be no samples.
-const bottoms = 12
+// bottoms is how many lines with numbers at the end of the head are tried as the last of the samples.
+const bottoms = 40
 
-// findBlock finds, from the bottom up, the longest run of lines that all have numbers in the same fields.
+// findBlock finds the largest table of lines that all have numbers in the same fields.
 func findBlock(head [][]byte, sep byte) block {
 	var best block
 	if sep != ',' && !slices.ContainsFunc(head, func(l []byte) bool { return bytes.IndexByte(l, sep) >= 0 }) {
 		return best
 	}
-	tried := 0
-	for i := len(head) - 1; i >= 0 && tried < bottoms; i-- {
+	var tried [][]int
+	lines := 0
+	for i := len(head) - 1; i >= 0 && lines < bottoms; i-- {
 		cols := numericColumns(head[i], sep)
 		if len(cols) == 0 || sep != ',' && bytes.IndexByte(bytes.TrimSpace(head[i]), sep) < 0 {
 			continue
 		}
-		tried++
+		lines++
+		if slices.ContainsFunc(tried, func(c []int) bool { return slices.Equal(c, cols) }) {
+			continue
+		}
+		tried = append(tried, cols)
 		b := block{sep: sep, cols: cols, first: i}
 		b.grow(head, i)
-		if b.rows > best.rows {
+		if b.size() > best.size() {
 			best = b
-		}
-		if 2*best.rows > i {
-			break
 		}
 	}
 	return best
 }
 
-// grow takes in the lines above as long as they fit.
+func (b block) size() int { return b.rows * len(b.cols) }
+
+// grow takes in the lines above as long as they fit; a single one with too few numbers
+// is a damaged line of the table, and told when it is read.
 func (b *block) grow(head [][]byte, last int) {
 	var fields [][]byte
+	damaged := false
 	for k := last; k >= 0; k-- {
 		if len(bytes.TrimSpace(head[k])) == 0 && b.rows > 0 {
 			continue
 		}
 		fields = splitFields(head[k], b.sep, fields)
 		if !b.fits(fields) {
-			return
+			if damaged || len(numericColumns(head[k], b.sep)) == 0 {
+				return
+			}
+			damaged = true
+			continue
 		}
+		damaged = false
 		b.first = k
 		b.rows++
 		for c := b.cols[0]; c < b.cols[len(b.cols)-1]; c++ {

@@ -1,0 +1,49 @@
+package pulse
+
+import (
+	"math"
+	"testing"
+)
+
+// A result has each of its parameters, or says why not.
+func TestWhyThereIsNoValue(t *testing.T) {
+	s := timer()
+	sine := make([]float64, 1200)
+	for i := range sine {
+		sine[i] = 4 + 3*math.Sin(float64(i)/20)
+	}
+	flat := make([]float64, 1200)
+	for name, r := range map[string]Result{
+		"pulses":   analyse(t, s.capture(rng()), Options{}),
+		"untimed":  analyse(t, s.capture(rng()), Options{}).Untimed(),
+		"sine":     analyse(t, s.record(s.digitise(sine, rng()), 0, 1e-5), Options{}),
+		"constant": analyse(t, s.record(s.digitise(flat, rng()), 0, 1e-5), Options{}),
+	} {
+		for _, p := range Parameters {
+			q, ok := r.Get(p.Name)
+			why := r.Why(p.Name)
+			if ok == (len(why) > 0) || ok && q.Unit != p.Unit {
+				t.Errorf("%s: %s %v, unit %q, why %v", name, p.Name, ok, q.Unit, why)
+			}
+			for _, f := range why {
+				if f.Name == "" || f.Words == "" {
+					t.Errorf("%s: %s: flag without words: %+v", name, p.Name, f)
+				}
+			}
+		}
+	}
+	if why := analyse(t, s.capture(rng()), Options{}).Untimed().Why("period"); why[0].Name != TimeBase {
+		t.Errorf("untimed period: %v", why)
+	}
+}
+
+func TestRecordBySample(t *testing.T) {
+	r := Record{Codes: []int16{1, 2, 3}, Zero: 1, PerCode: 2, Start: 5, Interval: 0.5}
+	if r.Len() != 3 || r.Volt(2) != 7 || r.At(2) != 6 || r.Index(5.7) != 1 || r.Index(4) != 0 || r.Index(9) != 2 {
+		t.Errorf("%d samples; %g V at %g s; %d %d %d", r.Len(), r.Volt(2), r.At(2), r.Index(5.7), r.Index(4), r.Index(9))
+	}
+	r = Record{Volts: []float64{4, 5}, Times: []float64{1, 3}}
+	if r.Len() != 2 || r.Volt(1) != 5 || r.At(1) != 3 || r.Index(2) != 0 {
+		t.Errorf("%d samples; %g V at %g s", r.Len(), r.Volt(1), r.At(1))
+	}
+}
