@@ -6,6 +6,7 @@ import (
 	"log/slog"
 	"os"
 	"path/filepath"
+	"strings"
 
 	"nightbench/daemon/app"
 	"nightbench/daemon/store"
@@ -26,6 +27,8 @@ type demoOptions struct {
 	once      bool
 	benchOnly bool
 	tcp       bool
+	scenario  string
+	faults    []string
 }
 
 func (c *cli) demo() *cobra.Command {
@@ -45,6 +48,8 @@ func (c *cli) demo() *cobra.Command {
 	f.BoolVar(&o.once, "once", false, "run the sample to its end, print the summary, and end")
 	f.BoolVar(&o.benchOnly, "bench-only", false, "serve just the practice bench and print its addresses; hold it with 'serve' from elsewhere")
 	f.BoolVar(&o.tcp, "tcp", false, "practice instruments on loopback sockets instead of pseudo-terminals")
+	f.StringVar(&o.scenario, "scenario", "", "what is on the bench and what goes wrong: "+strings.Join(app.ScenarioNames(), ", ")+", or a file")
+	f.StringArrayVar(&o.faults, "fault", nil, `a fault of the bench, like "late on=average size=4s at=10min"; may be given several times`)
 	cmd.RunE = func(cmd *cobra.Command, _ []string) error { return c.runDemo(cmd, o) }
 	return cmd
 }
@@ -52,6 +57,10 @@ func (c *cli) demo() *cobra.Command {
 func (c *cli) runDemo(cmd *cobra.Command, o demoOptions) error {
 	if o.pace < 0.1 || o.pace > 10_000 {
 		return usage("--pace %g: give how many times as fast as the wall clock bench time runs, from 0.1 to 10000", o.pace)
+	}
+	scenario, err := o.read()
+	if err != nil {
+		return usage("%v", err)
 	}
 	dir := c.state
 	if dir == "" {
@@ -65,13 +74,19 @@ func (c *cli) runDemo(cmd *cobra.Command, o demoOptions) error {
 		return err
 	}
 	clock := instruments.NewClock(o.pace)
-	p, benchFile, err := openPractice(cmd.Context(), dir, files, clock, o)
+	p, benchFile, err := openPractice(cmd.Context(), dir, files, clock, o, scenario)
 	if err != nil {
 		return err
 	}
 	defer p.Close()
 	for _, a := range p.Addresses {
 		say(cmd, "practice %-8s %s", a.Name, a.Address)
+	}
+	if scenario.Name != "" {
+		say(cmd, "scenario: %s, %s", scenario.Name, scenario.About)
+	}
+	for _, f := range scenario.Faults {
+		say(cmd, "fault:    %s", f)
 	}
 	sayPace(cmd, o.pace)
 	say(cmd, "bench file: %s", benchFile)
@@ -89,6 +104,23 @@ func (c *cli) runDemo(cmd *cobra.Command, o demoOptions) error {
 	return c.showRunning(cmd, dir, filepath.Join(files, example.Sample), file, clock, o)
 }
 
+// read reads the scenario and adds the faults of the command line.
+func (o demoOptions) read() (s app.Scenario, err error) {
+	if o.scenario != "" {
+		if s, err = app.ReadScenario(o.scenario); err != nil {
+			return s, err
+		}
+	}
+	for _, words := range o.faults {
+		f, err := app.ParseFault(words)
+		if err != nil {
+			return s, err
+		}
+		s.Faults = append(s.Faults, f)
+	}
+	return s, nil
+}
+
 // demoFiles lays the example set into the demo's state folder, fresh each time: it is the program's own.
 func demoFiles(dir string) (string, error) {
 	files := filepath.Join(dir, "files")
@@ -99,7 +131,7 @@ func demoFiles(dir string) (string, error) {
 }
 
 // openPractice serves the practice bench and writes its bench file.
-func openPractice(ctx context.Context, dir, files string, clock instruments.Clock, o demoOptions) (*app.PracticeBench, string, error) {
+func openPractice(ctx context.Context, dir, files string, clock instruments.Clock, o demoOptions, scenario app.Scenario) (*app.PracticeBench, string, error) {
 	board, err := sweeps.ReadBoard(filepath.Join(files, example.BoardPump))
 	if err != nil {
 		return nil, "", err
@@ -108,7 +140,8 @@ func openPractice(ctx context.Context, dir, files string, clock instruments.Cloc
 	if err != nil {
 		return nil, "", err
 	}
-	p, err := app.OpenPractice(ctx, app.PracticeOptions{Board: board, Wiring: wired.Wiring, Clock: clock, Seed: o.seed, TCP: o.tcp, SupplyLog: filepath.Join(dir, "practice-supply.log")})
+	p, err := app.OpenPractice(ctx, app.PracticeOptions{Board: board, Wiring: wired.Wiring, Clock: clock, Seed: o.seed, TCP: o.tcp, SupplyLog: filepath.Join(dir, "practice-supply.log"),
+		Scenario: scenario, Truth: filepath.Join(dir, "practice-truth.json"), Ports: filepath.Join(dir, "ports")})
 	if err != nil {
 		return nil, "", err
 	}

@@ -2,6 +2,7 @@ package app
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"io"
 	"os"
@@ -23,6 +24,10 @@ type PracticeOptions struct {
 	Seed      uint64 // of the specimen and of the instruments' own errors
 	TCP       bool   // on loopback sockets instead of pseudo-terminals
 	SupplyLog string // path; empty: not kept
+	Scenario  Scenario
+	Truth     string             // path of the sealed file of true values; empty: not written
+	Ports     string             // folder of names that stay when an instrument is plugged in anew; empty: the system's own names
+	Log       func(words string) // hears of faults as they come; may be nil
 }
 
 // PracticeBench is a practice bench that is being served.
@@ -38,15 +43,26 @@ type Served struct{ Name, Role, Address string }
 
 // OpenPractice draws a specimen of the board, puts it on simulated instruments, and serves those.
 func OpenPractice(ctx context.Context, o PracticeOptions) (_ *PracticeBench, err error) {
+	if o.Scenario.Seed != nil {
+		o.Seed = *o.Scenario.Seed
+	}
 	s, err := newSpecimen(o.Board, o.Seed)
 	if err != nil {
 		return nil, err
+	}
+	for _, x := range o.Scenario.Substitutes {
+		if err := s.substitute(x); err != nil {
+			return nil, err
+		}
 	}
 	board, err := s.circuit(Burden(o.Wiring))
 	if err != nil {
 		return nil, err
 	}
-	c := practice.Config{Board: board, Clock: o.Clock, Seed: o.Seed}
+	c := practice.Config{Board: board, Clock: o.Clock, Seed: o.Seed, Climate: s.climate(), Supply: o.Scenario.Supply, Scope: o.Scenario.Scope}
+	if o.Scenario.Climate != nil {
+		c.Climate = *o.Scenario.Climate
+	}
 	if err := place(&c, o.Wiring); err != nil {
 		return nil, err
 	}
@@ -64,19 +80,48 @@ func OpenPractice(ctx context.Context, o PracticeOptions) (_ *PracticeBench, err
 	if p.Bench, err = practice.New(c); err != nil {
 		return nil, err
 	}
-	return p, p.serve(ctx, o.TCP)
+	if o.Truth != "" {
+		if err := s.truth(o, c.Pot.Track, c.Climate).Seal(o.Truth); err != nil {
+			return nil, errors.Join(err, p.Close())
+		}
+	}
+	if err := p.serve(ctx, o); err != nil {
+		return nil, err
+	}
+	return p, p.plan(o)
 }
 
-func (p *PracticeBench) serve(ctx context.Context, tcp bool) error {
+// plan has the scenario's faults come at their time.
+func (p *PracticeBench) plan(o PracticeOptions) error {
+	say := o.Log
+	if say == nil {
+		say = func(string) {}
+	}
+	for _, f := range o.Scenario.Faults {
+		if err := p.Schedule(f.At, f.Fault, func(err error) { say(err.Error()) }); err != nil {
+			return errors.Join(err, p.Close())
+		}
+	}
+	return nil
+}
+
+func (p *PracticeBench) serve(ctx context.Context, o PracticeOptions) error {
+	if o.Ports != "" {
+		if err := os.MkdirAll(o.Ports, 0o700); err != nil {
+			return errors.Join(err, p.Close())
+		}
+	}
 	for _, i := range p.Instruments() {
 		open := i.ServePTY
-		if tcp {
+		switch {
+		case o.TCP:
 			open = func() (string, error) { return i.ServeTCP(ctx, "127.0.0.1:0") }
+		case o.Ports != "":
+			open = func() (string, error) { return i.ServePTYAs(filepath.Join(o.Ports, i.Name)) }
 		}
 		address, err := open()
 		if err != nil {
-			p.Close()
-			return err
+			return errors.Join(err, p.Close())
 		}
 		p.Addresses = append(p.Addresses, Served{i.Name, i.Role, address})
 	}
@@ -95,7 +140,7 @@ func (p *PracticeBench) Close() error {
 // place puts leads and probes where the wiring says.
 func place(c *practice.Config, w instruments.Wiring) error {
 	for _, m := range w.Meters {
-		pm := practice.Meter{Name: m.Name, Unit: sweeps.Quantity(m.Reads).Unit()}
+		pm := practice.Meter{Name: m.Name, Unit: sweeps.Quantity(m.Reads).Unit(), InputResistance: m.InputResistance}
 		if pm.Unit == si.Ampere {
 			pm.Probe = circuit.Through(circuit.LoadCurrent)
 		} else {
@@ -113,7 +158,7 @@ func place(c *practice.Config, w instruments.Wiring) error {
 			if err != nil {
 				return err
 			}
-			c.Channels = append(c.Channels, practice.Channel{Number: ch.Number, Probe: p})
+			c.Channels = append(c.Channels, practice.Channel{Number: ch.Number, Probe: p, Factor: ch.Probe})
 		}
 	}
 	if w.Pot != nil {

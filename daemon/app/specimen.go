@@ -17,6 +17,9 @@ type specimen struct {
 	parts *predict.Catalogue
 	value map[string]float64 // by the part's name in the model
 	track float64            // −1 … 1: where in its tolerance the bench's pot lies
+
+	seed   uint64
+	fitted map[string]string // a diode's place: the catalogue part that stands there instead
 }
 
 // newSpecimen draws a specimen. A seed of 0 draws none: every part at its nominal value.
@@ -29,7 +32,7 @@ func newSpecimen(board sweeps.Board, seed uint64) (*specimen, error) {
 	if err != nil {
 		return nil, err
 	}
-	s := &specimen{board: board, parts: parts, value: map[string]float64{}}
+	s := &specimen{board: board, parts: parts, value: map[string]float64{}, seed: seed, fitted: map[string]string{}}
 	r := rand.New(rand.NewPCG(seed, 555))
 	if seed != 0 {
 		s.track = 0.8 * (2*r.Float64() - 1)
@@ -67,6 +70,7 @@ func (s *specimen) circuit(burden float64) (circuit.Board, error) {
 		return b, err
 	}
 	b.Flyback = s.diode("flyback", s.board.Driver.Flyback)
+	s.enliven(&b.Load)
 	return b, nil
 }
 
@@ -180,8 +184,12 @@ func (s *specimen) diode(name string, d sweeps.Diode) *circuit.Diode {
 		return nil
 	}
 	out := &circuit.Diode{Is: s.value[name+".is"], N: s.value[name+".n"], Rs: s.value[name+".rs"], Rsh: s.value[name+".shunt"]}
+	part := d.Name
+	if f := s.fitted[name]; f != "" {
+		part = f
+	}
 	for _, p := range s.parts.Diodes {
-		if p.Name == d.Name {
+		if p.Name == part {
 			out.Eg, out.Xti = p.Eg, p.Xti
 		}
 	}

@@ -1,6 +1,7 @@
 package practice
 
 import (
+	"bytes"
 	"fmt"
 	"strings"
 
@@ -109,8 +110,9 @@ func (s *scope) registerLinear() {
 
 // tail puts the scope's own end behind a block.
 func (s *scope) tail(reply []byte) []byte {
-	if len(reply) == 0 || s.kind.Tail == "\n" || !strings.Contains(string(reply[:min(len(reply), 16)]), "#") {
+	end := tailBytes[s.kind.Tail]
+	if end == "\n" || !bytes.HasPrefix(reply, []byte("#")) {
 		return reply
 	}
-	return append(reply[:len(reply)-1], s.kind.Tail...)
+	return append(reply[:len(reply)-1], end...)
 }

@@ -24,6 +24,7 @@ type Config struct {
 	Board     circuit.Board // true values
 	Clock     instruments.Clock
 	Seed      uint64    // of the instruments' own errors and noise
+	Climate   Climate   // of the board
 	Supply    Supply    // in what the supply differs
 	Pot       Pot       // zero Codes: no pot
 	Meters    []Meter   // in order
@@ -117,6 +118,7 @@ func New(c Config) (*Bench, error) {
 	if len(c.Channels) > 0 {
 		b.add("scope", "scope", newScope(b, rng(2), c.Scope, c.Channels).instrument())
 	}
+	b.world.expose(c.Climate)
 	if c.Pot.Codes > 0 {
 		b.add("pot", "pot", newPot(b.world, c.Pot).instrument())
 	}

@@ -30,8 +30,24 @@ type Scope struct {
 	Form      Form    // how records and measurements are told; empty: Standard
 	Percent   bool    // duty is told in percent instead of as a ratio
 	NoValue   string  // what is told where there is nothing to measure; empty: 9.91E37, the standard's not-a-number
-	Tail      string  // behind a block; empty: NL
+	Tail      Tail    // behind a block; empty: NL
 }
+
+// Tail is what follows a block.
+type Tail string
+
+// The tails that makers' scopes have.
+const (
+	TailNL    Tail = "nl"
+	TailNone  Tail = "none"
+	TailCRNL  Tail = "crnl"
+	TailTwoNL Tail = "two-nl"
+)
+
+// Tails are all of them.
+func Tails() []Tail { return []Tail{TailNL, TailNone, TailCRNL, TailTwoNL} }
+
+var tailBytes = map[Tail]string{"": "\n", TailNL: "\n", TailNone: "", TailCRNL: "\r\n", TailTwoNL: "\n\n"}
 
 // scope is a digitising scope that keeps to the contract of the standard-scope dialect.
 type scope struct {
@@ -97,9 +113,6 @@ func (k Scope) withDefaults() Scope {
 	}
 	if k.NoValue == "" {
 		k.NoValue = "9.91E37"
-	}
-	if k.Tail == "" {
-		k.Tail = "\n"
 	}
 	return k
 }

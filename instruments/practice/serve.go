@@ -54,26 +54,30 @@ func (b *Bench) keep(c io.Closer) (forget func()) {
 	}
 }
 
-// listen cuts the stream into messages by NL. Urgent ones are obeyed here, past those that wait.
+// overlong stands for a message that was thrown away for its length.
+var overlong = make([]byte, mostMessage+1)
+
+// listen cuts the stream into messages at NL, those within a block apart. Urgent
+// ones are obeyed here, past those that wait.
 func (i *Instrument) listen(stream io.Reader, messages chan<- []byte) {
-	var line []byte
+	cut := scpi.Splitter{Limit: mostMessage}
 	buf := make([]byte, 1024)
 	for {
 		n, err := stream.Read(buf)
-		for _, c := range buf[:n] {
-			if c != '\n' {
-				if len(line) <= mostMessage {
-					line = append(line, c)
-				}
-				continue
+		cut.Feed(buf[:n])
+		for {
+			m, whole, tooLong := cut.Next()
+			if !whole {
+				break
 			}
-			m := bytes.Clone(line)
-			line = line[:0]
+			if tooLong != nil {
+				m = overlong
+			}
 			if !i.dead.Load() && i.urgent != nil && i.urgent(m) {
 				continue
 			}
 			select {
-			case messages <- m:
+			case messages <- bytes.Clone(m):
 			case <-i.bench.ctx.Done():
 				return
 			}

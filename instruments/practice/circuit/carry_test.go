@@ -29,8 +29,8 @@ func TestMeanCarriedOverLeapsEqualsIntegration(t *testing.T) {
 				t.Fatal(err)
 			}
 			got[k] = [2]float64{volts.Value(), amps.Value()}
-			if math.Abs(volts.span-aperture) > 1e-9 {
-				t.Errorf("aperture %g s: saw %g s", aperture, volts.span)
+			if math.Abs(volts.seen-aperture) > 1e-9 {
+				t.Errorf("aperture %g s: saw %g s", aperture, volts.seen)
 			}
 		}
 		for i, name := range []string{"mean voltage", "mean current"} {

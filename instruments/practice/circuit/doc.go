@@ -19,7 +19,7 @@
 // alone until an instrument looks. Where nobody looks and the board repeats
 // itself, Advance leaps over whole periods and takes the slow states along at
 // their mean rate; cogging and commutation ripple, which then average out, are
-// left away. A Sim takes no locks and starts no goroutines: its owner
+// left away; so too where a mean is taken over many teeth of the rotor. A Sim takes no locks and starts no goroutines: its owner
 // serialises access.
 //
 // # How an instrument looks

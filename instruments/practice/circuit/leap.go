@@ -51,6 +51,8 @@ func (c *cycle) repeats(s *Sim) bool {
 // A carried observer needs no integration of periods that are all alike: it takes
 // what the last whole one gave as many times as are leapt over.
 type carried interface {
+	// span is how long it looks in all, s.
+	span() float64
 	// turn notes a rising turn of the output at time t.
 	turn(t float64)
 	// ready tells whether the last whole period was seen in full.

@@ -2,6 +2,7 @@ package circuit
 
 import (
 	"math"
+	"slices"
 	"testing"
 )
 
@@ -74,16 +75,15 @@ func TestLeapEqualsIntegration(t *testing.T) {
 	}
 }
 
-// TestUnevenRotor: cogging and commutation ripple show while somebody looks,
-// and leave the mean speed of a long unobserved wait as it is.
+// TestUnevenRotor: cogging and commutation ripple show while somebody looks at the
+// wave, and leave the mean of many teeth and of a long unobserved wait as they are.
 func TestUnevenRotor(t *testing.T) {
 	b := pump()
 	even := mustNew(t, b, 9)
 	b.Load.Cogging, b.Load.CoggingPerTurn = 0.05e-3, 12
 	b.Load.Ripple, b.Load.RipplePerTurn = 0.03, 10
 	uneven := mustNew(t, b, 9)
-	var peak [2]float64
-	var speed [2]float64
+	var peak, speed, mean [2]float64
 	for k, s := range []*Sim{even, uneven} {
 		if err := s.SetPot(1e3); err != nil {
 			t.Fatal(err)
@@ -92,11 +92,16 @@ func TestUnevenRotor(t *testing.T) {
 		if !s.smooth {
 			t.Error("unevenness is followed though nobody looks")
 		}
-		i, w := NewMean(Through(LoadCurrent), 3600, 3600.5), NewMean(RotorSpeed(), 3600, 3600.5)
-		mustRun(t, s, 3600.5, i, w)
-		peak[k], speed[k] = i.Max-i.Min, w.Value()
+		long := NewMean(Through(LoadCurrent), 3600, 3600.5) // leapt over
+		mustRun(t, s, 3600.5, long)
+		look := NewRecord(3601, 20e-6, 5000, Through(LoadCurrent))
+		short, w := NewMean(Through(LoadCurrent), 3601, 3601.1), NewMean(RotorSpeed(), 3601, 3601.1) // integrated
+		mustRun(t, s, 3601.1, look, short, w)
+		peak[k], speed[k], mean[k] = slices.Max(look.Y[0])-slices.Min(look.Y[0]), w.Value(), long.Value()
+		near(t, "mean current of many teeth, leapt over", long.Value(), short.Value(), 0.003)
 	}
 	near(t, "mean speed with cogging", speed[1], speed[0], 0.005)
+	near(t, "mean current with cogging", mean[1], mean[0], 0.01)
 	if peak[1] < 1.02*peak[0] {
 		t.Errorf("ripple does not show: current swings %.4f A, without it %.4f A", peak[1], peak[0])
 	}

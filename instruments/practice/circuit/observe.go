@@ -22,12 +22,12 @@ type Mean struct {
 	T0, T1   float64 // aperture, s
 	Min, Max float64
 
-	sum, span float64
+	sum, seen float64
 
 	// What had been seen by the last rising turn of the output, and what the whole
 	// period before it gave.
-	turnSum, turnSpan   float64
-	wholeSum, wholeSpan float64
+	turnSum, turnSeen   float64
+	wholeSum, wholeSeen float64
 }
 
 // NewMean looks at a probe from t0 to t1.
@@ -45,31 +45,33 @@ func (m *Mean) Observe(g *Segment) {
 		return
 	}
 	m.sum += g.Mean(m.Probe, a, b) * (b - a)
-	m.span += b - a
+	m.seen += b - a
 	for _, t := range [2]float64{a, b} {
 		y := g.See(m.Probe, t)
 		m.Min, m.Max = math.Min(m.Min, y), math.Max(m.Max, y)
 	}
 }
 
+func (m *Mean) span() float64 { return m.T1 - m.T0 }
+
 func (m *Mean) turn(float64) {
-	m.wholeSum, m.wholeSpan = m.sum-m.turnSum, m.span-m.turnSpan
-	m.turnSum, m.turnSpan = m.sum, m.span
+	m.wholeSum, m.wholeSeen = m.sum-m.turnSum, m.seen-m.turnSeen
+	m.turnSum, m.turnSeen = m.sum, m.seen
 }
 
 func (m *Mean) ready(period float64) bool {
-	return math.Abs(m.wholeSpan-period) < 1e-6*period
+	return math.Abs(m.wholeSeen-period) < 1e-6*period
 }
 
 func (m *Mean) carry(n float64) {
 	m.sum += n * m.wholeSum
-	m.span += n * m.wholeSpan
-	m.turnSum, m.turnSpan = m.sum, m.span
-	m.wholeSum, m.wholeSpan = 0, 0
+	m.seen += n * m.wholeSeen
+	m.turnSum, m.turnSeen = m.sum, m.seen
+	m.wholeSum, m.wholeSeen = 0, 0
 }
 
 // Value is the mean over what has been seen of the aperture; NaN before that.
-func (m *Mean) Value() float64 { return m.sum / m.span }
+func (m *Mean) Value() float64 { return m.sum / m.seen }
 
 // A Record samples probes at equidistant instants, as a scope does. Y holds
 // one row a probe; samples not yet taken are NaN.

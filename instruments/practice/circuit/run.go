@@ -23,7 +23,7 @@ func (s *Sim) Advance(until float64) {
 	for s.x.Time < until {
 		s.drop()
 		end, carried, watched := s.looking(until)
-		s.smoothen(!watched && len(carried) == 0 && s.flywheel())
+		s.smoothen(!watched && s.flywheel() && s.averaged(carried))
 		if !watched && s.leap(end, carried) {
 			continue
 		}
@@ -39,6 +39,21 @@ func (s *Sim) smoothen(on bool) {
 		s.smooth, s.cycle.n = on, 0
 	}
 }
+
+// averaged tells whether every carried observer looks for so many teeth of the rotor
+// that what is left of cogging and ripple in its mean is below a thousandth of a
+// ripple of a few percent.
+func (s *Sim) averaged(all []carried) bool {
+	teeth := s.x.Speed * math.Max(s.b.Load.CoggingPerTurn, s.b.Load.RipplePerTurn) / (2 * math.Pi)
+	for _, o := range all {
+		if o.span()*teeth < fewestTeeth {
+			return false
+		}
+	}
+	return true
+}
+
+const fewestTeeth = 8
 
 // looking sorts the observers: the next instant at which one begins or, where it
 // is carried over leaps, ends; those carried; and whether any other looks now.
