@@ -70,7 +70,7 @@ var badFiles = map[string]bad{
 	"unknown-network.board.toml":           {10, "timing.network", `"steerd"`, "use plain, bypassed, steered, wiper or output-fed", `network = "steered"`},
 	"unknown-node.bench.toml":              {16, "meter[1].between", `"load_high"`, `"load_high" is no node; nodes are: supply, board`, `between = ["load_hi", "load_lo"]`},
 	"unknown-quantity.plan.toml":           {24, "measure.quantities", `"frequence"`, `"frequence" is no quantity; there are: duty, frequency`, `quantities = ["duty", "frequency", "average_voltage"]`},
-	"usbtmc-not-yet.bench.toml":            {20, "scope.address", `"usbtmc:///dev/usbtmc0"`, "usbtmc is not supported yet by this version; use serial://", ""},
+	"vxi11-not-yet.bench.toml":             {20, "scope.address", `"vxi11://192.0.2.12"`, "vxi11 is not supported yet by this version; use serial://", ""},
 	"wrong-unit.bench.toml":                {7, "supply.max_current", `"1 V"`, `"1 V" has an unknown unit "V" for a current; write it like "250 mA"`, ""},
 }
 

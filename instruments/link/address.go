@@ -2,8 +2,6 @@ package link
 
 import (
 	"fmt"
-	"net"
-	"net/netip"
 	"net/url"
 	"path/filepath"
 	"slices"
@@ -12,14 +10,15 @@ import (
 )
 
 // Accepted names the forms an address may take, for messages.
-const Accepted = "serial:///dev/...?baud=9600&bits=8&parity=none&stop=1&flow=none or tcp://host:port"
+const Accepted = "serial:///dev/...?baud=9600&bits=8&parity=none&stop=1&flow=none, tcp://host:port, usbtmc:///dev/usbtmc0, usbtmc://vvvv-pppp/SERIAL or hislip://host"
 
 // Address says where an instrument is. It is comparable; for "is it the same
 // port?" compare Canonical instead.
 type Address struct {
-	Scheme string // serial or tcp
-	Path   string // serial: the device
-	Host   string // tcp: host:port
+	Scheme string // serial, tcp, usbtmc or hislip
+	Path   string // serial, usbtmc: the device; hislip: the sub-address
+	Host   string // tcp, hislip: host:port
+	USB    USB    // usbtmc: who is meant, where no device is given
 	Line   Line   // serial only
 	text   string
 }
@@ -30,7 +29,7 @@ type Line struct {
 	Bits   int    // data bits, 5 to 8
 	Parity string // none, odd, even, mark, space
 	Stop   string // 1, 1.5, 2
-	Flow   string // none, rtscts, xonxoff
+	Flow   string // none, rtscts, xonxoff, dtrdsr
 }
 
 // String spells the line as technicians do, such as "9600 8N1 none".
@@ -55,7 +54,11 @@ func Parse(address string) (Address, error) {
 		err = a.parseSerial(u)
 	case "tcp":
 		err = a.parseTCP(u)
-	case "usbtmc", "vxi11", "hislip", "gpib":
+	case "usbtmc":
+		err = a.parseUSBTMC(u)
+	case "hislip":
+		err = a.parseHiSLIP(u)
+	case "vxi11", "gpib":
 		err = fmt.Errorf("%s:// is %w; use %s", u.Scheme, ErrUnsupported, Accepted)
 	default:
 		err = fmt.Errorf("unknown kind of address; use %s", Accepted)
@@ -90,13 +93,10 @@ func (a *Address) parseSerial(u *url.URL) error {
 var lineWords = map[string][]string{
 	"parity": {"none", "odd", "even", "mark", "space"},
 	"stop":   {"1", "1.5", "2"},
-	"flow":   {"none", "rtscts", "xonxoff"},
+	"flow":   {"none", "rtscts", "xonxoff", "dtrdsr"},
 }
 
 func (l *Line) set(key, value string) error {
-	if key == "flow" && value == "dtrdsr" {
-		return fmt.Errorf("flow=dtrdsr: this system can't do it; use flow=none with DSR tied to DTR at the instrument, and commands short enough for its buffer")
-	}
 	if words, ok := lineWords[key]; ok {
 		if !slices.Contains(words, value) {
 			return fmt.Errorf("%s=%s: use one of %s", key, value, strings.Join(words, ", "))
@@ -120,42 +120,5 @@ func (l *Line) set(key, value string) error {
 	return nil
 }
 
-func (a *Address) parseTCP(u *url.URL) error {
-	if u.Path != "" || u.RawQuery != "" || u.User != nil {
-		return fmt.Errorf("nothing may follow the port; use tcp://host:port")
-	}
-	host, port, err := net.SplitHostPort(u.Host)
-	if err != nil || host == "" || port == "" {
-		return fmt.Errorf("needs a host and a port, such as tcp://192.0.2.10:5025")
-	}
-	if n, err := strconv.Atoi(port); err != nil || n < 1 || n > 65535 {
-		return fmt.Errorf("port %s: use 1 to 65535", port)
-	}
-	a.Host = u.Host
-	return nil
-}
-
 // String is the address as it was written.
 func (a Address) String() string { return a.text }
-
-// Canonical spells the port itself, whatever name it was reached by: symbolic
-// links resolved, host names in lower case, line settings left out. Two
-// addresses with the same Canonical are one port. A device that is not there
-// keeps the name it was given.
-func (a Address) Canonical() string {
-	if a.Scheme == "serial" {
-		if real, err := filepath.EvalSymlinks(a.Path); err == nil {
-			return "serial://" + real
-		}
-		return "serial://" + a.Path
-	}
-	host, port, err := net.SplitHostPort(a.Host)
-	if err != nil {
-		return a.Scheme + "://" + a.Host
-	}
-	if ip, err := netip.ParseAddr(host); err == nil {
-		host = ip.Unmap().String()
-	}
-	port = strings.TrimLeft(port, "0")
-	return a.Scheme + "://" + net.JoinHostPort(strings.ToLower(strings.TrimSuffix(host, ".")), port)
-}

@@ -18,6 +18,12 @@ func TestParse(t *testing.T) {
 		{"serial:///dev/ttyUSB0", Address{Scheme: "serial", Path: "/dev/ttyUSB0", Line: DefaultLine}},
 		{"serial:///dev/ttyS0?baud=115200&bits=7&parity=even&stop=2&flow=rtscts",
 			Address{Scheme: "serial", Path: "/dev/ttyS0", Line: Line{115200, 7, "even", "2", "rtscts"}}},
+		{"serial:///dev/ttyS0?parity=mark&flow=dtrdsr", Address{Scheme: "serial", Path: "/dev/ttyS0", Line: Line{9600, 8, "mark", "1", "dtrdsr"}}},
+		{"usbtmc:///dev/usbtmc0", Address{Scheme: "usbtmc", Path: "/dev/usbtmc0"}},
+		{"usbtmc://0957-179A/MY5123", Address{Scheme: "usbtmc", USB: USB{"0957", "179a", "MY5123"}}},
+		{"usbtmc://0957-1796", Address{Scheme: "usbtmc", USB: USB{"0957", "1796", ""}}},
+		{"hislip://192.0.2.12", Address{Scheme: "hislip", Host: "192.0.2.12:4880", Path: "hislip0"}},
+		{"hislip://[2001:db8::7]:4881/inst1", Address{Scheme: "hislip", Host: "[2001:db8::7]:4881", Path: "inst1"}},
 	} {
 		got, err := Parse(c.text)
 		c.want.text = c.text
@@ -32,7 +38,12 @@ func TestParse(t *testing.T) {
 
 func TestParseRefuses(t *testing.T) {
 	for text, says := range map[string]string{
-		"usbtmc:///dev/usbtmc0":                   "not supported yet; use serial:///dev/",
+		"vxi11://192.0.2.10":                      "not supported yet; use serial:///dev/",
+		"usbtmc://usbtmc0":                        "after three slashes",
+		"usbtmc:///dev/usbtmc0?baud=9600":         "no line settings",
+		"hislip:///inst0":                         "use hislip://host",
+		"hislip://192.0.2.10:0":                   "1 to 65535",
+		"hislip://192.0.2.10/a/b":                 "use one name",
 		"gpib://0/5":                              "not supported yet",
 		"COM3":                                    "use serial:///dev/",
 		"serial://ttyUSB0":                        "three slashes",
@@ -42,7 +53,6 @@ func TestParseRefuses(t *testing.T) {
 		"serial:///dev/ttyUSB0?bits=9":            "5, 6, 7 or 8",
 		"serial:///dev/ttyUSB0?parity=weird":      "none, odd, even",
 		"serial:///dev/ttyUSB0?flow=cts":          "none, rtscts, xonxoff",
-		"serial:///dev/ttyUSB0?flow=dtrdsr":       "DSR tied to DTR",
 		"serial:///dev/ttyUSB0?baud=300&baud=600": "given 2 times",
 		"tcp://192.0.2.10":                        "needs a host and a port",
 		"tcp://:5025":                             "needs a host and a port",
@@ -53,8 +63,8 @@ func TestParseRefuses(t *testing.T) {
 			t.Errorf("Parse(%q): %v; want it to say %q", text, err, says)
 		}
 	}
-	if _, err := Parse("usbtmc:///dev/usbtmc0"); !errors.Is(err, ErrUnsupported) {
-		t.Errorf("usbtmc: %v, want ErrUnsupported", err)
+	if _, err := Parse("gpib://0/5"); !errors.Is(err, ErrUnsupported) {
+		t.Errorf("gpib: %v, want ErrUnsupported", err)
 	}
 }
 
@@ -75,6 +85,10 @@ func TestCanonical(t *testing.T) {
 		{"serial://" + device, "serial://" + device + "1", false},
 		{"tcp://Meter.local:5025", "tcp://meter.local.:05025", true},
 		{"tcp://192.0.2.1:5025", "tcp://192.0.2.1:5026", false},
+		{"hislip://Scope.local", "hislip://scope.local:4880/hislip0", true},
+		{"hislip://192.0.2.1", "hislip://192.0.2.1/hislip1", false},
+		{"usbtmc://dead-beef/1", "usbtmc://DEAD-beef/1", true},
+		{"usbtmc:///dev/usbtmc97", "usbtmc:///dev/../dev/usbtmc97", true},
 		{"tcp://[::ffff:192.0.2.1]:5025", "tcp://192.0.2.1:5025", true},
 	} {
 		a, errA := Parse(c.a)

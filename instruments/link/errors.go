@@ -57,9 +57,7 @@ var hints = []struct {
 	kind error
 	hint string
 }{
-	{ErrDenied, "add this user to the group dialout, or install the udev rules, then log in again"},
-	{ErrMissing, "is it plugged in and switched on? use the stable name under /dev/serial/by-id"},
-	{ErrBusy, "close the other program that holds it; a terminal program or a second bench, perhaps"},
+	{ErrBusy, "close the other program that is connected to it; a second bench, perhaps"},
 	{ErrLost, "check cable and power"},
 }
 

@@ -1,5 +1,5 @@
-// Package link is a byte stream to one instrument, over a serial line or TCP,
-// with one talker at a time.
+// Package link is a byte stream to one instrument, over a serial line, TCP,
+// USBTMC or HiSLIP, with one talker at a time.
 //
 // A Link is held in turns: whoever has the Turn sends and reads, everybody
 // else waits. Two goroutines move the bytes, so a blocked read or write never
@@ -12,6 +12,7 @@
 package link
 
 import (
+	"cmp"
 	"context"
 	"errors"
 	"sync/atomic"
@@ -81,7 +82,7 @@ func (l *Link) fault(op string, err error) error {
 	if err == nil || errors.As(err, &e) {
 		return err
 	}
-	return &Error{Op: op, Address: l.addr.String(), Hint: hintFor(err), Err: err}
+	return &Error{Op: op, Address: l.addr.String(), Hint: cmp.Or(remedy(l.addr, err), hintFor(err)), Err: err}
 }
 
 // Acquire waits for the link to be free and takes it. Release must follow.

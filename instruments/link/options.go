@@ -13,7 +13,7 @@ type Dial func(ctx context.Context, a Address) (io.ReadWriteCloser, error)
 // Options say how a link talks. The zero value of each field means its
 // default.
 type Options struct {
-	// Dial replaces the real serial or TCP opening; a test passes one end of
+	// Dial replaces the real opening; a test passes one end of
 	// a net.Pipe or a playback.
 	Dial Dial
 	// Terminator ends each line sent; default NL.
@@ -37,6 +37,12 @@ type Options struct {
 	// ClearBytes are sent before draining, where the instrument has a
 	// device clear of its own, such as the byte 0x03.
 	ClearBytes []byte
+	// ClearBreak sends a break before draining, which is the device clear of
+	// some serial families; other links ignore it.
+	ClearBreak bool
+	// ClearReply is what an instrument says when its device clear is done,
+	// such as DCL; draining then waits for it. usbtmc and hislip ignore it.
+	ClearReply string
 	// Trace, when set, sees every byte that passes. It is called from the
 	// link's own goroutines, possibly two at once, and must be quick.
 	Trace func(Event)

@@ -18,6 +18,7 @@ import (
 type port struct {
 	file *os.File
 	line serial.Port
+	gate *gate // flow=dtrdsr; nil: the system does the flow control
 }
 
 // openSerial opens, locks and sets up the line of a. The lock is an flock,
@@ -41,6 +42,12 @@ func openSerial(a Address) (io.ReadWriteCloser, error) {
 	if err := p.setFlow(a); err != nil {
 		p.Close()
 		return nil, err
+	}
+	if a.Line.Flow == "dtrdsr" {
+		if p.gate, err = newGate(p); err != nil {
+			p.Close()
+			return nil, err
+		}
 	}
 	line.ResetInputBuffer() // what came before we listened is nobody's reply
 	return p, nil
@@ -100,7 +107,30 @@ func isPseudo(a Address) bool {
 func (p *port) Read(b []byte) (int, error) { return p.file.Read(b) }
 
 // Write waits until the system has taken the bytes; Close ends it.
-func (p *port) Write(b []byte) (int, error) { return p.file.Write(b) }
+func (p *port) Write(b []byte) (int, error) {
+	if p.gate != nil {
+		return p.gate.write(b)
+	}
+	return p.file.Write(b)
+}
+
+// Break holds the line at space for a quarter to half a second (tcsendbreak(3)).
+func (p *port) Break() error {
+	return control(p.file, func(fd int) error { return unix.IoctlSetInt(fd, unix.TCSBRK, 0) })
+}
+
+// ready tells whether the other side holds DSR, which an instrument drops
+// while its buffer is full.
+func (p *port) ready() (bool, error) {
+	bits, err := p.line.GetModemStatusBits()
+	if err != nil {
+		return false, err
+	}
+	return bits.DSR, nil
+}
+
+// send hands a few bytes to the system.
+func (p *port) send(b []byte) (int, error) { return p.file.Write(b) }
 
 // drainWithin bounds the wait for the last bytes when a line is closed:
 // 400 characters at 9600 bit/s with some room.
@@ -110,6 +140,9 @@ const drainWithin = 500 * time.Millisecond
 // what flow control holds back, for which the system would wait half a minute
 // when closing, and closes.
 func (p *port) Close() error {
+	if p.gate != nil {
+		p.gate.close()
+	}
 	for end := time.Now().Add(drainWithin); p.unsent() > 0 && time.Now().Before(end); {
 		time.Sleep(5 * time.Millisecond)
 	}

@@ -15,18 +15,22 @@ const connectWithin = 5 * time.Second
 // a minute, instead of the system's two hours.
 var keepAlive = net.KeepAliveConfig{Enable: true, Idle: 10 * time.Second, Interval: 5 * time.Second, Count: 4}
 
-// DialAddress opens the real stream of an address, serial or TCP.
+// DialAddress opens the real stream of an address.
 func DialAddress(ctx context.Context, a Address) (io.ReadWriteCloser, error) {
 	switch a.Scheme {
 	case "serial":
 		return openSerial(a)
 	case "tcp":
 		return dialTCP(ctx, a)
+	case "usbtmc":
+		return openUSBTMC(a)
+	case "hislip":
+		return dialHiSLIP(ctx, a)
 	}
 	return nil, fmt.Errorf("%q is %w; use %s", a.Scheme, ErrUnsupported, Accepted)
 }
 
-func dialTCP(ctx context.Context, a Address) (io.ReadWriteCloser, error) {
+func dialTCP(ctx context.Context, a Address) (net.Conn, error) {
 	d := net.Dialer{Timeout: connectWithin, KeepAliveConfig: keepAlive}
 	c, err := d.DialContext(ctx, "tcp", a.Host)
 	if err != nil {

@@ -100,12 +100,17 @@ func (t *Turn) skipBlanks() { t.l.buf = bytes.TrimLeft(t.l.buf, blanks) }
 // ReadLine reads one reply line and strips the blanks around it. Outcomes:
 // the line; ErrTimeout after the link's time-out, counted from the call;
 // ErrTooLong; ErrLost; ErrClosed; or the context's cause. After any error the
-// reply may still come.
+// reply may still come. An empty line is no reply, since nobody can tell it
+// from a terminator left over by the reply before; when nothing else comes
+// the time-out says so.
 func (t *Turn) ReadLine(ctx context.Context) (string, error) {
 	late := time.NewTimer(t.Timeout)
 	defer late.Stop()
-	for {
+	t.expect()
+	for blank := 0; ; {
+		blank += len(t.l.buf)
 		t.skipBlanks()
+		blank -= len(t.l.buf)
 		if end := bytes.IndexByte(t.l.buf, t.l.opt.ReplyEnd); end >= 0 {
 			line := strings.TrimRight(string(t.l.buf[:end]), blanks)
 			t.l.buf = t.l.buf[end+1:]
@@ -115,8 +120,11 @@ func (t *Turn) ReadLine(ctx context.Context) (string, error) {
 			return "", t.spoilt("read", fmt.Errorf("%w: %d bytes without an end", ErrTooLong, len(t.l.buf)))
 		}
 		if err := t.more(ctx, late.C); err != nil {
-			if len(t.l.buf) > 0 {
+			switch {
+			case len(t.l.buf) > 0:
 				err = fmt.Errorf("%w: only %q came", err, clip(t.l.buf))
+			case blank > 0:
+				err = fmt.Errorf("%w: only an empty line came", err)
 			}
 			return "", t.spoilt("read", err)
 		}
@@ -130,6 +138,9 @@ func (t *Turn) ReadLine(ctx context.Context) (string, error) {
 func (t *Turn) ReadFull(ctx context.Context, n int) ([]byte, error) {
 	late := time.NewTimer(t.Timeout)
 	defer late.Stop()
+	if len(t.l.buf) < n {
+		t.expect()
+	}
 	for len(t.l.buf) < n {
 		if err := t.more(ctx, late.C); err != nil {
 			got := t.take(len(t.l.buf))
@@ -194,45 +205,6 @@ func (t *Turn) spoilt(op string, err error) error {
 	t.l.stale.Store(true)
 	return t.l.fault(op, err)
 }
-
-// Clear sends the instrument's clear bytes, if it has any, and throws away
-// what it says until it has been quiet for the quiet time. It returns what it
-// threw away, at most the first 256 bytes.
-func (t *Turn) Clear(ctx context.Context) (dropped []byte, err error) {
-	if b := t.l.opt.ClearBytes; len(b) > 0 {
-		if w := t.l.wire.Load(); w != nil {
-			err = w.send(ctx, b)
-		}
-		if err != nil {
-			return nil, t.spoilt("clear", err)
-		}
-	}
-	limit := time.NewTimer(t.l.opt.ClearLimit)
-	defer limit.Stop()
-	for {
-		dropped = clip(append(dropped, t.l.buf...))
-		t.l.buf = nil
-		quiet := time.NewTimer(t.l.opt.Quiet)
-		err := t.more(ctx, quiet.C)
-		quiet.Stop()
-		switch {
-		case err == nil:
-		case errors.Is(err, ErrTimeout) && ctx.Err() == nil:
-			t.l.stale.Store(false)
-			return clip(dropped), nil
-		default:
-			return clip(dropped), t.spoilt("clear", err)
-		}
-		select {
-		case <-limit.C:
-			return clip(dropped), t.spoilt("clear", fmt.Errorf("%w: %q…", ErrBabble, clip(dropped)))
-		default:
-		}
-	}
-}
-
-// clip shortens bytes for a message.
-func clip(b []byte) []byte { return b[:min(len(b), 256)] }
 
 // Reopen closes the stream and opens it anew. What was received before is
 // gone; a late reply can still come, if the instrument keeps it.
