@@ -120,9 +120,12 @@ func TestByHandOverAPseudoTerminal(t *testing.T) {
 		if err != nil {
 			t.Fatal(err)
 		}
+		if err := f.SetReadDeadline(time.Now().Add(5 * time.Second)); err != nil {
+			t.Fatal(err)
+		}
 		say := map[string][]string{
-			"supply": {"*idn?", "Nightbench,practice-supply,PS-1,1.0", "volt 5;volt?", "5", "VOLT 99;:SYST:ERR?", `-222,"Data out of range`, "OUTP?", "0"},
-			"pot":    {"*IDN?", "Nightbench,practice-pot,PB-1,1.0", "WIP 7;WIP?", "7", "WIP 300;:SYST:ERR?", `-222,"Data out of range`, "WIPE:POW?", "1"},
+			"supply": {"*idn?", "Nightbench,practice-supply,PS-1,1.0", "volt 5;volt?", "+5.00000000E+00", "VOLT 99;:SYST:ERR?", `-222,"Data out of range`, "OUTP?", "0"},
+			"pot":    {"*IDN?", "Nightbench,practice-pot,PB-1,1.0", "WIP 7;WIP?", "7", "WIP 300;:SYST:ERR?", `-222,"Data out of range`, "wiper:pow?", "1"},
 		}[i.Name]
 		for k := 0; k < len(say); k += 2 {
 			if _, err := f.WriteString(say[k] + "\r\n"); err != nil {
