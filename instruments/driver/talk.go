@@ -143,7 +143,7 @@ func (i *instrument) number(ctx context.Context, l dialect.Line, p dialect.Put) 
 // parseNumber reads a reply in the form of its line.
 func parseNumber(l dialect.Line, reply string) (scpi.Number, error) {
 	if slices.Contains(l.Overload, reply) {
-		return scpi.Number{Outcome: scpi.Overload, Raw: reply}, nil
+		return scpi.Number{Value: math.NaN(), Outcome: scpi.Overload, Negative: strings.HasPrefix(strings.TrimSpace(reply), "-"), Raw: reply}, nil
 	}
 	if len(l.Choices) > 0 {
 		return chosen(l, reply)
