@@ -85,7 +85,7 @@ func simulatedNetwork(t *testing.T, network sweeps.Network, r *rand.Rand, temper
 			continue
 		}
 		n++
-		d := &deck{stop: 3.2 * v[sweeps.Period], step: math.Min(v[sweeps.THigh], v[sweeps.TLow]) / 523.7, temperature: temperature}
+		d := &deck{stop: 3.2 * v[sweeps.Period], step: math.Min(v[sweeps.THigh], v[sweeps.TLow]) / 323.7, temperature: temperature}
 		spiceTiming(d, m, s)
 		if network == sweeps.OutputFed {
 			d.add("bo o 0 i=v(h)>0.5 ? (v(o)-%g)/50 : v(o)/30\nrl0 o 0 1e6", s.Supply-0.1)

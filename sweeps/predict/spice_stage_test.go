@@ -50,7 +50,7 @@ func randomStage(t *testing.T, r *rand.Rand, c stageCase, motor bool) sweeps.Boa
 		b.Driver.Part, b.Driver.BaseResistor = sweeps.Transistor{Name: "2N2222"}, &base
 	case sweeps.StageDarlington:
 		base = ohms(between(r, 2.2e3, 10e3))
-		b.Driver.Part, b.Driver.BaseResistor = sweeps.Transistor{VBE: 1.4, VCESat: 0.75, HFEMin: 5000}, &base
+		b.Driver.Part, b.Driver.BaseResistor = sweeps.Transistor{VBE: 1.4, VCESat: 0.8, HFEMin: 5000}, &base // as a sheet states them at some 50 mA
 	case sweeps.StageNMOS:
 		b.Driver.Part = sweeps.Transistor{RdsOn: 0.05, VgsTh: 1.2}
 	}
@@ -71,7 +71,7 @@ func randomMotor(t *testing.T, r *rand.Rand, b *sweeps.Board, weak bool) {
 	}
 	b.Load.Resistance = ohms(res)
 	read(t, map[string]interface{ UnmarshalText([]byte) error }{
-		fmt.Sprintf("%g mH", between(r, 0.3, 8)):             &b.Load.Inductance,
+		fmt.Sprintf("%g H", res*between(r, 3e-5, 4e-4)):      &b.Load.Inductance,
 		fmt.Sprintf("%g V s/rad", k):                         &b.Load.TorqueConstant,
 		fmt.Sprintf("%g N m", k*current):                     &b.Load.CoulombTorque,
 		fmt.Sprintf("%g N m s", k*current/5000):              &b.Load.ViscousTorque,
@@ -165,7 +165,7 @@ func simulateStage(t *testing.T, m *Model, s Setting, v map[sweeps.Quantity]floa
 	t.Helper()
 	l := &m.nominal.load
 	periods := 3.2 + math.Ceil(6*l.l/l.r/v[sweeps.Period])
-	d := &deck{stop: periods * v[sweeps.Period], step: math.Min(v[sweeps.THigh], v[sweeps.TLow]) / 211.3, temperature: s.Temperature}
+	d := &deck{stop: periods * v[sweeps.Period], step: math.Min(v[sweeps.THigh], v[sweeps.TLow]) / 123.7, temperature: s.Temperature}
 	spiceTiming(d, m, s)
 	spiceStage(d, m, s, speed)
 	tr := d.simulate(t, "v(h)", "i(vi)", "v(vl)", "i(vs)")
