@@ -16,11 +16,11 @@ import (
 
 func TestDemoOnceRunsTheSampleToItsEnd(t *testing.T) {
 	state := filepath.Join(t.TempDir(), "state")
-	out, status := once(t, "demo", "--once", "--pace", "200", "--state", state)
+	out, status := once(t, "demo", "--once", "--pace", "60", "--state", state)
 	if status != 0 {
 		t.Fatalf("status %d:\n%s", status, out)
 	}
-	for _, want := range []string{"practice bench at 200 times", "Switching off by software is no emergency stop", "48 of 48 points", "average voltage"} {
+	for _, want := range []string{"practice bench at 60 times", "Switching off by software is no emergency stop", "48 of 48 points", "average voltage"} {
 		if !strings.Contains(out, want) {
 			t.Errorf("%q is not printed", want)
 		}

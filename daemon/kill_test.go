@@ -27,7 +27,7 @@ const kills = 20
 func TestKilledAtRandomInstants(t *testing.T) {
 	dir := t.TempDir()
 	benchState, state := filepath.Join(dir, "bench"), filepath.Join(dir, "state")
-	practiceBench := start(t, "demo", "--bench-only", "--pace", "150", "--state", benchState)
+	practiceBench := start(t, "demo", "--bench-only", "--pace", "40", "--state", benchState)
 	practiceBench.until("bench file:")
 	bench, plan := filepath.Join(benchState, "bench.toml"), filepath.Join(benchState, "files", "sample.toml")
 	seed := uint64(time.Now().UnixNano())
@@ -43,7 +43,7 @@ func TestKilledAtRandomInstants(t *testing.T) {
 	api(t, state, http.MethodPost, "/api/runs", web.StartRequest{Plan: plan}, nil)
 	killed := 0
 	for ; killed < kills; killed++ {
-		time.Sleep(time.Duration(r.IntN(900)) * time.Millisecond)
+		time.Sleep(time.Duration(r.IntN(1500)) * time.Millisecond)
 		if get[web.RunDetail](t, state, "/api/runs/1").Run.State.Ended() {
 			break
 		}

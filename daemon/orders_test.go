@@ -15,7 +15,7 @@ import (
 func TestCommandsThroughTheDaemon(t *testing.T) {
 	dir := t.TempDir()
 	benchState, state := filepath.Join(dir, "bench"), filepath.Join(dir, "state")
-	start(t, "demo", "--bench-only", "--pace", "150", "--state", benchState).until("bench file:")
+	start(t, "demo", "--bench-only", "--pace", "40", "--state", benchState).until("bench file:")
 	plan := filepath.Join(benchState, "files", "sample.toml")
 	daemon := start(t, "serve", filepath.Join(benchState, "bench.toml"), "--listen", "127.0.0.1:0", "--state", state)
 	daemon.until("operator's token")

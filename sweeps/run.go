@@ -1,6 +1,9 @@
 package sweeps
 
-import "time"
+import (
+	"strconv"
+	"time"
+)
 
 // State is where a run is in its life.
 type State string
@@ -47,11 +50,24 @@ type Run struct {
 	Measured    int        `json:"measured"` // points in the journal
 	Flagged     int        `json:"flagged"`
 	Pace        float64    `json:"pace"`
-	Seed        uint64     `json:"seed,string"` // a string: JavaScript keeps 53 bits of a number
-	Version     string     `json:"version"`     // of the program
+	Seed        Seed       `json:"seed"`
+	Version     string     `json:"version"` // of the program
 	Quantities  []Quantity `json:"quantities"`
 	Files       []File     `json:"files,omitempty"` // bench, board and plan, verbatim
 	Instruments []string   `json:"instruments,omitempty"`
+}
+
+// Seed is where a run's random choices begin. It travels as text: JavaScript keeps 53 bits of a number.
+type Seed uint64
+
+// MarshalText writes it in decimal.
+func (s Seed) MarshalText() ([]byte, error) { return strconv.AppendUint(nil, uint64(s), 10), nil }
+
+// UnmarshalText reads it.
+func (s *Seed) UnmarshalText(b []byte) error {
+	n, err := strconv.ParseUint(string(b), 10, 64)
+	*s = Seed(n)
+	return err
 }
 
 // File is an input file as it was when the run began.

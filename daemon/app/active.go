@@ -54,7 +54,7 @@ func (d *Daemon) Resume(ctx context.Context, id int64, operator string) (sweeps.
 	if err != nil {
 		return sweeps.Run{}, err
 	}
-	job, err := d.job(plan, board, old.Seed)
+	job, err := d.job(plan, board, uint64(old.Seed))
 	if err != nil {
 		return sweeps.Run{}, err
 	}
@@ -122,7 +122,7 @@ func (d *Daemon) job(plan sweeps.Plan, board sweeps.Board, seed uint64) (runner.
 		return runner.Options{}, err
 	}
 	o.Run = sweeps.Run{
-		Plan: plan.Name, Board: board.Name, Revision: board.Revision, Bench: w.Bench, Planned: len(order), Pace: d.clock.Pace(), Seed: seed,
+		Plan: plan.Name, Board: board.Name, Revision: board.Revision, Bench: w.Bench, Planned: len(order), Pace: d.clock.Pace(), Seed: sweeps.Seed(seed),
 		Version: d.o.Version, Quantities: plan.Measure.Quantities, Instruments: d.identities(),
 		Files: []sweeps.File{file("bench", d.o.Bench.Path, d.o.Bench.Text), file("board", board.Path, board.Text), file("plan", plan.Path, plan.Text)},
 	}

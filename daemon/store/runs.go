@@ -62,7 +62,7 @@ func (w *write) run(r sweeps.Run) (int64, error) {
 		started_at, ended_at, planned, pace, seed, version, quantities, instruments)
 		VALUES (?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?)`,
 		string(r.State), r.Reason, r.Plan, r.Board, r.Revision, r.BoardSerial, r.Bench, r.Operator, r.Note,
-		timeText(r.StartedAt), timeOrNull(r.EndedAt), r.Planned, r.Pace, strconv.FormatUint(r.Seed, 10), r.Version, quantities, instruments)
+		timeText(r.StartedAt), timeOrNull(r.EndedAt), r.Planned, r.Pace, strconv.FormatUint(uint64(r.Seed), 10), r.Version, quantities, instruments)
 }
 
 func (w *write) files(run int64, files []sweeps.File) error {
@@ -135,7 +135,7 @@ func scanRun(rows *sql.Rows) (r sweeps.Run, err error) {
 	if r.EndedAt, err = timeOf(ended); err != nil {
 		return r, err
 	}
-	r.Seed, err = strconv.ParseUint(seed, 10, 64)
+	err = r.Seed.UnmarshalText([]byte(seed))
 	return r, err
 }
 
