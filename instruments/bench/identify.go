@@ -1,6 +1,7 @@
 package bench
 
 import (
+	"cmp"
 	"context"
 	"errors"
 	"fmt"
@@ -70,7 +71,7 @@ func (i *instrument) reach(ctx context.Context, o Options) error {
 	}
 	id, err := i.conn.Identify(ctx)
 	if err != nil {
-		return unanswered(err)
+		return i.unanswered(err)
 	}
 	if want := i.port.Serial; want != "" && want != id.Serial {
 		return fmt.Errorf("%w: %s answers, and the bench file says serial = %q; are two instruments of one kind swapped?", driver.ErrWrong, id, want)
@@ -82,6 +83,9 @@ func (i *instrument) reach(ctx context.Context, o Options) error {
 	if i.port.Channel > 1 && !i.d.HasChannels() {
 		return fmt.Errorf("%w: channel = %d, and dialect %s knows one channel only; leave the key out, or use a dialect that has channels",
 			dialect.ErrCannot, i.port.Channel, i.d.Head.Name)
+	}
+	if c := i.d.Channel; c != nil && c.Count > 0 && i.port.Channel > c.Count {
+		return fmt.Errorf("%w: channel = %d, and dialect %s has channels 1 to %d", dialect.ErrCannot, i.port.Channel, i.d.Head.Name, c.Count)
 	}
 	if asked == nil && particular(i.d) { // found by identity, and its link has settings of its own
 		if err := i.link.Close(); err != nil {
@@ -107,7 +111,8 @@ func (i *instrument) dial(ctx context.Context, o Options) (err error) {
 		if addr, err = withLine(addr, i.d.Link.Line); err != nil {
 			return err
 		}
-		opt.Terminator, opt.ClearBytes = i.d.Link.Terminator, i.d.Link.ClearBytes
+		opt.Terminator, opt.ReplyEnd, opt.ClearBytes = i.d.Link.Terminator, i.d.Link.ReplyEnd, i.d.Link.ClearBytes
+		opt.ClearBreak, opt.ClearReply = i.d.Link.Clear == "break", i.d.Link.ClearReply
 		if i.d.Link.Timeout > 0 {
 			opt.Timeout = i.d.Link.Timeout
 		}
@@ -137,7 +142,7 @@ func (i *instrument) connect(identity string, o Options) {
 
 // particular tells whether a dialect's link differs from the default one.
 func particular(d *dialect.Dialect) bool {
-	return d.Link.Terminator != "" || d.Link.Line != "" || len(d.Link.ClearBytes) > 0
+	return d.Link.Terminator != "" || d.Link.ReplyEnd != 0 || d.Link.Line != "" || len(d.Link.ClearBytes) > 0 || d.Link.Clear == "break"
 }
 
 // withLine adds a dialect's serial settings where the address gives none.
@@ -183,7 +188,7 @@ func (i *instrument) recognise(id instruments.Identity) error {
 		return fmt.Errorf("%w: %s answers, and dialect %s is for %s; correct the address, or set dialect = %q",
 			driver.ErrWrong, id, i.d.Head.Name, patterns(i.d), Auto)
 	case found:
-		i.d, i.from = known, known.Head.Name
+		i.d, i.from = known, cmp.Or(known.Path, known.Head.Name)
 		return nil
 	}
 	return fmt.Errorf("%w for %s; if it keeps to the usual SCPI nodes set dialect to %s, else write a dialect file for it",
@@ -199,9 +204,28 @@ func patterns(d *dialect.Dialect) string {
 }
 
 // unanswered says what to try when nobody says who they are.
-func unanswered(err error) error {
-	if errors.Is(err, link.ErrTimeout) {
-		return fmt.Errorf("no answer to *IDN?: %w; is it on, the address the right one, baud rate, parity and flow control as set at the instrument?", err)
+func (i *instrument) unanswered(err error) error {
+	if !errors.Is(err, link.ErrTimeout) {
+		return err
 	}
-	return err
+	hint := "; if it is of a family whose replies end otherwise than in NL, name its dialect"
+	if i.d != nil {
+		hint = usual(i.d.Link)
+	}
+	return fmt.Errorf("no answer to *IDN?: %w; is it on, the address the right one, baud rate, parity and flow control as set at the instrument?%s", err, hint)
+}
+
+// usual is how a family is reached when nobody changed its settings, in words for a message.
+func usual(l dialect.Link) string {
+	var words []string
+	if l.Line != "" {
+		words = append(words, "serial "+l.Line)
+	}
+	if l.Port != 0 {
+		words = append(words, fmt.Sprintf("TCP port %d", l.Port))
+	}
+	if len(words) == 0 {
+		return ""
+	}
+	return " usual for this dialect: " + strings.Join(words, ", ")
 }

@@ -16,6 +16,7 @@ import "nightbench/instruments"
 // above which it says overload, 0 where that is not known.
 type Figure struct {
 	Of         string
+	Channel    int // 0: all
 	Range      float64
 	Highest    float64
 	Accuracy   instruments.Accuracy
@@ -24,16 +25,17 @@ type Figure struct {
 	Note       string
 }
 
-// Figure finds the figure of a quantity for a range: the one whose range is
-// nearest at or above full, or the only one.
-func (d *Dialect) Figure(of string, full float64) (Figure, bool) {
+// Figure finds the figure of a quantity for a range on a channel: the one whose
+// range is nearest at or above full, or the only one. A figure of the channel's
+// own wins.
+func (d *Dialect) Figure(of string, full float64, channel int) (Figure, bool) {
 	var best Figure
 	found := false
 	for _, f := range d.Figures {
-		if f.Of != of || f.Range > 0 && f.Range < full*(1-1e-6) {
+		if f.Of != of || f.Channel != 0 && f.Channel != channel || f.Range > 0 && f.Range < full*(1-1e-6) {
 			continue
 		}
-		if !found || f.Range < best.Range {
+		if !found || f.Range < best.Range || f.Range == best.Range && f.Channel > best.Channel {
 			best, found = f, true
 		}
 	}

@@ -22,6 +22,7 @@ import (
 //	numbers    fields: their names in order, "-" for one that is not wanted
 //	block      an arbitrary block
 //
+// before lists messages that are sent before ask, to choose what is asked for.
 // prefix lists headers that may stand before the answer, and field (from 1)
 // picks one part of an answer at separator, a comma where none is stated.
 //
@@ -40,6 +41,7 @@ type Line struct {
 	YesIs     int
 	Want      []string
 	Fields    []string
+	Before    []string // messages sent before ask
 	Prefix    []string
 	Field     int
 	Separator string

@@ -4,7 +4,7 @@ import "time"
 
 // Link is how the family talks; zero fields mean the link's own defaults.
 type Link struct {
-	Kinds      []string      // serial, tcp, usbtmc: what the family has; none stated: not known
+	Kinds      []string      // serial, tcp, usbtmc, hislip: what the family has; none stated: not known
 	Port       int           // TCP port
 	Line       string        // serial settings as an address gives them, "baud=115200&stop=2"; the address wins
 	Terminator string        // what ends a message sent

@@ -135,7 +135,10 @@ func (r *reader) placeholders(t *userfile.Table, l Line, s spec) {
 // reply reads what the answer is.
 func (r *reader) reply(o *userfile.Table, l *Line, s spec) {
 	userfile.Word(o, "reply", &l.Reply, ReplyNumber, ReplyBool, ReplyBit, ReplyText, ReplyNumbers, ReplyBlock)
+	o.Strings("before", &l.Before)
+	r.freeText(o, "before", l.Before, s)
 	o.Strings("prefix", &l.Prefix)
+	r.freeText(o, "prefix", l.Prefix, s)
 	o.Int("field", &l.Field, 1, 99)
 	l.Separator = ","
 	o.String("separator", &l.Separator)
@@ -156,6 +159,24 @@ func (r *reader) reply(o *userfile.Table, l *Line, s spec) {
 		o.Strings("want", &l.Want)
 	case ReplyNumbers:
 		o.Strings("fields", &l.Fields)
+	}
+}
+
+// freeText wants nothing but {channel} put into texts.
+func (r *reader) freeText(o *userfile.Table, key string, texts []string, s spec) {
+	for _, text := range texts {
+		names, err := placeholders(text)
+		if err != nil {
+			o.Fail(key, err.Error())
+		}
+		for _, n := range names {
+			if n != "channel" || !s.channel {
+				o.Fail(key, fmt.Sprintf("{%s} means nothing here", n))
+			}
+		}
+		if key == "before" && strings.ContainsAny(text, "?\r\n") {
+			o.Fail(key, "a message without a reply, on one line")
+		}
 	}
 }
 

@@ -24,8 +24,8 @@ func (r *reader) link(t *userfile.Table) {
 	}
 	o.Strings("kinds", &l.Kinds)
 	for _, k := range l.Kinds {
-		if k != "serial" && k != "tcp" && k != "usbtmc" {
-			t.Fail("kinds", fmt.Sprintf("%q is no kind of link; use serial, tcp, usbtmc", k))
+		if k != "serial" && k != "tcp" && k != "usbtmc" && k != "hislip" {
+			t.Fail("kinds", fmt.Sprintf("%q is no kind of link; use serial, tcp, usbtmc, hislip", k))
 		}
 	}
 	o.Int("port", &l.Port, 1, 65535)

@@ -22,6 +22,7 @@ func (r *reader) figures(f *userfile.Table) {
 		}
 		o, unit := t.Optional(), units[g.Of]
 		r.limits(t, unit, &g)
+		o.Int("channel", &g.Channel, 1, 99)
 		r.quantity(o, "range", unit, &g.Range)
 		r.quantity(o, "highest", unit, &g.Highest)
 		if a := g.Accuracy; a.Reading <= 0 && a.Range <= 0 && a.Offset <= 0 {

@@ -35,7 +35,7 @@ func (r *reader) waveform(t *userfile.Table) {
 	}
 	userfile.Word(order, "byte_order", &w.ByteOrder, "big", "little")
 	userfile.Word(o, "head", &w.Head, "block", "none")
-	o.String("lead", &w.Lead)
+	o.Strings("lead", &w.Lead)
 	userfile.Word(o, "tail", &w.Tail, "any", "none", "nl", "nl nl")
 	r.codes(t, w)
 	o.Int("points", &w.Points, 1, 1<<30)
@@ -143,6 +143,9 @@ func (r *reader) wholeScope(t *userfile.Table) {
 	}
 	if has("part_first") != has("part_last") || has("part_first") != (r.d.Waveform.MostARead > 0) {
 		t.Fail("", "part_first, part_last and most_a_read of [waveform] belong together")
+	}
+	if !has("trigger_none") && !has("force") {
+		t.Fail("", "where no trigger comes it has to record all the same: give trigger_none, or force")
 	}
 	if r.d.Waveform.NeedsStop && !has("stop") {
 		t.Fail("", "needs_stop of [waveform] needs the line stop")

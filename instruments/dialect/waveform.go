@@ -2,23 +2,23 @@ package dialect
 
 // Waveform is the shape of a record.
 type Waveform struct {
-	Family           string  // of the scaling: see families
-	Samples          string  // int8, uint8, int16, uint16; real32; text: numbers separated by commas
-	ByteOrder        string  // big or little
-	Head             string  // block: # digit count bytes, with as many digits as it likes; none: a plain line (text only)
-	Lead             string  // text before the #; {channel} may stand in it
-	Tail             string  // what comes after the bytes: any, none, nl, nl nl
-	ClipLow          int     // as the instrument counts; codes at or beyond are flags, not volts
-	ClipHigh         int     //
-	Levels           int     // family volts: how many the converter has over the screen
-	CodesPerDivision float64 // family per-division
-	Grid             float64 // family per-division: time divisions from the first point to the last
-	Points           int     // where the count can't be set: how many a record has
-	MostPoints       int     // a record
-	MostARead        int     // a part, with the lines part_first and part_last; 0: all at once
-	NeedsStop        bool    // it has to be stopped (line stop) before a record is read
-	Negative         string  // of int8: "complement" (the default), or "255" where the manual subtracts 255 from codes over 127
-	TimeBase         float64 // relative limit of error of the sample interval, a year after calibration
+	Family           string   // of the scaling: see families
+	Samples          string   // int8, uint8, int16, uint16; real32; text: numbers separated by commas
+	ByteOrder        string   // big or little
+	Head             string   // block: # digit count bytes, with as many digits as it likes; none: a plain line (text only)
+	Lead             []string // texts of which one may stand before the #, with {channel}
+	Tail             string   // what comes after the bytes: any, none, nl, nl nl
+	ClipLow          int      // as the instrument counts; codes at or beyond are flags, not volts
+	ClipHigh         int      //
+	Levels           int      // family volts: how many the converter has over the screen
+	CodesPerDivision float64  // family per-division
+	Grid             float64  // family per-division: time divisions from the first point to the last
+	Points           int      // where the count can't be set: how many a record has
+	MostPoints       int      // a record
+	MostARead        int      // a part, with the lines part_first and part_last; 0: all at once
+	NeedsStop        bool     // it has to be stopped (line stop) before a record is read
+	Negative         string   // of int8: "complement" (the default), or "255" where the manual subtracts 255 from codes over 127
+	TimeBase         float64  // relative limit of error of the sample interval, a year after calibration
 	Source           string
 }
 

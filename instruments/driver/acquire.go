@@ -11,7 +11,7 @@ import (
 
 // acquire takes a triggered record, or else an automatic one.
 func (s *Scope) acquire(ctx context.Context) (triggered bool, err error) {
-	err = s.start(ctx, s.triggerTime())
+	err = s.start(ctx, s.triggerTime(), false)
 	if err == nil || !errors.Is(err, link.ErrTimeout) || ctx.Err() != nil {
 		return err == nil, err
 	}
@@ -19,18 +19,19 @@ func (s *Scope) acquire(ctx context.Context) (triggered bool, err error) {
 		return false, err
 	}
 	trigger := s.d.Put(s.set.Trigger.Level, s.set.Trigger.Channel)
-	if err := s.ensure(ctx, "trigger_none", trigger); err != nil {
+	if err := s.ensureEach(ctx, trigger, "trigger_none"); err != nil {
 		return false, err
 	}
-	if err := s.start(ctx, s.base()+s.recordTime()); err != nil {
+	if err := s.start(ctx, s.base()+s.recordTime(), true); err != nil {
 		return false, err
 	}
 	s.shaken.Store(false) // a trigger that does not come is no failure
 	return false, s.ensureEach(ctx, trigger, "trigger_source", "trigger_wait")
 }
 
-// start begins a record and waits until it is complete, at most for limit.
-func (s *Scope) start(ctx context.Context, limit time.Duration) error {
+// start begins a record and waits until it is complete, at most for limit. The
+// trigger is forced where that is wanted and the dialect has a line for it.
+func (s *Scope) start(ctx context.Context, limit time.Duration, force bool) error {
 	if err := s.ensureEach(ctx, s.put(0), "single"); err != nil {
 		return err
 	}
@@ -40,6 +41,11 @@ func (s *Scope) start(ctx context.Context, limit time.Duration) error {
 	}
 	if err := s.tell(ctx, l, s.put(0)); err != nil {
 		return err
+	}
+	if force && s.has("force") {
+		if err := s.tell(ctx, s.d.Commands["force"], s.put(0)); err != nil {
+			return err
+		}
 	}
 	switch c := s.d.Completion; {
 	case s.has("acquired"):

@@ -125,7 +125,7 @@ func (m *Meter) seconds(setting float64) float64 {
 // accuracy is the limit of error on a range at a speed; the bench file's
 // figure wins, the resolution stays the dialect's where it states none.
 func (m *Meter) accuracy(of string, full float64, speed dialect.Speed) instruments.Accuracy {
-	figure, _ := m.d.Figure(of, full)
+	figure, _ := m.d.Figure(of, full, m.channel)
 	a := figure.Accuracy
 	a.Range += speed.Adds
 	a.Resolution = max(a.Resolution, speed.Resolution*full)

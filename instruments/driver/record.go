@@ -149,7 +149,10 @@ func (s *Scope) part(ctx context.Context, l dialect.Line, p dialect.Put, most in
 	if err := s.ready(ctx); err != nil {
 		return nil, err
 	}
-	form := scpi.BlockForm{Lead: p.Fill(w.Lead), Tail: tails[w.Tail]}
+	form := scpi.BlockForm{Tail: tails[w.Tail]}
+	for _, lead := range w.Lead {
+		form.Leads = append(form.Leads, p.Fill(lead))
+	}
 	size := w.Size()
 	if size == 0 {
 		size = textSample

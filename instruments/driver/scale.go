@@ -100,7 +100,7 @@ func (s *Scope) waveform(c instruments.ScopeChannel, fields map[string]float64, 
 	if !(k.interval > 0) || math.IsInf(k.interval, 0) || k.perCode == 0 || math.IsNaN(k.perCode) {
 		return instruments.Waveform{}, &Error{Instrument: s.name, Command: "scaling of its record", Err: ErrReply, Found: fmt.Sprint(fields), Try: "take a new record"}
 	}
-	figure, _ := s.d.Figure("voltage", 0)
+	figure, _ := s.d.Figure("voltage", 0, c.Number)
 	out := instruments.Waveform{
 		Channel: c.Number, Start: k.start, Interval: k.interval,
 		Accuracy: figure.At((c.High + c.Low) / 2), FullScale: c.High - c.Low, TimeBase: w.TimeBase,

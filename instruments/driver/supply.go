@@ -186,7 +186,7 @@ func (s *Supply) measure(ctx context.Context, name string, unit si.Unit) (instru
 	if err != nil {
 		return instruments.Sample{}, err
 	}
-	figure, _ := s.d.Figure(name, 0)
+	figure, _ := s.d.Figure(name, 0, s.channel)
 	out := sample(n, unit)
 	out.Range, out.Accuracy, out.At = figure.Range, figure.Accuracy, s.clock.Now()
 	return out, nil

@@ -114,6 +114,11 @@ func (i *instrument) ask(ctx context.Context, l dialect.Line, p dialect.Put, par
 
 // query is ask on a link that is ready.
 func (i *instrument) query(ctx context.Context, l dialect.Line, p dialect.Put, parse func(answer string) error) error {
+	for _, first := range l.Before {
+		if err := i.write(ctx, dialect.Line{Send: first}, p); err != nil {
+			return err
+		}
+	}
 	query := p.Fill(l.Ask)
 	err := i.fits(query)
 	if err == nil {

@@ -4,7 +4,9 @@ import (
 	"context"
 	"errors"
 	"fmt"
+	"slices"
 	"strconv"
+	"strings"
 	"time"
 
 	"nightbench/instruments/link"
@@ -19,19 +21,29 @@ const blockQuiet = 20 * time.Millisecond
 // the bytes may come NL, CR NL, two NL or nothing; anything else means that
 // the count was wrong, and the block is not used.
 func (c *Conn) QueryBlock(ctx context.Context, query string, most int) (block []byte, err error) {
-	return c.QueryBlockAs(ctx, query, BlockForm{Lead: c.opt.BlockLead}, most)
+	return c.QueryBlockAs(ctx, query, BlockForm{Leads: leads(c.opt.BlockLead)}, most)
 }
 
 // BlockForm says what stands around a block.
 type BlockForm struct {
-	Lead string // text that may stand before the #
-	Tail string // what has to come after the bytes: "\n", "\n\n"; empty: terminators or nothing
+	Leads []string // texts of which one may stand before the #
+	Tail  string   // what has to come after the bytes: "\n", "\n\n"; empty: terminators or nothing
+}
+
+func leads(lead string) []string {
+	if lead == "" {
+		return nil
+	}
+	return []string{lead}
 }
 
 // QueryBlockAs is QueryBlock for a block in a form of its own.
 func (c *Conn) QueryBlockAs(ctx context.Context, query string, form BlockForm, most int) (block []byte, err error) {
 	if err := checkMessage(query, true); err != nil {
 		return nil, err
+	}
+	if c.link.Address().Line.Flow == "xonxoff" {
+		return nil, c.wrap(query, fmt.Errorf("%w: on a line with flow=xonxoff two values of a byte never arrive; use flow=rtscts or none", ErrMessage))
 	}
 	err = c.exchange(ctx, query, func(t *link.Turn) (string, error) {
 		block, err = c.readBlock(ctx, t, form, most)
@@ -44,7 +56,7 @@ func (c *Conn) QueryBlockAs(ctx context.Context, query string, form BlockForm, m
 }
 
 func (t *talk) readBlock(ctx context.Context, turn *link.Turn, form BlockForm, most int) ([]byte, error) {
-	count, err := t.readCount(ctx, turn, form.Lead)
+	count, err := t.readCount(ctx, turn, form.Leads)
 	switch {
 	case err != nil:
 		return nil, err
@@ -67,8 +79,8 @@ func (t *talk) readBlock(ctx context.Context, turn *link.Turn, form BlockForm, m
 
 // readCount reads the head of a block: the lead of this family, #, one digit
 // n, and n digits.
-func (t *talk) readCount(ctx context.Context, turn *link.Turn, lead string) (int, error) {
-	if err := t.readLead(ctx, turn, lead); err != nil {
+func (t *talk) readCount(ctx context.Context, turn *link.Turn, leads []string) (int, error) {
+	if err := t.readLead(ctx, turn, leads); err != nil {
 		return 0, err
 	}
 	n, err := turn.ReadFull(ctx, 1)
@@ -93,7 +105,7 @@ func (t *talk) readCount(ctx context.Context, turn *link.Turn, lead string) (int
 
 // readLead reads up to the first #. Terminators left by the reply before may
 // stand at the very start.
-func (t *talk) readLead(ctx context.Context, turn *link.Turn, want string) error {
+func (t *talk) readLead(ctx context.Context, turn *link.Turn, leads []string) error {
 	lead := []byte{}
 	for {
 		if len(lead) == 0 {
@@ -103,14 +115,14 @@ func (t *talk) readLead(ctx context.Context, turn *link.Turn, want string) error
 		switch {
 		case err != nil:
 			return err
-		case b[0] == '#' && (len(lead) == 0 || string(lead) == want):
+		case b[0] == '#' && (len(lead) == 0 || slices.Contains(leads, string(lead))):
 			return nil
 		case len(lead) == 0 && (b[0] == '\n' || b[0] == '\r'):
 			continue
 		}
 		lead = append(lead, b[0])
-		if len(lead) > len(want) || string(lead) != want[:len(lead)] {
-			return fmt.Errorf("%w: a block must begin with %q, %q came", ErrFraming, want+"#", lead)
+		if !slices.ContainsFunc(leads, func(l string) bool { return strings.HasPrefix(l, string(lead)) }) {
+			return fmt.Errorf("%w: a block must begin with %q, %q came", ErrFraming, strings.Join(append(slices.Clone(leads), ""), "# or ")+"#", lead)
 		}
 	}
 }
