@@ -101,7 +101,7 @@ func (c *cli) runDemo(cmd *cobra.Command, o demoOptions) error {
 	if err != nil {
 		return err
 	}
-	return c.showRunning(cmd, dir, filepath.Join(files, example.Sample), file, clock, o)
+	return c.showRunning(cmd, dir, filepath.Join(files, example.Sample), file, clock, o, p)
 }
 
 // read reads the scenario and adds the faults of the command line.
@@ -153,7 +153,7 @@ func openPractice(ctx context.Context, dir, files string, clock instruments.Cloc
 }
 
 // showRunning holds the practice bench, serves the page, and starts the sample run.
-func (c *cli) showRunning(cmd *cobra.Command, dir, plan string, file *bench.File, clock instruments.Clock, o demoOptions) error {
+func (c *cli) showRunning(cmd *cobra.Command, dir, plan string, file *bench.File, clock instruments.Clock, o demoOptions, p *app.PracticeBench) error {
 	ctx, end := context.WithCancelCause(cmd.Context())
 	defer end(nil)
 	level := slog.LevelInfo
@@ -163,7 +163,7 @@ func (c *cli) showRunning(cmd *cobra.Command, dir, plan string, file *bench.File
 	say(cmd, "\n%s\n", cautions)
 	result := make(chan error, 1)
 	err := app.Serve(ctx, c.last, app.Options{
-		State: dir, Bench: file, Listen: o.listen, Version: version(), Clock: clock, Log: logger(cmd, level),
+		State: dir, Bench: file, Listen: o.listen, Version: version(), Clock: clock, Log: logger(cmd, level), Practice: p,
 		Ready: func(d *app.Daemon, address string) {
 			say(cmd, "page, with the operator's token: %s", address)
 			run, err := d.Start(ctx, web.StartRequest{Plan: plan, BoardSerial: "0017", Operator: "demo"})

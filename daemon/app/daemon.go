@@ -34,6 +34,8 @@ type Options struct {
 	Version string
 	Clock   instruments.Clock // nil: one of the bench file's pace; a practice bench in this process shares its own
 	Log     *slog.Logger
+	// Practice is the practice bench when it runs in this process: faults can then be brought about over the API.
+	Practice *PracticeBench
 	// Ready is called once, when the page can be opened; address is its URL with the operator's token.
 	Ready func(d *Daemon, address string)
 }
@@ -133,7 +135,11 @@ func (d *Daemon) openPage(ctx context.Context, u *undo) error {
 	if err != nil {
 		return fmt.Errorf("the page's address: %w; choose another with --listen, port 0 takes any free one", err)
 	}
-	srv := web.New(web.Options{Store: d.store, Control: d, Predict: newBoards(d.store), Page: ui.Page(), Token: token, Version: d.o.Version, Cautions: Cautions, Clock: d.clock, Log: d.o.Log})
+	o := web.Options{Store: d.store, Control: d, Predict: newBoards(d.store), Page: ui.Page(), Token: token, Version: d.o.Version, Cautions: Cautions, Clock: d.clock, Log: d.o.Log}
+	if d.o.Practice != nil {
+		o.Practice = practiceWeb{d.o.Practice.Bench}
+	}
+	srv := web.New(o)
 	local, err := web.ListenSocket(Socket(d.state.Dir()))
 	if err != nil {
 		return errors.Join(err, tcp.Close())

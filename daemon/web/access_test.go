@@ -48,7 +48,7 @@ type call struct{ method, path, body string }
 // calls are every route of the description, filled in, and the page's.
 func calls(t *testing.T) (all []call) {
 	api, _ := description(t)
-	bodies := map[string]string{"/api/runs": `{"plan":"/bench/plan.toml"}`}
+	bodies := map[string]string{"/api/runs": `{"plan":"/bench/plan.toml"}`, "/api/practice/fault": `{"kind":"silence"}`, "/api/practice/lift": `{"kind":"silence"}`}
 	for path, item := range api.OpenAPI().Paths {
 		filled := strings.NewReplacer("{id}", "1", "{hash}", ofBoard).Replace(path)
 		if item.Get != nil {

@@ -24,6 +24,7 @@ func (s *Server) newAPI(mux *http.ServeMux) huma.API {
 	s.readCalls(api)
 	s.boardCalls(api)
 	s.controlCalls(api)
+	s.practiceCalls(api)
 	describeStream(api)
 	neverNull(api.OpenAPI().Components.Schemas)
 	seedAsText(api.OpenAPI().Components.Schemas)

@@ -294,7 +294,7 @@ func (d *deadlined) SetReadDeadline(t time.Time) error { d.left = t; return nil 
 // the daemon still works ends the request's context (net/http reads on in the
 // background), so no command may leave one.
 func TestLongCommandIsNotCalledOff(t *testing.T) {
-	s := New(Options{Control: &control{}, Clock: instruments.NewClock(1)})
+	s := New(Options{Control: &control{}, Practice: &fake{}, Clock: instruments.NewClock(1)})
 	for _, c := range calls(t) {
 		if c.method != http.MethodPost {
 			continue

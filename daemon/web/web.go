@@ -65,8 +65,9 @@ type Options struct {
 	Store    Journal
 	Control  Controller
 	Predict  Predictor
-	Page     fs.FS  // index.html at its root; without one a plain page says how to build it
-	Token    string // the operator's; empty: only the socket may control
+	Practice Practice // nil: the instruments are real, or simulated by another program
+	Page     fs.FS    // index.html at its root; without one a plain page says how to build it
+	Token    string   // the operator's; empty: only the socket may control
 	Version  string
 	Cautions []string // shown on every view, a sentence or two each
 	Clock    instruments.Clock

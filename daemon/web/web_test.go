@@ -104,7 +104,7 @@ func newHouse(t testing.TB, change ...func(*Server)) *house {
 	}
 	h := &house{TB: t, store: st, control: &control{}, socket: filepath.Join(dir, "socket"), web: &http.Client{Transport: &http.Transport{}}}
 	h.server = New(Options{
-		Store: st, Control: h.control, Predict: drawer{}, Token: token, Version: "v0.1.0", Cautions: []string{"A software button is no emergency stop."}, Clock: instruments.NewClock(20),
+		Store: st, Control: h.control, Predict: drawer{}, Practice: &fake{}, Token: token, Version: "v0.1.0", Cautions: []string{"A software button is no emergency stop."}, Clock: instruments.NewClock(20),
 		Page: fstest.MapFS{"index.html": {Data: []byte("<!doctype html><title>leaf</title>")}, "assets/leaf-1a2b.js": {Data: []byte("let leaf")}, "icon.svg": {Data: []byte("<svg/>")}, ".keep": {}},
 	})
 	for _, c := range change {
