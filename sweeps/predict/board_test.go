@@ -25,6 +25,9 @@ func TestBoardsThatCannotWork(t *testing.T) {
 		{"plain with diodes", func(b *sweeps.Board) { b.Timing.Network = sweeps.Plain }, []string{"plain"}},
 		{"bypassed with two", func(b *sweeps.Board) { b.Timing.Network = sweeps.Bypassed }, []string{"bypassed"}},
 		{"wiper without pot", func(b *sweeps.Board) { b.Timing.Network = sweeps.Wiper }, []string{"timing.pot"}},
+		{"wiper on an unknown pot", func(b *sweeps.Board) {
+			b.Timing.Network, b.Timing.Discharge, b.Timing.Track = sweeps.Wiper, sweeps.Resistor{}, sweeps.Resistor{Pot: true}
+		}, []string{"bench file", "timing.pot"}},
 		{"output tied to capacitor", func(b *sweeps.Board) {
 			b.Timing.Network, b.Timing.Charge, b.Timing.Discharge = sweeps.OutputFed, sweeps.Resistor{}, sweeps.Resistor{}
 		}, []string{"X", "O", "timing.common"}},

@@ -57,6 +57,9 @@ func (m *Model) checkNetwork() error {
 			return fmt.Errorf("network steered needs its charge_diode: without it Q and X are one node and timing.discharge is bridged")
 		}
 	case sweeps.Wiper:
+		if t.Track.Pot && p.track == 0 {
+			return fmt.Errorf("timing.pot is the bench's pot, whose ohms end to end are not known here; name the bench file, or write the ohms into the board file")
+		}
 		if p.track == 0 {
 			return fmt.Errorf("network wiper needs timing.pot, ohms end to end")
 		}
