@@ -9,7 +9,6 @@ import (
 	"path/filepath"
 	"strconv"
 	"strings"
-	"sync"
 	"testing"
 
 	"nightbench/sweeps"
@@ -211,18 +210,4 @@ func spiceTiming(d *deck, m *Model, s Setting) {
 		d.add(".model pin sw(vt=0.5 vh=0 ron=%g roff=1e12)", math.Max(p.timer.resistance, 1e-3))
 		d.add("bnot l 0 v=1-v(h)\nvo7 q7 0 %g\ns7 q q7 l 0 pin", p.timer.offset)
 	}
-}
-
-// race runs independent simulations two at a time, so that a test lasts no longer than it must.
-func race(n int, work func(i int)) {
-	slots := make(chan struct{}, 2)
-	var wg sync.WaitGroup
-	for i := range n {
-		wg.Go(func() {
-			slots <- struct{}{}
-			defer func() { <-slots }()
-			work(i)
-		})
-	}
-	wg.Wait()
 }
