@@ -234,7 +234,7 @@ func TestPure(t *testing.T) {
 
 // Intervals of 95 % cover the truth in 93 to 97 % of seeded repeats.
 func TestCoverage(t *testing.T) {
-	const trials = 1200 // one standard deviation of the share is then 0.6 %
+	const trials = 500 // one standard deviation of the share is then 1 %
 	b := onTimer()
 	b.rng = rand.New(rand.NewPCG(7, 11))
 	b.accuracy, b.scatter = instruments.Accuracy{Reading: 5e-4, Range: 1e-4}, 2e-3

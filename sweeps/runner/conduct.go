@@ -136,6 +136,9 @@ func (r *Runner) energise(ctx context.Context, at sweeps.Setpoint) error {
 	if err := context.Cause(ctx); err != nil {
 		return err
 	}
+	if err := r.feedCutoff(ctx); err != nil {
+		return fmt.Errorf("energise: cutoff: %w", err)
+	}
 	r.setEnergised(sweeps.EnergisedYes, nil)
 	if err := r.o.Bench.Supply.SetOutput(ctx, true); err != nil {
 		return fmt.Errorf("energise: %w", err)

@@ -37,7 +37,7 @@ func TestSampleNight(t *testing.T) {
 
 // The whole way on the true timer: what is measured is what is there.
 func TestMeasuresTheBoard(t *testing.T) {
-	plan := strings.NewReplacer(`direction = "both"`, `direction = "up"`, `"9 V", `, ``, `repeats = 3`, `repeats = 2`).Replace(short(""))
+	plan := strings.NewReplacer(`direction = "both"`, `direction = "up"`, `"9 V", `, ``, `"10k", `, ``).Replace(short(""))
 	onBoard(t, pump(), plan, func(n *night) {
 		n.safe(n.conduct(), sweeps.Done, "")
 		for _, p := range n.points() {
@@ -165,7 +165,7 @@ func TestWarmUpComesFirst(t *testing.T) {
 func TestDownwardStepWaitsForTheSupply(t *testing.T) {
 	b := light()
 	b.Source.Bulk, b.Driver.Resistance, b.Load.Resistance = 20e-3, 0.05, 400 // 20 mF through some hundred ohms: seconds
-	plan := strings.Replace(short(""), `values = ["9 V", "12 V"]`, `values = ["9 V", "12 V"]`+"\n"+`direction = "down"`, 1)
+	plan := strings.NewReplacer(`values = ["9 V", "12 V"]`, `values = ["9 V", "12 V"]`+"\n"+`direction = "down"`, `"4.7k", "10k", "22k"`, `"10k"`).Replace(short(""))
 	onBoard(t, b, plan, func(n *night) {
 		n.safe(n.conduct(), sweeps.Done, "")
 		var down time.Duration

@@ -89,7 +89,7 @@ steady = "1 %"
 at_most = "20 s"
 [measure]
 quantities = ["duty", "frequency", "average_voltage", "motor_current", "supply_current"]
-repeats = 3
+repeats = 2
 keep_waveform = "every 6"
 ` + more
 }

@@ -93,7 +93,7 @@ type night struct {
 // what does not depend on how the duty comes about.
 func light() circuit.Board {
 	b := pump()
-	b.Timing = circuit.Timing{Network: circuit.Clocked, Period: 6e-3, Duty: 0.4, Capacitance: 100e-9} // the capacitance goes into the board file only
+	b.Timing = circuit.Timing{Network: circuit.Clocked, Period: 12e-3, Duty: 0.4, Capacitance: 100e-9} // the capacitance goes into the board file only
 	return b
 }
 

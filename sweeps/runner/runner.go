@@ -117,6 +117,7 @@ func (r *Runner) Conduct(ctx, last context.Context) Outcome {
 	r.begun = r.o.Clock.Elapsed()
 	g := crew{cancel: r.cancel}
 	g.Go("watch", func() { r.watch(r.life) })
+	g.Go("cutoff", func() { r.keepClosed(r.life) })
 	g.Go("blind", func() { r.guardBlind(r.life) })
 	g.Go("time limit", func() { r.endInTime(r.life) })
 	g.Go("conductor", func() { r.cancel(r.meaning(r.conduct(r.life))) })
