@@ -28,6 +28,11 @@ func newPredictor(board sweeps.Board, w instruments.Wiring, seed uint64) (*predi
 		o.PotTolerance, o.WiperResistance = w.Pot.Tolerance, w.Pot.Wiper
 		o.PotMaxCurrent, o.PotMaxVoltage = w.Pot.MaxCurrent, w.Pot.MaxTerminalVoltage
 	}
+	for _, meter := range w.Meters {
+		if sweeps.Quantity(meter.Reads) == sweeps.AverageVoltage {
+			o.Average = meter.Between
+		}
+	}
 	m, err := predict.New(board, o)
 	if err != nil {
 		return nil, err
