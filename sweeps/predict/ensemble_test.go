@@ -154,3 +154,28 @@ func TestFastMotorWidensTheBand(t *testing.T) {
 		t.Errorf("band of back-EMF %g and %g, of duty %g and %g", width(fast[sweeps.BackEMF]), width(slow[sweeps.BackEMF]), width(fast[sweeps.Duty]), width(slow[sweeps.Duty]))
 	}
 }
+
+// Where the laws are nearly straight, the band is what the sensitivities and the
+// tolerances give by first-order propagation (JCGM 100, 5.1.2).
+func TestBandAgreesWithSensitivities(t *testing.T) {
+	m := mustNew(t, pump(), Options{PotTolerance: 0.05})
+	s := at9V(33e3)
+	all, err := m.Sensitivities(s)
+	if err != nil {
+		t.Fatal(err)
+	}
+	p, _ := m.Draw(20000, 1).At(s)
+	for _, q := range []sweeps.Quantity{sweeps.Frequency, sweeps.TLow, sweeps.Speed} {
+		var variance float64
+		for _, part := range m.Parts() {
+			for _, x := range all {
+				if x.Part == part.Name {
+					half := (part.High - part.Low) / 2 / part.Nominal
+					variance += math.Pow(x.Values[q]*half, 2) / 3
+				}
+			}
+		}
+		band := (p[q].High - p[q].Low) / 2 / p[q].Value
+		between2(t, string(q)+": band over 1.96 u", band/(1.96*math.Sqrt(variance)), 0.8, 1.1)
+	}
+}

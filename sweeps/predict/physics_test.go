@@ -161,3 +161,12 @@ func TestSupplyBy50mV(t *testing.T) {
 	moved, _ := times(t, b, s)
 	between2(t, "50 mV on t_high", math.Abs(moved/high-1), 0.002, 0.012)
 }
+
+// A "better" Schottky with 30 uA of leakage halves the low time at 5 V with 68 k to 100 k.
+func TestLeakySchottkyHalvesTheLowTime(t *testing.T) {
+	for _, r := range []float64{68e3, 100e3} {
+		_, silicon := times(t, bareBoard(timing(sweeps.Steered, 10e3, r, 10e-9, d4148)), at5V())
+		_, leaky := times(t, bareBoard(timing(sweeps.Steered, 10e3, r, 10e-9, sweeps.Diode{Name: "1N5819"})), at5V())
+		between2(t, "t_low with the Schottky over that with silicon", leaky/silicon, 0.3, 0.65)
+	}
+}
