@@ -43,7 +43,7 @@ bench:
 
 # Long proofs: random kills, whole nights. Not in CI.
 torture: build
-	@NIGHTBENCH_TORTURE=1 $(GO) test -race -tags torture -count=1 -timeout 60m -run Torture ./...
+	@$(GO) test -race -tags torture -count=1 -timeout 60m -run Torture ./...
 
 # The pictures of the README, taken of a running demo.
 pictures: build

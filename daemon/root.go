@@ -34,11 +34,18 @@ func newRoot(last context.Context, args []string) *cobra.Command {
 		SilenceUsage:  true,
 		SilenceErrors: true,
 	}
+	root.Args = func(_ *cobra.Command, args []string) error {
+		if len(args) > 0 {
+			return usage("unknown command %q; 'nightbench --help' lists them", args[0])
+		}
+		return nil
+	}
+	root.RunE = func(cmd *cobra.Command, _ []string) error { return cmd.Help() }
 	root.SetArgs(args)
 	root.SetFlagErrorFunc(func(_ *cobra.Command, err error) error { return usage("%w; see --help", err) })
 	root.PersistentFlags().StringVar(&c.state, "state", "", "state folder: database, token, socket (default: nightbench in the XDG state folder)")
 	root.AddCommand(
-		c.demo(), c.serve(), c.newFiles(), c.rehearse(), c.start(), c.stop(), c.hold(), c.resume(), c.runs(), c.show(), c.predict(), c.pulse(),
+		c.demo(), c.serve(), c.newFiles(), c.rehearse(), c.start(), c.stop(), c.hold(), c.resume(), c.runs(), c.show(), c.predict(), c.pulse(), c.token(),
 	)
 	for _, sub := range root.Commands() {
 		asUsage(sub)

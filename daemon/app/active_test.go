@@ -43,3 +43,30 @@ func TestSafeByIsTheNextTimeTheClockShowsIt(t *testing.T) {
 		t.Error("an unreadable time passed")
 	}
 }
+
+func TestOnlyLoopbackIsServed(t *testing.T) {
+	for _, ok := range []string{"127.0.0.1:0", "localhost:8017", "[::1]:0"} {
+		if err := nearby(ok); err != nil {
+			t.Errorf("%s: %v", ok, err)
+		}
+	}
+	for _, far := range []string{"0.0.0.0:0", ":8017", "192.0.2.1:80", "bench.example:80", "8017"} {
+		if nearby(far) == nil {
+			t.Errorf("%s is not loopback and passed", far)
+		}
+	}
+}
+
+func TestRehearsalSeesATripBelowThePrediction(t *testing.T) {
+	all := []Rehearsed{
+		{Setpoint: sweeps.Setpoint{Supply: 9, Pot: 1e3}, Predictions: map[sweeps.Quantity]sweeps.Prediction{sweeps.MotorCurrent: {High: 0.079, Unit: "A"}}},
+		{Setpoint: sweeps.Setpoint{Supply: 9, Pot: 50e3}, Predictions: map[sweeps.Quantity]sweeps.Prediction{sweeps.MotorCurrent: {High: 0.06, Unit: "A"}}},
+	}
+	found := tripsTooLow([]sweeps.Trip{{Quantity: sweeps.MotorCurrent, Limit: 0.07}, {Quantity: sweeps.SupplyCurrent, Limit: 0.01}}, all)
+	if len(found) != 1 || found[0].Count != 1 || found[0].Setting.Pot != 1e3 || !strings.Contains(found[0].Words, "79") {
+		t.Errorf("found %+v", found)
+	}
+	if found := tripsTooLow([]sweeps.Trip{{Quantity: sweeps.MotorCurrent, Limit: 0.8}}, all); len(found) != 0 {
+		t.Errorf("a high limit is no finding: %+v", found)
+	}
+}

@@ -1,6 +1,8 @@
 package app
 
 import (
+	"context"
+	"errors"
 	"sync"
 	"time"
 
@@ -8,6 +10,7 @@ import (
 	"nightbench/instruments/scpi"
 	"nightbench/instruments/si"
 	"nightbench/sweeps"
+	"nightbench/sweeps/runner"
 )
 
 // answers keeps how each instrument answered last, for the margin of the page.
@@ -29,6 +32,9 @@ func (a *answers) expect(info []bench.Info) {
 
 // hear takes one exchange. It is called from the goroutine of the link.
 func (a *answers) hear(instrument string, e scpi.Exchange) {
+	if cutShort(e.Err) {
+		return
+	}
 	words := "answers in " + si.Format(roundly(e.Elapsed).Seconds(), si.Second)
 	if e.Err != nil {
 		words = "does not answer: " + e.Err.Error()
@@ -39,6 +45,13 @@ func (a *answers) hear(instrument string, e scpi.Exchange) {
 		a.last = map[string]string{}
 	}
 	a.last[instrument] = words
+}
+
+// cutShort tells whether an exchange failed because the run ended, not because of the instrument.
+func cutShort(err error) bool {
+	var stop *runner.Stop
+	var trip *runner.Trip
+	return errors.Is(err, context.Canceled) || errors.As(err, &stop) || errors.As(err, &trip)
 }
 
 // all is a line an instrument, in the order of the bench.

@@ -15,39 +15,54 @@ type reach struct {
 	oscillation web.BoardOscillation
 	findings    []web.BoardFinding
 	hardest     *web.BoardHardest
+	done        bool
 }
 
-// reach computes it, or gives what was computed before. It looks at ctx between settings.
+// reach computes it, or gives what was computed before. It looks at ctx between
+// settings; curves that were finished when ctx ends are kept for the next who asks.
 func (l *leaflet) reach(ctx context.Context, temperature float64) (*reach, error) {
-	if r := l.reaches[temperature]; r != nil {
+	r := l.reaches[temperature]
+	if r == nil {
+		if len(l.reaches) >= reachesKept {
+			clear(l.reaches)
+		}
+		r = &reach{}
+		l.reaches[temperature] = r
+	}
+	if r.done {
 		return r, nil
 	}
-	r := &reach{}
 	var all []predict.Setting
-	for _, line := range l.lines(temperature) {
-		curve, err := l.curve(ctx, r, line)
+	for i, line := range l.lines(temperature) {
+		all = append(all, line...)
+		if i < len(r.curves) {
+			continue
+		}
+		curve, swings, err := l.curve(ctx, line, r.oscillation)
 		if err != nil {
 			return nil, err
 		}
-		r.curves = append(r.curves, curve)
-		all = append(all, line...)
+		r.curves, r.oscillation = append(r.curves, curve), swings
 	}
+	if err := l.judge(r, all); err != nil {
+		return nil, web.Fail(web.Invalid, err)
+	}
+	r.done = true
+	return r, nil
+}
+
+// judge goes through the settings as if a plan visited them.
+func (l *leaflet) judge(r *reach, all []predict.Setting) error {
 	r.oscillation.Settings = len(all)
 	findings, err := l.model.Judge(all)
 	if err != nil {
-		return nil, web.Fail(web.Invalid, err)
+		return err
 	}
+	r.findings = nil
 	for _, f := range findings {
 		r.findings = append(r.findings, web.BoardFinding{Name: f.Name, Refuse: f.Refuse, Words: f.Words, Setting: l.shown(f.Setting), Count: f.Count})
 	}
-	if err := l.harden(r, all); err != nil {
-		return nil, web.Fail(web.Invalid, err)
-	}
-	if len(l.reaches) >= reachesKept {
-		clear(l.reaches)
-	}
-	l.reaches[temperature] = r
-	return r, nil
+	return l.harden(r, all)
 }
 
 // lines are the settings of each curve: along the pot at each supply, or along the supply.
@@ -84,15 +99,15 @@ func evenly(low, high float64) []float64 {
 	return all
 }
 
-// curve computes one line of settings, and notes where the board may not swing.
-func (l *leaflet) curve(ctx context.Context, r *reach, line []predict.Setting) (web.BoardCurve, error) {
+// curve computes one line of settings, and adds to o where the board may not swing.
+func (l *leaflet) curve(ctx context.Context, line []predict.Setting, o web.BoardOscillation) (web.BoardCurve, web.BoardOscillation, error) {
 	c := web.BoardCurve{Quantities: map[sweeps.Quantity]sweeps.CurveOfQuantity{}}
 	if l.hasPot() {
 		c.Supply = &line[0].Supply
 	}
 	for k, s := range line {
 		if err := ctx.Err(); err != nil {
-			return c, err
+			return c, o, err
 		}
 		x := s.Pot
 		if !l.hasPot() {
@@ -110,9 +125,9 @@ func (l *leaflet) curve(ctx context.Context, r *reach, line []predict.Setting) (
 			of.Value[k], of.Low[k], of.High[k] = &p.Value, &p.Low, &p.High
 		}
 		_, swings := values[sweeps.Frequency]
-		l.note(&r.oscillation, s, swings, flags)
+		l.note(&o, s, swings, flags)
 	}
-	return c, nil
+	return c, o, nil
 }
 
 // note counts a setting at which the board, or one within tolerance, does not oscillate.

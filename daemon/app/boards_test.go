@@ -199,6 +199,37 @@ func TestComputingABoardIsBounded(t *testing.T) {
 	b.turn <- struct{}{}
 }
 
+// countdown is a context that ends after being asked so many times.
+type countdown struct {
+	context.Context
+	left int
+}
+
+func (c *countdown) Err() error {
+	if c.left--; c.left < 0 {
+		return context.Canceled
+	}
+	return nil
+}
+
+// What was finished when the asker went away is there for the next, and counted once.
+func TestFinishedCurvesAreKept(t *testing.T) {
+	l, err := newLeaflet(sweeps.File{Name: "board.toml", Text: example.Text(example.BoardPump)}, visited(1e3, 82e3))
+	if err != nil {
+		t.Fatal(err)
+	}
+	if _, err := l.reach(&countdown{t.Context(), 49 + 10}, 27); !errors.Is(err, context.Canceled) {
+		t.Fatalf("went on: %v", err)
+	}
+	if n := len(l.reaches[27].curves); n != 1 {
+		t.Errorf("%d curves kept", n)
+	}
+	r, err := l.reach(&countdown{t.Context(), 2 * 49}, 27)
+	if err != nil || len(r.curves) != 3 || r.oscillation.Settings != 3*49 {
+		t.Errorf("%d curves, %v", len(r.curves), err)
+	}
+}
+
 func TestSuppliesAreThinnedEvenly(t *testing.T) {
 	if d := cmp.Diff([]float64{1, 3, 5, 7, 9, 12}, thinned([]float64{1, 2, 3, 4, 5, 6, 7, 8, 9, 10, 11, 12}, 6)); d != "" {
 		t.Error(d)

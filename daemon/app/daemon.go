@@ -61,7 +61,8 @@ type Daemon struct {
 
 	answers answers
 	begun   time.Time
-	last    context.Context // ends when nobody will wait for off any longer
+	last    context.Context         // ends when nobody will wait for off any longer
+	fail    context.CancelCauseFunc // ends the daemon: it can't go on
 
 	mu       sync.Mutex // guards what follows; never held over I/O
 	run      *active
@@ -86,11 +87,28 @@ func Serve(ctx, last context.Context, o Options) (err error) {
 		defer cancel()
 		err = errors.Join(err, u.all(ctx))
 	}()
+	if err := nearby(o.Listen); err != nil {
+		return err
+	}
+	ctx, d.fail = context.WithCancelCause(ctx)
+	defer d.fail(nil)
 	if err := d.open(ctx, &u); err != nil {
 		return err
 	}
 	<-ctx.Done()
 	return d.end(context.Cause(ctx))
+}
+
+// nearby refuses an address of the page that other computers could reach, before anything is opened.
+func nearby(listen string) error {
+	host, _, err := net.SplitHostPort(listen)
+	if err != nil {
+		return fmt.Errorf("the page's address %q: %w; write it like 127.0.0.1:8017", listen, err)
+	}
+	if ip := net.ParseIP(host); host != "localhost" && (ip == nil || !ip.IsLoopback()) {
+		return fmt.Errorf("the page's address %q: only loopback is served by this version, like 127.0.0.1:8017; to watch from elsewhere forward that port by SSH", listen)
+	}
+	return nil
 }
 
 // open is the order of opening. Each step registers its undoing at once.
@@ -146,8 +164,15 @@ func (d *Daemon) openPage(ctx context.Context, u *undo) error {
 	}
 	serving, stop := context.WithCancel(context.WithoutCancel(ctx))
 	done := make(chan error, 1)
-	go func() { done <- srv.Serve(serving, tcp, local) }()
-	u.add("the page", func(context.Context) error { stop(); return ignoreClosed(<-done) })
+	go func() {
+		err := ignoreClosed(srv.Serve(serving, tcp, local))
+		if err != nil && serving.Err() == nil {
+			// Nobody could reach the bench any more: the run ends, the bench is made safe.
+			d.fail(fmt.Errorf("the page's server: %w", err))
+		}
+		done <- err
+	}()
+	u.add("the page", func(context.Context) error { stop(); return <-done })
 	if d.o.Ready != nil {
 		d.o.Ready(d, fmt.Sprintf("http://%s/#token=%s", tcp.Addr(), token))
 	}

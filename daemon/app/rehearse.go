@@ -4,6 +4,7 @@ import (
 	"fmt"
 
 	"nightbench/instruments"
+	"nightbench/instruments/si"
 	"nightbench/sweeps"
 	"nightbench/sweeps/predict"
 	"nightbench/sweeps/runner"
@@ -57,6 +58,31 @@ func Rehearse(plan sweeps.Plan, board sweeps.Board, w *instruments.Wiring) (Rehe
 		values, flags := p.At(s.Supply, s.Pot)
 		r.Setpoints = append(r.Setpoints, Rehearsed{Setpoint: s, Place: runner.Place(s), Predictions: values, Flags: flags})
 	}
+	r.Findings = append(r.Findings, tripsTooLow(plan.Trips, r.Setpoints)...)
 	r.Seconds = runner.AtLeast(plan, p, order)
 	return r, nil
+}
+
+// tripsTooLow are the trips whose limit lies below what is predicted: such a plan ends at its first hot setpoint.
+func tripsTooLow(trips []sweeps.Trip, all []Rehearsed) (found []predict.Finding) {
+	for _, t := range trips {
+		f := predict.Finding{Name: "trip_below_prediction"}
+		worst := t.Limit
+		for _, s := range all {
+			x, ok := s.Predictions[t.Quantity]
+			if !ok || x.High <= t.Limit {
+				continue
+			}
+			f.Count++
+			if x.High > worst {
+				worst = x.High
+				f.Setting = predict.Setting{Supply: s.Supply, Pot: s.Pot}
+				f.Words = fmt.Sprintf("%s trips at %s, and up to %s is predicted", t.Quantity, si.Format(t.Limit, x.Unit), si.Format(x.High, x.Unit))
+			}
+		}
+		if f.Count > 0 {
+			found = append(found, f)
+		}
+	}
+	return found
 }

@@ -64,23 +64,34 @@ func Database(dir string) string { return filepath.Join(dir, "nightbench.db") }
 // Socket is the daemon's socket in a state folder; whoever may open it may control.
 func Socket(dir string) string { return filepath.Join(dir, "nightbench.sock") }
 
+// ReadToken is the operator's token of a state folder; an error says how it comes about.
+func ReadToken(dir string) (string, error) {
+	path := filepath.Join(dir, "token")
+	b, err := os.ReadFile(path)
+	if errors.Is(err, os.ErrNotExist) {
+		return "", fmt.Errorf("no token in %s: a daemon makes it at its first start ('nightbench serve BENCH'); name another state folder with --state DIR: %w", dir, err)
+	}
+	if err != nil {
+		return "", fmt.Errorf("operator's token: %w", err)
+	}
+	if t := strings.TrimSpace(string(b)); len(t) >= 32 {
+		return t, nil
+	}
+	return "", fmt.Errorf("%s is no token: delete it and a new one is made", path)
+}
+
 // Token is the operator's token, made on first use: 32 random bytes, readable by the owner only.
 func (s *State) Token() (string, error) {
-	path := filepath.Join(s.dir, "token")
-	if b, err := os.ReadFile(path); err == nil {
-		if t := strings.TrimSpace(string(b)); len(t) >= 32 {
-			return t, nil
-		}
-		return "", fmt.Errorf("%s is no token: delete it and a new one is made", path)
-	} else if !errors.Is(err, os.ErrNotExist) {
-		return "", fmt.Errorf("operator's token: %w", err)
+	t, err := ReadToken(s.dir)
+	if !errors.Is(err, os.ErrNotExist) {
+		return t, err
 	}
 	var raw [32]byte
 	if _, err := rand.Read(raw[:]); err != nil {
 		return "", fmt.Errorf("operator's token: %w", err)
 	}
-	t := base64.RawURLEncoding.EncodeToString(raw[:])
-	if err := writeDurably(path, []byte(t+"\n")); err != nil {
+	t = base64.RawURLEncoding.EncodeToString(raw[:])
+	if err := writeDurably(filepath.Join(s.dir, "token"), []byte(t+"\n")); err != nil {
 		return "", fmt.Errorf("operator's token: %w", err)
 	}
 	return t, nil

@@ -187,6 +187,15 @@ func must(err error) {
 	}
 }
 
+// bled is what the supply's own bleeder takes: it sits before the ammeter, which doesn't see it.
+func bled(sim *circuit.Sim) float64 {
+	ohms := sim.Board().Source.Bleed
+	if ohms <= 0 {
+		return 0
+	}
+	return sim.State().Supply / ohms
+}
+
 // measure averages a probe over the readback's aperture. Behind an open cutoff the
 // supply sees its own terminals, not the board.
 func (s *supply) measure(ctx context.Context, p circuit.Probe, f faulty, step float64) (string, error) {
@@ -195,7 +204,10 @@ func (s *supply) measure(ctx context.Context, p circuit.Probe, f faulty, step fl
 		return "", err
 	}
 	x := m.Value()
-	s.world.do(func(*circuit.Sim) {
+	s.world.do(func(sim *circuit.Sim) {
+		if s.live() && p == circuit.Through(circuit.SupplyCurrent) {
+			x -= bled(sim)
+		}
 		if !s.relay {
 			x = 0
 			if s.live() && p != circuit.Through(circuit.SupplyCurrent) {
