@@ -57,6 +57,36 @@ func TestMeasuresTheBoard(t *testing.T) {
 	})
 }
 
+// Sped up, the plan's times are bench time; links, blind time and stamps stay wall time.
+func TestPaced(t *testing.T) {
+	atPace(t, 20, light(), short(trips), func(n *night) {
+		n.safe(n.conduct(), sweeps.Done, "")
+		if len(n.points()) != len(n.options.Order) {
+			t.Errorf("%d points", len(n.points()))
+		}
+	})
+	atPace(t, 20, light(), short(trips), func(n *night) {
+		n.options.Plan.AtMost = 20 * time.Second
+		began := n.clock.Now()
+		n.safe(n.conduct(), sweeps.Stopped, "limit of 20s")
+		if took := n.clock.Now().Sub(began); took > 1200*time.Millisecond {
+			t.Errorf("20 s at pace 20 took %s of wall time", took)
+		}
+	})
+	atPace(t, 20, light(), short(""), func(n *night) {
+		done := n.begin()
+		n.measured(1)
+		n.cables["supply"].mute.Store(true)
+		began := n.clock.Now()
+		n.later(10*time.Second, func() { n.cables["supply"].mute.Store(false) })
+		n.until("made safe", func() bool { return n.run.State() == sweeps.MakingSafe })
+		if took := n.clock.Now().Sub(began); took < 1400*time.Millisecond || took > 2100*time.Millisecond {
+			t.Errorf("blind after %s of wall time; it is never paced", took)
+		}
+		n.safe(<-done, sweeps.Tripped, "blind")
+	})
+}
+
 // "About to energise" is durable in the journal and in the file before the output
 // goes on, and the limits were set and read back before that. The order is the supply's own log's.
 func TestEnergiseOrder(t *testing.T) {

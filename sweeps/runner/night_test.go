@@ -69,7 +69,7 @@ inertia = "5 g cm2"                     # with the pump's rotor: the speed hardl
 
 // A night is a run in a bubble: practice instruments behind pipes, the real
 // drivers, a real journal, and a clock that jumps. Bench and wall time are the
-// same there (pace 1).
+// same there, unless a test sets a pace.
 type night struct {
 	*testing.T
 	clock    instruments.Clock
@@ -118,8 +118,14 @@ func pump() circuit.Board {
 // onBoard runs f in a bubble. Leaving it fails when a goroutine is left behind.
 func onBoard(t *testing.T, b circuit.Board, plan string, f func(n *night)) {
 	t.Helper()
+	atPace(t, 1, b, plan, f)
+}
+
+// atPace is onBoard with bench time running faster than the wall.
+func atPace(t *testing.T, pace float64, b circuit.Board, plan string, f func(n *night)) {
+	t.Helper()
 	synctest.Test(t, func(t *testing.T) {
-		n := &night{T: t, clock: instruments.NewClock(1), cables: map[string]*cable{}, supply: &record{}, log: &record{}}
+		n := &night{T: t, clock: instruments.NewClock(pace), cables: map[string]*cable{}, supply: &record{}, log: &record{}}
 		n.board = fmt.Sprintf(boardFile, b.Timing.Capacitance*1e9)
 		n.wire(b)
 		n.open(plan)

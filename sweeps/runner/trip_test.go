@@ -118,7 +118,7 @@ func TestEveryEnd(t *testing.T) {
 				if points := n.points(); c.during != nil && len(points) < 2 {
 					t.Errorf("%d points are kept; two were there", len(points))
 				}
-				t.Log(end.Reason)
+				t.Logf("output off %.2f s after it began, confirmed after %.1f s: %s", n.offAt()-asked.Seconds(), (n.clock.Elapsed() - asked).Seconds(), end.Reason)
 			})
 		})
 	}
@@ -143,6 +143,16 @@ func TestContextEnded(t *testing.T) {
 			n.journaled(end)
 		})
 	}
+}
+
+// offAt is when the output went off by the supply's own log, s of bench time.
+func (n *night) offAt() (at float64) {
+	for _, l := range n.supplyLog() {
+		if l.Output != nil && !*l.Output {
+			at = l.Bench
+		}
+	}
+	return at
 }
 
 // locked blocks the rotor: its torque is beyond what the winding gives.
