@@ -3,6 +3,8 @@ package driver
 import (
 	"errors"
 	"math"
+	"slices"
+	"strings"
 	"testing"
 	"time"
 
@@ -166,6 +168,12 @@ func TestClearThatEnergisesIsFollowedByOff(t *testing.T) {
 			must(t, s.ClearTrip(t.Context()))
 			if o := f.State(c.channel); o.On || o.TrippedOver {
 				t.Errorf("after clearing: %+v", o)
+			}
+			said := f.Received()
+			clear := slices.IndexFunc(said, func(m string) bool { return strings.Contains(m, "PROT:CLE") })
+			off := clear + slices.IndexFunc(said[clear:], func(m string) bool { return strings.Contains(m, "OUTP OFF") })
+			if between := strings.Join(said[clear+1:off], " "); strings.Contains(between, "?") {
+				t.Errorf("between clear and off was asked %s", between)
 			}
 		})
 	}
