@@ -19,6 +19,7 @@ type analysis struct {
 	driven    scanner
 	freewheel scanner // of three levels: transitions between freewheel and rest
 	three     bool
+	resolved  bool // levels were read from how the samples spread over few codes
 	result    Result
 }
 
@@ -226,6 +227,7 @@ func (a *analysis) pool(states ...*state) {
 		}
 		s.rounding(a.q)
 	}
+	a.resolve(states...)
 }
 
 func (a *analysis) instants() {

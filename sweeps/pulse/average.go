@@ -20,6 +20,11 @@ func (a *analysis) wholePeriodMeans(c cycles) (average, rms Quantity) {
 	share := a.highShare(c)
 	round := math.Hypot(share*a.high.uRound, (1-share)*a.low.uRound)
 	scatter := math.Sqrt(a.noise / n)
+	if a.resolved && !a.three {
+		m += share*a.high.shift + (1-share)*a.low.shift
+		// The shifts are known from the settled samples, the mean is of all.
+		scatter = math.Hypot(share*a.high.unlike(share*n), (1-share)*a.low.unlike((1-share)*n))
+	}
 	dof := max(1, float64(a.pairs-1))
 	average = a.voltage("average_voltage", m,
 		uncertainty.Known("sample interval", a.volt*grid),
@@ -29,16 +34,25 @@ func (a *analysis) wholePeriodMeans(c cycles) (average, rms Quantity) {
 
 	// Noise adds its power to the square; half of it is doubtful, being perhaps the board's own.
 	power := a.noise * a.volt * a.volt
+	if a.resolved && !a.three {
+		square := share*a.high.shift*a.volts(a.high.level) + (1-share)*a.low.shift*a.volts(a.low.level)
+		s = math.Sqrt(max(0, s*s+2*a.volt*square))
+	}
 	s = math.Sqrt(max(0, s*s-power))
 	floor := max(s, 1e-3*a.volt)
 	high, low := a.volts(a.high.level), a.volts(a.low.level)
 	swing := math.Abs(high*high-low*low) / (2 * floor) / max(math.Abs(high-low), 1e-300)
-	rms = a.quantity("rms", "V", s, m/floor, (sq(s)-a.pivot*a.volts(m))/floor, 0,
+	rms = a.quantity("rms", "V", s, a.volts(m)/floor, (sq(s)-a.pivot*a.volts(m))/floor, 0,
 		uncertainty.Known("sample interval", a.volt*grid*swing),
 		uncertainty.Scatter("noise", uncertainty.Value{U: a.volt * math.Hypot(scatter, noise*swing), DOF: dof}),
 		uncertainty.Known("converter steps", a.volt*math.Hypot(share*a.high.uRound*high, (1-share)*a.low.uRound*low)/floor),
 		uncertainty.Known("noise power", power/(2*floor)/math.Sqrt(3)))
 	return average, rms
+}
+
+// unlike is the standard uncertainty (codes) of the mean of n samples of a state from that of the settled ones among them.
+func (st *state) unlike(n float64) float64 {
+	return math.Sqrt(st.spread * max(0, 1/float64(max(1, st.n))-1/max(1, n)))
 }
 
 // highShare is the share of the whole periods spent in the driven state.

@@ -233,11 +233,10 @@ func (a *analysis) jitter(c cycles, whole []float64) Quantity {
 	for _, w := range whole {
 		v += sq(w-m) / max(1, n-1)
 	}
-	x := math.Sqrt(max(0, v-own))
-	// u of a variance is √(2/(n−1)) of it; near zero the root turns it into its own root.
+	// u of a variance is √(2/(n−1)) of it.
 	// Jitter well below a sample does not show when all instants keep their place.
 	uv := math.Sqrt(2/max(1, n-1))*max(v, own) + 0.5*own + 0.1*c.limit.grid
-	u := min(math.Sqrt(uv), uv/2/max(x, 1e-300))
+	x, u := root(v-own, uv)
 	return a.quantity("jitter", "s", x, 0, 0, 0, uncertainty.Scatter("few periods", uncertainty.Value{U: u, DOF: max(1, n-1)}))
 }
 

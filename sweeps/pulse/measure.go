@@ -103,12 +103,11 @@ func (a *analysis) levels(sag float64) {
 // same rms value: what the samples of the settled high state spread more than neighbours do.
 func (a *analysis) ripple() Quantity {
 	s := a.high
-	slow := max(0, s.spread-s.noise)
+	slow := s.spread - s.noise
 	n := float64(max(2, s.n))
 	// Variances of spread and noise from n samples; rounding adds its own when noise does not cover it.
-	uv := math.Sqrt(sq(s.spread)+1.5*sq(s.noise))*math.Sqrt(2/n) + sq(s.uRound) + 3*sq(s.uSettle)
-	rms := math.Sqrt(slow)
-	u := min(math.Sqrt(uv), uv/2/max(rms, 1e-300))
+	uv := math.Sqrt(sq(s.spread)+1.5*sq(s.noise))*math.Sqrt(2/n) + sq(s.coarse) + 3*sq(s.uSettle)
+	rms, u := root(slow, uv)
 	k := 2 * math.Sqrt2 * a.volt
 	return a.quantity("ripple", "V", k*rms, 0, k*rms, 0,
 		uncertainty.Scatter("few samples", uncertainty.Value{U: k * u, DOF: max(1, n-1)}))

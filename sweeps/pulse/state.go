@@ -42,6 +42,14 @@ type state struct {
 	uShelf  float64
 	droop   float64 // level early in the state less level late in it
 	uDroop  float64
+	shift   float64 // what the converter's steps had drawn the mean of the codes away from level
+
+	coarse float64 // what the steps leave unknown of the mean of the codes
+	own    float64 // noise before it was pooled with that of other states
+
+	occ           []span // where it was measured, and how
+	about, within float64
+	skip          float64
 }
 
 // before is the last sample of a state that is clear of the transition ending it: three
@@ -75,7 +83,7 @@ type sums struct {
 // skip of each is left out, as are samples farther than reach codes from about
 // (spikes). step is the distance between codes that occur.
 func measureState(codes []int16, occ []span, about, reach, skip float64, step int) state {
-	st := state{level: about, dof: math.Inf(1)}
+	st := state{level: about, dof: math.Inf(1), occ: occ, about: about, within: reach, skip: skip}
 	var means, weights []float64
 	var total sums
 	stride := (len(occ) + mostSpans - 1) / mostSpans
@@ -98,6 +106,7 @@ func measureState(codes []int16, occ []span, about, reach, skip float64, step in
 	st.spread = max(0, total.yy/n-off*off)
 	if total.pairs > 0 {
 		st.noise = total.diff / (2 * float64(total.pairs))
+		st.own = st.noise
 	}
 	if total.nFirst > 0 {
 		st.shelf = total.first/float64(total.nFirst) - off
@@ -108,14 +117,31 @@ func measureState(codes []int16, occ []span, about, reach, skip float64, step in
 	return st
 }
 
+// each gives the samples the state was measured by, and where they stand in the settled part, from 0 to 1.
+func (st *state) each(codes []int16, f func(c int16, place float64)) {
+	stride := (len(st.occ) + mostSpans - 1) / mostSpans
+	for k := 0; k < len(st.occ); k += max(1, stride) {
+		from, step := settledFrom(st.occ[k], st.skip)
+		for i := from; i <= st.occ[k].to; i += step {
+			if math.Abs(float64(codes[i])-st.about) <= st.within {
+				f(codes[i], (float64(i-from)+0.5)/float64(st.occ[k].to-from+1))
+			}
+		}
+	}
+}
+
+// settledFrom is the first sample looked at of an occurrence, and the distance to the next.
+func settledFrom(o span, skip float64) (from, step int) {
+	from = o.from + int(skip*float64(o.to-o.from+1))
+	return from, max(1, (o.to-from+mostSamples)/mostSamples)
+}
+
 func sumSpan(codes []int16, o span, about, reach, skip, step float64) sums {
 	var s sums
-	length := o.to - o.from + 1
-	from := o.from + int(skip*float64(length))
-	stride := (o.to - from + mostSamples) / mostSamples
+	from, stride := settledFrom(o, skip)
 	half := from + (o.to-from)/2
 	s.shelf(codes, o, about, reach)
-	for i := from; i <= o.to; i += max(1, stride) {
+	for i := from; i <= o.to; i += stride {
 		y := float64(codes[i]) - about
 		if math.Abs(y) > reach {
 			continue
@@ -235,6 +261,15 @@ func (st *state) rounding(q float64) {
 	if st.equal*10 > 9*st.pairs {
 		st.uRound = q / math.Sqrt(12)
 	}
+	st.coarse = st.uRound
+}
+
+// root returns the square root of a variance known to u of variance, and its standard
+// uncertainty. Near zero the root follows the posterior of a quantity that cannot be
+// negative, flat in the root: for a variance of 0 its density is as exp(−r⁴/2u²), whose rms is 0.69 √u.
+func root(variance, u float64) (r, uRoot float64) {
+	r = math.Sqrt(max(0, variance))
+	return r, min(0.69*math.Sqrt(u), u/2/max(r, 1e-300))
 }
 
 // sawtooth is the rms error, in steps, of the mean of readings rounded to whole
