@@ -24,6 +24,7 @@ type synth struct {
 type response struct {
 	h                  func(t float64) float64
 	memory, half, area float64
+	duration           float64 // 10 % to 90 %, s; 0: not stated
 }
 
 func step() response {
@@ -38,7 +39,7 @@ func step() response {
 // ramp, exponential and gaussian transitions of the 10 % to 90 % duration d, s.
 func ramp(d float64) response {
 	w := d / 0.8
-	return response{func(t float64) float64 { return min(1, max(0, t/w)) }, w, w / 2, w / 2}
+	return response{func(t float64) float64 { return min(1, max(0, t/w)) }, w, w / 2, w / 2, d}
 }
 
 func exponential(d float64) response {
@@ -48,12 +49,12 @@ func exponential(d float64) response {
 			return 0
 		}
 		return 1 - math.Exp(-t/tau)
-	}, 16 * tau, tau * math.Ln2, tau}
+	}, 16 * tau, tau * math.Ln2, tau, d}
 }
 
 func gaussian(d float64) response {
 	s := d / 2.5631
-	return response{func(t float64) float64 { return 0.5 * math.Erfc(-(t-4*s)/s/math.Sqrt2) }, 9 * s, 4 * s, 4 * s}
+	return response{func(t float64) float64 { return 0.5 * math.Erfc(-(t-4*s)/s/math.Sqrt2) }, 9 * s, 4 * s, 4 * s, d}
 }
 
 // ringing overshoots by about exp(−half period/decay) and rings with the given period, s.
@@ -73,7 +74,33 @@ func ringing(period, decay float64) response {
 			high = mid
 		}
 	}
-	return response{h, 20 * decay, low, 1 / decay / (1/decay/decay + w*w)}
+	return response{h: h, memory: 20 * decay, half: low, area: 1 / decay / (1/decay/decay + w*w)}
+}
+
+// square is ∫(1 − h)² dt, s, and peak the most h exceeds 1, both by fine steps.
+func (r response) square() (s float64) {
+	const n = 2000
+	for i := range n {
+		x := 1 - r.h((float64(i)+0.5)/n*r.memory)
+		s += x * x * r.memory / n
+	}
+	return s
+}
+
+func (r response) peak() (top float64) {
+	const n = 4000
+	for i := range n {
+		top = max(top, r.h(float64(i)/n*r.memory)-1)
+	}
+	return top
+}
+
+// rms is the root of the mean square over a period of two levels, every transition ending
+// before the next begins: ∫h² = t − 2∫(1 − h) + ∫(1 − h)² after a rise, ∫(1 − h)² after a fall.
+func (s *synth) rms() float64 {
+	a := s.high - s.low
+	square := s.duty + (s.up.square()+s.down.square()-2*s.up.area)/s.period
+	return math.Sqrt(s.low*s.low + 2*s.low*(s.mean()-s.low) + a*a*square)
 }
 
 // wave evaluates the waveform at rising times; jitter moves each transition for good.
@@ -259,9 +286,18 @@ func (s *specimen) truth() map[string]float64 {
 		"duty": s.share(), "period": s.period, "frequency": 1 / s.period, "t_high": s.share() * s.period, "t_low": (1 - s.share()) * s.period,
 		"average_voltage": s.mean(), "high_level": s.high, "low_level": s.low, "amplitude": s.high - s.low,
 	}
+	if s.conduct <= s.duty && s.sag == 0 {
+		t["rms"], t["overshoot"], t["undershoot"] = s.rms(), s.up.peak(), s.down.peak()
+	}
 	if s.conduct > s.duty {
 		t["low_level"], t["back_emf"], t["amplitude"] = s.freewheel, s.low, s.high-s.freewheel
 		t["conduction"] = s.conduct // it ends, as it begins, with a rise
+	}
+	if s.up.duration > 0 {
+		t["rise_time"] = s.up.duration
+	}
+	if s.down.duration > 0 && s.conduct <= s.duty {
+		t["fall_time"] = s.down.duration
 	}
 	return t
 }
