@@ -106,12 +106,28 @@ test("a cut line is said, and mended by itself with nothing lost or doubled", so
 });
 
 test("the other views have the same standing lines", soon, async () => {
-  for (const [name, heading] of [["Runs", /Nights/], ["Bench", /wired/], ["Now", /./]]) {
+  for (const [name, heading] of [["Runs", /Nights/], ["Bench", /wired/], ["Boards", /board/i], ["Now", /./]]) {
     await page.getByRole("navigation", { name: "Views" }).getByRole("link", { name }).click();
     await page.locator("h1").filter({ hasText: heading }).waitFor(soon);
     await standing(page).getByText("Energised.").waitFor(soon);
     assert.ok(await page.getByRole("button", { name: "Outputs off" }).isVisible());
   }
+});
+
+test("the board of the run is drawn and predicted, and computed where the form says", soon, async () => {
+  const board = await open("/boards", "");
+  await board.locator("main svg.staff").waitFor(soon);
+  assert.match(await board.locator("h1").textContent(), /oscillates at every setting/);
+  assert.ok((await board.locator("main figure .pencil").count()) >= 2);
+  await board.getByLabel("pot, Ω").fill("33k");
+  await board.getByRole("button", { name: "Compute there" }).press("Enter");
+  await board.locator("h2").filter({ hasText: /^At .*33.k/ }).waitFor(soon);
+  assert.match(board.url(), /pot=33k/);
+  await board.setViewportSize({ width: 390, height: 844 });
+  const wide = await board.evaluate(() => document.documentElement.scrollWidth);
+  assert.ok(wide <= 390, `the page is ${wide} px wide on a phone`);
+  assert.deepEqual(board.trouble, []);
+  await board.close();
 });
 
 test("Outputs off asks nothing, ends the run and leaves the bench safe", soon, async () => {
@@ -130,10 +146,11 @@ test("Outputs off asks nothing, ends the run and leaves the bench safe", soon, a
 test("no barrier on any view, in both lights, contrast included", soon, async () => {
   const axe = await readFile(createRequire(import.meta.url).resolve("axe-core/axe.min.js"), "utf8");
   for (const colorScheme of ["light", "dark"])
-    for (const path of ["/", "/runs", `/runs/${await runId()}`, "/bench"]) {
+    for (const path of ["/", "/runs", `/runs/${await runId()}`, "/bench", "/boards"]) {
       const view = await browser.newPage({ colorScheme, viewport: { width: 1440, height: 900 } });
       await view.goto(daemon.base + path);
       await view.locator(".standing strong").filter({ hasText: /energised|Energised/ }).waitFor(soon);
+      if (path === "/boards") await view.locator("main svg.staff").waitFor(soon);
       await view.evaluate(axe);
       const found = await view.evaluate(async () => (await window.axe.run(document)).violations.map((v) => `${v.id}: ${v.nodes.map((n) => n.html).join(" ")}`));
       assert.deepEqual(found, [], `${path} in ${colorScheme}`);

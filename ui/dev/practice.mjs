@@ -68,6 +68,7 @@ const api = {
   "/api/runs/41/log": () => ({ entries: entries.filter((e) => e.kind !== "point").map((e) => ({ ...e, curves: undefined })) }),
   "/api/runs/41/record": () => { const p = points[points.length - 1]; return { point: p.setpoint.index, at: p.at, records: [record(p)] }; },
   "/api/bench": () => ({ wiring, instruments }),
+  "/api/boards": () => ({ boards: [] }),
 };
 const types = { ".html": "text/html", ".js": "text/javascript", ".css": "text/css", ".svg": "image/svg+xml" };
 const policy = "default-src 'none'; script-src 'self'; style-src 'self'; img-src 'self'; connect-src 'self'; base-uri 'none'; form-action 'none'; frame-ancestors 'none'";

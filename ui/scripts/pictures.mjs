@@ -26,6 +26,7 @@ try {
       await page.goto(`${daemon.base}${opt.path}#token=${daemon.token}`);
       await page.waitForSelector("h1");
       if (opt.path === "/") await page.waitForFunction((n) => document.querySelectorAll("main figure .dots circle").length >= n, Number(opt.points), { timeout: 120_000 });
+      if (opt.path.startsWith("/boards")) await page.waitForSelector("main svg.staff", { timeout: 60_000 }); // a thousand boards are computed first
       await page.waitForTimeout(1_500); // the newest record comes after the points
       // Stretched to the whole page, so that a bar at the foot of the window is at the foot of the picture.
       await page.setViewportSize({ width, height: Math.max(height, await page.evaluate(() => document.documentElement.scrollHeight)) });

@@ -1,6 +1,6 @@
 // Requests to the daemon. Failures come back as sentences: what, where, why, what to try.
 import type { paths } from "./api";
-import { type Bench, type Entry, lean, type Off, type Point, type Run, type RunDetail, type Status, type Waveforms } from "./nouns";
+import { type Bench, type Board, type BoardDetail, type Entry, lean, type Off, type Point, type Run, type RunDetail, type Status, type Waveforms } from "./nouns";
 
 /** A failed request. Status 0: it did not get through at all. */
 export class Failure extends Error {
@@ -17,18 +17,27 @@ export interface Client {
   log(id: number): Promise<Entry[]>;
   record(id: number): Promise<Waveforms | null>;
   bench(): Promise<Bench>;
+  boards(): Promise<Board[]>;
+  board(hash: string, at: Asked): Promise<BoardDetail>;
   off(): Promise<Off>;
 }
+
+/** Where a board is to be computed; what is left out the daemon chooses. */
+export interface Asked { supply?: number; pot?: number; temperature?: number }
 
 /** How long a request may take. Making safe waits for the board to bleed down. */
 const patience = 15_000;
 const offPatience = 60_000;
+/** A board's curves are a thousand boards at every setting, and others may be before. */
+const boardPatience = 45_000;
 
 export function newClient(token: string, fetcher: typeof fetch = (...a) => fetch(...a)): Client {
-  const get = <P extends Readable>(_: P, path: string) => ask<Answer<P>>(fetcher, token, path, { method: "GET" }, patience);
+  const get = <P extends Readable>(_: P, path: string, wait = patience) => ask<Answer<P>>(fetcher, token, path, { method: "GET" }, wait);
   return {
     status: () => get("/api/status", "/api/status"),
     bench: () => get("/api/bench", "/api/bench"),
+    boards: async () => (await get("/api/boards", "/api/boards")).boards,
+    board: (hash, at) => get("/api/boards/{hash}", `/api/boards/${hash}${query(at)}`, boardPatience),
     runs: async () => (await get("/api/runs", "/api/runs")).runs,
     run: (id) => get("/api/runs/{id}", `/api/runs/${id}`),
     points: async (id) => (await get("/api/runs/{id}/points", `/api/runs/${id}/points`)).points.map(lean),
@@ -46,6 +55,11 @@ export function newClient(token: string, fetcher: typeof fetch = (...a) => fetch
       return ask<Off>(fetcher, token, "/api/off", { method: "POST", body, headers: { "Content-Type": "application/json" } }, offPatience);
     },
   };
+}
+
+function query(at: Asked): string {
+  const q = Object.entries(at).flatMap(([k, v]) => (v === undefined ? [] : [`${k}=${v}`]));
+  return q.length ? "?" + q.join("&") : "";
 }
 
 /** The paths that can be read, and what the description says they answer. */

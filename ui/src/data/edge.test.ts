@@ -49,7 +49,7 @@ test("no record kept is not a failure", async () => {
   await expect(newClient("", answering(500, {})).record(41)).rejects.toThrow();
 });
 
-test.each([["/", { view: "now" }], ["/runs/", { view: "runs" }], ["/runs", { view: "runs" }], ["/runs/41", { view: "run", id: 41 }], ["/runs/041", { view: "unknown", path: "/runs/041" }], ["/runs/x", { view: "unknown", path: "/runs/x" }], ["/bench", { view: "bench" }], ["/morning", { view: "unknown", path: "/morning" }]])("%s leads to its view", (path, want) => {
+test.each([["/", { view: "now" }], ["/runs/", { view: "runs" }], ["/runs", { view: "runs" }], ["/runs/41", { view: "run", id: 41 }], ["/runs/041", { view: "unknown", path: "/runs/041" }], ["/runs/x", { view: "unknown", path: "/runs/x" }], ["/bench", { view: "bench" }], ["/boards", { view: "boards", hash: "" }], ["/boards/" + "0a".repeat(32), { view: "boards", hash: "0a".repeat(32) }], ["/boards/0A", { view: "unknown", path: "/boards/0A" }], ["/morning", { view: "unknown", path: "/morning" }]])("%s leads to its view", (path, want) => {
   expect(routeOf(path)).toEqual(want);
 });
 
@@ -61,6 +61,24 @@ test("a link within the page is followed without loading; one that asks for more
   expect(click("out")).toBe(true);
   expect(router.place.value.route).toEqual({ view: "now" });
   expect(click("in")).toBe(false);
-  expect(router.place.value).toEqual({ route: { view: "run", id: 41 }, quantity: "duty" });
+  expect(router.place.value).toMatchObject({ route: { view: "run", id: 41 }, quantity: "duty" });
   router.close();
+});
+
+test("a form that only asks is followed like a link, what was left empty left out", () => {
+  const router = newRouter();
+  document.body.innerHTML = '<form action="/boards" method="get"><input name="supply" value=" 9 "><input name="pot" value=""></form>';
+  const form = document.querySelector("form")!;
+  expect(form.dispatchEvent(new Event("submit", { bubbles: true, cancelable: true }))).toBe(false);
+  expect(location.pathname + location.search).toBe("/boards?supply=9");
+  expect(router.place.value).toEqual({ route: { view: "boards", hash: "" }, quantity: "", at: { supply: "9", pot: "", temperature: "" } });
+  router.close();
+});
+
+test("a board is asked for at the setting given, the rest left to the daemon", async () => {
+  const fetcher = answering(200, {});
+  await newClient("", fetcher).board("ab", { supply: 9, pot: undefined, temperature: -10 });
+  expect(fetcher.mock.calls[0]![0]).toBe("/api/boards/ab?supply=9&temperature=-10");
+  await newClient("", fetcher).board("ab", {});
+  expect(fetcher.mock.calls[1]![0]).toBe("/api/boards/ab");
 });

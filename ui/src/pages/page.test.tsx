@@ -4,13 +4,13 @@ import { render } from "preact";
 import { act } from "preact/test-utils";
 import axe from "axe-core";
 import { afterEach, beforeEach, expect, test, vi } from "vitest";
-import { entries, night, playedBench, vitals } from "../data/fixture";
+import { board, entries, night, playedBench, vitals } from "../data/fixture";
 import type { Bench, Off, Run, Status, Vitals } from "../data/nouns";
 import type { Client } from "../data/client";
 import { Page } from "./page";
 import { newRouter, type Router } from "./router";
 
-const run: Run = { id: 41, state: "running", reason: "", plan: "Overnight", board: "Dosing pump driver", revision: "B", board_serial: "0017", bench: "Bench 2", operator: "AK", note: "New capacitor in.", started_at: "2026-11-30T22:02:00Z", planned: 72, measured: 31, flagged: 3, pace: 20, seed: 7, version: "1", quantities: [], files: [{ role: "plan", name: "overnight.toml", sha256: "ab", text: "" }], instruments: ["Practice supply, serial 1"] };
+const run: Run = { id: 41, state: "running", reason: "", plan: "Overnight", board: "Dosing pump driver", revision: "B", board_serial: "0017", bench: "Bench 2", operator: "AK", note: "New capacitor in.", started_at: "2026-11-30T22:02:00Z", planned: 72, measured: 31, flagged: 3, pace: 20, seed: "7", version: "1", quantities: [], files: [{ role: "plan", name: "overnight.toml", sha256: "ab", text: "" }], instruments: ["Practice supply, serial 1"] };
 const status: Status = { version: "1", practice: true, pace: 20, bench: "Bench 2", may_control: true, cautions: [], started_at: run.started_at, vitals };
 const wired: Bench = {
   wiring: { bench: "Bench 2", practice: true, supply: { between: ["supply", "common"], max_voltage: 13, max_current: 1, over_voltage: 14, fuse: 1 }, meters: [{ name: "average", reads: "average_voltage", between: ["load_hi", "load_lo"], burden: 0, input_resistance: 0, calibrated: "2026-03-01", due: "2027-03-01" }], },
@@ -19,7 +19,7 @@ const wired: Bench = {
 const client: Partial<Client> = {
   status: async () => status, runs: async () => [run, { ...run, id: 40, state: "tripped", reason: "motor current above 0.8 A", pace: 1, ended_at: "2026-11-29T01:00:00Z", started_at: "2026-10-28T22:00:00Z" }],
   run: async () => ({ run, setpoints: [...night.setpoints], curves: [...night.curves] }), points: async () => [...night.points], log: async () => entries.filter((e) => e.kind !== "point"),
-  record: async () => null, bench: async () => wired,
+  record: async () => null, bench: async () => wired, boards: async () => [board.board], board: async () => board,
 };
 
 class NoResize {
@@ -67,7 +67,7 @@ async function accessible() {
   return found.violations.map((v) => `${v.id}: ${v.nodes.map((n) => n.html).join(" ")}`);
 }
 
-test.each(["/", "/runs", "/runs/41", "/bench", "/elsewhere"])("%s has state, progress, pace, Outputs off, one h1, and no barrier", async (path) => {
+test.each(["/", "/runs", "/runs/41", "/bench", "/boards", `/boards/${"0a".repeat(32)}`, "/elsewhere"])("%s has state, progress, pace, Outputs off, one h1, and no barrier", async (path) => {
   await opened(path);
   expect(text(".standing .say p")).toMatch(/^Energised\. Output on since \d\d:\d\d; supply reads 9\.0030\(40\) V/);
   expect(text(".standing .say .sub")).toContain("Run 41: 31 of 72 points, 3 flagged.");
@@ -188,4 +188,46 @@ test("a run's page has its points, flags in words, and what it was measured with
 test("an answer that fails is said in words", async () => {
   await opened("/runs", { client: { runs: () => Promise.reject(new Error("The daemon did not answer.")) } });
   expect(text("main .caution")).toBe("The list could not be read: The daemon did not answer.");
+});
+
+test("Boards answers in words first, then draws staff, curves, bars and stress", async () => {
+  await opened("/boards?quantity=duty");
+  expect(text("h1")).toBe("Dosing pump driver B oscillates at every setting, and every rating is kept");
+  expect(text(".lead")).toContain("Stressed most: the timer’s supply voltage, 67 % of 18 V, at 12 V, 856 Ω.");
+  expect(text(".run-head [aria-current]")).toBe("Boards");
+  const svgs = [...document.querySelectorAll("main svg[role=img]")].map((e) => e.getAttribute("aria-label"));
+  expect(svgs[0]).toBe("Schematic: 11 parts between 9 nodes. The parts are listed below it.");
+  expect(svgs[1]!.replaceAll("\u00a0", " ")).toMatch(/^Duty cycle against pot resistance at 7 V, 9 V and 12 V, predicted, .* At 9 V, 9.1 k it is 0.6989/);
+  expect(document.querySelectorAll("main figure .pencil")).toHaveLength(3);
+  expect(text("table.bars tbody tr")).toContain("threshold");
+  expect(text("table.stress tbody tr")).toMatch(/^timersupply voltage9 V9 V18 V50 %/);
+  expect(text(".margin")).toContain("Nothing: no rating is above 70 %");
+});
+
+test("a board is computed where the form says, and the quantity stays", async () => {
+  const asked: unknown[] = [];
+  await opened("/boards?quantity=duty", { client: { board: async (_, at) => (asked.push(at), board) } });
+  const form = document.querySelector<HTMLFormElement>("form.setting")!;
+  form.querySelector<HTMLInputElement>("[name=pot]")!.value = "33k";
+  await act(async () => void form.dispatchEvent(new Event("submit", { bubbles: true, cancelable: true })));
+  await settle();
+  expect(asked[asked.length - 1]).toEqual({ supply: 9, pot: 33e3, temperature: 27 });
+  expect(location.search).toContain("quantity=duty");
+  expect(document.querySelector<HTMLAnchorElement>('.picker a[href*="frequency"]')!.search).toContain("pot=33k");
+});
+
+test("what was typed and can't be read is said, and nothing is computed in its place", async () => {
+  await opened("/boards?supply=nine", { client: { board: () => Promise.reject(new Error("asked all the same")) } });
+  expect(text("main .caution")).toBe("The supply can’t be read: write it like 9, 33k or 27.");
+});
+
+test("a board that does not oscillate, and a bench without boards, say so", async () => {
+  const still = { ...board, sensitivities: [], stress: [], hardest: undefined, values: {}, oscillation: { settings: 147, never: 147, doubtful: 0, words: "does not oscillate: the capacitor never rises", at: board.setting } };
+  await opened("/boards", { client: { board: async () => still } });
+  expect(text("h1")).toBe("Dosing pump driver B does not oscillate");
+  expect(text("main")).toContain("no stress is computed");
+  expect(await accessible()).toEqual([]);
+  act(() => render(null, document.getElementById("page")!));
+  await opened("/boards", { client: { boards: async () => [] } });
+  expect(text("h1")).toBe("No board has been measured here yet");
 });

@@ -7,6 +7,7 @@ import { Alarm } from "../parts/alarm";
 import { Cautions } from "../parts/cautions";
 import { Standing } from "../parts/standing";
 import { BenchView } from "./bench";
+import { BoardsView } from "./boards";
 import { NowView } from "./now";
 import type { Place, Router } from "./router";
 import { RunView } from "./run";
@@ -35,12 +36,13 @@ function View(v: Views) {
     case "now": return <NowView {...v} />;
     case "runs": return <RunsView {...v} />;
     case "run": return <RunView key={v.place.route.id} id={v.place.route.id} {...v} />;
+    case "boards": return <BoardsView key={v.place.route.hash} hash={v.place.route.hash} {...v} />;
     case "bench": return <BenchView {...v} />;
     default: return <div class="leaf"><main><h1 tabIndex={-1}>There is no page at {v.place.route.path}</h1><p><a href="/">What the bench does now</a> is at the start.</p></main></div>;
   }
 }
 
-const views = [["now", "/", "Now"], ["runs", "/runs", "Runs"], ["bench", "/bench", "Bench"]] as const;
+const views = [["now", "/", "Now"], ["runs", "/runs", "Runs"], ["bench", "/bench", "Bench"], ["boards", "/boards", "Boards"]] as const;
 
 function Head({ bench, place }: { bench: BenchModel; place: Place }) {
   const status = bench.status.value;
@@ -62,7 +64,7 @@ function Head({ bench, place }: { bench: BenchModel; place: Place }) {
 function useTitle(bench: BenchModel, place: Place) {
   const stale = bench.link.value.state === "lost";
   const s = bench.standing.value;
-  const names: Record<string, string> = { now: "Now", runs: "Runs", bench: "Bench", run: "Run", unknown: "Nightbench" };
+  const names: Record<string, string> = { now: "Now", runs: "Runs", bench: "Bench", boards: "Boards", run: "Run", unknown: "Nightbench" };
   const name = place.route.view === "run" ? `Run ${place.route.id}` : names[place.route.view];
   const doing = stale ? "not live" : s.word.replace(/\.$/, "").toLowerCase();
   useEffect(() => {

@@ -1,7 +1,9 @@
 // Log paper, the scales' figures, and the strip of residuals.
 import { format, tidy } from "../data/format";
-import { type Frame, stripReach } from "./frame";
+import { type Along, type Frame, stripReach } from "./frame";
 import type { FigureData } from "./series";
+
+const names: Record<Along, string> = { pot_resistance: "pot resistance, Ω", pot_position: "pot position, share of the track that charges", supply_voltage: "supply voltage, V" };
 
 export function Axes({ f, title }: { f: Frame; title: string }) {
   const [fine, firm] = [f.xTicks.filter((t) => !t.decade), f.xTicks.filter((t) => t.decade)];
@@ -12,8 +14,8 @@ export function Axes({ f, title }: { f: Frame; title: string }) {
       {f.yTicks.map((y) => <text key={y} class="num" x={f.left - 8} y={f.py(y) + 4} text-anchor="end">{tidy(String(Number((y / f.factor).toPrecision(6))))}</text>)}
       <text class="cap" x={0} y={13}>{title}</text>
       <path class="ax" d={`M${f.left} ${f.axis}H${f.right}` + f.xTicks.filter((t) => t.labelled).map((t) => `M${f.px(t.at)} ${f.axis}v5`).join("")} />
-      {f.xTicks.filter((t) => t.labelled).map((t) => <text key={t.at} class="num" x={f.px(t.at)} y={f.axis + 18} text-anchor="middle">{format(t.at, "Ω").replace("Ω", "").trim()}</text>)}
-      <text class="cap" x={f.right} y={f.axis + 36} text-anchor="end">pot resistance, Ω</text>
+      {f.xTicks.filter((t) => t.labelled).map((t) => <text key={t.at} class="num" x={f.px(t.at)} y={f.axis + 18} text-anchor="middle">{f.along === "pot_resistance" ? format(t.at, "Ω").replace("Ω", "").trim() : tidy(String(t.at))}</text>)}
+      <text class="cap" x={f.right} y={f.axis + 36} text-anchor="end">{names[f.along]}</text>
     </g>
   );
 }

@@ -8,7 +8,11 @@ import type { Setpoint } from "../data/nouns";
 export const stripReach = 4;
 const pxPerU = 9.6;
 
+/** What a figure runs along. The pot's ohms are on a logarithmic scale. */
+export type Along = "pot_resistance" | "pot_position" | "supply_voltage";
+
 export interface Frame {
+  along: Along;
   width: number; height: number; narrow: boolean;
   left: number; right: number; top: number; bottom: number; // of the plot, px
   strip: number; axis: number; // middle of the strip and the axis line, px
@@ -24,28 +28,31 @@ export interface Frame {
   bandPath(s: Series): string;
 }
 
-export function frame(d: FigureData, setpoints: readonly Setpoint[], width: number): Frame {
+/** Without a strip where nothing is measured. */
+export interface Kind { along?: Along; strip?: boolean }
+
+export function frame(d: FigureData, setpoints: readonly Setpoint[], width: number, { along = "pot_resistance", strip: measured = true }: Kind = {}): Frame {
   const narrow = width < 600;
   const [left, right] = [narrow ? 34 : 40, width - (narrow ? 40 : 64)];
   const top = 30;
   const bottom = top + (narrow ? 300 : 430);
   const strip = bottom + 66;
-  const axis = strip + 46;
+  const axis = measured ? strip + 46 : bottom + 8;
   let [lo, hi] = extent(d);
   const n = narrow ? 6 : 7;
   const step = niceStep(hi - lo, n);
   hi = d.quantity === "duty" ? hi : Math.ceil(hi / step - 0.02) * step;
   lo = lo < 0 ? Math.floor(lo / step + 0.02) * step : lo;
   const [x0, x1] = reach(d, setpoints);
-  const pad = (x1 / x0) ** 0.012;
-  const sx = logarithmic(x0 / pad, x1 * pad, left, right);
+  const labels = (right - left) / 38;
+  const { sx, xTicks } = along === "pot_resistance" ? decades(x0, x1, left, right, labels) : even(x0, x1, left, right, labels / 2);
   const sy = linear(lo, hi, bottom, top);
   const px = (x: number, dx = 0) => round(sx(x) + dx);
   const py = (y: number) => round(sy(y));
   return {
-    width, height: axis + 40, narrow, left, right, top, bottom, strip, axis,
+    along, width, height: axis + 40, narrow, left, right, top, bottom, strip, axis,
     dot: narrow ? 2.4 : 3, factor: prefixFor(Math.max(Math.abs(lo), Math.abs(hi)), d.unit)[1],
-    yTicks: ticks(lo, hi, n), xTicks: logTicks(x0 / pad, x1 * pad, (right - left) / 38),
+    yTicks: ticks(lo, hi, n), xTicks,
     px, py,
     clampY: (y) => Math.min(bottom + 6, Math.max(top - 6, py(y))),
     pu: (u) => round(strip - Math.max(-stripReach, Math.min(stripReach, u)) * pxPerU),
@@ -53,6 +60,16 @@ export function frame(d: FigureData, setpoints: readonly Setpoint[], width: numb
     linePath: (x, y) => pieces(x, y).map((run) => path(run, px, py)).join(""),
     bandPath: (s) => band(s, px, py),
   };
+}
+
+function decades(x0: number, x1: number, left: number, right: number, labels: number) {
+  const pad = (x1 / x0) ** 0.012;
+  return { sx: logarithmic(x0 / pad, x1 * pad, left, right), xTicks: logTicks(x0 / pad, x1 * pad, labels) };
+}
+
+function even(x0: number, x1: number, left: number, right: number, labels: number) {
+  const pad = (x1 - x0) * 0.012;
+  return { sx: linear(x0 - pad, x1 + pad, left, right), xTicks: ticks(x0, x1, labels).map((at) => ({ at, decade: false, labelled: true })) };
 }
 
 /** A tenth of a pixel is enough. */

@@ -6,7 +6,7 @@ export function Picker({ quantities, chosen, at }: { quantities: readonly Quanti
   if (quantities.length < 2) return null;
   return (
     <nav class="picker" aria-label="Quantity">
-      {quantities.map((q) => <a key={q} href={`${at}?quantity=${q}`} aria-current={q === chosen ? "true" : undefined}>{named(q)}</a>)}
+      {quantities.map((q) => <a key={q} href={`${at}${at.includes("?") ? "&" : "?"}quantity=${q}`} aria-current={q === chosen ? "true" : undefined}>{named(q)}</a>)}
     </nav>
   );
 }
