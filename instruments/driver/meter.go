@@ -188,17 +188,16 @@ func (m *Meter) sameFunction(ctx context.Context, of string) error {
 }
 
 // Read takes a new reading, which lasts an aperture, or two with auto-zero.
-// Overload is an outcome, not an error.
+// Range, speed and function are read back first: a knob may have been turned
+// at the front panel. Overload is an outcome, not an error.
 func (m *Meter) Read(ctx context.Context) (instruments.Sample, error) {
 	if m.set.Unit == "" {
 		return instruments.Sample{}, fmt.Errorf("%s: %w", m.name, ErrNotConfigured)
 	}
-	if m.shaken.Load() {
-		if err := m.verify(ctx); err != nil {
-			return instruments.Sample{}, err
-		}
-		m.shaken.Store(false)
+	if err := m.verify(ctx); err != nil {
+		return instruments.Sample{}, err
 	}
+	m.shaken.Store(false)
 	name := "read"
 	if own := functions[m.set.Unit] + "_read"; m.has(own) {
 		name = own

@@ -103,6 +103,13 @@ const lateMeterLog = `
 < +1.00000000E+01\r\n
 > SYST:ERR?\n
 < +0,"No error"\r\n
+# before each reading the settings are read back
+> VOLT:DC:RANG?\n
+< +1.00000000E+02\r\n
+> VOLT:DC:NPLC?\n
+< +1.00000000E+01\r\n
+> FUNC?\n
+< "VOLT"\r\n
 > READ?\n
 . 5s
 < +4.35000000E+00\r\n

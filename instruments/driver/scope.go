@@ -122,12 +122,10 @@ func (s *Scope) Capture(ctx context.Context) ([]instruments.Waveform, error) {
 	if len(s.set.Channels) == 0 {
 		return nil, fmt.Errorf("%s: %w", s.name, ErrNotConfigured)
 	}
-	if s.shaken.Load() {
-		if err := s.verify(ctx); err != nil {
-			return nil, err
-		}
-		s.shaken.Store(false)
+	if err := s.verify(ctx); err != nil {
+		return nil, err
 	}
+	s.shaken.Store(false)
 	triggered, err := s.acquire(ctx)
 	if err != nil {
 		return nil, err

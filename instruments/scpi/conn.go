@@ -132,11 +132,22 @@ func (c *Conn) Identify(ctx context.Context) (instruments.Identity, error) {
 	switch {
 	case err != nil:
 		return instruments.Identity{}, err
+	case first == c.opt.IdentityQuery && !c.opt.Echo:
+		return instruments.Identity{}, c.wrap(c.opt.IdentityQuery,
+			fmt.Errorf("%w: it echoes what it is sent; use a dialect that says echo = true, switch the echo off at the instrument, or use its port for programs (5025) rather than the one for people (5024)", ErrFraming))
 	case first != again || !printable(first):
 		return instruments.Identity{}, c.wrap(c.opt.IdentityQuery,
-			fmt.Errorf("%w: it answered %q and then %q; are baud rate, parity and stop bits right?", ErrFraming, first, again))
+			fmt.Errorf("%w: it answered %q and then %q%s", ErrFraming, first, again, c.lineTried()))
 	}
 	return ParseIdentity(first), nil
+}
+
+// lineTried says which serial settings were tried.
+func (t *talk) lineTried() string {
+	if a := t.link.Address(); a.Scheme == "serial" {
+		return fmt.Sprintf("; tried %s: are baud rate, parity and stop bits as at the instrument?", a.Line)
+	}
+	return "; is this its port for programs, and behind a serial server, are baud rate, parity and stop bits right?"
 }
 
 // Reopen opens the stream anew and proves it in step with the instrument that
