@@ -17,13 +17,20 @@ func (a *analysis) wholePeriodMeans(c cycles) (average, rms Quantity) {
 
 	grid, noise := a.meanErrors(c)
 	n := math.Max(1, end-start)
-	share := a.highShare(c)
-	round := math.Hypot(share*a.high.uRound, (1-share)*a.low.uRound)
 	scatter := math.Sqrt(a.noise / n)
-	if a.resolved && !a.three {
-		m += share*a.high.shift + (1-share)*a.low.shift
-		// The shifts are known from the settled samples, the mean is of all.
-		scatter = math.Hypot(share*a.high.unlike(share*n), (1-share)*a.low.unlike((1-share)*n))
+	parts := a.parts(c)
+	var round, unlike, moved, squareRound float64
+	for _, p := range parts {
+		round = math.Hypot(round, p.share*p.uRound)
+		squareRound = math.Hypot(squareRound, p.share*p.uRound*a.volts(p.level))
+		if a.resolved {
+			m += p.share * p.shift
+			moved += p.share * p.shift * a.volts(p.level)
+			unlike = math.Hypot(unlike, p.share*p.unlike(p.share*n))
+		}
+	}
+	if a.resolved {
+		scatter = unlike // the shifts are known from the settled samples, the mean is of all
 	}
 	dof := max(1, float64(a.pairs-1))
 	average = a.voltage("average_voltage", m,
@@ -34,10 +41,7 @@ func (a *analysis) wholePeriodMeans(c cycles) (average, rms Quantity) {
 
 	// Noise adds its power to the square; half of it is doubtful, being perhaps the board's own.
 	power := a.noise * a.volt * a.volt
-	if a.resolved && !a.three {
-		square := share*a.high.shift*a.volts(a.high.level) + (1-share)*a.low.shift*a.volts(a.low.level)
-		s = math.Sqrt(max(0, s*s+2*a.volt*square))
-	}
+	s = math.Sqrt(max(0, s*s+2*a.volt*moved))
 	s = math.Sqrt(max(0, s*s-power))
 	floor := max(s, 1e-3*a.volt)
 	high, low := a.volts(a.high.level), a.volts(a.low.level)
@@ -45,9 +49,33 @@ func (a *analysis) wholePeriodMeans(c cycles) (average, rms Quantity) {
 	rms = a.quantity("rms", "V", s, a.volts(m)/floor, (sq(s)-a.pivot*a.volts(m))/floor, 0,
 		uncertainty.Known("sample interval", a.volt*grid*swing),
 		uncertainty.Scatter("noise", uncertainty.Value{U: a.volt * math.Hypot(scatter, noise*swing), DOF: dof}),
-		uncertainty.Known("converter steps", a.volt*math.Hypot(share*a.high.uRound*high, (1-share)*a.low.uRound*low)/floor),
+		uncertainty.Known("converter steps", a.volt*squareRound/floor),
 		uncertainty.Known("noise power", power/(2*floor)/math.Sqrt(3)))
 	return average, rms
+}
+
+// part is a state and its share of the time.
+type part struct {
+	*state
+	share float64
+}
+
+// parts are the states of the whole periods.
+func (a *analysis) parts(c cycles) []part {
+	share := a.highShare(c)
+	if !a.three {
+		return []part{{&a.high, share}, {&a.low, 1 - share}}
+	}
+	low, rest := a.low.length(), a.rest.length()
+	return []part{{&a.high, share}, {&a.low, (1 - share) * low / (low + rest)}, {&a.rest, (1 - share) * rest / (low + rest)}}
+}
+
+// length is how many samples the occurrences of a state last.
+func (st *state) length() (n float64) {
+	for _, o := range st.occ {
+		n += float64(o.to - o.from + 1)
+	}
+	return n
 }
 
 // unlike is the standard uncertainty (codes) of the mean of n samples of a state from that of the settled ones among them.

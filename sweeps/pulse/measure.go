@@ -148,12 +148,16 @@ func (a *analysis) transition(name string, rising bool, m instantModel) Quantity
 	noise := (crossingVariance(math.Sqrt(a.noise)/(0.5*m.slope*a.cell)) + crossingVariance(math.Sqrt(a.noise)/(m.slope*a.cell))) * sq(a.cell)
 	level := x * math.Hypot(a.uLevel(a.high), a.uLevel(a.low)) / w
 	tau := x / a.cell
-	// Bends at the 10 % and 90 % levels are cut short by straight lines: late by 0.55/τ samples for a
-	// symmetric transition, 0.7/τ for an exponential one (simulated).
+	// Straight lines between samples cut the bends at the 10 % and 90 % levels short, so the duration
+	// comes out long: by 0.55/τ samples for a symmetric transition, 0.7/τ for an exponential one, nothing for
+	// a straight one (simulated). How steep the middle is tells which: its steepness times the
+	// duration is 0.8 of the amplitude for a straight transition, 1.02 for a Gaussian, 1.10 for an exponential one.
+	bend := min(0.75, max(0, 2.4*(m.slope*x/w-0.8))) * a.cell / tau
+	x -= bend
 	e := scatterBeyond(values, noise+sq(0.5*a.cell/tau))
 	return a.quantity(name, "s", x, 0, 0, x,
 		uncertainty.Scatter("noise", uncertainty.Value{U: math.Sqrt(noise / n), DOF: max(1, float64(a.pairs-1))}),
-		uncertainty.Known("sample interval", 0.65*a.cell/tau),
+		uncertainty.Known("bend of transitions", 0.3*bend+0.13*a.cell/tau),
 		uncertainty.Known("converter steps", 2.5*a.q/math.Sqrt(12)/m.slope),
 		uncertainty.Known("state levels", level),
 		uncertainty.Scatter("scatter of transitions", uncertainty.Value{U: e.mean, DOF: e.dof}))
