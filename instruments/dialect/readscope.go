@@ -36,7 +36,7 @@ func (r *reader) waveform(t *userfile.Table) {
 	userfile.Word(order, "byte_order", &w.ByteOrder, "big", "little")
 	userfile.Word(o, "head", &w.Head, "block", "none")
 	o.Strings("lead", &w.Lead)
-	userfile.Word(o, "tail", &w.Tail, "any", "none", "nl", "nl nl")
+	userfile.Word(o, "tail", &w.Tail, "any", "nl", "nl nl")
 	r.codes(t, w)
 	o.Int("points", &w.Points, 1, 1<<30)
 	t.Int("most_points", &w.MostPoints, 1, 1<<30)

@@ -7,7 +7,7 @@ type Waveform struct {
 	ByteOrder        string   // big or little
 	Head             string   // block: # digit count bytes, with as many digits as it likes; none: a plain line (text only)
 	Lead             []string // texts of which one may stand before the #, with {channel}
-	Tail             string   // what comes after the bytes: any, none, nl, nl nl
+	Tail             string   // what has to come after the bytes: nl, nl nl; any: terminators or nothing
 	ClipLow          int      // as the instrument counts; codes at or beyond are flags, not volts
 	ClipHigh         int      //
 	Levels           int      // family volts: how many the converter has over the screen

@@ -34,9 +34,10 @@ type Listener struct {
 	AtOnce func(message string) bool // obeyed while another message is being carried out; true when it was one of those
 	Refuse error                     // of opening
 
-	mu  sync.Mutex // guards got and hung
-	got []string
-	on  []net.Conn
+	mu   sync.Mutex // guards what follows
+	got  []string
+	on   []net.Conn
+	turn chan struct{} // one slot: messages of all connections are carried out one at a time
 }
 
 // Dial gives one end of a pipe and listens on the other.
@@ -47,10 +48,14 @@ func (l *Listener) Dial(context.Context, link.Address) (io.ReadWriteCloser, erro
 	near, far := net.Pipe()
 	l.mu.Lock()
 	l.on = append(l.on, far)
+	if l.turn == nil {
+		l.turn = make(chan struct{}, 1)
+	}
+	turn := l.turn
 	l.mu.Unlock()
 	messages := make(chan string, 64)
 	go l.receive(far, messages)
-	go l.serve(far, messages)
+	go l.serve(far, messages, turn)
 	return near, nil
 }
 
@@ -97,7 +102,7 @@ func (l *Listener) receive(c net.Conn, messages chan<- string) {
 	}
 }
 
-func (l *Listener) serve(c net.Conn, messages <-chan string) {
+func (l *Listener) serve(c net.Conn, messages <-chan string, turn chan struct{}) {
 	defer c.Close()
 	for message := range messages {
 		var f Fate
@@ -108,7 +113,9 @@ func (l *Listener) serve(c net.Conn, messages <-chan string) {
 			continue
 		}
 		time.Sleep(f.Delay)
+		turn <- struct{}{}
 		reply := l.Device.Execute(context.Background(), []byte(message))
+		<-turn
 		if f.Reply != "" {
 			reply = []byte(f.Reply)
 		}

@@ -27,6 +27,7 @@ type Maker struct {
 	unknown func(message string)
 	got     []string
 	last    time.Time
+	conn    net.Conn
 }
 
 // rule is what is done when a whole message is of a pattern.
@@ -49,8 +50,22 @@ func (m *Maker) takes(pattern string) { m.on(pattern, func([]string) string { re
 // Dial gives one end of a pipe and listens on the other.
 func (m *Maker) Dial(context.Context, link.Address) (io.ReadWriteCloser, error) {
 	near, far := net.Pipe()
+	m.Do(func() { m.conn = far })
 	go m.serve(far)
 	return near, nil
+}
+
+// later does something after a while, as an instrument does that holds a reply
+// back; what it gives is sent then.
+func (m *Maker) later(d time.Duration, do func() string) {
+	time.AfterFunc(d, func() {
+		var reply string
+		var c net.Conn
+		m.Do(func() { reply, c = do(), m.conn })
+		if reply != "" {
+			c.Write([]byte(reply + m.End)) // whoever has hung up meanwhile misses it
+		}
+	})
 }
 
 // Received is every message so far, in order.
