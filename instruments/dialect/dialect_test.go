@@ -298,8 +298,8 @@ func TestTableOfLines(t *testing.T) {
 			}
 		}
 	}
-	if got := slices.Sorted(maps.Keys(lines)); len(got) != 4 {
-		t.Errorf("roles %v", got)
+	if got, want := slices.Sorted(maps.Keys(lines)), slices.Sorted(maps.Keys(figures)); !slices.Equal(got, want) {
+		t.Errorf("roles with lines %v, with figures %v", got, want)
 	}
 }
 
