@@ -6,7 +6,6 @@ import (
 	"fmt"
 	"io"
 	"net"
-	"slices"
 	"strings"
 	"sync"
 	"testing"
@@ -362,51 +361,5 @@ func slowParser(t *testing.T) {
 	}
 	if dropped > 0 {
 		t.Errorf("%d messages were dropped", dropped)
-	}
-}
-
-// splitPackets: a reply in single bytes, and two messages in one packet, on a real socket.
-func splitPackets(t *testing.T) {
-	ln, err := net.Listen("tcp", "127.0.0.1:0")
-	must(t, err)
-	done := make(chan struct{})
-	go func() {
-		defer close(done)
-		c, err := ln.Accept()
-		if err != nil {
-			return
-		}
-		defer c.Close()
-		for in := bufio.NewScanner(c); in.Scan(); {
-			for _, b := range []byte(identified(in.Text())) {
-				c.Write([]byte{b})
-				time.Sleep(time.Millisecond)
-			}
-		}
-	}()
-	defer func() { ln.Close(); <-done }()
-	a, err := link.Parse("tcp://" + ln.Addr().String())
-	must(t, err)
-	l, err := link.Open(t.Context(), a, link.Options{})
-	must(t, err)
-	defer l.Close()
-	c := scpi.New(l, scpi.Options{})
-	for range 3 {
-		if got, err := c.Query(t.Context(), "READ?"); err != nil || got != "+4.35" {
-			t.Errorf("got %q, %v", got, err)
-		}
-	}
-	turn, err := l.Acquire(t.Context())
-	must(t, err)
-	defer turn.Release()
-	must(t, turn.Send(t.Context(), "READ?\n*OPC?"))
-	var got []string
-	for range 2 {
-		line, err := turn.ReadLine(t.Context())
-		must(t, err)
-		got = append(got, line)
-	}
-	if !slices.Equal(got, []string{"+4.35", "1"}) {
-		t.Errorf("got %q", got)
 	}
 }

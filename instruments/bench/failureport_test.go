@@ -1,9 +1,12 @@
 package bench
 
 import (
+	"bufio"
 	"context"
+	"net"
 	"os"
 	"path/filepath"
+	"slices"
 	"strconv"
 	"strings"
 	"testing"
@@ -120,10 +123,11 @@ func renumbered(t *testing.T) {
 		wants(t, err, link.ErrLost)
 	}
 	p.rightOrRefused(t)
-	a, err := link.Parse("serial://" + before)
+	must(t, os.Symlink(after, filepath.Join(p.names, "ttyUSB1"))) // as the system numbers them
+	a, err := link.Parse("serial://" + filepath.Join(p.names, "ttyUSB0"))
 	must(t, err)
 	_, err = link.Open(t.Context(), a, link.Options{})
-	wants(t, err, link.ErrMissing, "its number changes when it is plugged in again: use the name that stays", "there are: ")
+	wants(t, err, link.ErrMissing, "its number changes when it is plugged in again: use the name that stays", "there are: "+p.names+"/ttyUSB1")
 
 	// Another instrument under the name that was: refused by who it is.
 	other, err := os.Readlink(filepath.Join(p.names, "pot"))
@@ -236,4 +240,50 @@ func powerCycle(t *testing.T) {
 		t.Errorf("the reading after it: %v, want it refused", err)
 	}
 	p.rightOrRefused(t)
+}
+
+// splitPackets: a reply in single bytes, and two messages in one packet, on a real socket.
+func splitPackets(t *testing.T) {
+	ln, err := net.Listen("tcp", "127.0.0.1:0")
+	must(t, err)
+	done := make(chan struct{})
+	go func() {
+		defer close(done)
+		c, err := ln.Accept()
+		if err != nil {
+			return
+		}
+		defer c.Close()
+		for in := bufio.NewScanner(c); in.Scan(); {
+			for _, b := range []byte(identified(in.Text())) {
+				c.Write([]byte{b})
+				time.Sleep(time.Millisecond)
+			}
+		}
+	}()
+	defer func() { ln.Close(); <-done }()
+	a, err := link.Parse("tcp://" + ln.Addr().String())
+	must(t, err)
+	l, err := link.Open(t.Context(), a, link.Options{})
+	must(t, err)
+	defer l.Close()
+	c := scpi.New(l, scpi.Options{})
+	for range 3 {
+		if got, err := c.Query(t.Context(), "READ?"); err != nil || got != "+4.35" {
+			t.Errorf("got %q, %v", got, err)
+		}
+	}
+	turn, err := l.Acquire(t.Context())
+	must(t, err)
+	defer turn.Release()
+	must(t, turn.Send(t.Context(), "READ?\n*OPC?"))
+	var got []string
+	for range 2 {
+		line, err := turn.ReadLine(t.Context())
+		must(t, err)
+		got = append(got, line)
+	}
+	if !slices.Equal(got, []string{"+4.35", "1"}) {
+		t.Errorf("got %q", got)
+	}
 }
