@@ -18,7 +18,7 @@ func TestSampleNight(t *testing.T) {
 		end := n.conduct()
 		n.safe(end, sweeps.Done, "all setpoints measured")
 		n.journaled(end)
-		if got, want := len(n.points()), len(n.options.Order); got != want || got != 48 {
+		if got, want := len(n.points()), len(n.options.Order); got != want || got != 32 {
 			t.Errorf("%d points of %d", got, want)
 		}
 		for i, p := range n.points() {
@@ -180,12 +180,12 @@ func TestResume(t *testing.T) {
 }
 
 func TestWarmUpComesFirst(t *testing.T) {
-	inNight(t, short("[warm_up]\nat = { supply_voltage = \"12 V\", pot_resistance = \"10k\" }\nfor = \"2 min\"\n"), func(n *night) {
+	inNight(t, short("[warm_up]\nat = { supply_voltage = \"12 V\", pot_resistance = \"10k\" }\nfor = \"1 min\"\n"), func(n *night) {
 		n.safe(n.conduct(), sweeps.Done, "")
-		if !n.said(sweeps.KindLog, "Warm-up 2m0s at 12\u00a0V") || !n.said(sweeps.KindEnergising, "12\u00a0V") {
+		if !n.said(sweeps.KindLog, "Warm-up 1m0s at 12\u00a0V") || !n.said(sweeps.KindEnergising, "12\u00a0V") {
 			t.Error("the log does not tell the warm-up")
 		}
-		if first := n.points()[0]; first.Elapsed < 120 || first.Setpoint.Supply != 9 {
+		if first := n.points()[0]; first.Elapsed < 60 || first.Setpoint.Supply != 9 {
 			t.Errorf("the first point came after %.0f s, at %g V", first.Elapsed, first.Setpoint.Supply)
 		}
 	})

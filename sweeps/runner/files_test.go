@@ -43,7 +43,7 @@ max_current = "2.5 mA"
 park = 256
 `
 
-// sample is two voltages and twelve settings, there and back.
+// samplePlan is two voltages and eight settings, there and back.
 const samplePlan = `
 [plan]
 name = "Dosing pump driver, sample"
@@ -56,7 +56,7 @@ values = ["9 V", "12 V"]
 set = "pot_resistance"
 from = "1k"
 to = "47k"
-points = 12
+points = 8
 spacing = "log"
 direction = "both"
 [settle]
@@ -65,7 +65,7 @@ steady = "1 %"
 at_most = "20 s"
 [measure]
 quantities = ["duty", "frequency", "average_voltage", "output_drop", "motor_current", "supply_current"]
-repeats = 5
+repeats = 3
 keep_waveform = "every 6"
 ` + trips
 
