@@ -105,8 +105,10 @@ func (a *analysis) ripple() Quantity {
 	s := a.high
 	slow := s.spread - s.noise
 	n := float64(max(2, s.n))
-	// Variances of spread and noise from n samples; rounding adds its own when noise does not cover it.
-	uv := math.Sqrt(sq(s.spread)+1.5*sq(s.noise))*math.Sqrt(2/n) + sq(s.coarse) + 3*sq(s.uSettle)
+	// Of n white samples, variance less half the mean square of successive differences scatters by
+	// 1/√n of the variance (von Neumann 1941); a slow part beats with the noise. Rounding adds its
+	// own when noise does not cover it.
+	uv := math.Sqrt(s.noise*(s.noise+4*max(0, slow))/n) + sq(s.coarse) + 3*sq(s.uSettle) + 0.02*max(0, slow)
 	rms, u := root(slow, uv)
 	k := 2 * math.Sqrt2 * a.volt
 	return a.quantity("ripple", "V", k*rms, 0, k*rms, 0,

@@ -267,9 +267,14 @@ func (st *state) rounding(q float64) {
 // root returns the square root of a variance known to u of variance, and its standard
 // uncertainty. Near zero the root follows the posterior of a quantity that cannot be
 // negative, flat in the root: for a variance of 0 its density is as exp(−r⁴/2u²), whose rms is 0.69 √u.
+// Up to a variance of 4 u a root of 0 stays possible: it is kept within reach, a quarter of the root.
 func root(variance, u float64) (r, uRoot float64) {
 	r = math.Sqrt(max(0, variance))
-	return r, min(0.69*math.Sqrt(u), u/2/max(r, 1e-300))
+	uRoot = u / 2 / max(r, 1e-300)
+	if variance < 4*u {
+		uRoot = max(uRoot, r/4)
+	}
+	return r, min(0.69*math.Sqrt(u), uRoot)
 }
 
 // sawtooth is the rms error, in steps, of the mean of readings rounded to whole
