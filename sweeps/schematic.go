@@ -54,7 +54,7 @@ const (
 // Lines are drawn in falling potential, as far as a board that swings has one.
 var (
 	falling = []string{
-		supplyNode, loadLow, "charge_stop", dischargeNode, "pot_up", "charge_end", "discharge_stop", "discharge_end", "pot_down",
+		supplyNode, loadLow, "charge_stop", dischargeNode, "pot_up", "charge_end", "discharge_stop", "pot_down", "discharge_end",
 		capacitorNode, controlNode, timerOut, "base", "gate", commonNode,
 	}
 	fallingFromOutput = []string{

@@ -76,7 +76,7 @@ export function boardHeadline(d: BoardDetail): string {
   if (o.settings > 0 && o.never === o.settings) return `${name} does not oscillate`;
   const swings = o.never ? `${name} does not oscillate everywhere` : o.doubtful ? `${name} may not oscillate everywhere` : `${name} oscillates at every setting`;
   if (share > 1) return `${swings}, and is overloaded at some`;
-  return share > cautionShare ? `${swings}, close to a rating at some` : share > 0 ? `${swings}, and every rating is kept` : swings;
+  return share > cautionShare ? `${swings}, close to a rating at some` : share > 0 ? `${swings}, and every known rating is kept` : swings;
 }
 
 /** The larger share of the rating, running or held; 0 where no rating is known. */

@@ -192,7 +192,7 @@ test("an answer that fails is said in words", async () => {
 
 test("Boards answers in words first, then draws staff, curves, bars and stress", async () => {
   await opened("/boards?quantity=duty");
-  expect(text("h1")).toBe("Dosing pump driver B oscillates at every setting, and every rating is kept");
+  expect(text("h1")).toBe("Dosing pump driver B oscillates at every setting, and every known rating is kept");
   expect(text(".lead")).toContain("Stressed most: the timer’s supply voltage, 67 % of 18 V, at 12 V, 856 Ω.");
   expect(text(".run-head [aria-current]")).toBe("Boards");
   const svgs = [...document.querySelectorAll("main svg[role=img]")].map((e) => e.getAttribute("aria-label"));
