@@ -20,7 +20,8 @@ var edges = map[string][]string{
 	"instruments/practice/circuit":  {},
 	"instruments":                   {"instruments/si"},
 	"instruments/link":              {"instruments", "instruments/si"},
-	"instruments/link/linktest":     {"instruments/link"},
+	"instruments/link/exchange":     {"instruments/link"},
+	"instruments/link/linktest":     {"instruments/link", "instruments/link/exchange"},
 	"instruments/scpi":              {"instruments", "instruments/si", "instruments/link"},
 	"instruments/dialect":           {"instruments", "instruments/si", "instruments/userfile", "instruments/link", "instruments/scpi"},
 	"instruments/driver":            {"instruments", "instruments/si", "instruments/link", "instruments/scpi", "instruments/dialect"},
@@ -43,7 +44,7 @@ var edges = map[string][]string{
 		"sweeps", "sweeps/predict", "sweeps/schedule", "sweeps/runner", "daemon/store", "daemon/web", "ui",
 	},
 	"daemon": {
-		"instruments", "instruments/si", "instruments/userfile", "instruments/bench", "sweeps", "sweeps/example", "sweeps/predict", "sweeps/runner",
+		"instruments", "instruments/si", "instruments/userfile", "instruments/dialect", "instruments/bench", "sweeps", "sweeps/example", "sweeps/predict", "sweeps/runner",
 		"sweeps/pulse", "sweeps/pulse/capture", "sweeps/pulse/figure", "daemon/app", "daemon/store", "daemon/web",
 	},
 }

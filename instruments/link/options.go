@@ -43,7 +43,7 @@ type Options struct {
 	// ClearReply is what an instrument says when its device clear is done,
 	// such as DCL; draining then waits for it. usbtmc and hislip ignore it.
 	ClearReply string
-	// Trace, when set, sees every byte that passes. It is called from the
+	// Trace, when set, sees every byte that is received or about to be sent. It is called from the
 	// link's own goroutines, possibly two at once, and must be quick.
 	Trace func(Event)
 	// Now stamps events; default time.Now.

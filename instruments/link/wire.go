@@ -108,12 +108,10 @@ func (w *wire) write() {
 	for {
 		select {
 		case p := <-w.out:
+			w.trace(Out, p.data) // first, or a quick reply would stand before its question
 			n, err := w.rw.Write(p.data)
 			if err == nil && n < len(p.data) {
 				err = io.ErrShortWrite
-			}
-			if err == nil {
-				w.trace(Out, p.data)
 			}
 			p.done <- err
 		case <-w.stop:

@@ -1,4 +1,4 @@
-// Package linktest records what passes a link as a readable exchange log, and
+// Package exchange records what passes a link as a readable exchange log, and
 // plays such a log back as an instrument.
 //
 // A log is text, one step a line:
@@ -12,7 +12,7 @@
 // ">" is what the program sends and "<" what the instrument says, with \r,
 // \n, \t, \\ and \xNN for what cannot be printed, and \x20 for a space at the
 // end of a line; "." is a silence of the instrument; "! lost" hangs up.
-package linktest
+package exchange
 
 import (
 	"bufio"
