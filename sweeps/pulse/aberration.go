@@ -58,25 +58,68 @@ func (a *analysis) aberration(name string, occ []span, s state, w, sign float64)
 	flat := highestOf(float64(p.looked)) * sigma
 	// On a flat top the largest of all samples is what noise makes it; a peak well above the
 	// noise is lifted by that of the two or three samples near its top.
-	clear := min(1, max(0, (over-flat)/(2*sigma+flat)))
-	lift := clear*0.6*sigma + (1-clear)*flat
-	x, missed := over-lift, 0.0
+	clear := seen(over, flat, sigma)
+	// Small peaks show better in the mean of all transitions, sample by sample.
+	course := a.course(occ, s.level, sign)
+	one := sigma / math.Sqrt(n)
+	flatCourse := highestOf(float64(len(course))) * one
+	top := maxOf(course)
+	clearCourse := seen(top, flatCourse, one)
+	x := clear*(over-0.6*sigma) + (1-clear)*(top-clearCourse*0.6*one-(1-clearCourse)*flatCourse)
+	peak := clear*0.1*flat + (1-clear)*0.2*flatCourse
+	missed := 0.0
 	if p.sharp > 0.2*over && over > flat+2*sigma {
 		// Ringing so fast that samples miss its peak: the highest of all transitions is nearer to it.
-		top := maxOf(p.over) - highestOf(n)*sigma - 0.6*sigma
-		missed = 0.5*min(p.sharp, over)/math.Sqrt(n) + 0.3*max(0, top-x)
-		x = max(x, top)
+		highest := maxOf(p.over) - highestOf(n)*sigma - 0.6*sigma
+		missed = 0.5*min(p.sharp, over)/math.Sqrt(n) + 0.3*max(0, highest-x)
+		x = max(x, highest)
 		a.flag(FastRinging, "ringing is too fast for the sample interval: overshoot may be larger than given")
 	}
 	if x > 0.6*w {
 		a.flagThird()
 	}
-	scatter := max(sigma*0.6, deviation(p.over)) / math.Sqrt(n)
+	scatter := clear*max(sigma*0.6, deviation(p.over))/math.Sqrt(n) + (1-clear)*0.5*one
+	steps := a.q / math.Sqrt(12)
+	if a.noise > sq(0.4*a.q) {
+		steps /= math.Sqrt(n) // the noise makes each transition's step another
+	}
 	return a.quantity(name, "1", max(0, x)/w, 0, 0, 0,
 		uncertainty.Scatter("noise", uncertainty.Value{U: scatter / w, DOF: max(1, n-1)}),
-		uncertainty.Known("peak of noise", (0.25*flat+0.2*a.q)/w),
+		uncertainty.Known("peak of noise", peak/w),
 		uncertainty.Known("sample interval", (missed+0.06*max(0, x))/w),
-		uncertainty.Known("state levels", math.Hypot(a.uLevel(s), a.q/math.Sqrt(12))/w))
+		uncertainty.Known("state levels", math.Hypot(a.uLevel(s), steps)/w))
+}
+
+// seen tells, from 0 to 1, how far a peak stands out of what noise of sigma makes of a flat top.
+func seen(peak, flat, sigma float64) float64 {
+	return min(1, max(0, (peak-flat)/(2*sigma+flat)))
+}
+
+// course is the mean, over the transitions, of the samples that follow each, less the level, in codes.
+func (a *analysis) course(occ []span, level, sign float64) []float64 {
+	const longest = 512
+	var sum, count []float64
+	for k := 0; k < len(occ); k += max(1, len(occ)/mostPeaks) {
+		o := occ[k]
+		if o.from == 0 {
+			continue // begins before the record
+		}
+		end := min(o.from+max(3, (o.to-o.from+1)/3), o.to, o.from+longest-1)
+		for i := o.from; i <= end; i++ {
+			if i-o.from == len(sum) {
+				sum, count = append(sum, 0), append(count, 0)
+			}
+			sum[i-o.from] += sign * (float64(a.codes[i]) - level)
+			count[i-o.from]++
+		}
+	}
+	for j := range sum {
+		sum[j] /= count[j]
+	}
+	if len(sum) == 0 {
+		return []float64{0}
+	}
+	return sum
 }
 
 // highestOf is the expected largest of n standard normal values (Blom 1958).

@@ -216,6 +216,7 @@ type specimen struct {
 	n        int
 	interval float64
 	shape    string
+	ring     float64 // s, period of ringing; 0: none
 }
 
 func uniform(rng *rand.Rand, a, b float64) float64 { return a + (b-a)*rng.Float64() }
@@ -271,6 +272,7 @@ func (s *specimen) shapeOf(rng *rand.Rand, short float64) {
 		p := logUniform(rng, 0.02, 0.15) * short
 		decay := p * uniform(rng, 0.3, 0.8)
 		s.shape, s.up, s.down = "ringing", ringing(p, decay), ringing(p, decay)
+		s.ring = p
 	case 5:
 		s.shape, s.up, s.down = "mixed", exponential(d), step()
 	}
