@@ -173,18 +173,25 @@ func (r *Runner) atHeld(h sweeps.Held) (sweeps.Setpoint, error) {
 	if pot == nil {
 		return s, nil
 	}
-	codes, err := schedule.Codes(sweeps.Axis{Set: sweeps.SetPotResistance, Values: []float64{h.Pot.SI()}}, pot)
+	a := sweeps.Axis{Set: sweeps.SetPotResistance, Values: []float64{h.Pot.SI()}}
+	if x := h.Position.SI(); x > 0 {
+		a = sweeps.Axis{Set: sweeps.SetPotPosition, Values: []float64{x}}
+	}
+	codes, err := schedule.Codes(a, pot)
 	if err != nil {
 		return s, err
 	}
-	s.PotCode, s.Pot = codes[0], pot.Ohms(codes[0]).SI()
+	s.Turn(*pot, codes[0], a.Set)
 	return s, nil
 }
 
-// Place names a setpoint for people: "9 V, 22 k".
+// Place names a setpoint for people: "9 V, 22 k", or with the pot's wiper in the timing network "9 V, 35 %".
 func Place(s sweeps.Setpoint) string {
 	v := si.Format(s.Supply, si.Volt)
-	if s.Pot == 0 {
+	switch {
+	case s.Position > 0:
+		return v + ", " + si.Percent(s.Position)
+	case s.Pot == 0:
 		return v
 	}
 	return v + ", " + si.Short(s.Pot)

@@ -38,12 +38,15 @@ func (r *Runner) visit(ctx context.Context, from, to sweeps.Setpoint) (sweeps.Po
 
 // travel is the sentence about where the run comes from.
 func travel(s sweeps.Setpoint) string {
-	words := fmt.Sprintf("Code %d, %s.", s.PotCode, si.Format(s.Pot, si.Ohm))
+	ohms := si.Format(s.Pot, si.Ohm)
+	if s.Position > 0 {
+		ohms += " of the track charging"
+	}
 	switch s.Direction {
 	case sweeps.Up, sweeps.Down:
-		return fmt.Sprintf("Going %s, code %d, %s.", s.Direction, s.PotCode, si.Format(s.Pot, si.Ohm))
+		return fmt.Sprintf("Going %s, code %d, %s.", s.Direction, s.PotCode, ohms)
 	}
-	return words
+	return fmt.Sprintf("Code %d, %s.", s.PotCode, ohms)
 }
 
 // set brings the bench from one setpoint to another. Only what differs is told.
