@@ -17,6 +17,8 @@ type cli struct {
 	last  context.Context // ends when a second signal came: stop waiting for off to be confirmed
 	state string          // --state
 	json  bool            // --json
+
+	dialectFolder string // --dialects
 }
 
 // cautions are shown at start, on the page and on reports.
@@ -44,8 +46,11 @@ func newRoot(last context.Context, args []string) *cobra.Command {
 	root.SetArgs(args)
 	root.SetFlagErrorFunc(func(_ *cobra.Command, err error) error { return usage("%w; see --help", err) })
 	root.PersistentFlags().StringVar(&c.state, "state", "", "state folder: database, token, socket (default: nightbench in the XDG state folder)")
+	root.PersistentFlags().StringVar(&c.dialectFolder, "dialects", "", "folder of your own dialects (default: nightbench/dialects in the XDG configuration folder)")
+	root.PersistentPreRunE = c.dialects
 	root.AddCommand(
 		c.demo(), c.serve(), c.newFiles(), c.rehearse(), c.start(), c.stop(), c.hold(), c.resume(), c.runs(), c.show(), c.predict(), c.pulse(), c.token(),
+		c.dialect(), c.ask(),
 	)
 	for _, sub := range root.Commands() {
 		asUsage(sub)

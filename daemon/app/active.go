@@ -8,6 +8,7 @@ import (
 	"fmt"
 	"math/rand/v2"
 	"path/filepath"
+	"strings"
 	"time"
 
 	"nightbench/daemon/web"
@@ -74,12 +75,21 @@ func (d *Daemon) Resume(ctx context.Context, id int64, operator string) (sweeps.
 }
 
 // unattended refuses a start that nobody attends on a bench without a second way to
-// cut power: with the host dead or a cable out, a supply goes on driving.
-func unattended(plan sweeps.Plan, w instruments.Wiring, cutoff instruments.Cutoff) error {
-	if w.Practice || cutoff != instruments.NoCutoff || plan.Attended != "" {
+// cut power: with the host dead or a cable out, a supply goes on driving. It refuses
+// one, too, whose supply is switched off, read back or protected by lines that nobody
+// checked against a manual: whether they work has to be seen first.
+func unattended(plan sweeps.Plan, w instruments.Wiring, cutoff instruments.Cutoff, unproven []string) error {
+	if w.Practice || plan.Attended != "" {
 		return nil
 	}
-	return fmt.Errorf("%s: this bench has no cutoff, a second way to cut power, so somebody has to attend: add to [plan] who and until when, like attended = \"AK until 18:00\"", plan.Path)
+	const attend = "so somebody has to attend: add to [plan] who and until when, like attended = \"AK until 18:00\""
+	if len(unproven) > 0 {
+		return fmt.Errorf("%s: the supply's dialect has unchecked lines for %s, and whether they work was never seen, %s", plan.Path, strings.Join(unproven, ", "), attend)
+	}
+	if cutoff == instruments.NoCutoff {
+		return fmt.Errorf("%s: this bench has no cutoff, a second way to cut power, %s", plan.Path, attend)
+	}
+	return nil
 }
 
 // attendance is who attends, for the log.
@@ -103,7 +113,7 @@ func (d *Daemon) job(plan sweeps.Plan, board sweeps.Board, seed uint64) (runner.
 	if err := sweeps.CheckPlan(plan, board, &w); err != nil {
 		return runner.Options{}, web.Fail(web.Invalid, err)
 	}
-	if err := unattended(plan, w, d.bench.Bench.Cutoff); err != nil {
+	if err := unattended(plan, w, d.bench.Bench.Cutoff, d.bench.Unproven()); err != nil {
 		return runner.Options{}, web.Fail(web.Invalid, err)
 	}
 	p, err := newPredictor(board, w, seed)

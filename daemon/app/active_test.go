@@ -11,16 +11,29 @@ import (
 
 func TestNobodyAttendingNeedsACutoff(t *testing.T) {
 	real, practice := instruments.Wiring{}, instruments.Wiring{Practice: true}
-	if err := unattended(sweeps.Plan{Path: "night.toml"}, real, instruments.NoCutoff); err == nil || !strings.Contains(err.Error(), `attended = "AK until 18:00"`) {
+	if err := unattended(sweeps.Plan{Path: "night.toml"}, real, instruments.NoCutoff, nil); err == nil || !strings.Contains(err.Error(), `attended = "AK until 18:00"`) {
 		t.Errorf("an unattended start on a bench without a cutoff: %v", err)
 	}
 	for name, err := range map[string]error{
-		"attended":       unattended(sweeps.Plan{Attended: "AK until 18:00"}, real, instruments.NoCutoff),
-		"practice bench": unattended(sweeps.Plan{}, practice, instruments.NoCutoff),
-		"with a cutoff":  unattended(sweeps.Plan{}, real, fedCutoff{}),
+		"attended":       unattended(sweeps.Plan{Attended: "AK until 18:00"}, real, instruments.NoCutoff, []string{"off"}),
+		"practice bench": unattended(sweeps.Plan{}, practice, instruments.NoCutoff, nil),
+		"with a cutoff":  unattended(sweeps.Plan{}, real, fedCutoff{}, nil),
 	} {
 		if err != nil {
 			t.Errorf("%s: %v", name, err)
+		}
+	}
+}
+
+// A supply whose output-off, read-back or protection is from memory is not left alone, whatever cutoff there is.
+func TestNobodyAttendingNeedsCheckedGuards(t *testing.T) {
+	err := unattended(sweeps.Plan{Path: "night.toml"}, instruments.Wiring{}, fedCutoff{}, []string{"output", "over_voltage_tripped"})
+	if err == nil {
+		t.Fatal("an unattended start with unchecked guards passed")
+	}
+	for _, want := range []string{"night.toml", "output, over_voltage_tripped", "unchecked", `attended = "AK until 18:00"`} {
+		if !strings.Contains(err.Error(), want) {
+			t.Errorf("%q does not say %q", err, want)
 		}
 	}
 }

@@ -17,8 +17,8 @@ const (
 // Stated is one statement of a dialect with who says so.
 type Stated struct{ Name, Source string }
 
-// Statements is all that a dialect states with a source, in a steady order.
-// A line counts once: by the weaker of its halves.
+// Statements is all that a dialect states with a source, in a steady order. A
+// line counts twice where its query has a source of its own.
 func (d *Dialect) Statements() (all []Stated) {
 	add := func(name, source string) {
 		if source != "" {
@@ -26,11 +26,8 @@ func (d *Dialect) Statements() (all []Stated) {
 		}
 	}
 	line := func(name string, l Line) {
-		if !l.Checked() {
-			add(name, Unchecked)
-			return
-		}
 		add(name, l.Source)
+		add(name+"?", l.AskSource)
 	}
 	for _, p := range d.Identities {
 		add("identity", p.Source)
@@ -100,7 +97,7 @@ func (d *Dialect) Count() (checked, ours, unchecked int) {
 	return checked, ours, unchecked
 }
 
-// Unchecked names the lines that are written from memory, sorted.
+// Unchecked names the lines of which a half is written from memory, sorted.
 func (d *Dialect) Unchecked() (names []string) {
 	for name, l := range d.Commands {
 		if !l.Checked() {
