@@ -11,6 +11,7 @@ const (
 	leapShare     = 0.1  // of the rotor's time constant in a leap before that
 	settledRise   = 0.05 // K still to come: the winding has settled
 	leapRise      = 0.3  // K in a leap before that
+	runDown       = 1e-3 // V; a supply that is off and still above it runs down: nothing repeats
 	restlessSpans = 100  // rotor time constants after which a restless board is at its mean
 )
 
@@ -154,6 +155,9 @@ func (s *Sim) warming() (tau, rate float64) {
 // integrated, which also covers a board that merely needs longer.
 func (s *Sim) leapRestless(end float64) bool {
 	c, l := &s.cycle, &s.b.Load
+	if !s.enabled && s.x.Supply > runDown {
+		return false
+	}
 	whole := c.n > cyclesBefore
 	wait, unit := 1.0, 1e-3
 	if whole {

@@ -139,3 +139,43 @@ func TestNight(t *testing.T) {
 		})
 	}
 }
+
+// A supply that was switched off runs down by its bleeder, RC = 0.47 s: two long
+// advances nobody looks at must give what small steps and exp(−t/RC) give.
+func TestRunDownIsNotLeaptOver(t *testing.T) {
+	decaying := func(steps ...float64) float64 {
+		s, err := New(Board{
+			Source: Source{Resistance: 0.05, Bulk: 1e-3, Bleed: 470},
+			Timing: Timing{Network: Clocked, Period: 1e-3, Duty: 0.25},
+			Timer:  Timer{Threshold: 2. / 3, Trigger: 0.5, MinSupply: 2},
+			Driver: Driver{Stage: NMOS, Resistance: 0.05},
+			Load:   Load{Kind: Resistor, Resistance: 1e6},
+		})
+		if err != nil {
+			t.Fatal(err)
+		}
+		if err := s.SetSupply(8); err != nil {
+			t.Fatal(err)
+		}
+		if err := s.SetLimit(1); err != nil {
+			t.Fatal(err)
+		}
+		s.SetOutput(true)
+		s.Advance(0.2)
+		s.SetOutput(false)
+		for _, until := range steps {
+			s.Advance(until)
+		}
+		return s.State().Supply
+	}
+	var fine []float64
+	for x := 0.25; x < 5.222; x += 0.05 {
+		fine = append(fine, x)
+	}
+	want := 8 * math.Exp(-(5.222-0.2)/0.47)
+	for name, got := range map[string]float64{"two long advances": decaying(2.2, 5.222), "small steps": decaying(append(fine, 5.222)...)} {
+		if d := got - want; d > 1e-3 || d < -1e-3 {
+			t.Errorf("%s leave %.4f V, want %.4f V", name, got, want)
+		}
+	}
+}
