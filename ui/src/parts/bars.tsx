@@ -19,7 +19,7 @@ export function Sensitivities({ d, quantity }: { d: BoardDetail; quantity: Quant
     <>
       <table class="bars">
         <caption class="spoken">Change of {named(quantity)} in percent for one percent more of each part</caption>
-        <thead><tr><th scope="col">one percent more of</th><th scope="col" class="wideonly" aria-hidden="true">less, more</th><th scope="col" class="r">{named(quantity)}</th></tr></thead>
+        <thead><tr><th scope="col">one percent more of</th><th aria-hidden="true"><span class="wideonly">less, more</span></th><th scope="col" class="r">{named(quantity)}</th></tr></thead>
         <tbody>{some.map((b) => (
           <tr key={b.part}>
             <th scope="row">{partNamed(b.part)}</th>
@@ -28,7 +28,7 @@ export function Sensitivities({ d, quantity }: { d: BoardDetail; quantity: Quant
           </tr>
         ))}</tbody>
       </table>
-      {rest > 0 && <p class="sub small">{rest} more make {all.bars.length > shown ? "less" : `less than ${least * 100}${nbsp}% of a percent`} each.</p>}
+      {rest > 0 && <p class="sub small">{rest} more make {all.bars.length > shown ? "less" : `less than ${least}${nbsp}%`} each.</p>}
     </>
   );
 }
