@@ -51,6 +51,9 @@ func resultOf(board string, p sweeps.Point) result {
 		"index": p.Setpoint.Index, "supply_voltage": p.Setpoint.Supply, "pot_code": p.Setpoint.PotCode,
 		"pot_resistance": p.Setpoint.Pot, "direction": p.Setpoint.Direction,
 	}}
+	if x := p.Setpoint.Position; x > 0 {
+		r.Setpoint["pot_position"] = x
+	}
 	for _, m := range p.Readings {
 		v := measuredValue{Value: m.Value, U: m.U, DOF: m.DOF, Unit: m.Unit, Road: m.Road, Flags: orNone(m.Flags)}
 		if x, ok := p.Predictions[m.Quantity]; ok {

@@ -125,9 +125,9 @@ func (w *write) point(run int64, p sweeps.Point) (int64, error) {
 		return 0, err
 	}
 	at := p.Setpoint
-	id, err := w.insert(`INSERT INTO point (run, setpoint, supply_voltage, pot_code, pot_resistance, direction, pass, recheck, at, elapsed, flags)
-		VALUES (?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?)`,
-		run, at.Index, at.Supply, at.PotCode, at.Pot, string(at.Direction), at.Pass, at.Recheck, timeText(p.At), p.Elapsed, flags)
+	id, err := w.insert(`INSERT INTO point (run, setpoint, supply_voltage, pot_code, pot_resistance, pot_position, direction, pass, recheck, at, elapsed, flags)
+		VALUES (?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?)`,
+		run, at.Index, at.Supply, at.PotCode, at.Pot, at.Position, string(at.Direction), at.Pass, at.Recheck, timeText(p.At), p.Elapsed, flags)
 	if isTwice(err) {
 		return 0, ErrDuplicate
 	}

@@ -33,8 +33,8 @@ func check(e sweeps.Entry) error {
 }
 
 func checkPoint(p sweeps.Point) error {
-	if !sound(p.Elapsed) || !sound(p.Setpoint.Supply) || !sound(p.Setpoint.Pot) {
-		return refuse("supply %v V, pot %v Ω, elapsed %v s: one is no number", p.Setpoint.Supply, p.Setpoint.Pot, p.Elapsed)
+	if !sound(p.Elapsed) || !sound(p.Setpoint.Supply) || !sound(p.Setpoint.Pot) || !sound(p.Setpoint.Position) {
+		return refuse("supply %v V, pot %v Ω at %v of its track, elapsed %v s: one is no number", p.Setpoint.Supply, p.Setpoint.Pot, p.Setpoint.Position, p.Elapsed)
 	}
 	for _, r := range p.Readings {
 		if err := checkReading(r); err != nil {

@@ -47,7 +47,7 @@ type pointRow struct {
 // first. Rows of a point are written with it and never change, so three
 // statements see at least what the first saw.
 func (s *Store) points(ctx context.Context, where string, args ...any) ([]pointRow, error) {
-	points, err := collect(ctx, s, scanPoint, `SELECT id, setpoint, supply_voltage, pot_code, pot_resistance, direction, pass, recheck, at, elapsed, flags
+	points, err := collect(ctx, s, scanPoint, `SELECT id, setpoint, supply_voltage, pot_code, pot_resistance, pot_position, direction, pass, recheck, at, elapsed, flags
 		FROM point WHERE `+where+` ORDER BY id`, args...)
 	if err != nil || len(points) == 0 {
 		return nil, err
@@ -81,7 +81,7 @@ func (s *Store) points(ctx context.Context, where string, args ...any) ([]pointR
 func scanPoint(rows *sql.Rows) (p pointRow, err error) {
 	p.Readings, p.Predictions = []sweeps.Reading{}, map[sweeps.Quantity]sweeps.Prediction{}
 	t := &p.Setpoint
-	return p, rows.Scan(&p.id, &t.Index, &t.Supply, &t.PotCode, &t.Pot, &t.Direction, &t.Pass, &t.Recheck, timeColumn{&p.At}, &p.Elapsed, jsonColumn{&p.Flags})
+	return p, rows.Scan(&p.id, &t.Index, &t.Supply, &t.PotCode, &t.Pot, &t.Position, &t.Direction, &t.Pass, &t.Recheck, timeColumn{&p.At}, &p.Elapsed, jsonColumn{&p.Flags})
 }
 
 type readingRow struct {

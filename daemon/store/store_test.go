@@ -5,6 +5,7 @@ import (
 	"database/sql"
 	"errors"
 	"fmt"
+	"io/fs"
 	"os"
 	"path/filepath"
 	"strings"
@@ -175,16 +176,54 @@ func TestStateFolderCantBeWritten(t *testing.T) {
 	}
 }
 
+// steps are the journal's first n.
+func steps(t *testing.T, n int) fstest.MapFS {
+	t.Helper()
+	names, err := fs.Glob(migrations.FS, "*.sql")
+	if err != nil || len(names) < n {
+		t.Fatalf("%d steps, %v", len(names), err)
+	}
+	all := fstest.MapFS{}
+	for _, name := range names[:n] {
+		text, err := migrations.FS.ReadFile(name)
+		if err != nil {
+			t.Fatal(err)
+		}
+		all[name] = &fstest.MapFile{Data: text}
+	}
+	return all
+}
+
 // later is the journal's steps and one more, from a program to come.
 func later(t *testing.T) fstest.MapFS {
-	t.Helper()
-	first, err := migrations.FS.ReadFile("00001_journal.sql")
+	all := steps(t, newestStep)
+	all["00099_extra.sql"] = &fstest.MapFile{Data: []byte("-- +goose Up\nALTER TABLE run ADD COLUMN colour TEXT NOT NULL DEFAULT '';\n")}
+	return all
+}
+
+// newestStep is the number of the journal's last step.
+const newestStep = 2
+
+// A journal begun by the first version goes on: its points have no position.
+func TestPointsOfTheFirstVersion(t *testing.T) {
+	path := filepath.Join(t.TempDir(), "nightbench.db")
+	s, err := open(t.Context(), path, instruments.NewClock(1), steps(t, 1))
 	if err != nil {
 		t.Fatal(err)
 	}
-	return fstest.MapFS{
-		"00001_journal.sql": {Data: first},
-		"00002_extra.sql":   {Data: []byte("-- +goose Up\nALTER TABLE run ADD COLUMN colour TEXT NOT NULL DEFAULT '';\n")},
+	run := mustRun(t, s)
+	if _, err := s.write.Exec(`INSERT INTO point (run, setpoint, supply_voltage, pot_code, pot_resistance, direction, pass, recheck, at, elapsed, flags)
+		VALUES (?, 0, 9, 3, 1247, 'up', 0, 0, '2025-03-01T22:00:00.000000Z', 12, '[]')`, run.ID); err != nil {
+		t.Fatal(err)
+	}
+	s.Close(t.Context())
+	s = openAt(t, path)
+	p := samplePoint(1)
+	p.Setpoint.Position = 0.3515625
+	mustAppend(t, s, sweeps.Entry{Run: run.ID, Kind: sweeps.KindPoint, Point: p})
+	points, err := s.Points(t.Context(), run.ID)
+	if err != nil || len(points) != 2 || points[0].Setpoint.Position != 0 || points[0].Setpoint.Pot != 1247 || points[1].Setpoint.Position != 0.3515625 {
+		t.Errorf("%+v, %v", points, err)
 	}
 }
 
@@ -202,7 +241,7 @@ func TestUpgradeKeepsACopy(t *testing.T) {
 	if r, err := up.Run(t.Context(), run.ID); err != nil || r.Plan != run.Plan {
 		t.Errorf("after the upgrade: %+v, %v", r, err)
 	}
-	was := openAt(t, path+".v1") // the copy is a whole store of the version before
+	was := openAt(t, fmt.Sprintf("%s.v%d", path, newestStep)) // the copy is a whole store of the version before
 	if r, err := was.Run(t.Context(), run.ID); err != nil || r.Plan != run.Plan {
 		t.Errorf("in the copy: %+v, %v", r, err)
 	}
