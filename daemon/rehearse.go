@@ -90,8 +90,7 @@ func printRehearsal(cmd *cobra.Command, plan sweeps.Plan, board sweeps.Board, r 
 		return err
 	}
 	for _, f := range r.Findings {
-		at := si.Format(f.Setting.Supply, si.Volt) + ", " + si.Short(f.Setting.Pot)
-		say(cmd, "caution: %s: %s (at %d of %d setpoints, worst at %s)", f.Name, f.Words, f.Count, len(r.Setpoints), at)
+		say(cmd, "caution: %s: %s (at %d of %d setpoints, worst at %s)", f.Name, f.Words, f.Count, len(r.Setpoints), app.Where(board, f.Setting))
 	}
 	for _, n := range r.NotJudged {
 		say(cmd, "not judged: %s", n)

@@ -46,7 +46,7 @@ func OpenPractice(ctx context.Context, o PracticeOptions) (_ *PracticeBench, err
 	if o.Scenario.Seed != nil {
 		o.Seed = *o.Scenario.Seed
 	}
-	s, err := newSpecimen(o.Board, o.Seed)
+	s, err := newSpecimen(o.Board, o.Wiring.Pot, o.Seed)
 	if err != nil {
 		return nil, err
 	}
@@ -66,8 +66,8 @@ func OpenPractice(ctx context.Context, o PracticeOptions) (_ *PracticeBench, err
 	if err := place(&c, o.Wiring); err != nil {
 		return nil, err
 	}
-	if w := o.Wiring.Pot; w != nil {
-		c.Pot.Track = s.potTrack(w.EndToEnd, w.Tolerance)
+	if o.Wiring.Pot != nil {
+		c.Pot.Track = s.potTrack()
 	}
 	p := &PracticeBench{}
 	if o.SupplyLog != "" {

@@ -9,6 +9,7 @@ import (
 	"nightbench/instruments/si"
 	"nightbench/sweeps"
 	"nightbench/sweeps/predict"
+	"nightbench/sweeps/runner"
 )
 
 // draws is how many boards a band is drawn from, one a curve.
@@ -19,6 +20,7 @@ type predictor struct {
 	model    *predict.Model
 	ensemble *predict.Ensemble
 	burden   float64 // Ω in the motor's loop
+	track    float64 // Ω end to end of the bench's pot where its wiper stands in the network; 0: it doesn't
 }
 
 // newPredictor draws the boards once; the seed is the run's.
@@ -27,6 +29,7 @@ func newPredictor(board sweeps.Board, w instruments.Wiring, seed uint64) (*predi
 	if w.Pot != nil {
 		o.PotTolerance, o.WiperResistance = w.Pot.Tolerance, w.Pot.Wiper
 		o.PotMaxCurrent, o.PotMaxVoltage = w.Pot.MaxCurrent, w.Pot.MaxTerminalVoltage
+		o.Track = Track(*w.Pot)
 	}
 	for _, meter := range w.Meters {
 		if sweeps.Quantity(meter.Reads) == sweeps.AverageVoltage {
@@ -37,7 +40,16 @@ func newPredictor(board sweeps.Board, w instruments.Wiring, seed uint64) (*predi
 	if err != nil {
 		return nil, err
 	}
-	return &predictor{model: m, ensemble: m.Draw(draws, seed), burden: Burden(w)}, nil
+	p := &predictor{model: m, ensemble: m.Draw(draws, seed), burden: Burden(w)}
+	if board.Timing.Track.Pot {
+		p.track = w.Pot.EndToEnd
+	}
+	return p, nil
+}
+
+// Track is the bench's pot end to end, within its tolerance.
+func Track(w instruments.PotWiring) si.TolResistance {
+	return si.TolResistance{Nominal: si.Ohms(w.EndToEnd), Tolerance: w.Tolerance}
 }
 
 // Burden is what the current meters put in series with the motor, Ω.
@@ -50,7 +62,12 @@ func Burden(w instruments.Wiring) (ohms float64) {
 	return ohms
 }
 
+// setting is one for the model, which wants a share of the track where a wiper
+// stands in the network: the pot's ohms are those of its charging share.
 func (p *predictor) setting(supply, pot float64) predict.Setting {
+	if p.track > 0 {
+		pot /= p.track
+	}
 	return predict.Setting{Supply: supply, Pot: pot, Temperature: predict.Reference, Burden: p.burden}
 }
 
@@ -77,9 +94,20 @@ func (p *predictor) Curves(order []sweeps.Setpoint) []sweeps.Curve {
 	}
 	var curves []sweeps.Curve
 	for _, v := range supplies {
-		curves = append(curves, p.ensemble.CurveAt(p.setting(v, 0), spread(ends[v][0], ends[v][1])))
+		curves = append(curves, p.curve(v, spread(ends[v][0], ends[v][1])))
 	}
 	return curves
+}
+
+// curve predicts along the pot's ohms.
+func (p *predictor) curve(supply float64, ohms []float64) sweeps.Curve {
+	pots := make([]float64, len(ohms))
+	for i, r := range ohms {
+		pots[i] = p.setting(supply, r).Pot
+	}
+	c := p.ensemble.CurveAt(p.setting(supply, 0), pots)
+	c.Pot = ohms
+	return c
 }
 
 // spread are resistances from low to high, evenly in the logarithm; one where there is no span.
@@ -101,6 +129,15 @@ func (p *predictor) Tau() float64 { return p.model.Tau() }
 // Peak bounds the load's current at a supply voltage, A: the rotor held.
 func (p *predictor) Peak(supply float64) float64 { return p.model.Peak(supply) }
 
+// Where names a setting of a board for people, as a setpoint's place is named.
+func Where(board sweeps.Board, s predict.Setting) string {
+	at := sweeps.Setpoint{Supply: s.Supply, Pot: s.Pot}
+	if board.Timing.Network == sweeps.Wiper {
+		at.Pot, at.Position = 0, s.Pot
+	}
+	return runner.Place(at)
+}
+
 // judge goes through the setpoints before any is visited: what a plan is refused
 // or cautioned for. The error names what it is refused for.
 func (p *predictor) judge(order []sweeps.Setpoint) ([]predict.Finding, error) {
@@ -115,7 +152,7 @@ func (p *predictor) judge(order []sweeps.Setpoint) ([]predict.Finding, error) {
 	var refused []error
 	for _, f := range findings {
 		if f.Refuse {
-			refused = append(refused, fmt.Errorf("%s, %s: %s", si.Format(f.Setting.Supply, si.Volt), si.Short(f.Setting.Pot), f.Words))
+			refused = append(refused, fmt.Errorf("%s: %s", Where(p.model.Board(), f.Setting), f.Words))
 		}
 	}
 	if len(refused) > 0 {

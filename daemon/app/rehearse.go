@@ -27,7 +27,8 @@ type Rehearsed struct {
 	Flags       []sweeps.Flag                         `json:"flags"`
 }
 
-// imagined is the pot assumed where no bench file says which one it is: fine enough to land near any value.
+// imagined is the pot assumed where no bench file says which one it is: fine enough to
+// land near any value. The prediction doesn't use it: a wiper's track has to be known.
 var imagined = instruments.PotWiring{Codes: 1025, EndToEnd: 1e6, Wiper: 0}
 
 // Rehearse checks a plan against its board and, where there is one, the bench, and
@@ -37,9 +38,9 @@ func Rehearse(plan sweeps.Plan, board sweeps.Board, w *instruments.Wiring) (Rehe
 		return Rehearsal{}, err
 	}
 	r := Rehearsal{Setpoints: []Rehearsed{}, NotJudged: []string{}}
-	bench := instruments.Wiring{Pot: &imagined}
+	bench, pot := instruments.Wiring{}, &imagined
 	if w != nil {
-		bench = *w
+		bench, pot = *w, w.Pot
 	} else {
 		r.NotJudged = append(r.NotJudged, "no bench file: its limits, which instruments give the quantities, the pot's codes and tolerance, and two nodes on earth; name it with --bench")
 	}
@@ -47,7 +48,7 @@ func Rehearse(plan sweeps.Plan, board sweeps.Board, w *instruments.Wiring) (Rehe
 	if err != nil {
 		return Rehearsal{}, err
 	}
-	order, err := schedule.Order(plan, bench.Pot, 1)
+	order, err := schedule.Order(plan, pot, 1)
 	if err != nil {
 		return Rehearsal{}, err
 	}
@@ -77,6 +78,9 @@ func tripsTooLow(trips []sweeps.Trip, all []Rehearsed) (found []predict.Finding)
 			if x.High > worst {
 				worst = x.High
 				f.Setting = predict.Setting{Supply: s.Supply, Pot: s.Pot}
+				if s.Position > 0 {
+					f.Setting.Pot = s.Position
+				}
 				f.Words = fmt.Sprintf("%s trips at %s, and up to %s is predicted", t.Quantity, si.Format(t.Limit, x.Unit), si.Format(x.High, x.Unit))
 			}
 		}

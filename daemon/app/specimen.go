@@ -4,7 +4,9 @@ import (
 	"fmt"
 	"math/rand/v2"
 
+	"nightbench/instruments"
 	"nightbench/instruments/practice/circuit"
+	"nightbench/instruments/si"
 	"nightbench/sweeps"
 	"nightbench/sweeps/predict"
 
@@ -16,19 +18,25 @@ type specimen struct {
 	board sweeps.Board
 	parts *predict.Catalogue
 	value map[string]float64 // by the part's name in the model
-	track float64            // −1 … 1: where in its tolerance the bench's pot lies
+	pot   instruments.PotWiring
+	track float64 // −1 … 1: where in its tolerance the bench's pot lies
 
 	seed   uint64
 	fitted map[string]string // a diode's place: the catalogue part that stands there instead
 }
 
-// newSpecimen draws a specimen. A seed of 0 draws none: every part at its nominal value.
-func newSpecimen(board sweeps.Board, seed uint64) (*specimen, error) {
+// newSpecimen draws a specimen for a bench's pot; nil: the bench has none. A seed of 0
+// draws none: every part at its nominal value.
+func newSpecimen(board sweeps.Board, pot *instruments.PotWiring, seed uint64) (*specimen, error) {
 	parts, err := predict.ReadCatalogue(nil)
 	if err != nil {
 		return nil, err
 	}
-	m, err := predict.New(board, predict.Options{Catalogue: parts})
+	o := predict.Options{Catalogue: parts}
+	if pot != nil {
+		o.Track = si.Exactly(si.Ohms(pot.EndToEnd)) // its true value is drawn below
+	}
+	m, err := predict.New(board, o)
 	if err != nil {
 		return nil, err
 	}
@@ -42,6 +50,12 @@ func newSpecimen(board sweeps.Board, seed uint64) (*specimen, error) {
 		if x := r.Float64(); seed != 0 {
 			s.value[p.Name] = drawn(p, x)
 		}
+	}
+	if pot != nil {
+		s.pot = *pot
+	}
+	if board.Timing.Track.Pot {
+		s.value["pot"] = s.potTrack()
 	}
 	return s, nil
 }
@@ -175,6 +189,9 @@ func (s *specimen) timing() circuit.Timing {
 	place(t.Discharge, circuit.PotDown, &c.Down)
 	if t.Network == sweeps.Wiper {
 		c.Pot, c.PotTrack, c.Up, c.Down = circuit.PotWiper, v["pot"], v["stop_up"], v["stop_down"]
+		if t.Track.Pot {
+			c.PotWiperOhms = s.pot.Wiper
+		}
 	}
 	return c
 }
@@ -244,6 +261,6 @@ func (s *specimen) load(burden float64) circuit.Load {
 }
 
 // potTrack is the true end-to-end resistance of the bench's pot, Ω.
-func (s *specimen) potTrack(nominal, tolerance float64) float64 {
-	return nominal * (1 + s.track*tolerance)
+func (s *specimen) potTrack() float64 {
+	return s.pot.EndToEnd * (1 + s.track*s.pot.Tolerance)
 }
