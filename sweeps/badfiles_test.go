@@ -25,8 +25,8 @@ type bad struct {
 var badFiles = map[string]bad{
 	"accept-in-wrong-unit.plan.toml":       {31, "accept.duty", `"0.1 V"`, "duty is in percentage points (a ratio), the limit in V", ""},
 	"accuracy-without-unit.bench.toml":     {17, "meter[1].accuracy.reading", `"0.05"`, "has no unit; write it in % or ppm", `reading = "0.05 %"`},
-	"axis-nobody-can-set.plan.toml":        {11, "axis[2].set", `"fan_speed"`, "nothing on a bench sets that; use supply_voltage, pot_resistance or pot_code", ""},
-	"axis-not-yet.plan.toml":               {11, "axis[2].set", `"pot_position"`, "not supported yet by this version; use supply_voltage", ""},
+	"axis-nobody-can-set.plan.toml":        {11, "axis[2].set", `"fan_speed"`, "nothing on a bench sets that; use supply_voltage, pot_resistance, pot_code or pot_position", ""},
+	"axis-not-yet.plan.toml":               {11, "axis[2].set", `"timer_output"`, "not supported yet by this version; use supply_voltage, pot_resistance, pot_code or pot_position", ""},
 	"board-file-not-found.plan.toml":       {3, "plan.board", `"../../sweeps/example/pump-driver-c.toml"`, "no such file: ../sweeps/example/pump-driver-c.toml; the path counts from the plan's folder; in that folder are: bench.toml", ""},
 	"byte-order-mark.board.toml":           {1, "", "", "begins with a byte order mark; save it as UTF-8 without one", ""},
 	"cutoff-not-yet.bench.toml":            {35, "cutoff", "", "not supported yet by this version; leave the table out, and have somebody attend", ""},
