@@ -88,6 +88,12 @@ func (p PotWiring) Ohms(code int) si.Resistance {
 	return si.Ohms(p.EndToEnd*float64(code)/float64(p.Codes-1) + p.Wiper)
 }
 
+// Position is the share of the track between wiper and terminal A at a code,
+// which counts from terminal B: 1 at code 0.
+func (p PotWiring) Position(code int) float64 {
+	return 1 - float64(code)/float64(p.Codes-1)
+}
+
 // Bench is the wiring and the instruments themselves. Meters stand in the order
 // of Wiring.Meters. An absent instrument is a null object whose error names the key to add.
 type Bench struct {

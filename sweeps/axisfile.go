@@ -39,13 +39,13 @@ func settable(t *userfile.Table, s *Setting) bool {
 	}
 	*s = Setting(word)
 	switch *s {
-	case SetSupplyVoltage, SetPotResistance, SetPotCode:
+	case SetSupplyVoltage, SetPotResistance, SetPotCode, SetPotPosition:
 		return true
-	case SetPotPosition, SetTimerOutput:
-		t.Fail("set", "not supported yet by this version; use supply_voltage, pot_resistance or pot_code")
+	case SetTimerOutput:
+		t.Fail("set", "not supported yet by this version; use supply_voltage, pot_resistance, pot_code or pot_position")
 	default:
-		t.Suggest("set", word, []string{string(SetSupplyVoltage), string(SetPotResistance), string(SetPotCode)},
-			"nothing on a bench sets that; use supply_voltage, pot_resistance or pot_code")
+		t.Suggest("set", word, []string{string(SetSupplyVoltage), string(SetPotResistance), string(SetPotCode), string(SetPotPosition)},
+			"nothing on a bench sets that; use supply_voltage, pot_resistance, pot_code or pot_position")
 	}
 	*s = ""
 	return false
@@ -58,6 +58,8 @@ func listed(t *userfile.Table, a *Axis) {
 		a.Values = values[si.Voltage](t, "values")
 	case SetPotResistance:
 		a.Values = values[si.Resistance](t, "values")
+	case SetPotPosition:
+		a.Values = values[si.Ratio](t, "values")
 	case SetPotCode:
 		var codes []int
 		t.Ints("values", &codes, 0, math.MaxInt32)
@@ -66,18 +68,30 @@ func listed(t *userfile.Table, a *Axis) {
 		}
 	}
 	for i, v := range a.Values {
+		ok, want := a.Set.bounds(v)
 		switch {
 		case i > 0 && v <= a.Values[i-1]:
 			t.FailItem("values", i, "is not above the one before it; write them rising, each once, and say the way with direction")
 			return
-		case v < 0 || v == 0 && a.Set == SetSupplyVoltage:
-			t.FailItem("values", i, "has to be above zero")
+		case !ok:
+			t.FailItem("values", i, want)
 			return
 		}
 	}
 	if len(a.Values) > maxPoints {
 		t.Fail("values", fmt.Sprintf("has %d values; at most %d are stepped", len(a.Values), maxPoints))
 	}
+}
+
+// bounds says whether anything of the kind can be set to a value, and what is wrong otherwise.
+func (s Setting) bounds(v float64) (bool, string) {
+	switch s {
+	case SetSupplyVoltage:
+		return positive(v)
+	case SetPotPosition:
+		return share(v)
+	}
+	return notNegative(v)
 }
 
 // values reads a list of quantities as SI numbers.
@@ -132,10 +146,13 @@ func end(t *userfile.Table, key string, set Setting) (float64, bool) {
 	switch set {
 	case SetSupplyVoltage:
 		var v si.Voltage
-		return quantityEnd(t, key, &v, positive)
+		return quantityEnd(t, key, &v, set.bounds)
 	case SetPotResistance:
 		var v si.Resistance
-		return quantityEnd(t, key, &v, notNegative)
+		return quantityEnd(t, key, &v, set.bounds)
+	case SetPotPosition:
+		var v si.Ratio
+		return quantityEnd(t, key, &v, set.bounds)
 	}
 	var code int
 	ok := t.Int(key, &code, 0, math.MaxInt32)

@@ -106,6 +106,11 @@ type sign func(float64) (ok bool, want string)
 func positive(x float64) (bool, string)    { return x > 0, "has to be above zero" }
 func notNegative(x float64) (bool, string) { return x >= 0, "can't be below zero" }
 
+// share is above none and at most the whole.
+func share(x float64) (bool, string) {
+	return x > 0 && x <= 1, `give a share of the track above 0 and up to 1, like 0.35 or "35 %"`
+}
+
 // signed reads a quantity of a sign.
 func signed(t *userfile.Table, key string, v number, s sign) bool {
 	if !t.Text(key, v) {

@@ -105,17 +105,7 @@ func (c *checker) warmUp() {
 	if want := c.voltageWrong(wu.At.Supply.SI()); want != "" {
 		t.Fail("supply_voltage", want)
 	}
-	ohms := wu.At.Pot.SI()
-	switch {
-	case c.board.Timing.UsesPot() && ohms == 0:
-		t.Fail("pot_resistance", `is missing; the board is timed by the pot: say where it stands, like "10k"`)
-	case !c.board.Timing.UsesPot() && ohms != 0:
-		t.Fail("pot_resistance", "the board has no pot ("+c.boardName()+" gives no resistor as \"pot\"); leave it out")
-	case ohms != 0:
-		if want := c.potWrong(ohms); want != "" {
-			t.Fail("pot_resistance", want)
-		}
-	}
+	c.warmUpPot(wu.At, t)
 	if c.plan.AtMost > 0 && wu.For >= c.plan.AtMost {
 		c.f.Look("warm_up").Fail("for", fmt.Sprintf("is not shorter than the plan's at_most, %s: nothing would be measured", c.plan.AtMost))
 	}

@@ -56,7 +56,7 @@ func TestCheckPlanTells(t *testing.T) {
 		{"NoSupplyAxis", "sample.toml", func(n *night) { n.plan.Axes = n.plan.Axes[1:] }, "sample.toml:8: axis: no axis sets supply_voltage"},
 		{"NoPotAxis", "sample.toml", func(n *night) { n.plan.Axes = n.plan.Axes[:1] }, "sample.toml:8: axis: the board is timed by the pot and no axis says where it stands"},
 		{"NoPotOnBench", "sample.toml", func(n *night) { n.bench.Pot = nil }, `sample.toml:13: axis[2].set = "pot_resistance": bench "Pump bench" has no pot; add [pot]`},
-		{"WiperOfTheBench", "sample.toml", func(n *night) { n.board.Timing.Track.Pot = true }, `sample.toml:13: axis[2].set = "pot_resistance": a pot with its wiper in the timing network`},
+		{"WiperOfTheBench", "sample.toml", func(n *night) { n.board.Timing.Track.Pot = true }, `sample.toml:13: axis[2].set = "pot_resistance": both ends of the pot are in the timing network (network = "wiper")`},
 		{"BelowTheWiper", "sample.toml", func(n *night) { n.bench.Pot.Wiper = 2000 }, `sample.toml:14: axis[2].from = "1k": 1 kΩ is out of the pot's reach, 2 kΩ to 102 kΩ`},
 		{"TerminalVoltage", "sample.toml", func(n *night) { n.bench.Pot.MaxTerminalVoltage = 5.5 }, `sample.toml:13: axis[2].set = "pot_resistance": at 12 V the pot's terminals would see more than their 5.5 V`},
 		{"CodeOfAnotherPot", "sample.toml", func(n *night) { n.plan.Axes[1].Set = sweeps.SetPotCode }, `sample.toml:14: axis[2].from = "1k": code 1000 is none of this pot, 0 to 256`},

@@ -48,7 +48,7 @@ const (
 	Shuffled Direction = "shuffled"
 )
 
-// Axis is one thing that is stepped. Values are in SI (Ω, V, code number, share),
+// Axis is one thing that is stepped. Values are in SI (Ω, V, code number, share of the track),
 // in the order written or, from From, To, Points and Spacing, already spread.
 type Axis struct {
 	Set       Setting
@@ -57,10 +57,11 @@ type Axis struct {
 	Line      int // of its table in the plan file, for messages
 }
 
-// Held are settings at which something is done: V and Ω (or code, or share).
+// Held are settings at which something is done.
 type Held struct {
-	Supply si.Voltage
-	Pot    si.Resistance
+	Supply   si.Voltage
+	Pot      si.Resistance
+	Position si.Ratio // network wiper, in place of Pot: share of the track in the charging path
 }
 
 // WarmUp is a spell at one setting before the first point.

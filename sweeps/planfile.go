@@ -112,9 +112,8 @@ func warmUp(t *userfile.Table, p *Plan) {
 	at := t.Table("at")
 	signed(at, "supply_voltage", &p.WarmUp.At.Supply, positive)
 	signed(at.Optional(), "pot_resistance", &p.WarmUp.At.Pot, positive)
-	for _, key := range []string{"pot_code", "pot_position"} {
-		at.NotYet(key, "give pot_resistance")
-	}
+	signed(at.Optional(), "pot_position", &p.WarmUp.At.Position, share)
+	at.NotYet("pot_code", "give pot_resistance")
 }
 
 func settle(t *userfile.Table, s *Settle) {

@@ -12,9 +12,10 @@ type Setpoint struct {
 	Index     int       `json:"index"`
 	Supply    float64   `json:"supply_voltage"` // V, as set
 	PotCode   int       `json:"pot_code"`
-	Pot       float64   `json:"pot_resistance"` // Ω, of the code: what is really there
-	Direction Direction `json:"direction"`      // of travel along the innermost axis: up or down
-	Pass      int       `json:"pass"`           // counts passes along the innermost axis, from 0
+	Pot       float64   `json:"pot_resistance"`         // Ω, of the code: what is really there; network wiper: of the track's share that charges
+	Position  float64   `json:"pot_position,omitempty"` // network wiper: share of the track, of the code; 0: no such pot
+	Direction Direction `json:"direction"`              // of travel along the innermost axis: up or down
+	Pass      int       `json:"pass"`                   // counts passes along the innermost axis, from 0
 	Recheck   bool      `json:"recheck,omitempty"`
 }
 

@@ -65,7 +65,9 @@ func (p *pot) stick() (lift func()) {
 	return func() { p.stuck.Store(false) }
 }
 
-// write moves the wiper of the part: R = track·D/(codes − 1) + wiper.
+// write moves the wiper of the part: R = track·D/(codes − 1) + wiper, counted from
+// terminal B. In a wiper network the rest of the track charges, and the wiper's own
+// resistance is the board's.
 func (p *pot) write(code int) {
 	if p.code = code; p.stuck.Load() {
 		return
@@ -74,10 +76,11 @@ func (p *pot) write(code int) {
 }
 
 func (p *pot) turn(code int) {
-	ohms := p.part.Track*float64(code)/float64(p.part.Codes-1) + p.part.Wiper
+	share := float64(code) / float64(p.part.Codes-1)
 	p.world.do(func(s *circuit.Sim) {
+		ohms := p.part.Track*share + p.part.Wiper
 		if t := s.Board().Timing; t.Pot == circuit.PotWiper {
-			ohms = min(ohms, t.PotTrack) // the wiper's own resistance is in series, not in the track
+			ohms = t.PotTrack * (1 - share)
 		}
 		must(s.SetPot(ohms))
 	})

@@ -90,6 +90,11 @@ func round(x float64, n int) float64 {
 // tidy writes a true minus sign.
 func tidy(s string) string { return strings.Replace(s, "-", "−", 1) }
 
+// Percent prints a share in percent, three figures: "35.2 %".
+func Percent(share float64) string {
+	return tidy(strconv.FormatFloat(round(100*share, 3), 'f', -1, 64)) + nbsp + "%"
+}
+
 // FormatRange prints an interval with one prefix for both ends, four figures: "4.650 to 5.337 kHz".
 func FormatRange(low, high float64, u Unit) string {
 	if math.IsNaN(low) || math.IsInf(low, 0) || math.IsNaN(high) || math.IsInf(high, 0) {

@@ -128,13 +128,19 @@ func apart(a, b road) sweeps.Flag {
 
 func near(x, y float64) bool { return math.Abs(x/y-1) < 0.15 }
 
-// pot is the resistance of the code read back, with the tolerance of the track.
+// pot is the resistance of the code read back, with the tolerance of the track; with
+// the wiper in the timing network that of the track's charging share.
 func (d *deriver) pot() road {
 	p := d.wiring.Pot
 	if p == nil {
 		return road{name: "pot", flags: []sweeps.Flag{{Name: "no road", Words: "this bench has no pot"}}}
 	}
-	track := p.EndToEnd * float64(d.raw.Setpoint.PotCode) / float64(p.Codes-1)
-	b := uncertainty.New(p.Ohms(d.raw.Setpoint.PotCode).SI(), uncertainty.Rectangular("track tolerance", p.Tolerance*track).Keyed("pot track"))
+	ohms := p.Ohms(d.raw.Setpoint.PotCode).SI()
+	track := ohms - p.Wiper
+	if d.board.Timing.Track.Pot {
+		track = p.EndToEnd * p.Position(d.raw.Setpoint.PotCode)
+		ohms = track
+	}
+	b := uncertainty.New(ohms, uncertainty.Rectangular("track tolerance", p.Tolerance*track).Keyed("pot track"))
 	return road{name: "pot code read back", budget: b, ok: true}
 }

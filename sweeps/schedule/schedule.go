@@ -62,7 +62,7 @@ type order struct {
 func (o *order) start(pot *instruments.PotWiring) {
 	o.pass = -1
 	if pot != nil {
-		o.now.PotCode, o.now.Pot = pot.Park, pot.Ohms(pot.Park).SI()
+		o.now.Turn(*pot, pot.Park, sweeps.SetPotCode)
 	}
 }
 
@@ -92,17 +92,16 @@ func axisSteps(a sweeps.Axis, pot *instruments.PotWiring, r *rand.Rand) ([]step,
 		for _, v := range a.Values {
 			up = append(up, step{apply: func(s *sweeps.Setpoint) { s.Supply = v }, way: sweeps.Up})
 		}
-	case sweeps.SetPotResistance, sweeps.SetPotCode:
+	case sweeps.SetPotResistance, sweeps.SetPotCode, sweeps.SetPotPosition:
 		codes, err := Codes(a, pot)
 		if err != nil {
 			return nil, err
 		}
 		for _, c := range codes {
-			ohms := pot.Ohms(c).SI()
-			up = append(up, step{apply: func(s *sweeps.Setpoint) { s.PotCode, s.Pot = c, ohms }, way: sweeps.Up})
+			up = append(up, step{apply: func(s *sweeps.Setpoint) { s.Turn(*pot, c, a.Set) }, way: sweeps.Up})
 		}
 	default:
-		return nil, fmt.Errorf("axis %q: this version can't step it; it steps supply_voltage, pot_resistance and pot_code", a.Set)
+		return nil, fmt.Errorf("axis %q: this version can't step it; it steps supply_voltage, pot_resistance, pot_code and pot_position", a.Set)
 	}
 	return travel(up, a.Direction, r), nil
 }
@@ -143,9 +142,12 @@ func Codes(a sweeps.Axis, pot *instruments.PotWiring) ([]int, error) {
 	if pot == nil {
 		return nil, fmt.Errorf("axis %q: this bench has no pot; add [pot] to the bench file", a.Set)
 	}
-	if a.Set == sweeps.SetPotResistance {
+	switch a.Set {
+	case sweeps.SetPotResistance:
 		codes, _ := sweeps.Snap(*pot, a.Values)
 		return codes, nil
+	case sweeps.SetPotPosition:
+		return sweeps.SnapPositions(*pot, a.Values), nil
 	}
 	var codes []int
 	for _, v := range a.Values {
