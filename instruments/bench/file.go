@@ -47,6 +47,19 @@ func Read(path string) (*File, error) {
 	if err != nil {
 		return nil, err
 	}
+	return fileOf(f)
+}
+
+// Parse reads a copy of a bench file kept with a run: the name is for messages only.
+func Parse(name, text string) (*File, error) {
+	f, err := userfile.Parse(name, []byte(text))
+	if err != nil {
+		return nil, err
+	}
+	return fileOf(f)
+}
+
+func fileOf(f *userfile.File) (*File, error) {
 	r := reader{file: f, out: &File{Path: f.Name, Text: f.Source, Pace: 1, Line: 50}}
 	r.bench(f.Table("bench"))
 	r.supply(f.Table("supply"))
