@@ -50,7 +50,7 @@ func newRoot(last context.Context, args []string) *cobra.Command {
 	root.PersistentPreRunE = c.dialects
 	root.AddCommand(
 		c.demo(), c.serve(), c.newFiles(), c.rehearse(), c.start(), c.stop(), c.hold(), c.resume(), c.runs(), c.show(), c.predict(), c.pulse(), c.token(),
-		c.dialect(), c.ask(),
+		c.dialect(), c.ports(), c.ask(),
 	)
 	for _, sub := range root.Commands() {
 		asUsage(sub)
@@ -66,7 +66,7 @@ func asUsage(c *cobra.Command) {
 	}
 	c.Args = func(cmd *cobra.Command, args []string) error {
 		if err := check(cmd, args); err != nil {
-			return usage("%w; write: nightbench %s", err, cmd.Use)
+			return usage("%w; write: %s", err, strings.TrimSuffix(cmd.UseLine(), " [flags]"))
 		}
 		return nil
 	}
