@@ -4,7 +4,7 @@ PACE  ?= 20
 ONCE  ?=
 STATE ?=
 
-.PHONY: demo test setup ui build check bench torture types pictures clean
+.PHONY: demo test setup ui build check bench bench-test torture types pictures clean
 
 demo: build
 	@./nightbench demo --pace $(PACE) $(if $(ONCE),--once) $(if $(STATE),--state $(STATE))
@@ -40,6 +40,14 @@ types:
 # Figures, as ratios within one run.
 bench:
 	@$(GO) test -run '^$$' -bench . -benchtime 1s ./...
+
+# Holds the instruments of a bench file against the message rules: queries, mistakes, and settings at
+# output off; never output on, a self-test or a protection clear. Nothing may be connected.
+bench-test:
+	@test -n "$(BENCH)" || { echo "name the bench file: make bench-test BENCH=bench.toml"; exit 2; }
+	@printf 'This changes settings of every instrument in %s.\nSwitch the output off, and take the board and all leads off the instruments.\nType "nothing is connected" to go on: ' "$(BENCH)"; \
+	read -r words; test "$$words" = "nothing is connected" || { echo "nothing was sent"; exit 2; }
+	@NIGHTBENCH_NOTHING_CONNECTED=yes NIGHTBENCH_BENCH="$(abspath $(BENCH))" $(GO) test -tags benchtest -count=1 -v -run TestRealBench ./instruments/conformance
 
 # Long proofs: random kills, whole nights. Not in CI.
 torture: build

@@ -17,6 +17,7 @@ var edges = map[string][]string{
 	"sweeps/internal/numeric":       {},
 	"migrations":                    {},
 	"ui":                            {},
+	"instruments/conformance":       {},
 	"instruments/practice/circuit":  {},
 	"instruments":                   {"instruments/si"},
 	"instruments/link":              {"instruments", "instruments/si"},

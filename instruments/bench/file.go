@@ -68,7 +68,7 @@ func fileOf(f *userfile.File) (*File, error) {
 	}
 	r.scope(f.Optional().Table("scope"))
 	r.pot(f.Optional().Table("pot"))
-	f.NotYet("cutoff", "leave the table out, and have somebody attend who can reach the supply's switch")
+	r.cutoff(f.Optional().Table("cutoff"))
 	r.onePortEach()
 	r.oneEarth()
 	if err := f.Err(); err != nil {

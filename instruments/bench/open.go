@@ -40,7 +40,7 @@ type Info struct {
 // Opened is a bench whose instruments answer. Close it when done.
 type Opened struct {
 	instruments.Bench
-	Info    []Info // in the order supply, meters, scope, pot
+	Info    []Info // in the order supply, meters, scope, pot, cutoff
 	FoundOn bool   // the supply's output was on already when it was opened
 
 	open []*instrument // in the order of Info
@@ -113,6 +113,9 @@ func (b *Opened) slots(f *File, o Options) []slot {
 				}
 				return notes, err
 			}})
+	}
+	if f.Cutoff != nil {
+		slots = append(slots, b.cutoffSlot(*f.Cutoff, o))
 	}
 	return slots
 }

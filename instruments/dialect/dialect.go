@@ -41,6 +41,8 @@ const (
 	RoleMeter  Role = "meter"
 	RoleScope  Role = "scope"
 	RolePot    Role = "pot"
+	RoleCutoff Role = "cutoff"
+	RoleProbe  Role = "thermometer"
 )
 
 // Dialect is one dialect file, read and checked.

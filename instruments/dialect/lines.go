@@ -100,6 +100,15 @@ var lines = map[Role]map[string]spec{
 		"highest_code":   {does: "say its highest code", needs: asks},
 		"power_on_count": {does: "count its power-ons", needs: asks},
 	},
+	RoleCutoff: {
+		"feed":   {does: "be kept closed", needs: sends, required: true},
+		"open":   {does: "be opened", needs: sends, required: true},
+		"closed": {does: "say whether its contact is closed", needs: asks, required: true},
+		"time":   {does: "be told how long it stays closed", needs: setting, unit: si.Second},
+	},
+	RoleProbe: {
+		"temperature": {does: "measure a temperature", needs: asks, unit: si.Celsius, required: true},
+	},
 }
 
 // specOf finds what a line of a role must be.
@@ -117,4 +126,6 @@ var figures = map[Role]map[string]si.Unit{
 	RoleMeter:  {"voltage": si.Volt, "current": si.Ampere},
 	RoleScope:  {"voltage": si.Volt},
 	RolePot:    {},
+	RoleCutoff: {},
+	RoleProbe:  {},
 }

@@ -57,7 +57,7 @@ type reader struct{ d *Dialect }
 func (r *reader) head(t *userfile.Table) bool {
 	h := &r.d.Head
 	ok := t.String("name", &h.Name)
-	ok = userfile.Word(t, "role", &h.Role, RoleSupply, RoleMeter, RoleScope, RolePot) && ok
+	ok = userfile.Word(t, "role", &h.Role, RoleSupply, RoleMeter, RoleScope, RolePot, RoleCutoff, RoleProbe) && ok
 	t.Optional().String("about", &h.About)
 	t.Optional().Bool("accepts_any", &h.AcceptsAny)
 	t.Optional().String("tried", &h.Tried)

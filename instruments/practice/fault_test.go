@@ -145,7 +145,7 @@ func TestFaultsOfInstruments(t *testing.T) {
 			d.near("after", d.number("average", "READ?"), 2, 10e-3)
 			d.bring(Fault{Kind: LeadOff, On: "motor"}) // its leads carry the load's current
 			d.near("average with the load interrupted", d.number("average", "READ?"), 2, 10e-3)
-			d.near("supply current", d.number("supply", "MEAS:CURR?"), 8./470, 5e-3)
+			d.near("load current", d.number("motor", "READ?"), 0, 1e-3)
 		})
 	})
 	t.Run("ProbeTen", func(t *testing.T) {

@@ -30,6 +30,8 @@ type Config struct {
 	Meters    []Meter   // in order
 	Scope     Scope     // in what the scope differs
 	Channels  []Channel // of the scope
+	Cutoff    bool      // a relay in the supply lead that opens unless it is fed
+	Probe     bool      // a thermometer on the board
 	SupplyLog io.Writer // what the supply was told and when its output was on, a JSON object a line; nil: not kept
 }
 
@@ -111,7 +113,8 @@ func New(c Config) (*Bench, error) {
 	b.ctx, b.end = context.WithCancel(context.Background())
 	b.faults.noise = noise{rand.New(rand.NewPCG(c.Seed, 3))}
 	rng := func(i uint64) *rand.Rand { return rand.New(rand.NewPCG(c.Seed, i)) }
-	b.add("supply", "supply", newSupply(b.world, rng(1), c.Supply, &supplyLog{w: c.SupplyLog, world: b.world}).instrument())
+	supply := newSupply(b.world, rng(1), c.Supply, &supplyLog{w: c.SupplyLog, world: b.world})
+	b.add("supply", "supply", supply.instrument())
 	for i, m := range c.Meters {
 		b.add(m.Name, "meter", newMeter(b.world, rng(10+uint64(i)), m).instrument())
 	}
@@ -121,6 +124,12 @@ func New(c Config) (*Bench, error) {
 	b.world.expose(c.Climate)
 	if c.Pot.Codes > 0 {
 		b.add("pot", "pot", newPot(b.world, c.Pot).instrument())
+	}
+	if c.Cutoff {
+		b.add("cutoff", "cutoff", newRelay(supply).instrument())
+	}
+	if c.Probe {
+		b.add("probe", "thermometer", newThermometer(b.world, rng(4)).instrument())
 	}
 	return b, nil
 }
