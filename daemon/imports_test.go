@@ -28,6 +28,7 @@ var edges = map[string][]string{
 	"instruments/driver":            {"instruments", "instruments/si", "instruments/link", "instruments/scpi", "instruments/dialect"},
 	"instruments/driver/drivertest": {"instruments", "instruments/si", "instruments/link", "instruments/scpi"},
 	"instruments/bench":             {"instruments", "instruments/si", "instruments/userfile", "instruments/link", "instruments/scpi", "instruments/dialect", "instruments/driver"},
+	"instruments/discover":          {"instruments", "instruments/link", "instruments/scpi", "instruments/dialect"},
 	"instruments/practice":          {"instruments", "instruments/si", "instruments/scpi", "instruments/practice/circuit"},
 	"sweeps":                        {"instruments", "instruments/si", "instruments/userfile"},
 	"sweeps/example":                {},
@@ -45,9 +46,11 @@ var edges = map[string][]string{
 		"sweeps", "sweeps/predict", "sweeps/schedule", "sweeps/runner", "daemon/store", "daemon/web", "ui",
 	},
 	"daemon": {
-		"instruments", "instruments/si", "instruments/userfile", "instruments/dialect", "instruments/bench", "sweeps", "sweeps/example", "sweeps/predict", "sweeps/runner",
-		"sweeps/pulse", "sweeps/pulse/capture", "sweeps/pulse/figure", "daemon/app", "daemon/store", "daemon/web",
+		"instruments", "instruments/si", "instruments/userfile", "instruments/link", "instruments/link/exchange", "instruments/scpi", "instruments/dialect",
+		"instruments/discover", "instruments/bench", "sweeps", "sweeps/example", "sweeps/predict", "sweeps/runner",
+		"sweeps/pulse", "sweeps/pulse/capture", "sweeps/pulse/figure", "daemon/app", "daemon/service", "daemon/store", "daemon/web",
 	},
+	"daemon/service": {},
 }
 
 func TestImportsRunOneWay(t *testing.T) {

@@ -106,7 +106,7 @@ const identifyWithin = 3 * time.Second
 
 // dial opens the link as the dialect wants it, as far as one is known.
 func (i *instrument) dial(ctx context.Context, o Options) (err error) {
-	addr, opt := i.port.Address, link.Options{Dial: o.Dial, Timeout: identifyWithin}
+	addr, opt := i.port.Address, link.Options{Dial: o.Dial, Trace: o.Trace, Timeout: identifyWithin}
 	if i.d != nil {
 		if addr, err = withLine(addr, i.d.Link.Line); err != nil {
 			return err

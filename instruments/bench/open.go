@@ -21,6 +21,7 @@ type Options struct {
 	Clock    instruments.Clock
 	Dial     link.Dial                                // replaces the real serial or TCP opening, for tests; nil: the real one
 	Log      func(words string)                       // hears what was noticed at opening; may be nil
+	Trace    func(e link.Event)                       // sees every byte that passes; as link.Options.Trace; may be nil
 	Exchange func(instrument string, e scpi.Exchange) // hears every exchange; quick, may be called from several goroutines; may be nil
 }
 

@@ -151,6 +151,20 @@ func (t *Turn) ReadFull(ctx context.Context, n int) ([]byte, error) {
 	return t.take(n), nil
 }
 
+// Peek waits, at most the time-out, until n bytes are there, leading blanks
+// apart, and gives them without taking them. A reply may end before.
+func (t *Turn) Peek(ctx context.Context, n int) ([]byte, error) {
+	late := time.NewTimer(t.Timeout)
+	defer late.Stop()
+	t.expect()
+	for t.skipBlanks(); len(t.l.buf) < n; t.skipBlanks() {
+		if err := t.more(ctx, late.C); err != nil {
+			return bytes.Clone(t.l.buf), t.spoilt("read", err)
+		}
+	}
+	return bytes.Clone(t.l.buf[:n]), nil
+}
+
 func (t *Turn) take(n int) []byte {
 	got := bytes.Clone(t.l.buf[:n])
 	t.l.buf = t.l.buf[n:]
