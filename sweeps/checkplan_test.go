@@ -99,6 +99,70 @@ func TestCheckPlanTells(t *testing.T) {
 	}
 }
 
+// wiperNight is the sample plan along the position of the bench's pot, on a board with
+// both its ends in the timing network.
+func wiperNight(t *testing.T) night {
+	t.Helper()
+	n := exampleNight(t, "overnight.toml")
+	b, err := sweeps.ReadBoard("../testdata/wiper.board.toml")
+	if err != nil {
+		t.Fatal(err)
+	}
+	n.board = b
+	n.plan.Axes[1].Set, n.plan.Axes[1].Values = sweeps.SetPotPosition, []float64{0.05, 0.35, 0.95}
+	n.plan.WarmUp.At.Pot, n.plan.WarmUp.At.Position = si.Ohms(0), si.Ratios(0.35)
+	return n
+}
+
+func TestCheckPlanOfAPosition(t *testing.T) {
+	for _, c := range []struct {
+		name   string
+		change func(*night)
+		want   string
+	}{
+		{"Good", func(*night) {}, ""},
+		{"WithoutABench", func(n *night) { n.bench = nil }, ""},
+		{"InOhms", func(n *night) { n.plan.Axes[1].Set, n.plan.Axes[1].Values = sweeps.SetPotResistance, []float64{10e3} }, `what is set is the share of its track that charges, like: set = "pot_position", values = ["20 %", "50 %", "80 %"]`},
+		{"SharesAsOhms", func(n *night) { n.plan.Axes[1].Set = sweeps.SetPotResistance }, `the line would be: set = "pot_position"`},
+		{"ByCode", func(n *night) { n.plan.Axes[1].Set, n.plan.Axes[1].Values = sweeps.SetPotCode, []float64{128} }, `what is set is the share of its track that charges`},
+		{"BelowTheFirstStep", func(n *night) { n.plan.Axes[1].Values[0] = 0.001 }, "0.1 % of the track is out of the pot's reach, 0.391 % to 100 % (pot.codes of bench \"Pump bench\")"},
+		{"TerminalVoltage", func(n *night) { n.bench.Pot.MaxTerminalVoltage = 5.5 }, "at 12 V the pot's terminals would see more than their 5.5 V"},
+		{"NoAxis", func(n *night) { n.plan.Axes = n.plan.Axes[:1] }, `add one, if only with one value: set = "pot_position", values = ["35 %"]`},
+		{"TurnedByHand", func(n *night) {
+			n.board.Timing.Track = sweeps.Resistor{Value: si.Exactly(si.Ohms(100e3))}
+			n.plan.WarmUp = nil
+		}, "the pot of wiper.board.toml (timing.pot) is turned by hand, which is not supported yet"},
+		{"WarmUpInOhms", func(n *night) { n.plan.WarmUp.At.Pot = si.Ohms(10e3) }, `the pot of a board with network = "wiper" (wiper.board.toml) is set by pot_position; write it like pot_position = "35 %"`},
+		{"WarmUpNowhere", func(n *night) { n.plan.WarmUp.At.Position = si.Ratios(0) }, `warm_up.at.pot_position: is missing; the board is timed by the pot: say where it stands, like "35 %"`},
+		{"WarmUpOutOfReach", func(n *night) { n.plan.WarmUp.At.Position = si.Ratios(0.001) }, "0.1 % of the track is out of the pot's reach"},
+	} {
+		t.Run(c.name, func(t *testing.T) {
+			n := wiperNight(t)
+			c.change(&n)
+			err := n.check()
+			switch {
+			case c.want == "" && err != nil:
+				t.Error(err)
+			case c.want != "" && (err == nil || !strings.Contains(err.Error(), c.want) || strings.Contains(err.Error(), "\n")):
+				t.Errorf("got  %v\nwant %s", err, c.want)
+			}
+		})
+	}
+}
+
+// Of a resistor that is the pot there is no position, in the warm-up neither.
+func TestPositionOnABoardWithoutWiper(t *testing.T) {
+	n := exampleNight(t, "overnight.toml")
+	n.plan.Axes[1].Set, n.plan.Axes[1].Values = sweeps.SetPotPosition, []float64{0.5}
+	n.plan.WarmUp.At.Position = si.Ratios(0.5)
+	err := n.check()
+	for _, want := range []string{`of pump-driver-b.toml one resistor is the pot: set = "pot_resistance", in ohms`, `(pump-driver-b.toml) is set by pot_resistance; write it like pot_resistance = "10k"`} {
+		if err == nil || !strings.Contains(err.Error(), want) {
+			t.Errorf("%q is not told in\n%v", want, err)
+		}
+	}
+}
+
 func manyVolts(n int) []float64 {
 	v := make([]float64, n)
 	for i := range v {

@@ -85,6 +85,9 @@ func TestAxes(t *testing.T) {
 		{"set = \"pot_resistance\"\nvalues = [\"1k\", \"4k7\", \"10 kohm\"]\ndirection = \"down\"", []float64{1e3, 4.7e3, 1e4}, sweeps.Down},
 		{"set = \"pot_code\"\nvalues = [0, 128, 256]\ndirection = \"both\"", []float64{0, 128, 256}, sweeps.Both},
 		{"set = \"pot_code\"\nfrom = 0\nto = 3\npoints = 10", []float64{0, 1, 2, 3}, sweeps.Up},
+		{"set = \"pot_position\"\nvalues = [0.05, \"35 %\", 1]\ndirection = \"both\"", []float64{0.05, 0.35, 1}, sweeps.Both},
+		{"set = \"pot_position\"\nfrom = \"10 %\"\nto = 0.9\npoints = 5\ndirection = \"down\"", []float64{0.1, 0.3, 0.5, 0.7, 0.9}, sweeps.Down},
+		{"set = \"pot_position\"\nfrom = 0.01\nto = 1\npoints = 3\nspacing = \"log\"", []float64{0.01, 0.1, 1}, sweeps.Up},
 	} {
 		t.Run(c.axis, func(t *testing.T) {
 			p, err := readPlan(t, "[[axis]]\n"+c.axis+"\n", "")
@@ -101,6 +104,7 @@ func TestAxes(t *testing.T) {
 // One mistake each, and the beginning of what is told about it.
 func TestPlanMistakes(t *testing.T) {
 	pot := func(s string) string { return oneSupply + "[[axis]]\nset = \"pot_resistance\"\n" + s + "\n" }
+	position := func(s string) string { return oneSupply + "[[axis]]\nset = \"pot_position\"\n" + s + "\n" }
 	for _, c := range []struct{ name, axes, rest, want string }{
 		{"NoAxis", "", "", ":1: axis: at least one [[axis]] is needed"},
 		{"NoValues", pot(""), "", ":7: axis[2]: give values, or from, to and points"},
@@ -112,6 +116,11 @@ func TestPlanMistakes(t *testing.T) {
 		{"UnknownSpacing", pot("from = \"1k\"\nto = \"2k\"\npoints = 3\nspacing = \"lgo\""), "", ":12: axis[2].spacing = \"lgo\": use linear or log; the line would be: spacing = \"log\""},
 		{"UnknownDirection", pot("values = [\"1k\"]\ndirection = \"left\""), "", ":10: axis[2].direction = \"left\": use up, down, both or shuffled"},
 		{"CodeWithUnit", oneSupply + "[[axis]]\nset = \"pot_code\"\nvalues = [\"1k\"]\n", "", ":9: axis[2].values = \"1k\": give whole numbers from 0"},
+		{"PositionInOhms", position("values = [\"10k\"]"), "", ":9: axis[2].values = \"10k\": \"10k\" has an unknown unit"},
+		{"PositionBeyondTheTrack", position("values = [0.5, 35]"), "", ":9: axis[2].values = 35: give a share of the track above 0 and up to 1, like 0.35 or \"35 %\""},
+		{"PositionOfNothing", position("from = 0\nto = 0.5\npoints = 3"), "", ":9: axis[2].from = 0: give a share of the track above 0"},
+		{"PotByTwoWays", pot("values = [\"1k\"]") + "[[axis]]\nset = \"pot_position\"\nvalues = [0.5]\n", "", ":11: axis[3].set = \"pot_position\": axis 2 (line 7) sets the pot already"},
+		{"WarmUpBeyondTheTrack", oneSupply, "[warm_up]\nfor = \"1 min\"\nat = { supply_voltage = \"9 V\", pot_position = 2 }\n", ":16: warm_up.at.pot_position = 2: give a share of the track"},
 		{"PotTwice", pot("values = [\"1k\"]") + "[[axis]]\nset = \"pot_code\"\nvalues = [1]\n", "", ":11: axis[3].set = \"pot_code\": axis 2 (line 7) sets the pot already"},
 		{"ZeroVolts", "[[axis]]\nset = \"supply_voltage\"\nvalues = [\"0 V\", \"9 V\"]\n", "", ":6: axis[1].values = \"0 V\": has to be above zero"},
 		{"TripWithoutLimit", oneSupply, "[trip]\nmotor_current = { for = \"1 s\" }\n", ":15: trip.motor_current.limit: is missing"},
@@ -218,6 +227,37 @@ func TestSnap(t *testing.T) {
 			t.Errorf("reaches %g: %v", ohms, got)
 		}
 	}
+}
+
+// A digital pot of 256 steps, code counted from terminal B: (1 − x)·256 by hand.
+func TestSnapPositions(t *testing.T) {
+	pot := instruments.PotWiring{Codes: 257, EndToEnd: 100e3, Wiper: 75}
+	if codes := sweeps.SnapPositions(pot, []float64{1. / 256, 0.35, 0.351, 0.5, 0.95, 1}); !slices.Equal(codes, []int{255, 166, 128, 13, 0}) {
+		t.Errorf("%v", codes)
+	}
+	for x, want := range map[float64]bool{0: false, 0.0019: false, 0.002: true, 0.5: true, 1: true, 1.1: false} {
+		if got := sweeps.ReachesPosition(pot, x); got != want {
+			t.Errorf("reaches %g: %v", x, got)
+		}
+	}
+}
+
+func TestSnappedPositionsAreWithinHalfAStep(t *testing.T) {
+	rapid.Check(t, func(t *rapid.T) {
+		pot := instruments.PotWiring{Codes: rapid.IntRange(2, 1025).Draw(t, "codes"), EndToEnd: 50e3, Wiper: 75}
+		x := rapid.Float64Range(0, 1).Draw(t, "share")
+		if !sweeps.ReachesPosition(pot, x) {
+			if 2*x*float64(pot.Codes-1) > 1 {
+				t.Fatalf("%g is not reached", x)
+			}
+			return
+		}
+		var s sweeps.Setpoint
+		s.Turn(pot, sweeps.SnapPositions(pot, []float64{x})[0], sweeps.SetPotPosition)
+		if d := math.Abs(s.Position - x); d > 0.5000001/float64(pot.Codes-1) || s.Pot != s.Position*50e3 || !(s.Position > 0) {
+			t.Fatalf("%g became %+v", x, s)
+		}
+	})
 }
 
 func TestSnapIsNearestAndKeepsReachableValues(t *testing.T) {

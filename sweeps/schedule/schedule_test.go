@@ -8,6 +8,7 @@ import (
 	"nightbench/sweeps"
 
 	"github.com/google/go-cmp/cmp"
+	"github.com/google/go-cmp/cmp/cmpopts"
 	"pgregory.net/rapid"
 )
 
@@ -124,4 +125,27 @@ func TestAnyCutIsFinishedExactlyOnce(t *testing.T) {
 			t.Fatalf("%d points over %d setpoints, want %d", len(points), len(seen), len(order))
 		}
 	})
+}
+
+// Positions rise, codes fall: the code counts from terminal B, the share from A.
+func TestPositionsAreSnappedToCodes(t *testing.T) {
+	p := plan(sweeps.Both)
+	p.Axes[0].Values = []float64{9}
+	p.Axes[1] = sweeps.Axis{Set: sweeps.SetPotPosition, Values: []float64{0.35, 0.3501, 0.95, 1}, Direction: sweeps.Both}
+	got, err := Order(p, pot, 1)
+	if err != nil {
+		t.Fatal(err)
+	}
+	// By hand, with 256 steps: (1 − 0.35)·256 = 166.4, (1 − 0.95)·256 = 12.8; 90/256 of 100 k is 35.15625 k.
+	want := []sweeps.Setpoint{
+		{Index: 0, Supply: 9, PotCode: 166, Position: 90. / 256, Pot: 35156.25, Direction: sweeps.Up},
+		{Index: 1, Supply: 9, PotCode: 13, Position: 243. / 256, Pot: 94921.875, Direction: sweeps.Up},
+		{Index: 2, Supply: 9, PotCode: 0, Position: 1, Pot: 100e3, Direction: sweeps.Up},
+		{Index: 3, Supply: 9, PotCode: 0, Position: 1, Pot: 100e3, Direction: sweeps.Down, Pass: 1},
+		{Index: 4, Supply: 9, PotCode: 13, Position: 243. / 256, Pot: 94921.875, Direction: sweeps.Down, Pass: 1},
+		{Index: 5, Supply: 9, PotCode: 166, Position: 90. / 256, Pot: 35156.25, Direction: sweeps.Down, Pass: 1},
+	}
+	if d := cmp.Diff(want, got, cmpopts.EquateApprox(1e-12, 0)); d != "" {
+		t.Error(d)
+	}
 }
