@@ -21,6 +21,7 @@ type Maker struct {
 	Least time.Duration // a message that comes sooner after the last is lost
 	Most  int           // a longer message is lost; 0: no bound
 	Deaf  func(message string) bool
+	Echo  bool // each message comes back before its reply
 
 	mu      sync.Mutex // guards what the rules touch, and what follows
 	rules   []rule
@@ -95,10 +96,13 @@ func (m *Maker) serve(c net.Conn) {
 			case 3: // device clear of some: forgets the message in hand
 				message = nil
 			case '\r', '\n':
-				if reply := m.hear(strings.TrimSpace(string(message))); reply != "" {
-					if _, err := c.Write([]byte(reply)); err != nil {
-						return
-					}
+				said := strings.TrimSpace(string(message))
+				reply := m.hear(said)
+				if m.Echo && said != "" {
+					reply = said + m.End + reply
+				}
+				if _, err := c.Write([]byte(reply)); err != nil {
+					return
 				}
 				message = nil
 			default:
