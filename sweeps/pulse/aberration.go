@@ -71,7 +71,7 @@ func (a *analysis) aberration(name string, occ []span, s state, w, sign float64)
 	if p.sharp > 0.2*over && over > flat+2*sigma {
 		// Ringing so fast that samples miss its peak: the highest of all transitions is nearer to it.
 		highest := maxOf(p.over) - highestOf(n)*sigma - 0.6*sigma
-		missed = 0.5*min(p.sharp, over)/math.Sqrt(n) + 0.3*max(0, highest-x)
+		missed = 0.3*min(p.sharp, over)/math.Sqrt(n) + 0.3*max(0, highest-x)
 		x = max(x, highest)
 		a.flag(FastRinging, "ringing is too fast for the sample interval: overshoot may be larger than given")
 	}
@@ -86,7 +86,7 @@ func (a *analysis) aberration(name string, occ []span, s state, w, sign float64)
 	return a.quantity(name, "1", max(0, x)/w, 0, 0, 0,
 		uncertainty.Scatter("noise", uncertainty.Value{U: scatter / w, DOF: max(1, n-1)}),
 		uncertainty.Known("peak of noise", peak/w),
-		uncertainty.Known("sample interval", (missed+0.06*max(0, x))/w),
+		uncertainty.Known("sample interval", (missed+0.03*max(0, x))/w),
 		uncertainty.Known("state levels", math.Hypot(a.uLevel(s), steps)/w))
 }
 

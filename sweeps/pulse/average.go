@@ -34,7 +34,7 @@ func (a *analysis) wholePeriodMeans(c cycles) (average, rms Quantity) {
 	}
 	dof := max(1, float64(a.pairs-1))
 	average = a.voltage("average_voltage", m,
-		uncertainty.Known("sample interval", a.volt*grid),
+		c.sampling(a.volt*grid),
 		uncertainty.Scatter("noise", uncertainty.Value{U: a.volt * math.Hypot(scatter, noise), DOF: dof}),
 		uncertainty.Known("converter steps", a.volt*round),
 		a.periodScatter(c))
@@ -47,7 +47,7 @@ func (a *analysis) wholePeriodMeans(c cycles) (average, rms Quantity) {
 	high, low := a.volts(a.high.level), a.volts(a.low.level)
 	swing := math.Abs(high*high-low*low) / (2 * floor) / max(math.Abs(high-low), 1e-300)
 	rms = a.quantity("rms", "V", s, a.volts(m)/floor, (sq(s)-a.pivot*a.volts(m))/floor, 0,
-		uncertainty.Known("sample interval", a.volt*grid*swing),
+		c.sampling(a.volt*grid*swing),
 		uncertainty.Scatter("noise", uncertainty.Value{U: a.volt * math.Hypot(scatter, noise*swing), DOF: dof}),
 		uncertainty.Known("converter steps", a.volt*squareRound/floor),
 		uncertainty.Known("noise power", power/(2*floor)/math.Sqrt(3)))

@@ -19,6 +19,7 @@ type cycles struct {
 	limit       instantModel
 	middle      instantModel
 	keep        float64 // coherence of the sampling errors
+	dof         float64 // degrees of freedom of what is put down to sampling
 }
 
 func (a *analysis) cycles() cycles {
@@ -51,7 +52,7 @@ func (c *cycles) n() int { return len(c.inner) }
 // phases fits a straight line to all instants to learn how their places between
 // samples wander, and from that how far sampling errors average out.
 func (c *cycles) phases(cell float64) {
-	c.fitted, c.keep = c.period, 1
+	c.fitted, c.keep, c.dof = c.period, 1, math.Inf(1)
 	n := float64(c.n())
 	if n < 2 {
 		return
@@ -80,14 +81,24 @@ func (c *cycles) phases(cell float64) {
 	c.middle.sampled(cell, 1/c.keep)
 	noise := math.Sqrt(max(c.limit.noise, c.middle.noise))
 	switch {
-	case endRange > c.limit.widest(cell)+4*noise || insideRange > c.middle.widest(cell)+4*noise:
-		c.keep = max(c.keep, 1/n)
+	case n < 8 && variance-sq(noise) > 2.5*max(c.limit.grid, c.middle.grid)*(1-c.keep),
+		endRange > c.limit.widest(cell)+4*noise || insideRange > c.middle.widest(cell)+4*noise:
+		c.keep, c.dof = max(c.keep, 1/n), 2*n-2
 		c.limit.shaken(variance)
 		c.middle.shaken(variance)
 	case n >= 8 && c.keep < 0.5:
 		c.limit.seen(ends/(n-0.5), most, c.keep)
 		c.middle.seen(insides/(n-1.5), most, c.keep)
 	}
+}
+
+// sampling is the component of the sample interval: known, or told by the instants' own scatter.
+func (c *cycles) sampling(u float64) uncertainty.Component {
+	k := uncertainty.Known("sample interval", u)
+	if !math.IsInf(c.dof, 1) {
+		k = uncertainty.Scatter("sample interval and jitter", uncertainty.Value{U: u, DOF: c.dof})
+	}
+	return k
 }
 
 // residual is the sum of squares of what the fitted period leaves of the instants, and its range.
@@ -123,7 +134,7 @@ type excess struct {
 }
 
 // scatterBeyond compares the values' variance with the variance expected of one
-// value; only a significant excess counts (1 % one-sided, chi-square). Successive values
+// value; only a significant excess counts (2 % one-sided, chi-square). Successive values
 // that undo each other, as periods do when only the instants jitter, average out faster.
 func scatterBeyond(values []float64, expected float64) excess {
 	n := float64(len(values))
@@ -141,7 +152,7 @@ func scatterBeyond(values []float64, expected float64) excess {
 			g1 += (v - mean) * (values[i-1] - mean) / (n - 1)
 		}
 	}
-	chance := distuv.ChiSquared{K: n - 1}.Quantile(0.99) / (n - 1)
+	chance := distuv.ChiSquared{K: n - 1}.Quantile(0.98) / (n - 1)
 	if g0 <= expected*chance {
 		return none
 	}
@@ -171,7 +182,7 @@ func (a *analysis) timing(c cycles) {
 	dof := max(1, float64(a.pairs-1))
 	state := func(name string, values []float64) Quantity {
 		return a.quantity(name, "s", mean(values), 0, 0, mean(values),
-			uncertainty.Known("sample interval", math.Sqrt(grid)),
+			c.sampling(math.Sqrt(grid)),
 			uncertainty.Scatter("noise", uncertainty.Value{U: math.Sqrt(noise), DOF: dof}),
 			uncertainty.Known("state levels", level), uncertainty.Known("bend of transitions", bend),
 			scatter(scatterBeyond(values, one)))
@@ -179,7 +190,7 @@ func (a *analysis) timing(c cycles) {
 	tHigh, tLow := state("t_high", high), state("t_low", low)
 
 	period := a.quantity("period", "s", c.period, 0, 0, c.period,
-		uncertainty.Known("sample interval", math.Sqrt(2*b.grid)/n),
+		c.sampling(math.Sqrt(2*b.grid)/n),
 		uncertainty.Scatter("noise", uncertainty.Value{U: math.Sqrt(2*b.noise) / n, DOF: dof}),
 		scatter(scatterBeyond(whole, 2*b.noise+2*b.grid)))
 	frequency := period
@@ -217,7 +228,7 @@ func (a *analysis) duty(c cycles, high, whole []float64, level, bend, dof float6
 	one := (b.noise + m.noise + (b.grid+m.grid)*(1-c.keep+1/n)) * (1 + 2*share*share) / sq(p)
 	e := scatterBeyond(ratios, one)
 	return a.quantity("duty", "1", d, 0, 0, 0,
-		uncertainty.Known("sample interval", grid),
+		c.sampling(grid),
 		uncertainty.Scatter("noise", uncertainty.Value{U: noise, DOF: dof}),
 		uncertainty.Known("state levels", level/p), uncertainty.Known("bend of transitions", bend/p),
 		uncertainty.Scatter("scatter of periods", uncertainty.Value{U: e.mean, DOF: e.dof}))
@@ -237,7 +248,7 @@ func (a *analysis) jitter(c cycles, whole []float64) Quantity {
 	// Jitter well below a sample does not show when all instants keep their place.
 	uv := math.Sqrt(2/max(1, n-1))*max(v, own) + 0.5*own + 0.1*c.limit.grid
 	x, u := root(v-own, uv)
-	return a.quantity("jitter", "s", x, 0, 0, 0, uncertainty.Scatter("few periods", uncertainty.Value{U: u, DOF: max(1, n-1)}))
+	return a.quantity("jitter", "s", x, 0, 0, 0, uncertainty.Scatter("few periods", uncertainty.Value{U: u, DOF: math.Inf(1)})) // u allows for n itself
 }
 
 func mean(values []float64) float64 {

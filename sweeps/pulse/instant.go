@@ -44,6 +44,8 @@ func (a *analysis) modelInstants(s *scanner, rising bool) instantModel {
 	m.slope = a.slope(s, rising, tau) / a.cell
 	sigma := math.Sqrt(max(a.noise, a.q*a.q/12*b2f(tau > 1)))
 	m.noise = crossingVariance(sigma/(m.slope*a.cell)) * a.cell * a.cell
+	// Ripple lifts each transition as a whole: half of it at the 50 % level.
+	m.noise += a.high.slow() / 4 / sq(m.slope)
 	m.sampled(a.cell, float64(m.n))
 	m.shape = shapeError(tau, math.Abs(skew)/max(span, 1e-9)) * a.cell
 	return m
@@ -115,7 +117,7 @@ func crossingVariance(x float64) float64 {
 // shrinking as samples begin to fall inside. Fitted to simulated straight,
 // exponential and Gaussian transitions at random phase.
 func gridError(tau float64) float64 {
-	return 1 / math.Sqrt(12) / (1 + math.Pow(tau/0.5, 1.6))
+	return 1 / math.Sqrt(12) / (1 + math.Pow(tau/0.42, 1.6))
 }
 
 // shapeError is the standard uncertainty, in samples, of the mean instant from the bend
@@ -131,9 +133,10 @@ func shapeError(tau, skew float64) float64 {
 }
 
 // bendBetween is what shapeError leaves of a duration between two kinds of transition:
-// those of like length bend alike and shift it little.
+// those of like length and kind bend alike and do not shift it, but a transistor need not
+// end a state as a diode does.
 func bendBetween(a, b instantModel) float64 {
-	return max(math.Abs(a.shape-b.shape), 0.2*max(a.shape, b.shape))
+	return max(math.Abs(a.shape-b.shape), 0.4*math.Hypot(a.shape, b.shape))
 }
 
 // coherence tells how far the sampling errors of n instants that follow each other at
@@ -143,7 +146,13 @@ func bendBetween(a, b instantModel) float64 {
 // uncertainty of the period and jitter the scatter of an instant, both in samples.
 func coherence(period float64, n int, u, jitter float64) float64 {
 	const harmonics, most = 6, 400
-	n = min(n, most)
+	if n > most {
+		k := coherence(period, most, u, jitter)
+		if k < 0.02 { // they are already as good as random
+			k *= most / float64(n)
+		}
+		return k
+	}
 	period = math.Mod(period, 1)
 	var power, norm float64
 	for m := 1.0; m <= harmonics; m++ {

@@ -103,12 +103,16 @@ func (a *analysis) levels(sag float64) {
 // same rms value: what the samples of the settled high state spread more than neighbours do.
 func (a *analysis) ripple() Quantity {
 	s := a.high
-	slow := s.spread - s.noise
+	noise := s.fine
+	if s.pairs < 30 {
+		noise = s.noise // pooled with other states
+	}
+	slow := s.spread - noise
 	n := float64(max(2, s.n))
-	// Of n white samples, variance less half the mean square of successive differences scatters by
-	// 1/√n of the variance (von Neumann 1941); a slow part beats with the noise. Rounding adds its
-	// own when noise does not cover it.
-	uv := math.Sqrt(s.noise*(s.noise+4*max(0, slow))/n) + sq(s.coarse) + 3*sq(s.uSettle) + 0.02*max(0, slow)
+	// Variance less half the mean square of differences is the mean product of neighbours, which of
+	// n white samples scatters by 1/√n of the variance (von Neumann 1941); (4²+1)/9 of that with those
+	// two apart. A slow part beats with the noise, and each occurrence sees its cycles only in part.
+	uv := math.Sqrt(noise*(1.9*noise+4*max(0, slow))/n) + sq(s.coarse) + 3*sq(s.uSettle) + 0.2*max(0, slow)/math.Sqrt(float64(max(1, min(len(s.occ), mostSpans))))
 	rms, u := root(slow, uv)
 	k := 2 * math.Sqrt2 * a.volt
 	return a.quantity("ripple", "V", k*rms, 0, k*rms, 0,

@@ -8,43 +8,6 @@ import (
 	"pgregory.net/rapid"
 )
 
-// The parameters beside times and levels: honest too, if more cautious.
-func TestHonestUncertaintyOfTheRest(t *testing.T) {
-	rng := rand.New(rand.NewPCG(1, 9))
-	tallies := map[string]*tally{}
-	add := func(r Result, name string, truth float64) {
-		if tallies[name] == nil {
-			tallies[name] = &tally{}
-		}
-		if q, ok := r.Get(name); ok {
-			tallies[name].add(q, truth)
-		}
-	}
-	for range int(2000 * share) {
-		s := draw(rng, 3000)
-		short := min(s.duty, 1-s.duty) * s.period
-		d, e := logUniform(rng, 0.03, 0.12)*short, logUniform(rng, 0.03, 0.12)*short
-		s.up, s.down = ramp(d), gaussian(e)
-		s.jitter = 0.3 * s.interval * float64(rng.IntN(2))
-		r, err := Analyse(s.capture(rng), Options{})
-		if err != nil {
-			t.Fatal(err)
-		}
-		add(r, "rise_time", d)
-		add(r, "fall_time", e)
-		add(r, "jitter", s.jitter*math.Sqrt2)
-		add(r, "overshoot", 0)
-		add(r, "undershoot", 0)
-		add(r, "ripple", 0)
-	}
-	for name, tally := range tallies {
-		t.Logf("%-12s %s", name, tally)
-		if float64(tally.n) < 150*share || tally.coverage() < 0.93 || tally.ratio() > 1.2 || 500*tally.wrong > max(tally.n, 500) {
-			t.Errorf("%s: %s", name, tally)
-		}
-	}
-}
-
 // Whatever comes in, nothing that is not finite comes out, and no value without an uncertainty.
 func TestNothingUnusableComesOut(t *testing.T) {
 	rapid.Check(t, func(t *rapid.T) {

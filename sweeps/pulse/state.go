@@ -45,6 +45,7 @@ type state struct {
 	shift   float64 // what the converter's steps had drawn the mean of the codes away from level
 
 	coarse float64 // what the steps leave unknown of the mean of the codes
+	fine   float64 // noise variance, freed of what a slow part changes between neighbours
 	own    float64 // noise before it was pooled with that of other states
 
 	occ           []span // where it was measured, and how
@@ -72,6 +73,8 @@ const (
 type sums struct {
 	n, pairs      int
 	y, yy, diff   float64
+	diff2         float64 // of samples two apart
+	pairs2        int
 	early, late   float64
 	nEarly, nLate int
 	outer, equal  int
@@ -106,7 +109,11 @@ func measureState(codes []int16, occ []span, about, reach, skip float64, step in
 	st.spread = max(0, total.yy/n-off*off)
 	if total.pairs > 0 {
 		st.noise = total.diff / (2 * float64(total.pairs))
-		st.own = st.noise
+		st.own, st.fine = st.noise, st.noise
+		if total.pairs2 > 0 {
+			// A slow part differs four times as much, squared, two samples apart as one.
+			st.fine = max(0, (4*st.noise-total.diff2/(2*float64(total.pairs2)))/3)
+		}
 	}
 	if total.nFirst > 0 {
 		st.shelf = total.first/float64(total.nFirst) - off
@@ -167,6 +174,12 @@ func sumSpan(codes []int16, o span, about, reach, skip, step float64) sums {
 					s.equal++
 				}
 			}
+			if i+2 <= o.to {
+				if d := float64(codes[i+2]) - about - y; math.Abs(d) <= 2*reach {
+					s.diff2 += d * d
+					s.pairs2++
+				}
+			}
 		}
 	}
 	return s
@@ -193,6 +206,8 @@ func (s *sums) add(o sums) {
 	s.y += o.y
 	s.yy += o.yy
 	s.diff += o.diff
+	s.diff2 += o.diff2
+	s.pairs2 += o.pairs2
 	s.early += o.early
 	s.late += o.late
 	s.nEarly += o.nEarly
@@ -247,7 +262,7 @@ func (st *state) trend(t sums) {
 	u2 := st.noise * (1/float64(t.nEarly) + 1/float64(t.nLate))
 	st.droop, st.uDroop = d, math.Sqrt(u2)
 	// A level still approaching its end value lies beyond the later half by about the same again.
-	st.uSettle = 0.8 * math.Sqrt(max(0, d*d-2*u2))
+	st.uSettle = 0.8 * math.Sqrt(max(0, d*d-4*u2))
 }
 
 // rounding sets the uncertainty left by the converter's steps of q codes: q/√12
@@ -262,6 +277,15 @@ func (st *state) rounding(q float64) {
 		st.uRound = q / math.Sqrt(12)
 	}
 	st.coarse = st.uRound
+}
+
+// slow is the variance, codes², of what varies in the state more slowly than noise; 0 when not significantly.
+func (st *state) slow() float64 {
+	v := st.spread - st.fine
+	if v < 4*st.fine/math.Sqrt(float64(max(1, st.n))) {
+		return 0
+	}
+	return v
 }
 
 // root returns the square root of a variance known to u of variance, and its standard

@@ -17,6 +17,8 @@ type synth struct {
 	sag       float64 // share of the amplitude lost at the end of the high state
 	freewheel float64 // V; three levels when conduct > duty: driven, freewheel, low as rest
 	conduct   float64
+	rippled   float64 // V, peak to peak of a sine on the high state
+	ripple    float64 // s, its period
 }
 
 // response is how a transition gets from 0 to 1: with the time it takes to reach one
@@ -142,6 +144,9 @@ func (s *synth) wave(times []float64, rng *rand.Rand) []float64 {
 			v += changes[k].height * h(t-changes[k].at)
 		}
 		y[i] = v - s.sagAt(t)
+		if s.rippled > 0 {
+			y[i] += (v - s.low) / (s.high - s.low) * s.rippled / 2 * math.Sin(2*math.Pi*t/s.ripple)
+		}
 	}
 	return y
 }
@@ -286,7 +291,7 @@ func (s *specimen) capture(rng *rand.Rand) Record {
 func (s *specimen) truth() map[string]float64 {
 	t := map[string]float64{
 		"duty": s.share(), "period": s.period, "frequency": 1 / s.period, "t_high": s.share() * s.period, "t_low": (1 - s.share()) * s.period,
-		"average_voltage": s.mean(), "high_level": s.high, "low_level": s.low, "amplitude": s.high - s.low,
+		"jitter": s.jitter * math.Sqrt2, "ripple": s.rippled, "average_voltage": s.mean(), "high_level": s.high, "low_level": s.low, "amplitude": s.high - s.low,
 	}
 	if s.conduct <= s.duty && s.sag == 0 {
 		t["rms"], t["overshoot"], t["undershoot"] = s.rms(), s.up.peak(), s.down.peak()
