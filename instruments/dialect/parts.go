@@ -3,6 +3,14 @@ package dialect
 import "time"
 
 // Link is how the family talks; zero fields mean the link's own defaults.
+// Clear is one of
+//
+//	bytes   ClearBytes are sent, such as 3 (Ctrl-C) or 27, 67 (ESC C)
+//	break   a break on the serial line; ClearReply is what comes when it is done
+//	usbtmc  that of the link itself, which needs no word here
+//	socket  a control socket of its own: stated, and until links can do it treated as
+//	reopen  the stream is opened anew when draining does not help
+//	none    draining is all there is
 type Link struct {
 	Kinds      []string      // serial, tcp, usbtmc, hislip: what the family has; none stated: not known
 	Port       int           // TCP port
@@ -13,9 +21,9 @@ type Link struct {
 	Timeout    time.Duration // of one reply; settling and aperture come on top
 	Gap        time.Duration // least time between two exchanges; a line's own rest comes on top
 	Longest    int           // most characters a message may have; 0: no bound known
-	Clear      string        // how a device clear is done: bytes, break, socket, usbtmc, reopen, none; empty: not known
-	ClearBytes []byte        // clear "bytes": what is sent, such as 3 (Ctrl-C) or 27, 67 (ESC C)
-	ClearReply string        // clear "break": what the instrument answers when it is done
+	Clear      string        // how a device clear is done: see below; empty: not known
+	ClearBytes []byte
+	ClearReply string
 	Source     string
 }
 

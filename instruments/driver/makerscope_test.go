@@ -1,6 +1,7 @@
 package driver
 
 import (
+	"fmt"
 	"math"
 	"strings"
 	"testing"
@@ -94,6 +95,66 @@ func follows(t *testing.T, w instruments.Waveform, f *drivertest.MakerScope) {
 			t.Fatalf("sample %d: code %d is %g V, the signal %g V (a code is %g V)", i, k, v, want, w.VoltsPerCode)
 		}
 	}
+}
+
+// Known codes become the volts and instants that the makers' guides work out.
+func TestKnownCodes(t *testing.T) {
+	for _, c := range []struct {
+		name, dialect string
+		make          func() *drivertest.MakerScope
+		instead       map[string]string
+		code          byte
+		volts         float64
+		i             int
+		at            float64
+	}{
+		// 2000X programmer's guide p. 644: (178 - 128)·0.02 + 0.5 = 1.5 V; 250·1 µs - 500 µs
+		{"VoltsOrigin", "keysight-infiniivision", drivertest.InfiniiVision,
+			map[string]string{":WAV:PRE?": "+0,+0,+1000,+1,+1.00000000E-06,-5.00000000E-04,+0,+2.00000000E-02,+5.00000000E-01,+128"}, 178, 1.5, 250, -250e-6},
+		// DS1000Z guide 2-140: (142 - 50 - 127)·0.008 = -0.28 V
+		{"CountsOrigin", "rigol-ds1000z", drivertest.DS1054Z,
+			map[string]string{":WAV:PRE?": "0,0,1200,1,1.000000e-06,-6.000000e-04,0,0.008000,50,127"}, 142, -0.28, 600, 0},
+		// SDS1104X-E guide p. 142: 0xFC is -4, and -4·(0.5/25) - (-0.05) = -0.03 V; first point -5 µs·14/2
+		{"PerDivision", "siglent-sds1000xe", drivertest.SDS1104XE,
+			map[string]string{"C1:VDIV?": "5.00E-01V", "C1:OFST?": "-5.00E-02V", "TDIV?": "5.00E-06S", "SARA?": "1.00E+08Sa/s"}, 0xfc, -0.03, 0, -35e-6},
+		// TDS manual 2-178: (25 - (-50))·0.04 + 1 = 4 V; (0 - 1250)·4 µs
+		{"Multiplier", "tektronix-tds2000", drivertest.TDS2024B,
+			map[string]string{"WFMPRE:YMULT?": "4.0E-2", "WFMPRE:YOFF?": "-5.0E1", "WFMPRE:YZERO?": "1.0E0", "WFMPRE:XINCR?": "4.0E-6"}, 25, 4, 0, -5e-3},
+		// RTB2000 manual p. 342: raw 255 is the top of the screen: -4 + 8/255·255 = 4 V
+		{"Linear", "rs-rtb2000", func() *drivertest.MakerScope { return drivertest.RTB2004(false) },
+			map[string]string{"CHAN1:DATA:YINC?": "3.137254902E-02", "CHAN1:DATA:YOR?": "-4.0E+00", "CHAN1:DATA:XINC?": "1.0E-06", "CHAN1:DATA:XOR?": "-6.0E-03"}, 255, 4, 6000, 0},
+	} {
+		inBubble(t, c.name, func(t *testing.T) {
+			f := c.make()
+			s := openMakerScope(t, f, c.dialect)
+			want := screens(1)
+			want.Channels = want.Channels[:1]
+			got, err := s.Configure(t.Context(), want)
+			must(t, err)
+			data := strings.Repeat(string([]byte{c.code}), got.Points)
+			ask := s.put(0).Fill(s.d.Commands["record"].Ask)
+			c.instead[ask] = map[bool]string{true: "DAT2,"}[c.dialect == "siglent-sds1000xe"] + fmt.Sprintf("#9%09d", len(data)) + data
+			if c.dialect == "siglent-sds1000xe" {
+				c.instead[ask] += "\n"
+			}
+			must(t, s.acquireNow(t))
+			f.Do(func() { f.Instead = c.instead })
+			w, err := s.fetch(t.Context(), got.Channels[0])
+			must(t, err)
+			if v := float64(w.Codes[c.i])*w.VoltsPerCode + w.VoltsAtZero; math.Abs(v-c.volts) > 1e-9 {
+				t.Errorf("code %d is %g V, want %g V", c.code, v, c.volts)
+			}
+			if at := w.Start + float64(c.i)*w.Interval; math.Abs(at-c.at) > 1e-12 {
+				t.Errorf("sample %d is at %g s, want %g s", c.i, at, c.at)
+			}
+		})
+	}
+}
+
+// acquireNow takes a record and leaves it in the scope.
+func (s *Scope) acquireNow(t *testing.T) error {
+	_, err := s.acquire(t.Context())
+	return err
 }
 
 func TestMakersScopesWithoutATrigger(t *testing.T) {

@@ -56,3 +56,20 @@ func TestOddSupply(t *testing.T) {
 		must(t, s.SetOutput(t.Context(), false))
 	})
 }
+
+// A value the instrument does not have is refused before anything is sent: the
+// next one up could be too much for the board.
+func TestValueThatIsNotAmongTheChoices(t *testing.T) {
+	inBubble(t, "IsNotSent", func(t *testing.T) {
+		f := drivertest.NewSupply()
+		conn, _ := connect(t, &f.Listener, dialect.RoleSupply, "standard-supply")
+		d := own(t, dialect.RoleSupply, "standard-supply", `ask = "VOLT?", step = "1 mV"`, `ask = "VOLT?", choices = [["5 V", "5"], ["12 V", "12"]], step = "1 mV"`)
+		s, _, err := OpenSupply(t.Context(), conn, d, SupplyOptions{Options: options("supply"), MaxVoltage: si.Volts(13), MaxCurrent: si.Amperes(1)})
+		must(t, err)
+		must(t, s.SetVoltage(t.Context(), si.Volts(5)))
+		wants(t, s.SetVoltage(t.Context(), si.Volts(9)), ErrRefused, "12\u00a0V only")
+		if f.Count("VOLT 12") > 0 || f.Count("VOLT 9") > 0 {
+			t.Errorf("sent %v", f.Received())
+		}
+	})
+}

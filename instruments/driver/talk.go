@@ -268,6 +268,12 @@ func (i *instrument) assign(ctx context.Context, name string, p dialect.Put) (l 
 
 // set sends a setting and fails when it reads back as another.
 func (i *instrument) set(ctx context.Context, name string, p dialect.Put, unit si.Unit) (float64, error) {
+	if l, ok := i.d.Commands[name]; ok { // another value than this is not even sent
+		if q, err := l.Settle(p); err == nil && !l.Agrees(p.Value, q.Value) {
+			return 0, &Error{Instrument: i.name, Command: p.Fill(l.Send), Err: ErrRefused,
+				Found: "that it can be set to " + si.Format(q.Value, unit) + " only", Try: "give a value that it has"}
+		}
+	}
 	l, found, err := i.assign(ctx, name, p)
 	if err != nil {
 		return found, err

@@ -22,6 +22,8 @@ type Maker struct {
 	Most  int           // a longer message is lost; 0: no bound
 	Deaf  func(message string) bool
 	Echo  bool // each message comes back before its reply
+	// Instead are replies, without their end, given in place of the rules'.
+	Instead map[string]string
 
 	mu      sync.Mutex // guards what the rules touch, and what follows
 	rules   []rule
@@ -125,6 +127,9 @@ func (m *Maker) hear(message string) string {
 	m.got = append(m.got, message)
 	if lost || m.Deaf != nil && m.Deaf(message) {
 		return ""
+	}
+	if reply, ok := m.Instead[message]; ok {
+		return reply + m.End
 	}
 	for _, r := range m.rules {
 		if parts := r.pattern.FindStringSubmatch(message); parts != nil {
