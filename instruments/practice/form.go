@@ -53,6 +53,9 @@ func (s *scope) registerForm() {
 	}
 }
 
+// channelWords are the names of the channels in short and long form.
+var channelWords = []string{"CHAN1", "CHAN2", "CHAN3", "CHAN4", "CHANNEL1", "CHANNEL2", "CHANNEL3", "CHANNEL4"}
+
 func numberOf(word string) int { return int(word[len(word)-1] - '0') }
 
 // numbers joins a list in the standard's form: the count as it is, the rest NR3.
@@ -104,7 +107,7 @@ func (s *scope) scale8(in *input) (perCode, zero float64) {
 // meanings of yorigin. The block head has 8 digits with one maker, 9 with the other.
 func (s *scope) registerTenFields() {
 	source := 1
-	s.Set("WAVeform:SOURce", func(c *scpi.Call) error { source = numberOf(c.Word(0)); return nil }, scpi.Choice{Words: []string{"CHANnel1", "CHANnel2", "CHANnel3", "CHANnel4"}})
+	s.Set("WAVeform:SOURce", func(c *scpi.Call) error { source = numberOf(c.Word(0)); return nil }, scpi.Choice{Words: channelWords})
 	s.Get("WAVeform:SOURce", func(*scpi.Call) (string, error) { return fmt.Sprintf("CHAN%d", source), nil })
 	s.Get("WAVeform:PREamble", func(*scpi.Call) (string, error) {
 		r, err := s.record()
