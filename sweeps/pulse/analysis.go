@@ -201,9 +201,21 @@ func (a *analysis) measureTwo(low, high float64) {
 
 // settled measures a state over its last three fifths, spikes left out.
 func (a *analysis) settled(occ []span, about, amplitude float64) state {
-	st := measureState(a.codes, occ, about, 0.35*amplitude, 0.4, a.h.step)
+	st := measureState(a.codes, thinned(occ, 12), about, 0.35*amplitude, 0.4, a.h.step)
 	reach := min(0.35*amplitude, max(4.5*math.Sqrt(st.spread), 1.5*a.q))
 	return measureState(a.codes, occ, st.level, reach, 0.4, a.h.step)
+}
+
+// thinned takes at most n of the occurrences, spread over all: enough to learn how wide a state is.
+func thinned(occ []span, n int) []span {
+	if len(occ) <= n {
+		return occ
+	}
+	out := make([]span, n)
+	for i := range out {
+		out[i] = occ[i*len(occ)/n]
+	}
+	return out
 }
 
 // pool shares the noise among states: the scope's is the same in all, and with

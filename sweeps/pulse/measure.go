@@ -16,6 +16,9 @@ func (a *analysis) measure() {
 	}
 	sag := a.sag(c)
 	a.judgePeriods(c)
+	if sag == 0 {
+		a.secondLevels()
+	}
 	a.timing(c)
 	average, rms := a.wholePeriodMeans(c)
 	a.add(average)
@@ -213,16 +216,17 @@ func (a *analysis) freewheelAndRest(c cycles) {
 
 // bears says which quantities a flag bears on; flags not listed bear on all.
 var bears = map[string][]string{
-	EdgeTooFast: {"overshoot", "undershoot"}, // what lies between samples is not seen
-	Clipped:     {"average_voltage", "high_level", "low_level", "amplitude", "rms", "ripple", "overshoot", "undershoot", "back_emf"},
-	Sagging:     {"high_level", "amplitude", "ripple"},
-	FewCodes:    {"average_voltage", "high_level", "low_level", "amplitude", "rms", "ripple", "overshoot", "undershoot", "back_emf"},
-	Scale:       {"average_voltage", "high_level", "low_level", "amplitude", "rms", "ripple", "back_emf"},
-	Unsettled:   {"duty", "t_high", "t_low", "high_level", "low_level", "amplitude", "ripple", "rise_time", "fall_time", "overshoot", "undershoot", "back_emf", "conduction"},
-	ThirdLevel:  {"duty", "t_high", "t_low", "high_level", "low_level", "amplitude", "ripple", "overshoot", "undershoot", "conduction"},
-	FastRinging: {"overshoot", "undershoot"},
-	TimeBase:    {"frequency", "period", "t_high", "t_low", "rise_time", "fall_time", "jitter"},
-	CoarseTime:  {"duty", "frequency", "period", "t_high", "t_low", "rise_time", "fall_time", "jitter", "conduction"},
+	EdgeTooFast:    {"overshoot", "undershoot"}, // what lies between samples is not seen
+	Clipped:        {"average_voltage", "high_level", "low_level", "amplitude", "rms", "ripple", "overshoot", "undershoot", "back_emf"},
+	Sagging:        {"high_level", "amplitude", "ripple"},
+	FewCodes:       {"average_voltage", "high_level", "low_level", "amplitude", "rms", "ripple", "overshoot", "undershoot", "back_emf"},
+	Scale:          {"average_voltage", "high_level", "low_level", "amplitude", "rms", "ripple", "back_emf"},
+	Unsettled:      {"duty", "t_high", "t_low", "high_level", "low_level", "amplitude", "ripple", "rise_time", "fall_time", "overshoot", "undershoot", "back_emf", "conduction"},
+	ThirdLevel:     {"duty", "t_high", "t_low", "high_level", "low_level", "amplitude", "ripple", "overshoot", "undershoot", "conduction"},
+	FastRinging:    {"overshoot", "undershoot"},
+	LevelsDisagree: {"duty", "t_high", "t_low", "high_level", "low_level", "amplitude", "ripple", "overshoot", "undershoot", "rise_time", "fall_time"},
+	TimeBase:       {"frequency", "period", "t_high", "t_low", "rise_time", "fall_time", "jitter"},
+	CoarseTime:     {"duty", "frequency", "period", "t_high", "t_low", "rise_time", "fall_time", "jitter", "conduction"},
 }
 
 // attach puts the record's flags on the quantities they bear on.

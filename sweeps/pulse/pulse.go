@@ -97,6 +97,8 @@ const (
 	FastRinging  = "fast ringing"
 	Unsettled    = "unsettled level"
 	ThirdLevel   = "third level"
+
+	LevelsDisagree = "levels disagree"
 )
 
 // Quantity is one pulse parameter: its estimate and budget, and the flags that bear on it.
