@@ -21,6 +21,9 @@
 //	[conditions]  interval, temperature, warm_up, speed, auto_zero: what the limits of error hold for
 //	[[accuracy]]  limits of error, one a quantity and range (Figure)
 //
+// In a section of which some keys are from memory, unchecked = ["key"] names
+// them beside the source of the rest.
+//
 // A line has send (a message without reply), ask (a query), or both: a setting
 // and how it is read back. {value} and {channel} stand for what is put in.
 // reply says what the answer is (Line).
@@ -66,6 +69,7 @@ type Dialect struct {
 	Close      []Line
 	Conditions *Conditions
 	Figures    []Figure
+	Memory     []string // keys of sections that are from memory, while the rest is from their source
 
 	Path string // of the user's own file; empty for one that comes with the program
 	Text string // the file as read

@@ -22,6 +22,7 @@ func TestMistakesOfTheLanguage(t *testing.T) {
 		key, says      string
 	}{
 		"LinkWithoutSource":      {gpd, "clear = \"none\"\nsource = \"S22\"", `clear = "none"`, "link.source", "missing"},
+		"UncheckedNothing":       {gpd, `unchecked = ["kinds", "line"]`, `unchecked = ["baud"]`, "link.unchecked", "baud"},
 		"UnknownKind":            {gpd, `kinds = ["serial"]`, `kinds = ["parallel"]`, "link.kinds", "hislip"},
 		"UnknownClear":           {gpd, `clear = "none"`, `clear = "reset"`, "link.clear", "break"},
 		"ClearBytesWithoutWord":  {gpd, `clear = "none"`, `clear = "bytes"`, "link.clear", "belong together"},
@@ -199,5 +200,14 @@ func TestLinkOfADialect(t *testing.T) {
 	l = mustFind(t, RoleMeter, "hp-34401a").Link
 	if l.Clear != "bytes" || string(l.ClearBytes) != "\x03" || l.Longest != 100 {
 		t.Errorf("34401A: %+v", l)
+	}
+}
+
+// Keys from memory in a section from a manual are counted apart.
+func TestUncheckedKeys(t *testing.T) {
+	d := mustFind(t, RoleSupply, "gwinstek-gpd")
+	all := d.Statements()
+	if !slices.Contains(all, Stated{"link", "S22"}) || !slices.Contains(all, Stated{"link.line", Unchecked}) {
+		t.Errorf("statements %v", all)
 	}
 }

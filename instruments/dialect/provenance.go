@@ -51,6 +51,9 @@ func (d *Dialect) Statements() (all []Stated) {
 	for _, s := range d.Speeds {
 		add("speed", s.Source)
 	}
+	for _, key := range d.Memory {
+		add(key, Unchecked)
+	}
 	for _, f := range d.Figures {
 		add(strings.TrimSpace("accuracy of "+f.Of), f.Source)
 	}

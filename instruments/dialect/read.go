@@ -77,7 +77,22 @@ func (r *reader) sources(t *userfile.Table) {
 }
 
 // source reads who says so, which every line must carry.
-func (r *reader) source(t *userfile.Table, v *string) { r.sourceOf(t, "source", v) }
+// Keys of a section that are from memory, while the rest is from its source, are
+// listed as unchecked.
+func (r *reader) source(t *userfile.Table, v *string) {
+	r.sourceOf(t, "source", v)
+	if !t.Has("unchecked") {
+		return
+	}
+	var keys []string
+	t.Strings("unchecked", &keys)
+	for _, key := range keys {
+		if !t.Has(key) {
+			t.Fail("unchecked", fmt.Sprintf("there is no key %q here", key))
+		}
+		r.d.Memory = append(r.d.Memory, t.Path()+"."+key)
+	}
+}
 
 func (r *reader) sourceOf(t *userfile.Table, key string, v *string) {
 	if !t.String(key, v) {

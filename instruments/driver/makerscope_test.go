@@ -233,7 +233,7 @@ func TestRecordAsText(t *testing.T) {
 		f := drivertest.RTB2004(true)
 		f.Signal = wave
 		d := own(t, dialect.RoleScope, "rs-rtb2000", `family = "code-linear"`, `family = "volts"`, `samples = "uint8"`, "samples = \"text\"\nhead = \"none\"\nlevels = 256",
-			"clip_low = 0\nclip_high = 255\n", "", `yincrement = {`, `# {`, `yorigin = {`, `# {`, "UINT,8", "ASC")
+			"clip_low = 0\nclip_high = 255\n", "", `unchecked = ["clip_low", "clip_high", "most_points", "time_base"]`, "", `yincrement = {`, `# {`, `yorigin = {`, `# {`, "UINT,8", "ASC")
 		s, _, err := OpenScope(t.Context(), over(t, &f.Maker, d), d, options("scope"))
 		must(t, err)
 		must(t, second(s.Configure(t.Context(), screens(1))))
