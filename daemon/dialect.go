@@ -72,7 +72,7 @@ func (c *cli) dialectList() *cobra.Command {
 
 // byRole sorts supplies first, then as they are used.
 func byRole(a, b *dialect.Dialect) int {
-	order := []dialect.Role{dialect.RoleSupply, dialect.RoleMeter, dialect.RoleScope, dialect.RolePot}
+	order := []dialect.Role{dialect.RoleSupply, dialect.RoleMeter, dialect.RoleScope, dialect.RolePot, dialect.RoleCutoff, dialect.RoleProbe}
 	at := func(d *dialect.Dialect) int {
 		if i := slices.Index(order, d.Head.Role); i >= 0 {
 			return i

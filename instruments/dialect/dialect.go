@@ -3,7 +3,7 @@
 //
 // A file has these sections; what stands in them is told where their Go types are.
 //
-//	[dialect]     name, role (supply, meter, scope, pot), about; accepts_any where an unknown identity will do;
+//	[dialect]     name, role (supply, meter, scope, pot, cutoff, thermometer), about; accepts_any where an unknown identity will do;
 //	              tried: on which device, by whom and when; left out: never
 //	[sources]     tag = document; every line carries source = a tag, "ours" (our own choice) or "unchecked" (from memory)
 //	[[identity]]  maker and model as patterns ("*" stands for anything, case does not matter), or text for replies with fewer than 4 fields

@@ -25,7 +25,7 @@ func TestTableOfTheReadme(t *testing.T) {
 	if !found || !closed {
 		t.Fatalf("%s has no place for the table between %q and %q", path, begin, end)
 	}
-	table := Table(all, RoleSupply, RoleMeter, RoleScope, RolePot)
+	table := Table(all, RoleSupply, RoleMeter, RoleScope, RolePot, RoleCutoff, RoleProbe)
 	if *update {
 		if err := os.WriteFile(path, []byte(head+begin+table+end+tail), 0o644); err != nil {
 			t.Fatal(err)
