@@ -220,6 +220,10 @@ func otherClient(t *testing.T) {
 		must(t, p.Supply.SetVoltage(t.Context(), si.Volts(8)))
 		p.rightOrRefused(t)
 	}
+	mine, err := link.Parse(p.Info[0].Address)
+	must(t, err)
+	_, err = link.Open(t.Context(), mine, link.Options{})
+	wants(t, err, link.ErrBusy, "on this computer")
 	serial := plugIn(t, false)
 	a, err := link.Parse("serial://" + filepath.Join(serial.names, "supply"))
 	must(t, err)

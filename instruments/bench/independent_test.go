@@ -2,9 +2,12 @@ package bench
 
 import (
 	"bufio"
+	"context"
 	"encoding/json"
 	"fmt"
+	"io"
 	"math"
+	"net"
 	"os/exec"
 	"testing"
 	"time"
@@ -138,7 +141,9 @@ func independentErrors(t *testing.T, supply instruments.Supply, port int) {
 	wants(t, supply.Protect(t.Context(), si.Volts(99)), driver.ErrRefused, `-222,"Data out of range"`)
 	a, err := link.Parse(fmt.Sprintf("tcp://127.0.0.1:%d", port))
 	must(t, err)
-	l, c, err := Connect(t.Context(), a, nil, Options{})
+	l, c, err := Connect(t.Context(), a, nil, Options{Dial: func(ctx context.Context, a link.Address) (io.ReadWriteCloser, error) {
+		return (&net.Dialer{}).DialContext(ctx, "tcp", a.Host) // beside the bench's own link, which keeps others of this computer away
+	}})
 	must(t, err)
 	defer l.Close()
 	for range 12 {

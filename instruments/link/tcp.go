@@ -2,6 +2,7 @@ package link
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"io"
 	"net"
@@ -21,7 +22,7 @@ func DialAddress(ctx context.Context, a Address) (io.ReadWriteCloser, error) {
 	case "serial":
 		return openSerial(a)
 	case "tcp":
-		return dialTCP(ctx, a)
+		return dialLocked(ctx, a)
 	case "usbtmc":
 		return openUSBTMC(a)
 	case "hislip":
@@ -29,6 +30,29 @@ func DialAddress(ctx context.Context, a Address) (io.ReadWriteCloser, error) {
 	}
 	return nil, fmt.Errorf("%q is %w; use %s", a.Scheme, ErrUnsupported, Accepted)
 }
+
+// locked is a connection that no other link of this computer has to the same place.
+type locked struct {
+	net.Conn
+	lock io.Closer
+}
+
+// dialLocked keeps other links of this computer away while a connection is
+// open, as flock does for a device: two talkers on a socket mix their replies.
+func dialLocked(ctx context.Context, a Address) (io.ReadWriteCloser, error) {
+	lock, err := lockAddress(a.Canonical())
+	if err != nil {
+		return nil, err
+	}
+	c, err := dialTCP(ctx, a)
+	if err != nil {
+		return nil, errors.Join(err, lock.Close())
+	}
+	return locked{c, lock}, nil
+}
+
+// Close ends the connection and then lets others have it.
+func (l locked) Close() error { return errors.Join(l.Conn.Close(), l.lock.Close()) }
 
 func dialTCP(ctx context.Context, a Address) (net.Conn, error) {
 	d := net.Dialer{Timeout: connectWithin, KeepAliveConfig: keepAlive}

@@ -115,3 +115,28 @@ func TestTCPNobodyThere(t *testing.T) {
 		t.Errorf("cancelled: %v", err)
 	}
 }
+
+// Two links of one computer never share a socket, however its address is spelt.
+func TestTCPIsHeldByOneLink(t *testing.T) {
+	a := listen(t, func(c net.Conn) { io.Copy(c, c) })
+	l, err := Open(t.Context(), a, Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	again, err := Parse("tcp://[::ffff:127.0.0.1]:" + a.Host[strings.LastIndex(a.Host, ":")+1:])
+	if err != nil {
+		t.Fatal(err)
+	}
+	if _, err := Open(t.Context(), again, Options{}); !errors.Is(err, ErrBusy) || !strings.Contains(err.Error(), "on this computer") {
+		t.Errorf("second link: %v, want ErrBusy", err)
+	}
+	if err := l.Reopen(t.Context()); err != nil {
+		t.Errorf("reopen: %v", err)
+	}
+	l.Close()
+	l, err = Open(t.Context(), again, Options{})
+	if err != nil {
+		t.Fatalf("after it was closed: %v", err)
+	}
+	l.Close()
+}
