@@ -87,10 +87,9 @@ func (b *Bench) drift(f Fault) (lift func()) {
 		"winding":   func(c *circuit.Board) *float64 { return &c.Load.Resistance },
 		"threshold": func(c *circuit.Board) *float64 { return &c.Timer.Threshold },
 	}[f.On]
-	step := 1 + f.Size*driftEvery.Hours()
-	return b.world.every(driftEvery.Seconds(), func(s *circuit.Sim) {
+	return b.world.every(driftEvery.Seconds(), func(s *circuit.Sim, span float64) {
 		// A board that has wandered so far that it can't be simulated stays where it is.
-		_ = s.Change(func(c *circuit.Board) { *place(c) *= step })
+		_ = s.Change(func(c *circuit.Board) { *place(c) *= math.Exp(f.Size * span / 3600) })
 	})
 }
 

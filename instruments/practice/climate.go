@@ -44,17 +44,17 @@ func (w *world) expose(c Climate) {
 		c.Tau = 600
 	}
 	x := &weather{Climate: c, share: 1}
-	w.do(x.settle)
+	w.do(func(s *circuit.Sim) { x.settle(s, 0) })
 	w.every(climateEvery, x.settle)
 }
 
-// settle takes the board to the temperature of the moment.
-func (x *weather) settle(s *circuit.Sim) {
+// settle takes the board to the temperature of the moment, a span (s) after the last look.
+func (x *weather) settle(s *circuit.Sim, span float64) {
 	goal := 0.0
 	if s.State().Supply > 2 {
 		goal = x.Rise
 	}
-	x.warm += (goal - x.warm) * -math.Expm1(-climateEvery/x.Tau)
+	x.warm += (goal - x.warm) * -math.Expm1(-span/x.Tau)
 	kelvin := x.Room + x.Swing*(1-math.Cos(2*math.Pi*s.Now()/x.Night))/2 + x.warm
 	if math.Abs(kelvin-x.at) < climateStep {
 		return

@@ -21,13 +21,21 @@ type world struct {
 	sim   *circuit.Sim
 	after func() // looks at what the advance brought: protections; may be nil
 	ticks []*tick
+	slow  []*slow
 }
 
 // tick is something due at an instant of bench time, whoever advances the board over it.
 type tick struct {
-	at    float64 // s; +Inf: not due
-	every float64 // s to the next one; 0: once
-	do    func(*circuit.Sim)
+	at float64 // s; +Inf: not due
+	do func(*circuit.Sim)
+}
+
+// slow is something that goes on by itself so slowly that it need not break a span that
+// nobody looks at: it is caught up with when somebody does.
+type slow struct {
+	every float64 // s
+	last  float64 // s, when it was caught up with
+	do    func(s *circuit.Sim, span float64)
 }
 
 // now is bench time in s.
@@ -49,12 +57,16 @@ func (w *world) advance(until float64) {
 			break
 		}
 		w.sim.Advance(t.at)
-		if t.at += t.every; t.every == 0 {
-			t.at = math.Inf(1)
-		}
+		t.at = math.Inf(1)
 		t.do(w.sim)
 	}
 	w.sim.Advance(until)
+	for _, x := range w.slow {
+		if span := w.sim.Now() - x.last; span >= x.every {
+			x.last = w.sim.Now()
+			x.do(w.sim, span)
+		}
+	}
 	if w.after != nil {
 		w.after()
 	}
@@ -79,14 +91,17 @@ func (w *world) timer(do func(*circuit.Sim)) *tick {
 	return t
 }
 
-// every does something each period (s) from now on, until it is stopped.
-func (w *world) every(period float64, do func(*circuit.Sim)) (stop func()) {
-	t := w.timer(do)
-	w.do(func(s *circuit.Sim) { t.every, t.at = period, s.Now()+period })
+// every catches up with something slow, each period (s) at most, until it is stopped.
+func (w *world) every(period float64, do func(s *circuit.Sim, span float64)) (stop func()) {
+	x := &slow{every: period, do: do}
+	w.do(func(s *circuit.Sim) {
+		x.last = s.Now()
+		w.slow = append(w.slow, x)
+	})
 	return func() {
 		w.mu.Lock()
 		defer w.mu.Unlock()
-		w.ticks = slices.DeleteFunc(w.ticks, func(o *tick) bool { return o == t })
+		w.slow = slices.DeleteFunc(w.slow, func(o *slow) bool { return o == x })
 	}
 }
 
