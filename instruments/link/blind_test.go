@@ -1,8 +1,10 @@
 package link
 
 import (
+	"context"
 	"errors"
 	"io"
+	"slices"
 	"testing"
 	"testing/synctest"
 	"time"
@@ -58,6 +60,63 @@ func TestBlindReopensAStuckStream(t *testing.T) {
 		}
 		l.Close()
 	})
+}
+
+// sluice is a stream that takes a line only when it is let, and keeps it.
+type sluice struct {
+	let  chan struct{}
+	sent chan string
+}
+
+func (g sluice) Read([]byte) (int, error) { return 0, nil }
+func (g sluice) Write(p []byte) (int, error) {
+	<-g.let
+	g.sent <- string(p)
+	return len(p), nil
+}
+func (g sluice) Close() error { return nil }
+
+// A sender that was cancelled before an output is switched off blindly stays silent,
+// whether it had not begun, or waited behind another line, or was taken already.
+func TestCancelledSenderNeverFollowsAnOff(t *testing.T) {
+	for range 50 { // a select takes either of two that are ready
+		synctest.Test(t, func(t *testing.T) {
+			opt := Options{}.withDefaults()
+			g := sluice{make(chan struct{}), make(chan string, 8)}
+			w := newWire(g, &opt)
+			life, give := context.WithCancel(t.Context())
+			go w.send(t.Context(), []byte("A\n"))
+			synctest.Wait() // the writer holds A
+			waiting := make(chan error, 1)
+			go func() { waiting <- w.send(life, []byte("ON\n")) }()
+			taken := parcel{ctx: life, data: []byte("FEED\n"), done: make(chan error, 1)}
+			go func() { w.out <- taken }() // as by a sender that won its select in the instant before
+			synctest.Wait()
+			give()
+			close(g.let)
+			if err := <-waiting; !errors.Is(err, context.Canceled) {
+				t.Errorf("the sender that waited: %v", err)
+			}
+			if err := <-taken.done; !errors.Is(err, errUnsent) || !errors.Is(err, context.Canceled) {
+				t.Errorf("the line that was taken: %v", err)
+			}
+			if err := w.send(life, []byte("ON AGAIN\n")); !errors.Is(err, errUnsent) {
+				t.Errorf("a sender whose context is over: %v", err)
+			}
+			if err := w.send(t.Context(), []byte("OFF\n")); err != nil {
+				t.Errorf("off: %v", err)
+			}
+			w.shut()
+			close(g.sent)
+			var all []string
+			for line := range g.sent {
+				all = append(all, line)
+			}
+			if !slices.Equal(all, []string{"A\n", "OFF\n"}) {
+				t.Errorf("sent %q", all)
+			}
+		})
+	}
 }
 
 // stuck is a stream whose write survives its Close, as on a serial line held

@@ -31,6 +31,7 @@ type wire struct {
 
 // parcel is one line to write and where to say how it went.
 type parcel struct {
+	ctx  context.Context // of the sender: where it has ended, nothing is written any more
 	data []byte
 	done chan error // room for one
 }
@@ -108,16 +109,25 @@ func (w *wire) write() {
 	for {
 		select {
 		case p := <-w.out:
-			w.trace(Out, p.data) // first, or a quick reply would stand before its question
-			n, err := w.rw.Write(p.data)
-			if err == nil && n < len(p.data) {
-				err = io.ErrShortWrite
-			}
-			p.done <- err
+			p.done <- w.put(p)
 		case <-w.stop:
 			return
 		}
 	}
+}
+
+// put writes one line whole, unless its sender has given up: what was cancelled
+// before an output was switched off blindly must not leave after it.
+func (w *wire) put(p parcel) error {
+	if p.ctx.Err() != nil {
+		return fmt.Errorf("%w: %w", errUnsent, ended(p.ctx))
+	}
+	w.trace(Out, p.data) // first, or a quick reply would stand before its question
+	n, err := w.rw.Write(p.data)
+	if err == nil && n < len(p.data) {
+		err = io.ErrShortWrite
+	}
+	return lost(err)
 }
 
 func (w *wire) trace(dir Direction, data []byte) {
@@ -130,16 +140,22 @@ func (w *wire) trace(dir Direction, data []byte) {
 // line may have left.
 var errStuck = errors.New("the line was not taken; flow control may be holding it back")
 
+// errUnsent marks a line of which nothing has left, because its sender gave up first.
+var errUnsent = errors.New("nothing was sent")
+
 // errShut marks a stream that was shut on this side, by Close or to be opened
 // anew.
 var errShut = errors.New("the stream was shut on this side")
 
 // send hands data to the writer and waits until it has left, at most the
-// write time-out.
+// write time-out. Where ctx has ended nothing leaves.
 func (w *wire) send(ctx context.Context, data []byte) error {
+	if ctx.Err() != nil { // a select between two that are ready takes either
+		return fmt.Errorf("%w: %w", errUnsent, ended(ctx))
+	}
 	late := time.NewTimer(w.opt.WriteTimeout)
 	defer late.Stop()
-	p := parcel{data: data, done: make(chan error, 1)}
+	p := parcel{ctx: ctx, data: data, done: make(chan error, 1)}
 	select {
 	case w.out <- p:
 	case <-w.stop:
@@ -151,7 +167,7 @@ func (w *wire) send(ctx context.Context, data []byte) error {
 	}
 	select {
 	case err := <-p.done:
-		return lost(err)
+		return err
 	case <-w.stop:
 		return fmt.Errorf("%w: %w", errShut, errStuck)
 	case <-ctx.Done():
