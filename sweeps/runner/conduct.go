@@ -107,6 +107,7 @@ func (r *Runner) prepare(ctx context.Context, at sweeps.Setpoint) error {
 		r.setEnergised(sweeps.EnergisedYes, nil)
 		return errors.New("prepare: the supply's output was on already, and not by this run; it is being switched off: find out who feeds the board before starting again")
 	}
+	r.limit = 0 // somebody may have been at the panel: told and read back anew
 	if err := r.o.Bench.Supply.Protect(ctx, si.Volts(w.Supply.OverVoltage)); err != nil {
 		return fmt.Errorf("prepare: over-voltage: %w", err)
 	}
@@ -136,6 +137,7 @@ func (r *Runner) energise(ctx context.Context, at sweeps.Setpoint) error {
 	if err := context.Cause(ctx); err != nil {
 		return err
 	}
+	r.setFeeding(true)
 	if err := r.feedCutoff(ctx); err != nil {
 		return fmt.Errorf("energise: cutoff: %w", err)
 	}

@@ -159,18 +159,23 @@ func TestResume(t *testing.T) {
 			t.Fatalf("%d points are kept", len(kept))
 		}
 		first, _ := n.store.Append(context.Background(), sweeps.Entry{Run: n.options.Run.ID, Kind: sweeps.KindState, State: sweeps.Preparing})
-		n.options.Done = kept
+		n.options.Done, n.options.Before = kept, time.Hour
 		n.safe(n.conduct(), sweeps.Done, "")
 		n.once()
+		if p := n.points()[len(kept)]; p.Elapsed < 3600 || p.Elapsed > 3600+120 {
+			t.Errorf("resumed an hour into the run, the next point is %.1f s into it", p.Elapsed)
+		}
 		if got := len(n.points()); got != len(n.options.Order) {
 			t.Errorf("%d points of %d", got, len(n.options.Order))
 		}
 		for _, e := range n.entries() {
+			if e.Seq > first.Seq && e.Elapsed < 3600 {
+				t.Errorf("%s %q is %.1f s into a run resumed after an hour", e.Kind, e.Words, e.Elapsed)
+			}
 			if e.Seq > first.Seq && e.Kind == sweeps.KindEnergising {
 				if from := runner.Place(kept[len(kept)-1].Setpoint); !strings.Contains(e.Words, from) {
 					t.Errorf("energised at %q, not where it was", e.Words)
 				}
-				break
 			}
 		}
 		if _, more := schedule.Next(n.options.Order, n.points()); more {

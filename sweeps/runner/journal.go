@@ -2,6 +2,7 @@ package runner
 
 import (
 	"context"
+	"errors"
 	"time"
 
 	"nightbench/sweeps"
@@ -10,16 +11,37 @@ import (
 // journalBudget bounds one write; a disk that takes longer is as good as failed.
 const journalBudget = 10 * time.Second
 
+// errJournalStuck is the failure of a journal that gave no answer in time.
+var errJournalStuck = errors.New("no answer within " + journalBudget.String() + ": is the disk failing, full or gone to sleep?")
+
 // append writes to the journal in a bounded context of its own: the run's may be
-// over. A panic in the journal is a journal that failed.
+// over. A panic in the journal is a journal that failed, and so is silence: a disk
+// that hangs does not heed the context, and its writer is left behind.
 func (r *Runner) append(e sweeps.Entry) (written sweeps.Entry, err error) {
 	ctx, cancel := context.WithTimeout(context.Background(), journalBudget)
 	defer cancel()
-	err = guard("journal", func() (err error) {
-		written, err = r.o.Journal.Append(ctx, r.stamped(e))
-		return err
-	})
-	return written, err
+	type outcome struct {
+		written sweeps.Entry
+		err     error
+	}
+	done := make(chan outcome, 1)
+	e = r.stamped(e)
+	go func() {
+		var o outcome
+		o.err = guard("journal", func() (err error) {
+			o.written, err = r.o.Journal.Append(ctx, e)
+			return err
+		})
+		done <- o
+	}()
+	patience := time.NewTimer(journalBudget + time.Second) // a journal that heeds its context answers by itself
+	defer patience.Stop()
+	select {
+	case o := <-done:
+		return o.written, o.err
+	case <-patience.C:
+		return e, errJournalStuck
+	}
 }
 
 // stamped gives an entry its run and instant, where it has none yet.

@@ -38,7 +38,7 @@ type Predictor interface {
 	Peak(supply float64) float64
 }
 
-// Options are what a run needs. All fields but Done and Changed are required.
+// Options are what a run needs. All fields but Done, Before and Changed are required.
 type Options struct {
 	Bench   instruments.Bench
 	Clock   instruments.Clock
@@ -50,6 +50,7 @@ type Options struct {
 	Run     sweeps.Run
 	Order   []sweeps.Setpoint
 	Done    []sweeps.Point       // measured before, on a resumed run
+	Before  time.Duration        // bench time since the run began, on a resumed run: as far as its journal tells
 	SafeBy  time.Time            // wall time the plan must be safe by; zero: none
 	Safe    instruments.SafeSpec // what safe means on this bench
 	Changed func()               // rung when the vitals changed in a way worth showing at once
@@ -60,7 +61,7 @@ type Options struct {
 type Runner struct {
 	o      Options
 	order  []sweeps.Setpoint
-	begun  time.Duration // bench time at which the run began
+	begun  time.Duration // bench time at which the run began, had it not been interrupted
 	limits *limits
 	strain strain
 	hold   chan struct{} // one slot: a person asked for a hold
@@ -80,6 +81,7 @@ type Runner struct {
 	state  sweeps.State
 	vitals sweeps.Vitals
 	drive  drive
+	fed    bool // the cutoff is to be kept closed
 }
 
 // New makes a run ready to be conducted.
@@ -114,7 +116,7 @@ func (r *Runner) Conduct(ctx, last context.Context) Outcome {
 	}
 	untie := context.AfterFunc(ctx, func() { r.cancel(context.Cause(ctx)) })
 	defer untie()
-	r.begun = r.o.Clock.Elapsed()
+	r.begun = r.o.Clock.Elapsed() - r.o.Before
 	g := crew{cancel: r.cancel}
 	g.Go("watch", func() { r.watch(r.life) })
 	g.Go("cutoff", func() { r.keepClosed(r.life) })

@@ -39,6 +39,7 @@ func (r *Runner) switchOff(ctx context.Context) (off sweeps.Off) {
 	<-r.offing
 	defer func() { r.offing <- struct{}{} }()
 	r.drives(drive{})
+	r.setFeeding(false)
 	ctx, cancel := context.WithTimeout(ctx, safeAttempt)
 	defer cancel()
 	err := guard("making safe", func() error {

@@ -47,9 +47,16 @@ func (r *Runner) watch(ctx context.Context) {
 	}
 }
 
+// heldOff tells whether the run is held, its output confirmed off.
+func (r *Runner) heldOff() bool {
+	r.mu.Lock()
+	defer r.mu.Unlock()
+	return r.state == sweeps.HeldState && r.vitals.Energised == sweeps.EnergisedNo
+}
+
 // look reads the supply's state and judges it. Whoever reads it reads it here.
 func (r *Runner) look(ctx context.Context) (instruments.SupplyState, error) {
-	before := r.driving()
+	before, held := r.driving(), r.heldOff()
 	s, err := r.o.Bench.Supply.State(ctx)
 	if err != nil {
 		return s, err
@@ -62,6 +69,10 @@ func (r *Runner) look(ctx context.Context) (instruments.SupplyState, error) {
 	r.check(sweeps.SupplyVoltage, s.Voltage, now)
 	raw := s.Voltage.Raw + "; " + s.Current.Raw
 	if r.energised() != sweeps.EnergisedYes {
+		if s.Output && held && r.heldOff() {
+			r.setEnergised(sweeps.EnergisedYes, nil)
+			r.cancel(&Trip{Reason: "the supply's output went on while the run was held: switched on at its panel, or by another program", Raw: raw})
+		}
 		return s, nil
 	}
 	if s.Tripped {
