@@ -116,6 +116,28 @@ func some(list []string) []string {
 	return list
 }
 
+// reached is how a family is reached when nobody changed its settings.
+func reached(d *dialect.Dialect) string {
+	words := strings.Join(d.Link.Kinds, ", ")
+	if d.Link.Line != "" {
+		words += "; serial " + d.Link.Line
+	}
+	if d.Link.Port != 0 {
+		words += fmt.Sprintf("; TCP port %d", d.Link.Port)
+	}
+	return words
+}
+
+// limits is what the dialect's limits of error hold for.
+func limits(c *dialect.Conditions) string {
+	words := []string{c.Interval, c.Temperature}
+	if c.WarmUp > 0 {
+		words = append(words, "warmed up "+c.WarmUp.String())
+	}
+	words = append(words, c.Speed)
+	return strings.Join(slices.DeleteFunc(words, func(w string) bool { return w == "" }), ", ")
+}
+
 // describe prints one dialect in words.
 func describe(cmd *cobra.Command, d *dialect.Dialect) {
 	say(cmd, "%s  %s: %s", d.Head.Name, d.Head.Role, d.Head.About)
@@ -124,8 +146,14 @@ func describe(cmd *cobra.Command, d *dialect.Dialect) {
 	}
 	checked, ours, unchecked := d.Count()
 	say(cmd, "    %d statements from a manual, %d our own, %d unchecked; %s", checked, ours, unchecked, cmp.Or(d.Head.Tried, "never tried on a device"))
+	if words := reached(d); words != "" {
+		say(cmd, "    reached by %s", words)
+	}
 	for _, m := range d.Manuals() {
 		say(cmd, "    manual %s", m)
+	}
+	if d.Conditions != nil {
+		say(cmd, "    limits of error: %s", limits(d.Conditions))
 	}
 	for _, l := range []struct {
 		title string

@@ -358,16 +358,15 @@ func TestIdentitiesFindTheirDialects(t *testing.T) {
 	}
 }
 
-// Each dialect that comes with the program was never tried on a device, and says what it is from memory.
+// Each dialect that comes with the program says where its lines come from, and the guards that are from memory.
 func TestDialectsAreHonest(t *testing.T) {
 	all, err := All()
 	if err != nil {
 		t.Fatal(err)
 	}
 	for _, d := range all {
-		checked, ours, unchecked := d.Count()
-		if checked+ours+unchecked != len(d.Statements()) || checked+ours == 0 && d.Head.Role != RoleSupply && unchecked < 10 {
-			t.Errorf("%s: %d + %d + %d of %d", d.Head.Name, checked, ours, unchecked, len(d.Statements()))
+		if checked, ours, unchecked := d.Count(); checked+ours+unchecked != len(d.Statements()) || len(d.Statements()) < 8 {
+			t.Errorf("%s: %d + %d + %d of %d statements", d.Head.Name, checked, ours, unchecked, len(d.Statements()))
 		}
 		for tag := range d.Sources {
 			if strings.Count(d.Text, tag) < 2 && tag != "S39" { // the pot's stands for the part behind the bridge

@@ -10,7 +10,7 @@ type spec struct {
 	required    bool
 	channel     bool   // {channel} may stand in it
 	share       bool   // its reply is a share: percent or ratio has to be said
-	alternative string // another line that does the same in its own way
+	alternative string // what may do the same in another way
 }
 
 // shape is which halves a line must have.
@@ -61,7 +61,7 @@ var lines = map[Role]map[string]spec{
 		"read":             {does: "take a new reading", needs: asks, alternative: "voltage_read"},
 	},
 	RoleScope: {
-		"format":              {does: "set the format of its records", needs: anyHalf},
+		"format":              {does: "set the format of its records", needs: anyHalf, alternative: "setup"},
 		"byte_order":          {does: "set the byte order of its records", needs: anyHalf, alternative: "format"},
 		"show":                {does: "switch a channel on", needs: anyHalf, channel: true},
 		"coupling":            {does: "couple a channel DC", needs: anyHalf, channel: true},
@@ -70,7 +70,7 @@ var lines = map[Role]map[string]spec{
 		"range_low":           {does: "set the bottom of the screen", needs: setting, unit: si.Volt, channel: true, alternative: "vertical_offset"},
 		"vertical_scale":      {does: "set volts a division", needs: setting, unit: si.Volt, channel: true, alternative: "range_high"},
 		"vertical_offset":     {does: "set a vertical offset", needs: setting, unit: si.Volt, channel: true, alternative: "range_low"},
-		"points":              {does: "set the count of samples", needs: setting, unit: si.One},
+		"points":              {does: "set the count of samples", needs: setting, unit: si.One, alternative: "waveform.points"},
 		"duration":            {does: "set the duration of a record", needs: setting, unit: si.Second, alternative: "time_scale"},
 		"time_scale":          {does: "set seconds a division", needs: setting, unit: si.Second, alternative: "duration"},
 		"trigger_source":      {does: "trigger on a channel", needs: anyHalf, required: true, channel: true},
@@ -81,7 +81,7 @@ var lines = map[Role]map[string]spec{
 		"force":               {does: "force a trigger", needs: sends, alternative: "trigger_none"},
 		"single":              {does: "be told to take one record", needs: anyHalf, alternative: "start"},
 		"start":               {does: "start a record", needs: sends, required: true},
-		"acquired":            {does: "say whether a record is complete", needs: asks},
+		"acquired":            {does: "say whether a record is complete", needs: asks, alternative: "completion"},
 		"stop":                {does: "stop", needs: sends, alternative: "abort"},
 		"abort":               {does: "give up a record", needs: sends, required: true},
 		"record_source":       {does: "choose the channel of a record", needs: anyHalf, channel: true, alternative: "record"},

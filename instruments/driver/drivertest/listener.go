@@ -1,7 +1,8 @@
-// Package drivertest holds small instruments that speak the standard dialects,
-// for tests of whatever talks to one. They are written from the promises in
-// the dialect files, apart from the drivers: an error in one shows in the
-// other. They know no physics; the practice bench does.
+// Package drivertest holds small instruments for tests of whatever talks to one.
+// Those that speak the standard dialects are written from the promises in the
+// dialect files; those of makers, each in a file named for its maker, from the
+// instrument's side of the manual. Both apart from the drivers: an error in one
+// shows in the other. They know no physics; the practice bench does.
 package drivertest
 
 import (

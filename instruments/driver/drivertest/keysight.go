@@ -2,7 +2,7 @@ package drivertest
 
 import (
 	"fmt"
-	"time"
+	"math"
 )
 
 // E3632A is the one-output supply of the Keysight E3632A User's Guide: it obeys
@@ -102,75 +102,89 @@ func E36312A() *MakerSupply {
 	return s
 }
 
-// DP832 is the Rigol DP800 of its programming guide: the channel is the first
-// parameter, answers are words. With ones it answers 1 and 0, as a DP2000.
-func DP832(ones bool) *MakerSupply {
-	s := newMakerSupply(3, "\n")
-	q := &queue{none: `0,"No error"`}
-	s.unknown = func(string) { q.push(`-113,"Undefined header; keyword cannot be found"`) }
-	onOff, yesNo := [2]string{"ON", "OFF"}, [2]string{"YES", "NO"}
-	if ones {
-		onOff, yesNo = [2]string{"1", "0"}, [2]string{"1", "0"}
+// HP34401A is the meter of the HP 34401A User's Guide, chapter 4: CONF presets
+// all but its range, readings come in long form with CR NL on RS-232, and
+// nothing is obeyed there before SYST:REM. Lan makes it a 34461A, which needs no SYST:REM.
+func HP34401A(lan bool) *MakerMeter {
+	m := newMakerMeter("\r\n", hpVolts, hpAmperes)
+	q, remote := &queue{none: `+0,"No error"`}, lan
+	m.says(`\*IDN\?`, "HEWLETT-PACKARD,34401A,0,10-5-2")
+	if lan {
+		m.End, m.rules = "\n", nil
+		m.says(`\*IDN\?`, "Agilent Technologies,34461A,MY53200001,A.01.08-02.22-00.08-00.35-01-01")
+	} else {
+		m.Most = 100
 	}
-	say := func(w [2]string, is bool) string { return word(w[0], w[1], is) }
-	s.says(`\*IDN\?`, "RIGOL TECHNOLOGIES,DP832,DP8A123456789,00.01.14")
-	s.says(`\*OPC\?`, "1")
-	s.on(`:SYST:ERR\?`, q.next)
-	s.on(`:SOUR([123]):VOLT `+num, func(p []string) string { s.at(p[1]).Volts = number(p[2]); return "" })
-	s.on(`:SOUR([123]):VOLT\?`, func(p []string) string { return fixed(3, s.at(p[1]).Volts) })
-	s.on(`:SOUR([123]):CURR `+num, func(p []string) string { s.at(p[1]).Limit = number(p[2]); return "" })
-	s.on(`:SOUR([123]):CURR\?`, func(p []string) string { return fixed(4, s.at(p[1]).Limit) })
-	s.on(`:OUTP CH([123]),(ON|OFF)`, func(p []string) string { s.at(p[1]).On = p[2] == "ON"; return "" })
-	s.on(`:OUTP\? CH([123])`, func(p []string) string { s.at(p[1]).look(); return say(onOff, s.at(p[1]).On) })
-	s.on(`:OUTP:OVP:VAL CH([123]),`+num, func(p []string) string { s.at(p[1]).Over = number(p[2]); return "" })
-	s.on(`:OUTP:OVP:VAL\? CH([123])`, func(p []string) string { return fixed(3, s.at(p[1]).Over) })
-	s.on(`:OUTP:OVP CH([123]),(ON|OFF)`, func(p []string) string { s.at(p[1]).Armed = p[2] == "ON"; return "" })
-	s.on(`:OUTP:OVP\? CH([123])`, func(p []string) string { return say(onOff, s.at(p[1]).Armed) })
-	s.on(`:OUTP:OVP:QUES\? CH([123])`, func(p []string) string { s.at(p[1]).look(); return say(yesNo, s.at(p[1]).TrippedOver) })
-	s.on(`:OUTP:O[VC]P:CLE CH([123])`, func(p []string) string { s.at(p[1]).clear(false); return "" })
-	s.on(`:OUTP:OCP:VAL CH([123]),`+num, func(p []string) string { s.at(p[1]).OverCurrent = number(p[2]); return "" })
-	s.on(`:OUTP:OCP:VAL\? CH([123])`, func(p []string) string { return fixed(4, s.at(p[1]).OverCurrent) })
-	s.on(`:OUTP:OCP CH([123]),(ON|OFF)`, func(p []string) string { s.at(p[1]).ArmedCurrent = p[2] == "ON"; return "" })
-	s.on(`:OUTP:OCP\? CH([123])`, func(p []string) string { return say(onOff, s.at(p[1]).ArmedCurrent) })
-	s.on(`:OUTP:OCP:QUES\? CH([123])`, func(p []string) string { s.at(p[1]).look(); return say(yesNo, s.at(p[1]).TrippedAmp) })
-	s.on(`:OUTP:MODE\? CH([123])`, func(p []string) string {
-		if o := s.at(p[1]); !o.On {
-			return "UR"
+	m.unknown = func(string) { q.push(`-113,"Undefined header"`) }
+	m.takes(`\*CLS`)
+	m.says(`\*OPC\?`, "1")
+	m.on(`SYST:ERR\?`, q.next)
+	m.on(`SYST:REM`, func([]string) string { remote = true; return "" })
+	m.on(`\*RST`, func([]string) string { m.Current, m.Speed = false, map[bool]string{false: "10", true: "10"}; return "" })
+	kind := func(p string) bool { return p == "CURR" }
+	m.on(`CONF:(VOLT|CURR):DC(?: `+num+`,DEF)?`, func(p []string) string {
+		if !remote {
+			q.push(`550,"Command not allowed in local"`)
+			return ""
 		}
-		return word("CC", "CV", s.at(p[1]).limiting())
+		m.Current = kind(p[1])
+		m.Speed[m.Current] = "10"
+		if p[2] != "" {
+			m.upward(m.Current, number(p[2]))
+		}
+		return ""
 	})
-	s.on(`:MEAS:VOLT\? CH([123])`, func(p []string) string { v, _ := s.at(p[1]).look(); return fixed(4, v) })
-	s.on(`:MEAS:CURR\? CH([123])`, func(p []string) string { _, i := s.at(p[1]).look(); return fixed(4, i) })
-	return s
+	m.on(`FUNC\?`, func([]string) string { return word(`"CURR"`, `"VOLT"`, m.Current) })
+	m.on(`(VOLT|CURR):DC:RANG\?`, func(p []string) string { return long(m.Range[kind(p[1])]) })
+	m.on(`(VOLT|CURR):DC:NPLC (0\.02|0\.2|1|10|100)`, func(p []string) string { m.Speed[kind(p[1])] = p[2]; return "" })
+	m.on(`(VOLT|CURR):DC:NPLC\?`, func(p []string) string { return long(number(m.Speed[kind(p[1])])) })
+	m.on(`READ\?`, func([]string) string { m.integrate(2); return m.reads() })
+	m.takes(`SYST:LOC`)
+	return m
 }
 
-// SPD3303X has the channel as a prefix and its state as hexadecimal text
-// (QuickStart p. 27; PSD7303 manual p. 39): bits 0 and 1 constant current, 4 and 5 on.
-func SPD3303X() *MakerSupply {
-	s := newMakerSupply(2, "\n")
-	s.Least = 10 * time.Millisecond
-	q := &queue{none: "0  No Error"}
-	s.unknown = func(string) { q.push("1  Unknown Command") }
-	s.says(`\*IDN\?`, "Siglent Technologies,SPD3303X,SPD00001130025,1.01.01.01.02,V3.0")
-	s.on(`SYST:ERR\?`, q.next)
-	s.on(`CH([12]):VOLT `+num, func(p []string) string { s.at(p[1]).Volts = number(p[2]); return "" })
-	s.on(`CH([12]):VOLT\?`, func(p []string) string { return fixed(3, s.at(p[1]).Volts) })
-	s.on(`CH([12]):CURR `+num, func(p []string) string { s.at(p[1]).Limit = number(p[2]); return "" })
-	s.on(`CH([12]):CURR\?`, func(p []string) string { return fixed(3, s.at(p[1]).Limit) })
-	s.on(`OUTP CH([12]),(ON|OFF)`, func(p []string) string { s.at(p[1]).On = p[2] == "ON"; return "" })
-	s.on(`SYST:STAT\?`, func([]string) string {
-		bits := 0
-		for n, o := range s.Out {
-			if o.limiting() {
-				bits |= 1 << n
-			}
-			if o.On {
-				bits |= 1 << (4 + n)
-			}
-		}
-		return fmt.Sprintf("0x%x", bits)
+// InfiniiVision is the scope of the 2000X programmer's guide: yorigin in volts
+// about reference 128, codes 0, 1 and 255 are flags, blocks with eight digits.
+func InfiniiVision() *MakerScope {
+	s := newMakerScope(10)
+	q := &queue{none: `+0,"No error"`}
+	s.unknown = func(m string) { q.push(`-113,"Undefined header"`) }
+	points := 1000
+	s.says(`\*IDN\?`, "AGILENT TECHNOLOGIES,DSO-X 2024A,MY12345678,02.41.2015102200")
+	s.takes(`\*CLS|\*RST|:CHAN[12]:DISP ON|:WAV:POIN:MODE NORM|:TRIG:EDGE:LEV .*`)
+	s.says(`\*OPC\?`, "1")
+	s.on(`:SYST:ERR\?`, q.next)
+	s.takes(`:WAV:UNS ON|:WAV:FORM BYTE|:TRIG:EDGE:SLOP POS|:CHAN[12]:COUP DC|:TRIG:EDGE:SOUR CHAN[12]`)
+	s.says(`:WAV:UNS\?`, "1")
+	s.says(`:WAV:FORM\?`, "BYTE")
+	s.says(`:TRIG:EDGE:SLOP\?`, "POS")
+	s.says(`:TRIG:EDGE:SOUR\?`, "CHAN1")
+	s.says(`:TRIG:EDGE:LEV\?`, "+4.50000E+00")
+	s.says(`:CHAN[12]:COUP\?`, "DC")
+	s.vertical(`:CHAN([12]):`, "SCAL", "OFFS", "PROB")
+	s.on(`:TIM:SCAL `+decimal, func(p []string) string { s.PerDivision = number(p[1]); return "" })
+	s.on(`:TIM:SCAL\?`, func([]string) string { return long(s.PerDivision) })
+	s.on(`:WAV:POIN (\d+)`, func(p []string) string { points = int(number(p[1])); return "" })
+	s.on(`:WAV:POIN\?`, func([]string) string { return fmt.Sprintf("%+d", points) })
+	s.on(`:TRIG:SWE (NORM|AUTO)`, func(p []string) string { s.auto = p[1] == "AUTO"; return "" })
+	s.on(`:TRIG:SWE\?`, func([]string) string { return word("AUTO", "NORM", s.auto) })
+	s.on(`:SING`, func([]string) string { s.run(); return "" })
+	s.on(`:STOP`, func([]string) string { return s.end() })
+	s.on(`:OPER:COND\?`, func([]string) string { return word("+8", "+0", s.running) }) // bit 3: run
+	s.on(`:WAV:SOUR CHAN([12])`, func(p []string) string { s.Source = int(number(p[1])); return "" })
+	s.on(`:WAV:SOUR\?`, func([]string) string { return fmt.Sprint("CHAN", s.Source) })
+	step := func() float64 { return s.Scale[s.Source] / 32 }
+	s.on(`:WAV:PRE\?`, func([]string) string {
+		return fmt.Sprintf("+0,+0,%+d,+1,%+.8E,%+.8E,+0,%+.8E,%+.8E,+128", points, 10*s.PerDivision/float64(points), -5*s.PerDivision, step(), s.Offset[s.Source])
 	})
-	s.on(`MEAS:VOLT\? CH([12])`, func(p []string) string { v, _ := s.at(p[1]).look(); return fixed(3, v) })
-	s.on(`MEAS:CURR\? CH([12])`, func(p []string) string { _, i := s.at(p[1]).look(); return fixed(3, i) })
+	s.on(`:WAV:DATA\?`, func([]string) string {
+		return block(8, s.codes(s.Source, points, func(v float64) float64 { return (v-s.Offset[s.Source])/step() + 128 }, 1, 255))
+	})
+	s.on(`:MEAS:(DUTY|FREQ|PER|VAV)\? CHAN[12]`, func(p []string) string {
+		if math.IsNaN(s.Duty) {
+			return "+9.9E+37"
+		}
+		return long(map[string]float64{"DUTY": 100 * s.Duty, "FREQ": 125, "PER": 8e-3, "VAV": 4.5}[p[1]]) // duty in percent
+	})
 	return s
 }
