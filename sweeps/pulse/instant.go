@@ -57,7 +57,7 @@ func (a *analysis) modelInstants(s *scanner, rising bool) instantModel {
 func (m *instantModel) sampled(cell, independent float64) {
 	tau := m.caught
 	if tau < 3 {
-		tau *= independent / (independent + 1)
+		tau *= independent / (independent + 0.5)
 	}
 	m.grid = sq(gridError(tau) * cell)
 }

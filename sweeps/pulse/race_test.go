@@ -3,4 +3,4 @@
 package pulse
 
 // share of the generated cases that run: the race detector makes them ten times slower.
-const share = 0.15
+const share = 0.08
