@@ -134,7 +134,7 @@ func simulatedStages(t *testing.T) (all []*accuracy) {
 		if c.fed {
 			name += ", output-fed"
 		}
-		high := &accuracy{name: name + ", t_high", bound: 0.005}
+		high, low := &accuracy{name: name + ", t_high", bound: 0.005}, &accuracy{name: name + ", t_low", bound: 0.005}
 		current, voltage, supply := &accuracy{name: name + ", load A", bound: 0.02}, &accuracy{name: name + ", load V", bound: 0.02}, &accuracy{name: name + ", supply A", bound: 0.02}
 		r := rand.New(rand.NewPCG(uint64(k), 7))
 		for n := range 8 {
@@ -148,17 +148,18 @@ func simulatedStages(t *testing.T) (all []*accuracy) {
 			got := balanced(t, m, s, v)
 			what := fmt.Sprintf("case %d at %g V, duty %.2f, load %+v", n, s.Supply, v[sweeps.Duty], m.nominal.load)
 			high.add(t, v[sweeps.THigh], got.high, what)
+			low.add(t, v[sweeps.TLow], got.low, what)
 			current.add(t, v[sweeps.MotorCurrent], got.current, what)
 			voltage.add(t, v[sweeps.AverageVoltage], got.voltage, what)
 			supply.add(t, v[sweeps.SupplyCurrent], got.supply, what)
 		}
-		all = append(all, high, current, voltage, supply)
+		all = append(all, high, low, current, voltage, supply)
 	}
 	return all
 }
 
 // means are a simulated board's, over its last whole period.
-type means struct{ current, voltage, supply, high float64 }
+type means struct{ current, voltage, supply, high, low float64 }
 
 // simulateStage runs a board with its shaft held at a speed, for six electrical time constants at least.
 func simulateStage(t *testing.T, m *Model, s Setting, v map[sweeps.Quantity]float64, speed float64) means {
@@ -174,8 +175,8 @@ func simulateStage(t *testing.T, m *Model, s Setting, v map[sweeps.Quantity]floa
 		t.Fatalf("only %d periods simulated, predicted %v\n%s", len(up), v, strings.Join(d.lines, "\n"))
 	}
 	from, to := up[len(up)-2], up[len(up)-1] // the last whole period
-	high, _ := tr.rhythm(t)
-	return means{tr.mean("i(vi)", from, to), tr.mean("v(vl)", from, to), -tr.mean("i(vs)", from, to), high}
+	high, low := tr.rhythm(t)
+	return means{tr.mean("i(vi)", from, to), tr.mean("v(vl)", from, to), -tr.mean("i(vs)", from, to), high, low}
 }
 
 // balanced is the simulated board at the speed where its mean torque equals
@@ -195,5 +196,5 @@ func balanced(t *testing.T, m *Model, s Setting, v map[sweeps.Quantity]float64) 
 	fb, b := excess(1.01 * w)
 	f := fa / (fa - fb) // share of the way from a to b
 	mix := func(x, y float64) float64 { return x + f*(y-x) }
-	return means{mix(a.current, b.current), mix(a.voltage, b.voltage), mix(a.supply, b.supply), mix(a.high, b.high)}
+	return means{mix(a.current, b.current), mix(a.voltage, b.voltage), mix(a.supply, b.supply), mix(a.high, b.high), mix(a.low, b.low)}
 }
