@@ -25,6 +25,7 @@ type bad struct {
 var badFiles = map[string]bad{
 	"accept-in-wrong-unit.plan.toml":          {31, "accept.duty", `"0.1 V"`, "duty is in percentage points (a ratio), the limit in V", ""},
 	"accuracy-without-unit.bench.toml":        {17, "meter[1].accuracy.reading", `"0.05"`, "has no unit; write it in % or ppm", `reading = "0.05 %"`},
+	"ambient-without-unit.plan.toml":          {5, "plan.ambient", `"22"`, `"22" has no unit; write a temperature like "27 degC"`, `ambient = "22 degC"`},
 	"axis-nobody-can-set.plan.toml":           {11, "axis[2].set", `"fan_speed"`, "nothing on a bench sets that; use supply_voltage, pot_resistance, pot_code or pot_position", ""},
 	"axis-not-yet.plan.toml":                  {11, "axis[2].set", `"timer_output"`, "not supported yet by this version; use supply_voltage, pot_resistance, pot_code or pot_position", ""},
 	"board-file-not-found.plan.toml":          {3, "plan.board", `"../../sweeps/example/pump-driver-c.toml"`, "no such file: ../sweeps/example/pump-driver-c.toml; the path counts from the plan's folder; in that folder are: bench.toml", ""},

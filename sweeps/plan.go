@@ -9,11 +9,12 @@ import (
 // Plan is a plan file: what to step through, what to measure, when to stop.
 type Plan struct {
 	Name      string
-	BoardPath string        // resolved against the plan's folder
-	AtMost    time.Duration // bench time; zero: no limit stated
-	SafeBy    string        // "07:00", local wall time; empty: none
-	Attended  string        // who attends and until when; empty: unattended
-	Axes      []Axis        // outermost first
+	BoardPath string          // resolved against the plan's folder
+	AtMost    time.Duration   // bench time; zero: no limit stated
+	SafeBy    string          // "07:00", local wall time; empty: none
+	Attended  string          // who attends and until when; empty: unattended
+	Ambient   *si.Temperature // about the board, what the run is predicted for; nil: not measured
+	Axes      []Axis          // outermost first
 	WarmUp    *WarmUp
 	Settle    Settle
 	Measure   Measure

@@ -95,11 +95,17 @@ func head(t *userfile.Table, p *Plan) {
 	o := t.Optional()
 	duration(o, "at_most", &p.AtMost, positive)
 	o.String("attended", &p.Attended)
+	p.Ambient = override[si.Temperature](o, "ambient", ambient)
 	if o.String("safe_by", &p.SafeBy) {
 		if _, err := time.Parse("15:04", p.SafeBy); err != nil {
 			t.Fail("safe_by", `give the time of day, like "07:00"`)
 		}
 	}
+}
+
+// ambient is what the parts of a board are commonly specified for, °C: the industrial range (common practice, no source).
+func ambient(celsius float64) (bool, string) {
+	return celsius >= -40 && celsius <= 85, `give the temperature about the board, from -40 to 85 degC, like "22 degC"`
 }
 
 // warmUp reads where and how long to dwell before the first point.

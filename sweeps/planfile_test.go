@@ -67,9 +67,9 @@ func TestReadPlanReadsEveryKey(t *testing.T) {
 
 func TestLaterLinesOfTheHead(t *testing.T) {
 	board, _ := filepath.Abs("example/pump-driver-b.toml")
-	text := "[plan]\nname = \"p\"\nboard = \"" + board + "\"\nsafe_by = \"07:00\"\nattended = \"M. Keller until 22:00\"\n" + strings.SplitAfterN(planText(t, oneSupply, ""), "\n", 4)[3]
+	text := "[plan]\nname = \"p\"\nboard = \"" + board + "\"\nsafe_by = \"07:00\"\nattended = \"M. Keller until 22:00\"\nambient = \"22 degC\"\n" + strings.SplitAfterN(planText(t, oneSupply, ""), "\n", 4)[3]
 	p, _, err := sweeps.ReadPlan(written(t, "plan.toml", text))
-	if err != nil || p.SafeBy != "07:00" || p.Attended != "M. Keller until 22:00" || p.AtMost != 0 || p.WarmUp != nil || p.Trips != nil || p.Accept != nil {
+	if err != nil || p.SafeBy != "07:00" || p.Attended != "M. Keller until 22:00" || p.AtMost != 0 || p.WarmUp != nil || p.Trips != nil || p.Accept != nil || p.Ambient == nil || p.Ambient.SI() != 22 {
 		t.Errorf("%+v, %v", p, err)
 	}
 }
