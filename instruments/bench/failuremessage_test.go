@@ -1,11 +1,7 @@
 package bench
 
 import (
-	"bufio"
-	"context"
 	"fmt"
-	"io"
-	"net"
 	"strings"
 	"sync"
 	"testing"
@@ -18,92 +14,6 @@ import (
 	"nightbench/instruments/scpi"
 	"nightbench/instruments/si"
 )
-
-// wants fails unless err is of a kind and its words hold all the parts.
-func wants(t *testing.T, err, kind error, parts ...string) {
-	t.Helper()
-	if !isKind(err, kind) {
-		t.Fatalf("got %v, want %q", err, kind)
-	}
-	for _, p := range parts {
-		if !strings.Contains(err.Error(), p) {
-			t.Errorf("%q does not say %q", err, p)
-		}
-	}
-}
-
-func must(t *testing.T, err error) {
-	t.Helper()
-	if err != nil {
-		t.Fatal(err)
-	}
-}
-
-var tenVolts = instruments.MeterSettings{Unit: si.Volt, Range: 10, Aperture: 0.02}
-
-// metering is a bench whose meter is set up and sees 4.35 V.
-func metering(t *testing.T) (*wired, *Opened) {
-	t.Helper()
-	w := newWired()
-	b := opened(t, w, file(t), 1)
-	_, err := b.Meters[0].Configure(t.Context(), tenVolts)
-	must(t, err)
-	w.meter.Input(4.35, 0)
-	return w, b
-}
-
-// reads holds the next reading to its value. When the settings are doubted it
-// may be refused, and is right after they were made anew.
-func reads(t *testing.T, m instruments.Meter, want float64) {
-	t.Helper()
-	s, err := m.Read(t.Context())
-	if isKind(err, driver.ErrSettingsLost) || isKind(err, driver.ErrNotConfigured) {
-		_, err = m.Configure(t.Context(), tenVolts)
-		must(t, err)
-		s, err = m.Read(t.Context())
-	}
-	if err != nil || s.Outcome != instruments.Measured || s.Value != want {
-		t.Errorf("the next reading: %+v, %v; want %g V", s, err, want)
-	}
-}
-
-// answering replaces the reply to one message, once.
-func answering(l *drivertest.Listener, message, reply string) {
-	var once sync.Once
-	l.Fate = func(m string) (f drivertest.Fate) {
-		if m == message {
-			once.Do(func() { f.Reply = reply })
-		}
-		return f
-	}
-}
-
-// peer is an instrument that answers line by line; an empty answer is none.
-func peer(answer func(line string) string) link.Dial {
-	return func(context.Context, link.Address) (io.ReadWriteCloser, error) {
-		near, far := net.Pipe()
-		go func() {
-			defer far.Close()
-			for in := bufio.NewScanner(far); in.Scan(); {
-				if _, err := io.WriteString(far, answer(in.Text())); err != nil {
-					return
-				}
-			}
-		}()
-		return near, nil
-	}
-}
-
-// talking is a connection to a peer.
-func talking(t *testing.T, dial link.Dial, o scpi.Options) *scpi.Conn {
-	t.Helper()
-	a, err := link.Parse("serial:///dev/ttyS77?baud=19200")
-	must(t, err)
-	l, err := link.Open(t.Context(), a, link.Options{Dial: dial, Timeout: time.Second})
-	must(t, err)
-	t.Cleanup(func() { l.Close() })
-	return scpi.New(l, o)
-}
 
 func swapped(t *testing.T) {
 	w := newWired()
@@ -338,6 +248,13 @@ func replyHeader(t *testing.T) {
 	answering(&w.supply.Listener, "OUTP?", "OUTP 1\n")
 	_, err = b.Supply.State(t.Context())
 	wants(t, err, scpi.ErrForm, "OUTP 1")
+
+	stated := own(t, "standard-meter", `read = { ask = "READ?",`, `read = { ask = "READ?", prefix = [":READ "],`)
+	m, listener := meterIn(t, stated)
+	for _, reply := range []string{":READ +4.35E+00\n", "+4.35E+00\n"} {
+		answering(listener, "READ?", reply)
+		reads(t, m, 4.35)
+	}
 }
 
 // slowParser drops what comes less than 100 ms after the message before (GW
@@ -361,5 +278,13 @@ func slowParser(t *testing.T) {
 	}
 	if dropped > 0 {
 		t.Errorf("%d messages were dropped", dropped)
+	}
+	m, listener := meterIn(t, own(t, "standard-meter", "[link]\n", "[link]\ngap = \"100 ms\"\nsource = \"ours\"\n"))
+	listener.Fate = func(string) drivertest.Fate {
+		defer func() { last = time.Now() }()
+		return drivertest.Fate{Drop: time.Since(last) < 100*time.Millisecond}
+	}
+	for range 3 {
+		reads(t, m, 4.35)
 	}
 }

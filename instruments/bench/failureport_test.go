@@ -130,12 +130,10 @@ func renumbered(t *testing.T) {
 	wants(t, err, link.ErrMissing, "its number changes when it is plugged in again: use the name that stays", "there are: "+p.names+"/ttyUSB1")
 
 	// Another instrument under the name that was: refused by who it is.
-	other, err := os.Readlink(filepath.Join(p.names, "pot"))
-	must(t, err)
 	must(t, p.practice.Inject(practice.Fault{Kind: practice.Unplugged, On: "average"}))
 	must(t, p.practice.Inject(practice.Fault{Kind: practice.Unplugged, On: "pot"}))
 	p.practice.Lift(practice.Unplugged, "pot")
-	other, err = os.Readlink(filepath.Join(p.names, "pot"))
+	other, err := os.Readlink(filepath.Join(p.names, "pot"))
 	must(t, err)
 	must(t, os.Symlink(other, name))
 	p.Pot.Code(t.Context()) // notices its own loss, and lets go of nothing new

@@ -9,7 +9,6 @@ import (
 	"time"
 
 	"nightbench/instruments"
-	"nightbench/instruments/dialect"
 	"nightbench/instruments/driver"
 	"nightbench/instruments/driver/drivertest"
 	"nightbench/instruments/link"
@@ -156,10 +155,7 @@ func slowReading(t *testing.T) {
 
 // polledCompletion: a scope whose *OPC? answers 0 while it is busy (Rigol's manuals say so).
 func polledCompletion(t *testing.T) {
-	standard, err := dialect.Find(dialect.RoleScope, "standard-scope")
-	must(t, err)
-	d, err := dialect.Parse("polled.toml", []byte(strings.Replace(standard.Text, `style = "held"`, "style = \"polled\"\nuntil = [\"1\"]", 1)))
-	must(t, err)
+	d := own(t, "standard-scope", `style = "held"`, "style = \"polled\"\nuntil = [\"1\"]")
 	scope := drivertest.NewScope()
 	scope.Signal = func(int, float64) float64 { return 0.4 }
 	a, err := link.Parse("tcp://192.0.2.12:5025")

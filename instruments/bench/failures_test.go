@@ -58,7 +58,7 @@ var failures = []failure{
 	{30, "messages merged or split by TCP", ownPeer, "ends and counts decide, not packets", splitPackets},
 	{31, "too slow for back-to-back commands", ownPeer, "the dialect's gap is kept", bubble(slowParser)},
 	{32, "decimal comma, or a unit in the reply", ownPeer, "refused, unless the dialect states the unit", bubble(commaAndUnit)},
-	{33, "reply header on", ownPeer, "refused", bubble(replyHeader)},
+	{33, "reply header on", ownPeer, "refused, or taken off where the dialect states it", bubble(replyHeader)},
 	{34, "probe factor differs", ownPeer, "set, read back, refused when it differs", bubble(probeFactor)},
 	{35, "program killed with the output on", ownPeer, "found on; off is the first word; confirmed by reading back", bubble(killed)},
 }
