@@ -837,6 +837,8 @@ export interface components {
             /** Format: int64 */
             pot_code: number;
             /** Format: double */
+            pot_position?: number;
+            /** Format: double */
             pot_resistance: number;
             recheck?: boolean;
             /** Format: double */
