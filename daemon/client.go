@@ -75,6 +75,14 @@ func (c *client) unreachable(err error) error {
 	return fmt.Errorf("the daemon in %s: %w", c.dir, err)
 }
 
+// refused is the daemon's no, with its status.
+type refused struct {
+	status int
+	words  string
+}
+
+func (r *refused) Error() string { return r.words }
+
 // refusal turns the daemon's problem into an error with the exit status that fits.
 func refusal(resp *http.Response) error {
 	var p problem
@@ -85,7 +93,7 @@ func refusal(resp *http.Response) error {
 	for _, e := range p.Errors {
 		words += "\n" + e.Message
 	}
-	err := errors.New(words)
+	err := error(&refused{resp.StatusCode, words})
 	if resp.StatusCode == http.StatusUnprocessableEntity || resp.StatusCode == http.StatusBadRequest {
 		return &exit{exitUsage, err}
 	}

@@ -163,7 +163,7 @@ func (c *cli) showRunning(cmd *cobra.Command, dir, plan string, file *bench.File
 	say(cmd, "\n%s\n", cautions)
 	result := make(chan error, 1)
 	err := app.Serve(ctx, c.last, app.Options{
-		State: dir, Bench: file, Listen: o.listen, Version: version(), Clock: clock, Log: logger(cmd, level), Practice: p,
+		State: dir, Bench: app.Given(file), Listen: o.listen, Version: version(), Clock: clock, Log: logger(cmd, level), Practice: p,
 		Ready: func(d *app.Daemon, address string) {
 			say(cmd, "page, with the operator's token: %s", address)
 			run, err := d.Start(ctx, web.StartRequest{Plan: plan, BoardSerial: "0017", Operator: "demo"})

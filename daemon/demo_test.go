@@ -15,6 +15,7 @@ import (
 )
 
 func TestDemoOnceRunsTheSampleToItsEnd(t *testing.T) {
+	t.Parallel()
 	state := filepath.Join(t.TempDir(), "state")
 	out, status := once(t, "demo", "--once", "--pace", "60", "--state", state)
 	if status != 0 {
@@ -78,6 +79,7 @@ func sane(t *testing.T, points []sweeps.Point) {
 // TestPracticeBenchByHand talks to every practice instrument with a program that
 // knows nothing of this one: the daemon's way to the bench is a real port.
 func TestPracticeBenchByHand(t *testing.T) {
+	t.Parallel()
 	if _, err := exec.LookPath("socat"); err != nil {
 		t.Fatal("socat is missing: 'make setup' installs it")
 	}
@@ -113,6 +115,15 @@ func TestPracticeBenchByHand(t *testing.T) {
 // byHand asks who is there, makes a mistake, and reads the error queue.
 func byHand(t *testing.T, name, address string) {
 	t.Helper()
+	lines := strings.Split(asked(t, address, "*IDN?\nNONSENSE:HEADER 1\nsyst:err?\n:SYSTem:ERRor:NEXT?\n"), "\n")
+	if len(lines) != 3 || !strings.HasPrefix(lines[0], "Nightbench,practice-") || !strings.HasPrefix(lines[1], "-113,") || !strings.HasPrefix(lines[2], "0,") {
+		t.Errorf("%s answers %q", name, lines)
+	}
+}
+
+// asked says messages to a practice instrument through socat and gives what comes back.
+func asked(t *testing.T, address, messages string) string {
+	t.Helper()
 	peer, ok := strings.CutPrefix(address, "serial://")
 	peer += ",raw,echo=0"
 	if !ok {
@@ -121,14 +132,10 @@ func byHand(t *testing.T, name, address string) {
 	ctx, cancel := context.WithTimeout(t.Context(), 20*time.Second)
 	defer cancel()
 	cmd := exec.CommandContext(ctx, "socat", "-t1", "-", peer)
-	cmd.Stdin = strings.NewReader("*IDN?\nNONSENSE:HEADER 1\nsyst:err?\n:SYSTem:ERRor:NEXT?\n")
+	cmd.Stdin = strings.NewReader(messages)
 	out, err := cmd.Output()
 	if err != nil {
-		t.Errorf("%s at %s: %v", name, address, err)
-		return
+		t.Errorf("socat to %s: %v", address, err)
 	}
-	lines := strings.Split(strings.TrimSpace(string(out)), "\n")
-	if len(lines) != 3 || !strings.HasPrefix(lines[0], "Nightbench,practice-") || !strings.HasPrefix(lines[1], "-113,") || !strings.HasPrefix(lines[2], "0,") {
-		t.Errorf("%s answers %q", name, lines)
-	}
+	return strings.TrimSpace(string(out))
 }

@@ -25,6 +25,7 @@ const kills = 20
 // daemon does is to make the bench safe; a person's resume goes on; in the end
 // every setpoint is there exactly once.
 func TestKilledAtRandomInstants(t *testing.T) {
+	t.Parallel()
 	dir := t.TempDir()
 	benchState, state := filepath.Join(dir, "bench"), filepath.Join(dir, "state")
 	practiceBench := start(t, "demo", "--bench-only", "--pace", "40", "--state", benchState)

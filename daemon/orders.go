@@ -2,6 +2,7 @@ package main
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"net/http"
 	"os"
@@ -33,19 +34,36 @@ func (c *cli) order(use, short string, do func(ctx context.Context, d *client, b
 }
 
 func (c *cli) stop() *cobra.Command {
-	return c.order("stop", "End the open run and make the bench safe", func(ctx context.Context, d *client, by string, _ []string) (string, error) {
-		var off sweeps.Off
-		if err := d.do(ctx, http.MethodPost, "/api/stop", web.StopRequest{By: by}, nil); err != nil {
+	return c.order("stop", "End the open run, if any, and make the bench safe", func(ctx context.Context, d *client, by string, _ []string) (string, error) {
+		said := "stopped; "
+		var no *refused
+		switch err := d.do(ctx, http.MethodPost, "/api/stop", web.StopRequest{By: by}, nil); {
+		case errors.As(err, &no) && no.status == http.StatusConflict:
+			said = "" // no run is open: the outputs go off all the same
+		case err != nil:
 			return "", err
 		}
-		if err := d.do(ctx, http.MethodPost, "/api/off", web.ByRequest{By: by}, &off); err != nil {
-			return "", err
-		}
-		if !off.Confirmed {
-			return "", fmt.Errorf("the run is stopped but off is not confirmed: %s", off.Words)
-		}
-		return "stopped; " + off.Words, nil
+		words, err := outputsOff(ctx, d, by)
+		return said + words, err
 	})
+}
+
+func (c *cli) off() *cobra.Command {
+	return c.order("off", "Outputs off, with or without a run", func(ctx context.Context, d *client, by string, _ []string) (string, error) {
+		return outputsOff(ctx, d, by)
+	})
+}
+
+// outputsOff asks for off and says what was read back.
+func outputsOff(ctx context.Context, d *client, by string) (string, error) {
+	var off sweeps.Off
+	if err := d.do(ctx, http.MethodPost, "/api/off", web.ByRequest{By: by}, &off); err != nil {
+		return "", err
+	}
+	if !off.Confirmed {
+		return "", fmt.Errorf("off is not confirmed: %s", off.Words)
+	}
+	return off.Words, nil
 }
 
 func (c *cli) hold() *cobra.Command {

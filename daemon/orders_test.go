@@ -13,6 +13,7 @@ import (
 // TestCommandsThroughTheDaemon does a night by hand: serve, start, hold, resume,
 // stop, resume to the end, with the exit statuses that go with it.
 func TestCommandsThroughTheDaemon(t *testing.T) {
+	t.Parallel()
 	dir := t.TempDir()
 	benchState, state := filepath.Join(dir, "bench"), filepath.Join(dir, "state")
 	start(t, "demo", "--bench-only", "--pace", "40", "--state", benchState).until("bench file:")

@@ -49,7 +49,7 @@ func newRoot(last context.Context, args []string) *cobra.Command {
 	root.PersistentFlags().StringVar(&c.dialectFolder, "dialects", "", "folder of your own dialects (default: nightbench/dialects in the XDG configuration folder)")
 	root.PersistentPreRunE = c.dialects
 	root.AddCommand(
-		c.demo(), c.serve(), c.newFiles(), c.rehearse(), c.start(), c.stop(), c.hold(), c.resume(), c.runs(), c.show(), c.predict(), c.pulse(), c.token(),
+		c.demo(), c.serve(), c.newFiles(), c.rehearse(), c.start(), c.stop(), c.off(), c.hold(), c.resume(), c.runs(), c.show(), c.predict(), c.pulse(), c.token(),
 		c.dialect(), c.ports(), c.ask(),
 	)
 	for _, sub := range root.Commands() {

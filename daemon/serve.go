@@ -21,20 +21,17 @@ func (c *cli) serve() *cobra.Command {
 	}
 	cmd.Flags().StringVar(&listen, "listen", "127.0.0.1:8017", "loopback address of the page; port 0 takes any free one")
 	cmd.RunE = func(cmd *cobra.Command, args []string) error {
-		file, err := bench.Read(args[0])
-		if err != nil {
-			return err
-		}
 		dir, err := c.dir()
 		if err != nil {
 			return err
 		}
 		say(cmd, "%s\n", cautions)
 		return app.Serve(cmd.Context(), c.last, app.Options{
-			State: dir, Bench: file, Listen: listen, Version: version(), Log: logger(cmd, slog.LevelInfo),
-			Ready: func(_ *app.Daemon, address string) {
-				say(cmd, "bench %q is held; state in %s", file.Wiring.Bench, dir)
-				sayPace(cmd, file.Pace)
+			State: dir, Listen: listen, Version: version(), Log: logger(cmd, slog.LevelInfo),
+			Bench: func() (*bench.File, error) { return bench.Read(args[0]) },
+			Ready: func(d *app.Daemon, address string) {
+				say(cmd, "bench %q is held; state in %s", d.Bench().Wiring.Bench, dir)
+				sayPace(cmd, d.Pace())
 				say(cmd, "page, with the operator's token: %s", address)
 			},
 		})

@@ -8,11 +8,9 @@ import (
 	"fmt"
 	"math/rand/v2"
 	"path/filepath"
-	"strings"
 	"time"
 
 	"nightbench/daemon/web"
-	"nightbench/instruments"
 	"nightbench/sweeps"
 	"nightbench/sweeps/runner"
 	"nightbench/sweeps/schedule"
@@ -39,65 +37,7 @@ func (d *Daemon) Start(ctx context.Context, q web.StartRequest) (sweeps.Run, err
 	}
 	run := job.Run
 	run.BoardSerial, run.Operator, run.Note, run.State, run.StartedAt = q.BoardSerial, q.Operator, q.Note, sweeps.Preparing, d.clock.Now()
-	return d.begin(ctx, job, func() (sweeps.Run, error) { return d.store.CreateRun(ctx, run) }, "Started"+by(q.Operator)+"."+attendance(plan))
-}
-
-// Resume goes on with an interrupted or stopped run, from the files as they were when it began.
-func (d *Daemon) Resume(ctx context.Context, id int64, operator string) (sweeps.Run, error) {
-	old, err := d.store.Run(ctx, id)
-	if err != nil {
-		return sweeps.Run{}, err
-	}
-	if !old.State.Ended() || old.State == sweeps.Done {
-		return sweeps.Run{}, conflict("run %d is %s: only an interrupted, stopped, tripped or failed run can be resumed", id, old.State)
-	}
-	plan, board, err := filesOf(old)
-	if err != nil {
-		return sweeps.Run{}, err
-	}
-	job, err := d.job(plan, board, uint64(old.Seed))
-	if err != nil {
-		return sweeps.Run{}, err
-	}
-	if job.Done, err = d.store.Points(ctx, id); err != nil {
-		return sweeps.Run{}, err
-	}
-	if _, left := schedule.Next(job.Order, job.Done); !left {
-		return sweeps.Run{}, conflict("run %d has all its %d points: nothing is left to measure", id, len(job.Done))
-	}
-	old.Planned = len(job.Order)
-	open := func() (sweeps.Run, error) {
-		_, err := d.store.Append(ctx, sweeps.Entry{Run: id, Kind: sweeps.KindState, State: sweeps.Preparing})
-		old.State = sweeps.Preparing
-		return old, err
-	}
-	return d.begin(ctx, job, open, fmt.Sprintf("Resumed%s at point %d of %d.", by(operator), len(job.Done)+1, len(job.Order))+attendance(plan))
-}
-
-// unattended refuses a start that nobody attends on a bench without a second way to
-// cut power: with the host dead or a cable out, a supply goes on driving. It refuses
-// one, too, whose supply is switched off, read back or protected by lines that nobody
-// checked against a manual: whether they work has to be seen first.
-func unattended(plan sweeps.Plan, w instruments.Wiring, cutoff instruments.Cutoff, unproven []string) error {
-	if w.Practice || plan.Attended != "" {
-		return nil
-	}
-	const attend = "so somebody has to attend: add to [plan] who and until when, like attended = \"AK until 18:00\""
-	if len(unproven) > 0 {
-		return fmt.Errorf("%s: the supply's dialect has unchecked lines for %s, and whether they work was never seen, %s", plan.Path, strings.Join(unproven, ", "), attend)
-	}
-	if cutoff == instruments.NoCutoff {
-		return fmt.Errorf("%s: this bench has no cutoff, a second way to cut power, %s", plan.Path, attend)
-	}
-	return nil
-}
-
-// attendance is who attends, for the log.
-func attendance(plan sweeps.Plan) string {
-	if plan.Attended == "" {
-		return ""
-	}
-	return " Attended: " + plan.Attended + "."
+	return d.begin(ctx, job, func() (sweeps.Run, error) { return d.store.CreateRun(ctx, run) }, "Started"+by(q.Operator)+"."+whoAttends(plan))
 }
 
 func by(operator string) string {
@@ -113,7 +53,8 @@ func (d *Daemon) job(plan sweeps.Plan, board sweeps.Board, seed uint64) (runner.
 	if err := sweeps.CheckPlan(plan, board, &w); err != nil {
 		return runner.Options{}, web.Fail(web.Invalid, err)
 	}
-	if err := unattended(plan, w, d.bench.Bench.Cutoff, d.bench.Unproven()); err != nil {
+	attended, err := attendance(plan, w, d.bench.Bench.Cutoff, d.bench.Unproven(), d.clock.Now())
+	if err != nil {
 		return runner.Options{}, web.Fail(web.Invalid, err)
 	}
 	p, err := newPredictor(board, w, seed)
@@ -131,10 +72,13 @@ func (d *Daemon) job(plan sweeps.Plan, board sweeps.Board, seed uint64) (runner.
 	if o.SafeBy, err = safeBy(plan.SafeBy, d.clock.Now()); err != nil {
 		return runner.Options{}, err
 	}
+	if !attended.IsZero() && (o.SafeBy.IsZero() || attended.Before(o.SafeBy)) {
+		o.SafeBy = attended
+	}
 	o.Run = sweeps.Run{
 		Plan: plan.Name, Board: board.Name, Revision: board.Revision, Bench: w.Bench, Planned: len(order), Pace: d.clock.Pace(), Seed: sweeps.Seed(seed),
 		Version: d.o.Version, Quantities: plan.Measure.Quantities, Instruments: d.identities(),
-		Files: []sweeps.File{file("bench", d.o.Bench.Path, d.o.Bench.Text), file("board", board.Path, board.Text), file("plan", plan.Path, plan.Text)},
+		Files: []sweeps.File{file("bench", d.file.Path, d.file.Text), file("board", board.Path, board.Text), file("plan", plan.Path, plan.Text)},
 	}
 	return o, nil
 }
@@ -171,7 +115,7 @@ func (d *Daemon) begin(ctx context.Context, o runner.Options, open func() (sweep
 	if err != nil {
 		return sweeps.Run{}, err
 	}
-	started := sweeps.Entry{Run: run.ID, Kind: sweeps.KindStarted, Words: words, Setpoints: o.Order, Curves: curves}
+	started := sweeps.Entry{Run: run.ID, Elapsed: o.Before.Seconds(), Kind: sweeps.KindStarted, Words: words, Setpoints: o.Order, Curves: curves}
 	if _, err := d.store.Append(ctx, started); err != nil {
 		return sweeps.Run{}, d.giveUp(run, err)
 	}
@@ -229,17 +173,6 @@ func (d *Daemon) giveUp(run sweeps.Run, why error) error {
 	defer cancel()
 	_, err := d.store.Append(ctx, sweeps.Entry{Run: run.ID, Kind: sweeps.KindEnded, State: sweeps.Failed, Words: why.Error()})
 	return errors.Join(why, err)
-}
-
-func (d *Daemon) conduct(ctx context.Context, a *active) {
-	defer close(a.done)
-	a.end = a.runner.Conduct(ctx, d.last)
-	a.cancel(nil)
-	v := a.runner.Vitals()
-	d.mu.Lock()
-	d.run = nil
-	d.idle = sweeps.Vitals{Energised: v.Energised, Since: v.Since, ConfirmedBy: v.ConfirmedBy, Voltage: v.Voltage, VoltageU: v.VoltageU, Current: v.Current, CurrentU: v.CurrentU, ReadAt: v.ReadAt}
-	d.mu.Unlock()
 }
 
 // safeBy is the next time the clock on the wall shows hh:mm; zero for none.

@@ -11,29 +11,32 @@ import (
 
 func TestNobodyAttendingNeedsACutoff(t *testing.T) {
 	real, practice := instruments.Wiring{}, instruments.Wiring{Practice: true}
-	if err := unattended(sweeps.Plan{Path: "night.toml"}, real, instruments.NoCutoff, nil); err == nil || !strings.Contains(err.Error(), `attended = "AK until 18:00"`) {
-		t.Errorf("an unattended start on a bench without a cutoff: %v", err)
-	}
-	for name, err := range map[string]error{
-		"attended":       unattended(sweeps.Plan{Attended: "AK until 18:00"}, real, instruments.NoCutoff, []string{"off"}),
-		"practice bench": unattended(sweeps.Plan{}, practice, instruments.NoCutoff, nil),
-		"with a cutoff":  unattended(sweeps.Plan{}, real, fedCutoff{}, nil),
+	noon := time.Date(2026, 12, 1, 12, 0, 0, 0, time.Local)
+	const says = `attended = "AK until 18:00"`
+	for name, c := range map[string]struct {
+		attended string
+		wiring   instruments.Wiring
+		cutoff   instruments.Cutoff
+		unproven []string
+		until    string // "15:04"; empty: nobody has to
+		refused  string // part of the refusal; empty: none
+	}{
+		"nobody":                {"", real, instruments.NoCutoff, nil, "", says},
+		"without an hour":       {"AK", real, instruments.NoCutoff, nil, "", says},
+		"the hour has passed":   {"AK until 11:00", real, instruments.NoCutoff, nil, "", "11:00 has passed"},
+		"no such hour":          {"AK until 25:00", real, instruments.NoCutoff, nil, "", "25:00"},
+		"attended":              {"AK until 18:00", real, instruments.NoCutoff, nil, "18:00", ""},
+		"practice bench":        {"", practice, instruments.NoCutoff, nil, "", ""},
+		"with a cutoff":         {"", real, fedCutoff{}, nil, "", ""},
+		"unproven lines":        {"", real, fedCutoff{}, []string{"output", "off"}, "", "unchecked lines for output, off"},
+		"unproven and somebody": {"AK until 13:30", real, fedCutoff{}, []string{"off"}, "13:30", ""},
 	} {
-		if err != nil {
-			t.Errorf("%s: %v", name, err)
-		}
-	}
-}
-
-// A supply whose output-off, read-back or protection is from memory is not left alone, whatever cutoff there is.
-func TestNobodyAttendingNeedsCheckedGuards(t *testing.T) {
-	err := unattended(sweeps.Plan{Path: "night.toml"}, instruments.Wiring{}, fedCutoff{}, []string{"output", "over_voltage_tripped"})
-	if err == nil {
-		t.Fatal("an unattended start with unchecked guards passed")
-	}
-	for _, want := range []string{"night.toml", "output, over_voltage_tripped", "unchecked", `attended = "AK until 18:00"`} {
-		if !strings.Contains(err.Error(), want) {
-			t.Errorf("%q does not say %q", err, want)
+		until, err := attendance(sweeps.Plan{Path: "night.toml", Attended: c.attended}, c.wiring, c.cutoff, c.unproven, noon)
+		switch {
+		case c.refused == "" && err != nil, c.refused != "" && (err == nil || !strings.Contains(err.Error(), c.refused)):
+			t.Errorf("%s: %v, want %q", name, err, c.refused)
+		case c.refused == "" && c.until == "" && !until.IsZero(), c.until != "" && until.Format("15:04") != c.until:
+			t.Errorf("%s: until %v, want %q", name, until, c.until)
 		}
 	}
 }

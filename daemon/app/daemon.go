@@ -28,9 +28,9 @@ var Cautions = []string{
 
 // Options are what a daemon is started with.
 type Options struct {
-	State   string      // folder
-	Bench   *bench.File // read and checked
-	Listen  string      // loopback address, port 0 for any free one
+	State   string                      // folder
+	Bench   func() (*bench.File, error) // reads and checks the bench file, once the bench is known to be safe
+	Listen  string                      // loopback address, port 0 for any free one
 	Version string
 	Clock   instruments.Clock // nil: one of the bench file's pace; a practice bench in this process shares its own
 	Log     *slog.Logger
@@ -56,17 +56,25 @@ type Daemon struct {
 	clock instruments.Clock
 	state *State
 	store *store.Store
+	file  *bench.File
 	bench *bench.Opened
 	mark  *mark
+	first *sweeps.Off // what making safe at the start found; nil: nothing was left energised
 
 	answers answers
 	begun   time.Time
 	last    context.Context         // ends when nobody will wait for off any longer
 	fail    context.CancelCauseFunc // ends the daemon: it can't go on
 
+	idling     context.Context // of what goes on while no run is open
+	stopIdling context.CancelFunc
+	behind     sync.WaitGroup
+
 	mu       sync.Mutex // guards what follows; never held over I/O
 	run      *active
 	idle     sweeps.Vitals // while no run is open
+	doubted  bool          // Outputs off was not confirmed: only another one clears that
+	trying   bool          // somebody goes on making safe
 	offs     int           // how often Outputs off was pressed
 	starting bool          // a run is being started
 	ending   bool
@@ -77,19 +85,12 @@ type Daemon struct {
 // to be confirmed.
 func Serve(ctx, last context.Context, o Options) (err error) {
 	d := &Daemon{o: o, clock: o.Clock, last: last}
-	if d.clock == nil {
-		d.clock = instruments.NewClock(o.Bench.Pace)
-	}
-	d.begun = d.clock.Now()
 	var u undo
 	defer func() {
 		ctx, cancel := context.WithTimeout(context.Background(), closeBudget)
 		defer cancel()
 		err = errors.Join(err, u.all(ctx))
 	}()
-	if err := nearby(o.Listen); err != nil {
-		return err
-	}
 	ctx, d.fail = context.WithCancelCause(ctx)
 	defer d.fail(nil)
 	if err := d.open(ctx, &u); err != nil {
@@ -117,8 +118,10 @@ func (d *Daemon) open(ctx context.Context, u *undo) (err error) {
 		return err
 	}
 	u.add("the state folder", func(context.Context) error { return d.state.Close() })
-	d.mark = d.newMark()
 	if err := d.safeFirst(ctx); err != nil {
+		return err
+	}
+	if err := d.readBench(); err != nil {
 		return err
 	}
 	if d.store, err = store.Open(ctx, Database(d.state.Dir()), d.clock); err != nil {
@@ -129,17 +132,16 @@ func (d *Daemon) open(ctx context.Context, u *undo) (err error) {
 		return err
 	}
 	opening := bench.Options{Clock: d.clock, Exchange: d.answers.hear, Log: func(words string) { d.o.Log.Info(words) }}
-	if d.bench, err = bench.Open(ctx, d.o.Bench, opening); err != nil {
+	if d.bench, err = bench.Open(ctx, d.file, opening); err != nil {
 		return err
 	}
 	u.add("the bench", d.bench.Close)
 	d.answers.expect(d.bench.Info)
 	d.mark.blank.Dialect = d.bench.Info[0].From
-	d.foundOn()
-	watching, stop := context.WithCancel(context.WithoutCancel(ctx))
-	idle := make(chan struct{})
-	go func() { defer close(idle); d.watchIdle(watching) }()
-	u.add("the idle watch", func(context.Context) error { stop(); <-idle; return nil })
+	d.foundOn(ctx)
+	d.idling, d.stopIdling = context.WithCancel(context.WithoutCancel(ctx))
+	d.behind.Go(func() { d.watchIdle(d.idling) })
+	u.add("what goes on while no run is open", func(context.Context) error { d.stopIdling(); d.behind.Wait(); return nil })
 	return d.openPage(ctx, u)
 }
 
@@ -186,13 +188,38 @@ func ignoreClosed(err error) error {
 	return err
 }
 
+// Given is a bench file that was read already.
+func Given(f *bench.File) func() (*bench.File, error) {
+	return func() (*bench.File, error) { return f, nil }
+}
+
+// Pace is how many times as fast as the wall bench time runs.
+func (d *Daemon) Pace() float64 { return d.clock.Pace() }
+
 // StateDir is the daemon's state folder.
 func (d *Daemon) StateDir() string { return d.state.Dir() }
 
+// readBench reads what the daemon is started with. It comes after the making safe: a
+// mistake in a file never leaves a bench energised.
+func (d *Daemon) readBench() (err error) {
+	if err := nearby(d.o.Listen); err != nil {
+		return err
+	}
+	if d.file, err = d.o.Bench(); err != nil {
+		return err
+	}
+	if d.clock == nil {
+		d.clock = instruments.NewClock(d.file.Pace)
+	}
+	d.begun = d.clock.Now()
+	d.mark = d.newMark()
+	return nil
+}
+
 // newMark makes the energised record's keeper: it names the supply, so that a later start can switch it off with nothing else at hand.
 func (d *Daemon) newMark() *mark {
-	f := d.o.Bench
+	f := d.file
 	return &mark{path: energisedPath(d.state.Dir()), clock: d.clock, blank: Energised{
-		Bench: f.Wiring.Bench, Address: f.Supply.Address.String(), Dialect: f.Supply.Dialect, Channel: f.Supply.Channel, Practice: f.Wiring.Practice, Below: Below,
+		Bench: f.Wiring.Bench, Address: f.Supply.Address.String(), Dialect: f.Supply.Dialect, Channel: f.Supply.Channel, Pace: f.Pace, Practice: f.Wiring.Practice, Below: Below,
 	}}
 }

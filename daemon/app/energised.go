@@ -20,6 +20,7 @@ type Energised struct {
 	Address  string    `json:"address"` // of the supply
 	Dialect  string    `json:"dialect"`
 	Channel  int       `json:"channel"`
+	Pace     float64   `json:"pace"`     // of a practice bench: how fast it bleeds down; 1 on a real one
 	Practice bool      `json:"practice"` // simulated: it may be gone with the process that simulated it
 	Below    float64   `json:"below"`    // V: read back below this the output counts as off
 }

@@ -3,6 +3,7 @@ package app
 import (
 	"context"
 	"fmt"
+	"strings"
 	"time"
 
 	"nightbench/instruments"
@@ -16,47 +17,53 @@ import (
 // goes on until off is confirmed, with the loudest notice it has.
 func (d *Daemon) safeFirst(ctx context.Context) error {
 	e, there, err := readEnergised(d.state.Dir())
-	if err != nil {
+	if err != nil || !there {
 		return err
 	}
-	if !there {
-		return nil
-	}
+	clock := instruments.NewClock(max(e.Pace, 1))
 	d.o.Log.Warn("an earlier daemon left the bench energised: making it safe first", "since", e.At, "run", e.Run, "supply", e.Address)
 	for {
-		off, err := d.offBy(ctx, e)
+		off, err := d.offBy(ctx, clock, e)
 		if err == nil && off.Confirmed {
-			d.idle = sweeps.Vitals{Energised: sweeps.EnergisedNo, Since: &off.At, ConfirmedBy: off.By}
+			d.first = &off
 			d.o.Log.Info("off, confirmed", "by", off.By)
-			return d.mark.Clear()
+			return removeDurably(energisedPath(d.state.Dir()))
 		}
 		d.o.Log.Error("OFF IS NOT CONFIRMED: switch the supply off at its front panel and look that it is off. When it is, and this supply is gone for good, delete the record", "supply", e.Address, "record", energisedPath(d.state.Dir()), "words", off.Words, "err", err)
-		if err := d.clock.Wait(ctx, time.Second); err != nil {
+		if err := clock.Wait(ctx, time.Second); err != nil {
 			return fmt.Errorf("off was never confirmed (%s): switch the supply off at its front panel; the next start tries again: %w", e.Address, err)
 		}
 	}
 }
 
 // offBy makes one attempt with nothing but what the energised record says.
-func (d *Daemon) offBy(ctx context.Context, e Energised) (sweeps.Off, error) {
+func (d *Daemon) offBy(ctx context.Context, clock instruments.Clock, e Energised) (sweeps.Off, error) {
 	ctx, cancel := context.WithTimeout(ctx, 15*time.Second)
 	defer cancel()
-	s, err := bench.OpenSupply(ctx, e.Address, e.Dialect, e.Channel, bench.Options{Clock: d.clock, Log: func(words string) { d.o.Log.Warn(words) }})
+	s, err := bench.OpenSupply(ctx, e.Address, e.Dialect, e.Channel, bench.Options{Clock: clock, Log: func(words string) { d.o.Log.Warn(words) }})
 	if err != nil {
 		return sweeps.Off{}, err
 	}
 	defer s.Close(context.WithoutCancel(ctx))
 	b := instruments.Bench{Supply: s.Supply}
-	return sweeps.OffFrom(instruments.MakeSafe(ctx, d.clock, b, instruments.SafeSpec{Below: si.Volts(e.Below)})), nil
+	return sweeps.OffFrom(instruments.MakeSafe(ctx, clock, b, instruments.SafeSpec{Below: si.Volts(e.Below)})), nil
 }
 
-// closeInterrupted ends a run that an earlier daemon left open. It can be resumed, by a person.
+// closeInterrupted ends a run that an earlier daemon left open, with what was done
+// about its output. It can be resumed, by a person.
 func (d *Daemon) closeInterrupted(ctx context.Context) error {
 	run, open, err := d.store.OpenRun(ctx)
 	if err != nil || !open {
 		return err
 	}
-	words := fmt.Sprintf("the daemon ended without making the bench safe; made safe at the next start. %d of %d points are kept; resume goes on", run.Measured, run.Planned)
+	did := "its output was not on"
+	if d.first != nil {
+		did = "its output was switched off at the next start, confirmed by " + strings.Join(d.first.By, " and ")
+		if _, err := d.store.Append(ctx, sweeps.Entry{Run: run.ID, Kind: sweeps.KindOff, Words: "Off at the next start. " + d.first.Words, Off: d.first}); err != nil {
+			return err
+		}
+	}
+	words := fmt.Sprintf("the daemon was ended in the middle of it; %s. %d of %d points are kept; resume goes on", did, run.Measured, run.Planned)
 	_, err = d.store.Append(ctx, sweeps.Entry{Run: run.ID, Kind: sweeps.KindEnded, State: sweeps.Interrupted, Words: words})
 	return err
 }

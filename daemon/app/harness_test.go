@@ -85,7 +85,7 @@ func conducted(t *testing.T, dir, plan string, file *bench.File, clock instrumen
 	state := filepath.Join(dir, "state")
 	ended := make(chan error, 1)
 	err := Serve(ctx, t.Context(), Options{
-		State: state, Bench: file, Listen: "127.0.0.1:0", Version: "test", Clock: clock, Log: slog.New(slog.DiscardHandler),
+		State: state, Bench: Given(file), Listen: "127.0.0.1:0", Version: "test", Clock: clock, Log: slog.New(slog.DiscardHandler),
 		Ready: func(d *Daemon, _ string) {
 			run, err := d.Start(ctx, web.StartRequest{Plan: plan, Operator: "test"})
 			if err != nil {

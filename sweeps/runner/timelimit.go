@@ -33,7 +33,7 @@ func (r *Runner) timeLimit() (left time.Duration, why string) {
 	}
 	if !r.o.SafeBy.IsZero() {
 		if d := r.o.SafeBy.Sub(r.o.Clock.Now()); left == 0 || d < left {
-			left, why = max(d, time.Millisecond), "the plan's limit, safe by "+p.SafeBy+", was reached"
+			left, why = max(d, time.Millisecond), "the time to be safe by, "+r.o.SafeBy.Local().Format("15:04")+", was reached"
 		}
 	}
 	return left, why
