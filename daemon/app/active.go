@@ -8,11 +8,9 @@ import (
 	"fmt"
 	"math/rand/v2"
 	"path/filepath"
-	"strings"
 	"time"
 
 	"nightbench/daemon/web"
-	"nightbench/instruments"
 	"nightbench/sweeps"
 	"nightbench/sweeps/runner"
 	"nightbench/sweeps/schedule"
@@ -39,33 +37,7 @@ func (d *Daemon) Start(ctx context.Context, q web.StartRequest) (sweeps.Run, err
 	}
 	run := job.Run
 	run.BoardSerial, run.Operator, run.Note, run.State, run.StartedAt = q.BoardSerial, q.Operator, q.Note, sweeps.Preparing, d.clock.Now()
-	return d.begin(ctx, job, func() (sweeps.Run, error) { return d.store.CreateRun(ctx, run) }, "Started"+by(q.Operator)+"."+attendance(plan))
-}
-
-// unattended refuses a start that nobody attends on a bench without a second way to
-// cut power: with the host dead or a cable out, a supply goes on driving. It refuses
-// one, too, whose supply is switched off, read back or protected by lines that nobody
-// checked against a manual: whether they work has to be seen first.
-func unattended(plan sweeps.Plan, w instruments.Wiring, cutoff instruments.Cutoff, unproven []string) error {
-	if w.Practice || plan.Attended != "" {
-		return nil
-	}
-	const attend = "so somebody has to attend: add to [plan] who and until when, like attended = \"AK until 18:00\""
-	if len(unproven) > 0 {
-		return fmt.Errorf("%s: the supply's dialect has unchecked lines for %s, and whether they work was never seen, %s", plan.Path, strings.Join(unproven, ", "), attend)
-	}
-	if cutoff == instruments.NoCutoff {
-		return fmt.Errorf("%s: this bench has no cutoff, a second way to cut power, %s", plan.Path, attend)
-	}
-	return nil
-}
-
-// attendance is who attends, for the log.
-func attendance(plan sweeps.Plan) string {
-	if plan.Attended == "" {
-		return ""
-	}
-	return " Attended: " + plan.Attended + "."
+	return d.begin(ctx, job, func() (sweeps.Run, error) { return d.store.CreateRun(ctx, run) }, "Started"+by(q.Operator)+"."+whoAttends(plan))
 }
 
 func by(operator string) string {
@@ -81,7 +53,8 @@ func (d *Daemon) job(plan sweeps.Plan, board sweeps.Board, seed uint64) (runner.
 	if err := sweeps.CheckPlan(plan, board, &w); err != nil {
 		return runner.Options{}, web.Fail(web.Invalid, err)
 	}
-	if err := unattended(plan, w, d.bench.Bench.Cutoff, d.bench.Unproven()); err != nil {
+	attended, err := attendance(plan, w, d.bench.Bench.Cutoff, d.bench.Unproven(), d.clock.Now())
+	if err != nil {
 		return runner.Options{}, web.Fail(web.Invalid, err)
 	}
 	p, err := newPredictor(board, w, seed)
@@ -99,10 +72,13 @@ func (d *Daemon) job(plan sweeps.Plan, board sweeps.Board, seed uint64) (runner.
 	if o.SafeBy, err = safeBy(plan.SafeBy, d.clock.Now()); err != nil {
 		return runner.Options{}, err
 	}
+	if !attended.IsZero() && (o.SafeBy.IsZero() || attended.Before(o.SafeBy)) {
+		o.SafeBy = attended
+	}
 	o.Run = sweeps.Run{
 		Plan: plan.Name, Board: board.Name, Revision: board.Revision, Bench: w.Bench, Planned: len(order), Pace: d.clock.Pace(), Seed: sweeps.Seed(seed),
 		Version: d.o.Version, Quantities: plan.Measure.Quantities, Instruments: d.identities(),
-		Files: []sweeps.File{file("bench", d.o.Bench.Path, d.o.Bench.Text), file("board", board.Path, board.Text), file("plan", plan.Path, plan.Text)},
+		Files: []sweeps.File{file("bench", d.file.Path, d.file.Text), file("board", board.Path, board.Text), file("plan", plan.Path, plan.Text)},
 	}
 	return o, nil
 }

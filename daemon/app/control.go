@@ -3,7 +3,6 @@ package app
 import (
 	"context"
 	"fmt"
-	"time"
 
 	"nightbench/daemon/web"
 	"nightbench/instruments"
@@ -75,6 +74,7 @@ func (d *Daemon) Continue(_ context.Context, by string) error {
 }
 
 // Off switches the outputs off, with or without a run, and says what is known then.
+// Where off is not confirmed at once it goes on trying behind the answer.
 func (d *Daemon) Off(ctx context.Context, by string) (sweeps.Off, error) {
 	if a := d.pressOff(); a != nil {
 		if err := a.runner.Command(runner.CmdOff, named(by)); err == nil {
@@ -84,9 +84,12 @@ func (d *Daemon) Off(ctx context.Context, by string) (sweeps.Off, error) {
 			return a.end.Off, nil
 		}
 	}
-	off := sweeps.OffFrom(instruments.MakeSafe(ctx, d.clock, d.bench.Bench, safe()))
-	d.know(off)
-	_, err := d.store.Append(context.WithoutCancel(ctx), sweeps.Entry{Kind: sweeps.KindOff, Words: "Outputs off, by " + named(by) + ". " + off.Words, Off: &off})
+	off := d.tryOff()
+	words := "Outputs off, by " + named(by) + ". " + off.Words
+	if !off.Confirmed {
+		d.keepTrying()
+	}
+	_, err := d.store.Append(context.WithoutCancel(ctx), sweeps.Entry{Kind: sweeps.KindOff, Words: words, Off: &off})
 	return off, err
 }
 
@@ -100,18 +103,6 @@ func (d *Daemon) pressOff() *active {
 
 // safe is what safe means on every bench.
 func safe() instruments.SafeSpec { return instruments.SafeSpec{Below: si.Volts(Below)} }
-
-// know keeps what is known of the output while no run is open.
-func (d *Daemon) know(off sweeps.Off) {
-	d.mu.Lock()
-	defer d.mu.Unlock()
-	at := off.At
-	runner.KnowOff(&d.idle, off)
-	d.idle.Energised, d.idle.Since, d.idle.ConfirmedBy = sweeps.EnergisedUnconfirmed, &at, nil
-	if off.Confirmed {
-		d.idle.Energised, d.idle.ConfirmedBy = sweeps.EnergisedNo, off.By
-	}
-}
 
 // end stops the open run, if any, and waits until the bench is safe. A daemon
 // that ended a run says so by its error.
@@ -163,51 +154,4 @@ func (d *Daemon) Bench() web.Bench {
 		b.Instruments = append(b.Instruments, web.Instrument{Name: i.Name, Role: i.Role, Address: i.Address, Identity: i.Identity, Dialect: i.Dialect})
 	}
 	return b
-}
-
-// foundOn keeps what the bench was found like: an output that was on already is said, and left as it is.
-func (d *Daemon) foundOn() {
-	now := d.clock.Now()
-	d.mu.Lock()
-	defer d.mu.Unlock()
-	switch {
-	case d.bench.FoundOn:
-		d.idle = sweeps.Vitals{Energised: sweeps.EnergisedYes, Since: &now}
-		d.o.Log.Warn("the supply's output was on already; no run starts before it is off: press Outputs off, or find out who feeds the board")
-	case d.idle.Energised == "":
-		d.idle = sweeps.Vitals{Energised: sweeps.EnergisedNo, Since: &now, ConfirmedBy: []string{"supply"}}
-	}
-}
-
-// idleEvery is how often the supply is looked at while no run is open, wall time.
-const idleEvery = 2 * time.Second
-
-// watchIdle looks at the supply while no run does.
-func (d *Daemon) watchIdle(ctx context.Context) {
-	for d.clock.Wait(ctx, idleEvery) == nil {
-		if d.active() != nil {
-			continue
-		}
-		s, err := d.bench.Bench.Supply.State(ctx)
-		if err != nil || d.active() != nil {
-			continue
-		}
-		d.sawIdle(s)
-	}
-}
-
-func (d *Daemon) sawIdle(s instruments.SupplyState) {
-	d.mu.Lock()
-	defer d.mu.Unlock()
-	now := d.clock.Now()
-	d.idle.ReadAt = &now
-	d.idle.Voltage, d.idle.VoltageU = runner.SampleValue(s.Voltage)
-	d.idle.Current, d.idle.CurrentU = runner.SampleValue(s.Current)
-	low := d.idle.Voltage != nil && *d.idle.Voltage < Below
-	switch {
-	case s.Output && d.idle.Energised != sweeps.EnergisedYes:
-		d.idle.Energised, d.idle.Since, d.idle.ConfirmedBy = sweeps.EnergisedYes, &now, nil
-	case !s.Output && low && d.idle.Energised != sweeps.EnergisedNo:
-		d.idle.Energised, d.idle.Since, d.idle.ConfirmedBy = sweeps.EnergisedNo, &now, []string{"supply"}
-	}
 }
