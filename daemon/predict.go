@@ -4,6 +4,7 @@ import (
 	"errors"
 
 	"nightbench/daemon/app"
+	"nightbench/instruments"
 	"nightbench/instruments/si"
 	"nightbench/sweeps"
 	"nightbench/sweeps/predict"
@@ -20,9 +21,9 @@ const (
 
 // predictOptions are the flags of predict.
 type predictOptions struct {
-	supply, pot, temperature, sweep string
-	draws                           int
-	sensitivities, stress           bool
+	supply, pot, temperature, sweep, bench string
+	draws                                  int
+	sensitivities, stress                  bool
 }
 
 func (c *cli) predict() *cobra.Command {
@@ -40,6 +41,7 @@ func (c *cli) predict() *cobra.Command {
 	f.BoolVar(&o.sensitivities, "sensitivities", false, "how much each part moves each quantity, in percent a percent")
 	f.BoolVar(&o.stress, "stress", false, "each part's load against its rating, running and with the rotor held")
 	f.StringVar(&o.sweep, "sweep", "", "a curve along the pot: pot_resistance=1k:100k:25:log (or lin; pot_position=0.05:0.95:19:lin)")
+	f.StringVar(&o.bench, "bench", "", "bench file whose pot stands in a wiper network (default: bench.toml beside the board)")
 	cmd.RunE = func(cmd *cobra.Command, args []string) error { return c.runPredict(cmd, args[0], o) }
 	return cmd
 }
@@ -56,7 +58,11 @@ func (c *cli) runPredict(cmd *cobra.Command, path string, o predictOptions) erro
 	if err != nil {
 		return err
 	}
-	m, err := predict.New(board, predict.Options{})
+	wiring, err := trackOf(board, o.bench)
+	if err != nil {
+		return err
+	}
+	m, err := predict.New(board, app.AloneOptions(board, wiring))
 	if err != nil {
 		return &exit{exitUsage, err}
 	}
@@ -81,6 +87,17 @@ func (c *cli) runPredict(cmd *cobra.Command, path string, o predictOptions) erro
 		return printCurve(cmd, board, all)
 	}
 	return printPrediction(cmd, board, all[0], o)
+}
+
+// trackOf reads the bench file where a board needs its pot's track; nil where it doesn't, or none is there.
+func trackOf(board sweeps.Board, path string) (*instruments.Wiring, error) {
+	switch {
+	case board.Timing.Track.Pot:
+		return wiringFor(board.Path, path)
+	case path != "":
+		return nil, usage(`predict: only a board with network = "wiper" and pot = "pot" needs the bench; leave --bench out`)
+	}
+	return nil, nil
 }
 
 // prediction is what predict prints: a result, and what was asked for besides.

@@ -77,7 +77,7 @@ func where(board sweeps.Board, at predict.Setting) string {
 	w := si.Format(at.Supply, si.Volt)
 	switch {
 	case board.Timing.Network == sweeps.Wiper:
-		w += fmt.Sprintf(", pot at %g", at.Pot)
+		w += ", pot at " + si.Percent(at.Pot)
 	case board.Timing.UsesPot():
 		w += ", pot " + si.Format(at.Pot, si.Ohm)
 	}

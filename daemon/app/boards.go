@@ -8,6 +8,8 @@ import (
 
 	"nightbench/daemon/store"
 	"nightbench/daemon/web"
+	"nightbench/instruments"
+	"nightbench/instruments/bench"
 	"nightbench/sweeps"
 	"nightbench/sweeps/predict"
 )
@@ -119,7 +121,7 @@ func (b *boards) leaflet(ctx context.Context, of web.Board) (*leaflet, error) {
 	if i < 0 {
 		return nil, fmt.Errorf("run %d: its board file is gone", run.ID)
 	}
-	l, err := newLeaflet(run.Files[i], order)
+	l, err := newLeaflet(run.Files[i], wiringOf(run), order)
 	if err != nil {
 		return nil, web.Fail(web.Invalid, fmt.Errorf("run %d's copy of its board file: %w", run.ID, err))
 	}
@@ -129,6 +131,19 @@ func (b *boards) leaflet(ctx context.Context, of web.Board) (*leaflet, error) {
 	l.run = run.ID
 	b.kept[of.Hash] = l
 	return l, nil
+}
+
+// wiringOf is a run's own copy of its bench file; nil where it kept none that can be read.
+func wiringOf(run sweeps.Run) *instruments.Wiring {
+	for _, f := range run.Files {
+		if f.Role != "bench" {
+			continue
+		}
+		if b, err := bench.Parse(f.Name, f.Text); err == nil {
+			return &b.Wiring
+		}
+	}
+	return nil
 }
 
 // leaflet is one board with what was computed of it so far.
@@ -146,12 +161,12 @@ type leaflet struct {
 // suppliesDrawn bounds how many curves are drawn: beyond, figures are full and computing is slow.
 const suppliesDrawn = 6
 
-func newLeaflet(file sweeps.File, order []sweeps.Setpoint) (*leaflet, error) {
+func newLeaflet(file sweeps.File, w *instruments.Wiring, order []sweeps.Setpoint) (*leaflet, error) {
 	board, err := sweeps.ParseBoard(file)
 	if err != nil {
 		return nil, err
 	}
-	m, err := predict.New(board, predict.Options{})
+	m, err := predict.New(board, AloneOptions(board, w))
 	if err != nil {
 		return nil, err
 	}

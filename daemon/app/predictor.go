@@ -29,7 +29,7 @@ func newPredictor(board sweeps.Board, w instruments.Wiring, seed uint64) (*predi
 	if w.Pot != nil {
 		o.PotTolerance, o.WiperResistance = w.Pot.Tolerance, w.Pot.Wiper
 		o.PotMaxCurrent, o.PotMaxVoltage = w.Pot.MaxCurrent, w.Pot.MaxTerminalVoltage
-		o.Track = Track(*w.Pot)
+		o.Track = track(*w.Pot)
 	}
 	for _, meter := range w.Meters {
 		if sweeps.Quantity(meter.Reads) == sweeps.AverageVoltage {
@@ -47,9 +47,18 @@ func newPredictor(board sweeps.Board, w instruments.Wiring, seed uint64) (*predi
 	return p, nil
 }
 
-// Track is the bench's pot end to end, within its tolerance.
-func Track(w instruments.PotWiring) si.TolResistance {
+// track is a pot end to end, within its tolerance.
+func track(w instruments.PotWiring) si.TolResistance {
 	return si.TolResistance{Nominal: si.Ohms(w.EndToEnd), Tolerance: w.Tolerance}
+}
+
+// AloneOptions are those of a board predicted by itself: a pot given in ohms is exact, of
+// the bench only the pot counts whose wiper stands in the timing network. w may be nil.
+func AloneOptions(board sweeps.Board, w *instruments.Wiring) predict.Options {
+	if w == nil || w.Pot == nil || !board.Timing.Track.Pot {
+		return predict.Options{}
+	}
+	return predict.Options{Track: track(*w.Pot), WiperResistance: w.Pot.Wiper}
 }
 
 // Burden is what the current meters put in series with the motor, Ω.
