@@ -67,7 +67,11 @@ func describe(d link.Device) string {
 	if d.USB != (link.USB{}) && d.ByID == "" && d.USB.Serial == "" {
 		words += ", which has no name that stays: its number may change when it is plugged in again"
 	}
-	return words + " (now " + d.Node + ")"
+	words += " (now " + d.Node + ")"
+	if d.Scheme == "usbtmc" {
+		words += "; this program's USB link was never tried on a device: watch it at first"
+	}
+	return words
 }
 
 // askWithin is allowed for one answer of a device nothing is known of.

@@ -55,7 +55,7 @@ func TestPluggedAndRules(t *testing.T) {
 		{"serial:///dev/ttyS0", "serial port of the computer (now /dev/ttyS0)", ""},
 		{"serial:///dev/serial/by-id/usb-Cableworks-if00", "Cableworks Serial cable (now /dev/ttyUSB0)",
 			`SUBSYSTEM=="tty", ATTRS{idVendor}=="0403", ATTRS{idProduct}=="6001", ATTRS{serial}=="A5 0/285", GROUP="dialout", MODE="0660", TAG+="uaccess", SYMLINK+="nightbench/0403-6001-A5_0_285"`},
-		{"usbtmc://0957-1796/MY1", "USB device 0957-1796/MY1 (now /dev/usbtmc0)",
+		{"usbtmc://0957-1796/MY1", "USB device 0957-1796/MY1 (now /dev/usbtmc0); this program's USB link was never tried on a device: watch it at first",
 			`SUBSYSTEM=="usbmisc", ATTRS{idVendor}=="0957", ATTRS{idProduct}=="1796", ATTRS{serial}=="MY1", GROUP="dialout", MODE="0660", TAG+="uaccess", SYMLINK+="nightbench/0957-1796-MY1"`},
 	} {
 		f := found[n]
