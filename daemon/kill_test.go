@@ -42,7 +42,7 @@ func TestKilledAtRandomInstants(t *testing.T) {
 	}
 	daemon := serve()
 	api(t, state, http.MethodPost, "/api/runs", web.StartRequest{Plan: plan}, nil)
-	killed := 0
+	killed, energised := 0, 0
 	for ; killed < kills; killed++ {
 		time.Sleep(time.Duration(r.IntN(1500)) * time.Millisecond)
 		if get[web.RunDetail](t, state, "/api/runs/1").Run.State.Ended() {
@@ -53,7 +53,9 @@ func TestKilledAtRandomInstants(t *testing.T) {
 		time.Sleep(50 * time.Millisecond) // what the dead daemon had sent is heard by now
 		heard := len(supplyLog(t, benchState))
 		daemon = serve()
-		safeFirst(t, supplyLog(t, benchState), heard)
+		if safeFirst(t, supplyLog(t, benchState), heard) {
+			energised++
+		}
 		if run := get[web.RunDetail](t, state, "/api/runs/1").Run; run.State != sweeps.Interrupted {
 			t.Fatalf("after kill %d the run is %s, want interrupted", killed+1, run.State)
 		}
@@ -61,6 +63,9 @@ func TestKilledAtRandomInstants(t *testing.T) {
 	}
 	if killed < kills {
 		t.Fatalf("the run was over after %d kills of %d: slow it down", killed, kills)
+	}
+	if t.Logf("%d of %d kills with the output on", energised, kills); energised <= kills/2 {
+		t.Errorf("the output was on at %d of %d kills only: kill later after the resume", energised, kills)
 	}
 	waitEnded(t, state)
 	complete(t, state)
@@ -71,8 +76,9 @@ func TestKilledAtRandomInstants(t *testing.T) {
 }
 
 // safeFirst looks at the supply's log since a kill: where the output was on, it
-// went off before anything but identification and the off itself was said.
-func safeFirst(t *testing.T, log []practice.LogLine, since int) {
+// went off before anything but identification and the off itself was said. It tells
+// whether it was on.
+func safeFirst(t *testing.T, log []practice.LogLine, since int) bool {
 	t.Helper()
 	on := false
 	for _, l := range log[:since] {
@@ -81,11 +87,11 @@ func safeFirst(t *testing.T, log []practice.LogLine, since int) {
 		}
 	}
 	if !on {
-		return
+		return false
 	}
 	for _, l := range log[since:] {
 		if l.Output != nil && !*l.Output {
-			return
+			return true
 		}
 		switch l.Heard {
 		case "", "*IDN?", "*OPC?", "OUTP OFF", "*CLS":
@@ -94,6 +100,7 @@ func safeFirst(t *testing.T, log []practice.LogLine, since int) {
 		}
 	}
 	t.Fatal("the output was on, and the new daemon never switched it off")
+	return true
 }
 
 func waitEnded(t *testing.T, state string) {

@@ -75,7 +75,7 @@ func (c *cli) hold() *cobra.Command {
 func (c *cli) resume() *cobra.Command {
 	var wait bool
 	cmd := c.order("resume [RUN]", "Go on with a held run, or with an interrupted or stopped one", nil)
-	cmd.Long = "Without RUN: a held run goes on; where none is open, the newest one that is not done is resumed.\nResuming energises the bench again: be there.\n\n" + cautions
+	cmd.Long = "Without RUN: a held run goes on; where none is open, the newest run is resumed unless it is done. An older one has to be named.\nResuming energises the bench again: be there.\n\n" + cautions
 	cmd.Args = cobra.MaximumNArgs(1)
 	cmd.Flags().BoolVar(&wait, "wait", false, "show progress and wait for the end; the exit status tells how it ended")
 	by := cmd.Flags().Lookup("by")
@@ -113,7 +113,8 @@ func (c *cli) resumeRun(ctx context.Context, d *client, by string, args []string
 	return run, d.do(ctx, http.MethodPost, fmt.Sprintf("/api/runs/%d/resume", run.ID), web.ResumeRequest{Operator: by}, &run)
 }
 
-// pick is the run named, or the newest that can go on.
+// pick is the run named, or the newest where it can go on. An older one is never
+// implied: resuming energises, and a run of some weeks ago has another board on the bench.
 func pick(runs []sweeps.Run, args []string) (sweeps.Run, error) {
 	if len(args) == 1 {
 		id, err := runID(args[0])
@@ -127,12 +128,25 @@ func pick(runs []sweeps.Run, args []string) (sweeps.Run, error) {
 		}
 		return sweeps.Run{}, fmt.Errorf("there is no run %d; 'nightbench runs' lists them", id)
 	}
-	for _, r := range runs {
-		if r.State == sweeps.HeldState || r.State.Ended() && r.State != sweeps.Done {
-			return r, nil
+	if len(runs) == 0 {
+		return sweeps.Run{}, fmt.Errorf("there is no run yet; 'nightbench start PLAN' starts one")
+	}
+	newest := runs[0]
+	if goesOn(newest) {
+		return newest, nil
+	}
+	for _, r := range runs[1:] {
+		if goesOn(r) {
+			return sweeps.Run{}, fmt.Errorf("the newest run, %d, is %s; an older one has to be named: 'nightbench resume %d' goes on with plan %q, %s, begun %s, %d of %d points",
+				newest.ID, newest.State, r.ID, r.Plan, r.State, r.StartedAt.Local().Format("2006-01-02 15:04"), r.Measured, r.Planned)
 		}
 	}
 	return sweeps.Run{}, fmt.Errorf("no run can be resumed: none is held, interrupted, stopped, tripped or failed")
+}
+
+// goesOn tells whether a run is held or ended before its plan was done.
+func goesOn(r sweeps.Run) bool {
+	return r.State == sweeps.HeldState || r.State.Ended() && r.State != sweeps.Done
 }
 
 func runID(text string) (int64, error) {

@@ -5,6 +5,7 @@ import (
 	"strings"
 	"syscall"
 	"testing"
+	"time"
 
 	"nightbench/daemon/web"
 	"nightbench/sweeps"
@@ -61,5 +62,33 @@ func TestCommandsThroughTheDaemon(t *testing.T) {
 	daemon.signal(syscall.SIGINT)
 	if status := daemon.end(); status != 0 {
 		t.Errorf("the daemon ended with status %d", status)
+	}
+}
+
+// Resuming energises: only the newest run may be meant without being named.
+func TestResumeNeverImpliesAnOlderRun(t *testing.T) {
+	weeksAgo := time.Date(2026, 11, 2, 21, 0, 0, 0, time.Local)
+	run := func(id int64, s sweeps.State) sweeps.Run {
+		return sweeps.Run{ID: id, State: s, Plan: "Night", StartedAt: weeksAgo, Measured: 12, Planned: 48}
+	}
+	for name, c := range map[string]struct {
+		runs    []sweeps.Run // newest first
+		args    []string
+		want    int64
+		refused string
+	}{
+		"newest stopped":       {runs: []sweeps.Run{run(3, sweeps.Stopped), run(2, sweeps.Tripped)}, want: 3},
+		"newest held":          {runs: []sweeps.Run{run(3, sweeps.HeldState)}, want: 3},
+		"newest done":          {runs: []sweeps.Run{run(3, sweeps.Done), run(2, sweeps.Interrupted)}, refused: "'nightbench resume 2' goes on with plan \"Night\", interrupted, begun 2026-11-02 21:00, 12 of 48 points"},
+		"newest running":       {runs: []sweeps.Run{run(3, sweeps.Running), run(2, sweeps.Stopped)}, refused: "the newest run, 3, is running"},
+		"all done":             {runs: []sweeps.Run{run(3, sweeps.Done)}, refused: "no run can be resumed"},
+		"none":                 {refused: "there is no run yet"},
+		"an older one, named":  {runs: []sweeps.Run{run(3, sweeps.Done), run(2, sweeps.Interrupted)}, args: []string{"2"}, want: 2},
+		"one that isn't there": {runs: []sweeps.Run{run(3, sweeps.Done)}, args: []string{"7"}, refused: "there is no run 7"},
+	} {
+		got, err := pick(c.runs, c.args)
+		if got.ID != c.want || (err == nil) != (c.refused == "") || err != nil && !strings.Contains(err.Error(), c.refused) {
+			t.Errorf("%s: run %d, %v; want %d, %q", name, got.ID, err, c.want, c.refused)
+		}
 	}
 }
