@@ -32,7 +32,7 @@ var edges = map[string][]string{
 	"instruments/practice":          {"instruments", "instruments/si", "instruments/scpi", "instruments/practice/circuit"},
 	"sweeps":                        {"instruments", "instruments/si", "instruments/userfile"},
 	"sweeps/example":                {},
-	"sweeps/predict":                {"instruments", "instruments/si", "sweeps", "sweeps/uncertainty", "sweeps/internal/numeric"},
+	"sweeps/predict":                {"instruments", "instruments/si", "instruments/userfile", "sweeps", "sweeps/uncertainty", "sweeps/internal/numeric"},
 	"sweeps/pulse":                  {"instruments", "instruments/si", "sweeps", "sweeps/uncertainty", "sweeps/internal/numeric"},
 	"sweeps/pulse/capture":          {"instruments/si", "sweeps/pulse"},
 	"sweeps/pulse/figure":           {"instruments/si", "sweeps/pulse"},

@@ -12,6 +12,7 @@ type Board struct {
 	Timing Timing
 	Driver Driver
 	Load   Load
+	Parts  []File // the user's own catalogue: the *.parts.toml beside the board file, verbatim, by name
 
 	Path string // file it was read from
 	Text string // verbatim
@@ -127,9 +128,11 @@ const (
 )
 
 // Load is what the board drives. With stage none it goes to ground or to the supply.
+// Of a catalogue motor, what the board file leaves out (zero here) is the part's.
 type Load struct {
 	Kind            LoadKind
-	ToSupply        bool // stage none: load.to = "supply"
+	Part            string // a catalogue motor; empty: all figures stand in the board file
+	ToSupply        bool   // stage none: load.to = "supply"
 	Resistance      si.TolResistance
 	Inductance      si.TolInductance
 	TorqueConstant  si.TolTorqueConstant
@@ -139,6 +142,8 @@ type Load struct {
 	QuadraticTorque si.TolQuadraticTorque
 	BrushDrop       si.TolVoltage
 	Inertia         si.TolInertia
+	MaxCurrent      *si.Current // rating, continuous; nil: the part's, if any
+	MaxPower        *si.Power   // rating, heat in the winding; nil: the part's, if any
 }
 
 // UsesPot tells whether one of the resistors is the bench's pot.

@@ -8,13 +8,20 @@ import (
 	"nightbench/instruments/userfile"
 )
 
-// ReadBoard reads a board file. Every mistake in it is reported, with its line.
+// ReadBoard reads a board file and, verbatim, the parts files beside it. Every
+// mistake in the board file is reported, with its line.
 func ReadBoard(path string) (Board, error) {
 	f, err := userfile.Read(path)
 	if err != nil {
 		return Board{}, err
 	}
-	return boardOf(f)
+	b, err := boardOf(f)
+	parts, partsErr := partsBeside(path)
+	if err := userfile.Join(err, partsErr); err != nil {
+		return Board{}, err
+	}
+	b.Parts = parts
+	return b, nil
 }
 
 func boardOf(f *userfile.File) (Board, error) {

@@ -55,11 +55,11 @@ func transistor(t *userfile.Table, v *Transistor, s Stage) {
 }
 
 // motorKeys are the keys of [load] that only a motor has.
-var motorKeys = []string{"inductance", "torque_constant", "static_torque", "coulomb_torque", "viscous_torque", "quadratic_torque", "brush_drop", "inertia"}
+var motorKeys = []string{"part", "inductance", "torque_constant", "static_torque", "coulomb_torque", "viscous_torque", "quadratic_torque", "brush_drop", "inertia"}
 
 // load reads what the board drives. Torques, brush drop and inertia that are
 // left out are zero, the static torque that of friction: an inertia of zero
-// means that none is known.
+// means that none is known. With a catalogue motor they are the part's.
 func load(t *userfile.Table, v *Load, s Stage) {
 	t.Known(motorKeys...)
 	kind := userfile.Word(t, "kind", &v.Kind, Motor, ResistorLoad)
@@ -73,28 +73,39 @@ func load(t *userfile.Table, v *Load, s Stage) {
 		t.Known("to")
 	}
 	v.ToSupply = to == "supply"
-	signed(t, "resistance", &v.Resistance, positive)
+	v.MaxCurrent = override[si.Current](t, "max_current", positive)
+	v.MaxPower = override[si.Power](t, "max_power", positive)
 	switch {
 	case kind && v.Kind == Motor:
 		motor(t, v)
 	case kind:
+		signed(t, "resistance", &v.Resistance, positive)
 		for _, key := range motorKeys {
 			t.Refuse(key, `a load of kind "resistor" has no use for it`)
 		}
+	default:
+		t.Known("resistance")
 	}
 }
 
 func motor(t *userfile.Table, v *Load) {
-	o := t.Optional()
+	o, may := t.Optional(), notNegative
+	if o.String("part", &v.Part) {
+		t, may = o, positive // zero is for what is the part's
+	}
+	signed(t, "resistance", &v.Resistance, positive)
 	signed(t, "inductance", &v.Inductance, positive)
 	signed(t, "torque_constant", &v.TorqueConstant, positive)
-	signed(o, "coulomb_torque", &v.CoulombTorque, notNegative)
-	signed(o, "viscous_torque", &v.ViscousTorque, notNegative)
-	signed(o, "quadratic_torque", &v.QuadraticTorque, notNegative)
-	signed(o, "brush_drop", &v.BrushDrop, notNegative)
+	signed(o, "coulomb_torque", &v.CoulombTorque, may)
+	signed(o, "viscous_torque", &v.ViscousTorque, may)
+	signed(o, "quadratic_torque", &v.QuadraticTorque, may)
+	signed(o, "brush_drop", &v.BrushDrop, may)
 	signed(o, "inertia", &v.Inertia, positive)
-	if !signed(o, "static_torque", &v.StaticTorque, notNegative) {
+	if !signed(o, "static_torque", &v.StaticTorque, may) && v.Part == "" {
 		v.StaticTorque = v.CoulombTorque
+	}
+	if v.Part != "" && !t.Has("static_torque") {
+		return
 	}
 	if v.StaticTorque.SI() < v.CoulombTorque.SI() {
 		t.Fail("static_torque", "can't be below the coulomb torque, "+v.CoulombTorque.String()+": what turns a standing motor keeps it turning")

@@ -53,7 +53,7 @@ type Run struct {
 	Seed        Seed       `json:"seed"`
 	Version     string     `json:"version"` // of the program
 	Quantities  []Quantity `json:"quantities"`
-	Files       []File     `json:"files,omitempty"` // bench, board and plan, verbatim
+	Files       []File     `json:"files,omitempty"` // bench, board, plan and the board's parts files, verbatim
 	Instruments []string   `json:"instruments,omitempty"`
 }
 
@@ -72,7 +72,7 @@ func (s *Seed) UnmarshalText(b []byte) error {
 
 // File is an input file as it was when the run began.
 type File struct {
-	Role   string `json:"role"` // "bench", "board", "plan"
+	Role   string `json:"role"` // "bench", "board", "plan", "parts"
 	Name   string `json:"name"`
 	SHA256 string `json:"sha256"`
 	Text   string `json:"text"`

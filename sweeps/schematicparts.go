@@ -144,6 +144,9 @@ func (d *draft) load() {
 	l := &d.board.Load
 	high, low := d.loadBetween()
 	p := d.valued("resistance", string(l.Kind), "load", l.Resistance, si.Ohm)
+	if l.Part != "" && l.Resistance.SI() == 0 {
+		p.Value, p.Written = l.Part, d.written("load", "part")
+	}
 	p.Name = "load"
 	d.put(p, high, low)
 }

@@ -3,6 +3,7 @@ package app
 import (
 	"fmt"
 	"math/rand/v2"
+	"strings"
 
 	"nightbench/instruments"
 	"nightbench/instruments/practice/circuit"
@@ -28,7 +29,7 @@ type specimen struct {
 // newSpecimen draws a specimen for a bench's pot; nil: the bench has none. A seed of 0
 // draws none: every part at its nominal value.
 func newSpecimen(board sweeps.Board, pot *instruments.PotWiring, seed uint64) (*specimen, error) {
-	parts, err := predict.ReadCatalogue(nil)
+	parts, err := predict.ReadCatalogue(board.Parts)
 	if err != nil {
 		return nil, err
 	}
@@ -91,7 +92,7 @@ func (s *specimen) circuit(burden float64) (circuit.Board, error) {
 func (s *specimen) timer() (circuit.Timer, error) {
 	var part predict.TimerPart
 	for _, t := range s.parts.Timers {
-		if t.Name == s.board.Timer.Part {
+		if strings.EqualFold(t.Name, s.board.Timer.Part) {
 			part = t
 		}
 	}
@@ -206,7 +207,7 @@ func (s *specimen) diode(name string, d sweeps.Diode) *circuit.Diode {
 		part = f
 	}
 	for _, p := range s.parts.Diodes {
-		if p.Name == part {
+		if strings.EqualFold(p.Name, part) {
 			out.Eg, out.Xti = p.Eg, p.Xti
 		}
 	}
@@ -225,7 +226,7 @@ func (s *specimen) driver() (circuit.Driver, error) {
 	}
 	part := predict.TransistorPart{Rds: [][2]float64{{4.5, d.Part.RdsOn}}, HFEMin: d.Part.HFEMin}
 	for _, p := range s.parts.Transistors {
-		if p.Name == d.Part.Name {
+		if strings.EqualFold(p.Name, d.Part.Name) {
 			part = p
 		}
 	}

@@ -17,6 +17,7 @@ type (
 	Inductance      = Quantity[henry]
 	Time            = Quantity[second]
 	Frequency       = Quantity[hertz]
+	Power           = Quantity[watt]
 	Ratio           = Quantity[one]
 	Temperature     = Quantity[celsius]
 	TorqueConstant  = Quantity[voltSecPerRad]
@@ -46,6 +47,9 @@ func Henries(x float64) Inductance { return of[henry](x) }
 
 // Seconds makes a time from its value in s.
 func Seconds(x float64) Time { return of[second](x) }
+
+// Watts makes a power from its value in W.
+func Watts(x float64) Power { return of[watt](x) }
 
 // Ratios makes a plain ratio from its value in 1.
 func Ratios(x float64) Ratio { return of[one](x) }

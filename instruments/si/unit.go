@@ -55,6 +55,7 @@ type (
 	henry          struct{}
 	second         struct{}
 	hertz          struct{}
+	watt           struct{}
 	one            struct{}
 	celsius        struct{}
 	voltSecPerRad  struct{}
@@ -84,6 +85,9 @@ func (second) spec() spec {
 }
 func (hertz) spec() spec {
 	return spec{Hertz, "a frequency", "1.2 kHz", false, []spelling{{"Hz", 1, true}}}
+}
+func (watt) spec() spec {
+	return spec{Watt, "a power", "2 W", false, []spelling{{"W", 1, true}}}
 }
 func (one) spec() spec {
 	return spec{One, "a ratio", "25 %", true, []spelling{{"%", 1e-2, false}, {"ppm", 1e-6, false}}}

@@ -175,7 +175,7 @@ func (t *Table) replaced(key, old, new string) string {
 
 // units are tried behind a bare number, the commonest of each kind of quantity
 // first; % stands in front for limits, which take several.
-var units = []string{" %", " V", " A", " s", " Hz", " degC", " mN m", " mV s/rad", " uN m s", " nN m s2", " g cm2"}
+var units = []string{" %", " V", " A", " s", " Hz", " W", " degC", " mN m", " mV s/rad", " uN m s", " nN m s2", " g cm2"}
 
 // withUnit is a bare number with the unit that it lacks, or empty.
 func withUnit(text string, v encoding.TextUnmarshaler) string {

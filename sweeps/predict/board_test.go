@@ -4,7 +4,6 @@ import (
 	"math"
 	"strings"
 	"testing"
-	"testing/fstest"
 
 	"nightbench/instruments/si"
 	"nightbench/sweeps"
@@ -92,54 +91,6 @@ func TestWiperShareIsTheChargingShare(t *testing.T) {
 	v := mustAt(t, m, Setting{Supply: 12, Pot: 0.95, Temperature: Reference})
 	between2(t, "t_high over ln 2·96 k·C", v[sweeps.THigh]/(math.Ln2*96e3*1e-8), 1, 1.2)
 	between2(t, "duty", v[sweeps.Duty], 0.93, 0.96)
-}
-
-// Users' parts stand beside the built-in ones, and replace those of the same name.
-func TestOwnParts(t *testing.T) {
-	own := fstest.MapFS{"mine.toml": {Data: []byte(`
-[[diode]]
-name = "mine"
-is = { typical = 1e-9 }
-n = { typical = 1.8 }
-[[diode]]
-name = "1n4148"
-is = { typical = 5e-9, low = 1e-9, high = 1e-8, shape = "log", source = "measured" }
-n = { typical = 1.9 }
-`)}}
-	c, err := ReadCatalogue(own)
-	if err != nil {
-		t.Fatal(err)
-	}
-	b := pump()
-	b.Timing.ChargeDiode.Name = "mine"
-	m, err := New(b, Options{Catalogue: c})
-	if err != nil {
-		t.Fatal(err)
-	}
-	if m.nominal.chargeDiode.is != 1e-9 || m.nominal.dischargeDiode.is != 5e-9 {
-		t.Errorf("diodes %+v, %+v", m.nominal.chargeDiode, m.nominal.dischargeDiode)
-	}
-	for text, words := range map[string][]string{
-		"[[diode]]\nname = \"x\"\nis = { typical = 1e-9, low = 1e-8 }\nn = { typical = 1 }":       {"mine.toml", "x", "is", "1e-08"},
-		"[[diode]]\nname = \"x\"\ncolour = \"red\"":                                               {"mine.toml", "colour"},
-		"[[diode]]\nname = \"x\"\nis = { typical = 1e-9, shape = \"bell\" }\nn = { typical = 1 }": {"bell", "triangular"},
-		"[[timer]]\nname = \"x\"\nthreshold = { typical = 2 }":                                    {"threshold"},
-		"[[transistor]]\nname = \"x\"\nkind = \"tube\"":                                           {"tube", "nmos"},
-		"[[transistor]]\nname = \"x\"\nkind = \"nmos\"\nrds = [[4.5, 0.1], [2.5, 0.05]]":          {"rds row 2"},
-		"[[motor]]\nname = \"x\"": {"torque_constant"},
-		"[[diode]]\nname = ":      {"line 2"},
-	} {
-		_, err := ReadCatalogue(fstest.MapFS{"mine.toml": {Data: []byte(text)}})
-		if err == nil {
-			t.Errorf("accepted: %s", text)
-			continue
-		}
-		for _, w := range words {
-			if !strings.Contains(err.Error(), w) {
-				t.Errorf("%q does not say %q", err, w)
-			}
-		}
-	}
 }
 
 // Every catalogue part says where its figures come from, and works on a board.

@@ -1,16 +1,13 @@
 package predict
 
 import (
-	"bytes"
 	"embed"
-	"errors"
 	"fmt"
 	"io/fs"
-	"path"
 	"slices"
 	"strings"
 
-	"github.com/pelletier/go-toml/v2"
+	"nightbench/sweeps"
 )
 
 //go:embed catalogue/*.toml
@@ -129,19 +126,25 @@ type TransistorPart struct {
 	MaxPower             Figure       `toml:"max_power"`
 }
 
-// MotorPart is a small motor whose figures may be copied into a board's [load].
+// MotorPart is a small motor, for a board's load.part.
 type MotorPart struct {
-	Name           string  `toml:"name"`
-	Words          string  `toml:"words"`
-	RatedVoltage   float64 `toml:"rated_voltage"`
-	Resistance     Figure  `toml:"resistance"`
-	Inductance     Figure  `toml:"inductance"`
-	TorqueConstant Figure  `toml:"torque_constant"`
-	CoulombTorque  Figure  `toml:"coulomb_torque"`
-	Inertia        Figure  `toml:"inertia"`
+	Name            string  `toml:"name"`
+	Words           string  `toml:"words"`
+	RatedVoltage    float64 `toml:"rated_voltage"`
+	Resistance      Figure  `toml:"resistance"`
+	Inductance      Figure  `toml:"inductance"`
+	TorqueConstant  Figure  `toml:"torque_constant"`
+	StaticTorque    Figure  `toml:"static_torque"`
+	CoulombTorque   Figure  `toml:"coulomb_torque"`
+	ViscousTorque   Figure  `toml:"viscous_torque"`
+	QuadraticTorque Figure  `toml:"quadratic_torque"`
+	BrushDrop       Figure  `toml:"brush_drop"`
+	Inertia         Figure  `toml:"inertia"`
+	MaxCurrent      Figure  `toml:"max_current"` // continuous
+	MaxPower        Figure  `toml:"max_power"`   // heat in the winding
 }
 
-// Catalogue is the parts known by name. A later file's part replaces an earlier one's of the same name.
+// Catalogue is the parts known by name. A user's part replaces a built-in one of the same name.
 type Catalogue struct {
 	Timers      []TimerPart      `toml:"timer"`
 	Diodes      []DiodePart      `toml:"diode"`
@@ -149,53 +152,38 @@ type Catalogue struct {
 	Motors      []MotorPart      `toml:"motor"`
 }
 
-// ReadCatalogue reads the built-in parts and, beside them, every *.toml at the
-// root of own (nil: none). An error names the file and the part.
-func ReadCatalogue(own fs.FS) (*Catalogue, error) {
+// ReadCatalogue reads the built-in parts and, beside them, the user's own files. An
+// error names file, line and key.
+func ReadCatalogue(own []sweeps.File) (*Catalogue, error) {
 	c := &Catalogue{}
-	if err := c.read(builtIn, "catalogue"); err != nil {
-		return nil, err
-	}
-	if own == nil {
-		return c, nil
-	}
-	return c, c.read(own, ".")
-}
-
-func (c *Catalogue) read(from fs.FS, dir string) error {
-	names, err := fs.Glob(from, path.Join(dir, "*.toml"))
+	names, err := fs.Glob(builtIn, "catalogue/*.toml")
 	if err != nil {
-		return fmt.Errorf("read parts: %w", err)
+		return nil, fmt.Errorf("read parts: %w", err)
 	}
 	for _, name := range names {
-		text, err := fs.ReadFile(from, name)
+		text, err := fs.ReadFile(builtIn, name)
 		if err != nil {
-			return fmt.Errorf("read parts: %w", err)
+			return nil, fmt.Errorf("read parts: %w", err)
 		}
-		var more Catalogue
-		if err := toml.NewDecoder(bytes.NewReader(text)).DisallowUnknownFields().Decode(&more); err != nil {
-			return fmt.Errorf("read parts of %s: %w", name, inWords(err))
-		}
-		if err := more.check(); err != nil {
-			return fmt.Errorf("read parts of %s: %w", name, err)
+		more, err := parseParts(name, text)
+		if err != nil {
+			return nil, err
 		}
 		c.take(more)
 	}
-	return nil
-}
-
-// inWords gives the place of a TOML mistake, which the library keeps apart from its message.
-func inWords(err error) error {
-	var unknown *toml.StrictMissingError
-	var bad *toml.DecodeError
-	switch {
-	case errors.As(err, &unknown):
-		return fmt.Errorf("a key no part has:\n%s", unknown.String())
-	case errors.As(err, &bad):
-		row, _ := bad.Position()
-		return fmt.Errorf("line %d: %w", row, err)
+	var mine Catalogue
+	for _, file := range own {
+		more, err := parseParts(file.Name, []byte(file.Text))
+		if err != nil {
+			return nil, err
+		}
+		if err := mine.twice(file, more); err != nil {
+			return nil, err
+		}
+		mine.take(more)
 	}
-	return err
+	c.take(mine)
+	return c, nil
 }
 
 func (c *Catalogue) take(more Catalogue) {

@@ -1,33 +1,53 @@
 package predict
 
 import (
+	"errors"
 	"fmt"
-	"slices"
+
+	"nightbench/instruments/userfile"
 )
 
-// check holds every part to what the laws need of it.
-func (c *Catalogue) check() error {
-	for _, t := range c.Timers {
-		if err := t.check(); err != nil {
-			return fmt.Errorf("timer %q: %w", t.Name, err)
-		}
+// check holds every part to what the laws need of it, and notes what is wrong in the file it was read from.
+func (c *Catalogue) check(f *userfile.File) {
+	for i, t := range c.Timers {
+		note(f.Look("timer", i), t.check())
 	}
-	for _, d := range c.Diodes {
-		if err := d.check(); err != nil {
-			return fmt.Errorf("diode %q: %w", d.Name, err)
-		}
+	for i, d := range c.Diodes {
+		note(f.Look("diode", i), d.check())
 	}
-	for _, t := range c.Transistors {
-		if err := t.check(); err != nil {
-			return fmt.Errorf("transistor %q: %w", t.Name, err)
-		}
+	for i, t := range c.Transistors {
+		note(f.Look("transistor", i), t.check())
 	}
-	for _, m := range c.Motors {
-		if err := m.check(); err != nil {
-			return fmt.Errorf("motor %q: %w", m.Name, err)
-		}
+	for i, m := range c.Motors {
+		note(f.Look("motor", i), m.check())
 	}
-	return nil
+}
+
+// wrong is a mistake in a part; key is empty where it concerns the part as a whole.
+type wrong struct {
+	key string
+	err error
+}
+
+func (w *wrong) Error() string {
+	if w.key == "" {
+		return w.err.Error()
+	}
+	return w.key + ": " + w.err.Error()
+}
+
+func wrongf(key, format string, a ...any) error { return &wrong{key, fmt.Errorf(format, a...)} }
+
+// note puts a part's mistake at its key.
+func note(t *userfile.Table, err error) {
+	var w *wrong
+	switch {
+	case err == nil:
+	case errors.As(err, &w):
+		t.Fail(w.key, w.err.Error())
+	default:
+		t.Fail("", err.Error())
+	}
 }
 
 // named figures of a part, for messages.
@@ -39,10 +59,10 @@ type named struct {
 func checkFigures(figures []named) error {
 	for _, f := range figures {
 		if err := f.check(); err != nil {
-			return fmt.Errorf("%s: %w", f.key, err)
+			return &wrong{f.key, err}
 		}
 		if f.spread().low < 0 {
-			return fmt.Errorf("%s: %g is negative", f.key, f.spread().low)
+			return wrongf(f.key, "%g is negative", f.spread().low)
 		}
 	}
 	return nil
@@ -50,16 +70,18 @@ func checkFigures(figures []named) error {
 
 func (t TimerPart) check() error {
 	if t.Name == "" {
-		return fmt.Errorf("a part needs a name")
+		return wrongf("name", "a part needs a name")
 	}
-	for _, table := range slices.Concat(t.Drop, t.Low) {
-		if err := checkRows(table.Rows); err != nil {
-			return fmt.Errorf("table at %g V: %w", table.Supply, err)
+	for key, tables := range map[string][]level{"drop": t.Drop, "low": t.Low} {
+		for _, table := range tables {
+			if err := checkRows(table.Rows); err != nil {
+				return wrongf(key, "table at %g V: %w", table.Supply, err)
+			}
 		}
 	}
 	th, ratio := t.Threshold.Typical, t.TriggerRatio.Typical
 	if th <= 0 || th >= 1 || ratio <= 0 || ratio >= 1 {
-		return fmt.Errorf("threshold %g and trigger_ratio %g must lie between 0 and 1", th, ratio)
+		return wrongf("threshold", "threshold %g and trigger_ratio %g must lie between 0 and 1", th, ratio)
 	}
 	return checkFigures([]named{
 		{"threshold", t.Threshold}, {"trigger_ratio", t.TriggerRatio}, {"control_resistance", t.ControlResistance},
@@ -89,34 +111,34 @@ func checkRows(rows [][2]float64) error {
 
 func (d DiodePart) check() error {
 	if d.Name == "" {
-		return fmt.Errorf("a part needs a name")
+		return wrongf("name", "a part needs a name")
 	}
 	if d.Is.Typical <= 0 || d.N.Typical <= 0 {
-		return fmt.Errorf("is %g A and n %g must be above 0", d.Is.Typical, d.N.Typical)
+		return wrongf("is", "is %g A and n %g must be above 0", d.Is.Typical, d.N.Typical)
 	}
 	return checkFigures([]named{{"is", d.Is}, {"n", d.N}, {"rs", d.Rs}, {"shunt", d.Shunt}})
 }
 
 func (t TransistorPart) check() error {
 	if t.Name == "" {
-		return fmt.Errorf("a part needs a name")
+		return wrongf("name", "a part needs a name")
 	}
 	switch t.Kind {
 	case "npn", "darlington":
 		if t.HFEMin <= 0 {
-			return fmt.Errorf("hfe_min %g must be above 0", t.HFEMin)
+			return wrongf("hfe_min", "hfe_min %g must be above 0", t.HFEMin)
 		}
 	case "nmos":
 		for i, r := range t.Rds {
 			if r[1] <= 0 || i > 0 && (r[0] <= t.Rds[i-1][0] || r[1] > t.Rds[i-1][1]) {
-				return fmt.Errorf("rds row %d: %g V, %g ohm: gate voltages must rise and resistances fall, above 0", i+1, r[0], r[1])
+				return wrongf("rds", "rds row %d: %g V, %g ohm: gate voltages must rise and resistances fall, above 0", i+1, r[0], r[1])
 			}
 		}
 		if len(t.Rds) == 0 || t.Rds[0][0] <= t.VgsTh.Typical {
-			return fmt.Errorf("rds needs rows, all above the gate threshold of %g V", t.VgsTh.Typical)
+			return wrongf("rds", "rds needs rows, all above the gate threshold of %g V", t.VgsTh.Typical)
 		}
 	default:
-		return fmt.Errorf("kind %q is not known; use npn, darlington or nmos", t.Kind)
+		return wrongf("kind", "kind %q is not known; use npn, darlington or nmos", t.Kind)
 	}
 	return checkFigures([]named{
 		{"vbe", t.VBE}, {"base_resistance", t.BaseResistance}, {"vce_sat", t.VCESat}, {"saturation_resistance", t.SaturationResistance},
@@ -130,6 +152,7 @@ func (m MotorPart) check() error {
 	}
 	return checkFigures([]named{
 		{"resistance", m.Resistance}, {"inductance", m.Inductance}, {"torque_constant", m.TorqueConstant},
-		{"coulomb_torque", m.CoulombTorque}, {"inertia", m.Inertia},
+		{"static_torque", m.StaticTorque}, {"coulomb_torque", m.CoulombTorque}, {"viscous_torque", m.ViscousTorque}, {"quadratic_torque", m.QuadraticTorque},
+		{"brush_drop", m.BrushDrop}, {"inertia", m.Inertia}, {"max_current", m.MaxCurrent}, {"max_power", m.MaxPower},
 	})
 }

@@ -102,7 +102,10 @@ func TestKeepsTurningButDoesNotStart(t *testing.T) {
 
 // A stalled motor draws more than a running one.
 func TestLockedDrawsMore(t *testing.T) {
-	m := mustNew(t, pump(), Options{MotorMaxCurrent: 0.2})
+	b := pump()
+	rating := si.Amperes(0.2)
+	b.Load.MaxCurrent = &rating
+	m := mustNew(t, b, Options{})
 	table, err := m.Stress(at9V(1e3))
 	if err != nil {
 		t.Fatal(err)
@@ -133,7 +136,9 @@ func TestLockedDrawsMore(t *testing.T) {
 
 func TestJudgeRefusesAboveRatings(t *testing.T) {
 	b := pump()
-	m := mustNew(t, b, Options{PotMaxCurrent: 2.5e-3, PotMaxVoltage: 16, MotorMaxCurrent: 1, MotorMaxPower: 10})
+	amps, watts := si.Amperes(1), si.Watts(10)
+	b.Load.MaxCurrent, b.Load.MaxPower = &amps, &watts
+	m := mustNew(t, b, Options{PotMaxCurrent: 2.5e-3, PotMaxVoltage: 16})
 	fine, err := m.Judge([]Setting{at9V(10e3), at9V(100e3)})
 	if err != nil {
 		t.Fatal(err)

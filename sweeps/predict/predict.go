@@ -10,7 +10,6 @@ package predict
 
 import (
 	"fmt"
-	"io/fs"
 	"math"
 	"slices"
 
@@ -26,16 +25,13 @@ const Reference = 27.0
 // Options are what a prediction needs besides the board. The zero value will do
 // for a board whose pot is exact.
 type Options struct {
-	Parts            fs.FS               // the user's own catalogue, *.toml at its root; nil: none
-	Catalogue        *Catalogue          // already read; nil: built-in and Parts
+	Catalogue        *Catalogue          // already read; nil: built-in and the board's own parts
 	PotTolerance     float64             // relative half-width of the bench's pot; 0 where its ohms were measured
 	WiperResistance  float64             // Ω, network wiper
 	Track            si.TolResistance    // end to end, network wiper with the bench's pot
 	Average          instruments.Between // nodes between which average_voltage is metered; zero: the load's terminals
 	PotMaxCurrent    float64             // A through the wiper; 0: unknown
 	PotMaxVoltage    float64             // V at any pot terminal; 0: unknown
-	MotorMaxCurrent  float64             // A, continuous; 0: unknown
-	MotorMaxPower    float64             // W lost in the winding; 0: unknown
 	quadraturePoints int                 // 0: as usual; tests double it
 }
 
@@ -56,6 +52,7 @@ type Model struct {
 		timer                      TimerPart
 		charge, discharge, flyback DiodePart
 		transistor                 TransistorPart
+		load                       struct{ current, power float64 } // A continuous, W of heat; 0: not known
 	}
 }
 
@@ -65,7 +62,7 @@ func New(board sweeps.Board, o Options) (*Model, error) {
 	c := o.Catalogue
 	if c == nil {
 		var err error
-		if c, err = ReadCatalogue(o.Parts); err != nil {
+		if c, err = ReadCatalogue(board.Parts); err != nil {
 			return nil, err
 		}
 	}

@@ -19,7 +19,9 @@ func (m *Model) resolve(c *Catalogue) error {
 	if err := m.resolveSwitch(c); err != nil {
 		return fmt.Errorf("driver.part: %w", err)
 	}
-	m.resolveLoad()
+	if err := m.resolveLoad(c); err != nil {
+		return fmt.Errorf("load.part: %w", err)
+	}
 	return nil
 }
 
@@ -106,26 +108,61 @@ func diodePart(c *Catalogue, d sweeps.Diode) (DiodePart, error) {
 	return p, p.check()
 }
 
-func (m *Model) resolveLoad() {
-	l := &m.board.Load
+// resolveLoad takes the load's figures from the board file, and what stands not
+// there from the catalogue motor, if it names one.
+func (m *Model) resolveLoad(c *Catalogue) error {
+	l, part := &m.board.Load, MotorPart{}
+	if l.Part != "" {
+		var err error
+		if part, err = find("motor", l.Part, c.Motors, func(p MotorPart) string { return p.Name }); err != nil {
+			return err
+		}
+	}
+	m.rateLoad(part)
+	coulomb := ownOr(l.CoulombTorque, part.CoulombTorque.spread())
+	static := part.StaticTorque.spread()
+	if l.Part != "" && static.typical == 0 {
+		static = coulomb // what is known to be needed
+	}
 	for _, v := range []struct {
 		name string
 		unit si.Unit
-		t    toleranced
-		at   func(*parts) *float64
+		spread
+		at func(*parts) *float64
 	}{
-		{"load.resistance", si.Ohm, l.Resistance, func(p *parts) *float64 { return &p.load.r }},
-		{"load.inductance", si.Henry, l.Inductance, func(p *parts) *float64 { return &p.load.l }},
-		{"load.torque_constant", si.VoltSecPerRad, l.TorqueConstant, func(p *parts) *float64 { return &p.load.k }},
-		{"load.static_torque", si.NewtonMetre, l.StaticTorque, func(p *parts) *float64 { return &p.load.static }},
-		{"load.coulomb_torque", si.NewtonMetre, l.CoulombTorque, func(p *parts) *float64 { return &p.load.coulomb }},
-		{"load.viscous_torque", si.NewtonMetreSec, l.ViscousTorque, func(p *parts) *float64 { return &p.load.viscous }},
-		{"load.quadratic_torque", si.NewtonMetreSq, l.QuadraticTorque, func(p *parts) *float64 { return &p.load.quad }},
-		{"load.brush_drop", si.Volt, l.BrushDrop, func(p *parts) *float64 { return &p.load.brush }},
-		{"load.inertia", si.KilogramMetre2, l.Inertia, func(p *parts) *float64 { return &p.load.inertia }},
+		{"load.resistance", si.Ohm, ownOr(l.Resistance, part.Resistance.spread()), func(p *parts) *float64 { return &p.load.r }},
+		{"load.inductance", si.Henry, ownOr(l.Inductance, part.Inductance.spread()), func(p *parts) *float64 { return &p.load.l }},
+		{"load.torque_constant", si.VoltSecPerRad, ownOr(l.TorqueConstant, part.TorqueConstant.spread()), func(p *parts) *float64 { return &p.load.k }},
+		{"load.static_torque", si.NewtonMetre, ownOr(l.StaticTorque, static), func(p *parts) *float64 { return &p.load.static }},
+		{"load.coulomb_torque", si.NewtonMetre, coulomb, func(p *parts) *float64 { return &p.load.coulomb }},
+		{"load.viscous_torque", si.NewtonMetreSec, ownOr(l.ViscousTorque, part.ViscousTorque.spread()), func(p *parts) *float64 { return &p.load.viscous }},
+		{"load.quadratic_torque", si.NewtonMetreSq, ownOr(l.QuadraticTorque, part.QuadraticTorque.spread()), func(p *parts) *float64 { return &p.load.quad }},
+		{"load.brush_drop", si.Volt, ownOr(l.BrushDrop, part.BrushDrop.spread()), func(p *parts) *float64 { return &p.load.brush }},
+		{"load.inertia", si.KilogramMetre2, ownOr(l.Inertia, part.Inertia.spread()), func(p *parts) *float64 { return &p.load.inertia }},
 	} {
-		if nominal, _, _ := v.t.Spread(); nominal != 0 {
-			m.vary(v.name, v.unit, spreadOf(v.t), v.at)
+		if v.typical != 0 {
+			m.vary(v.name, v.unit, v.spread, v.at)
 		}
+	}
+	return nil
+}
+
+// ownOr is the board file's figure where it gives one.
+func ownOr(own toleranced, part spread) spread {
+	if nominal, _, _ := own.Spread(); nominal != 0 {
+		return spreadOf(own)
+	}
+	return part
+}
+
+// rateLoad takes the load's ratings from the board file, or the part's.
+func (m *Model) rateLoad(part MotorPart) {
+	l, r := &m.board.Load, &m.rated.load
+	r.current, r.power = part.MaxCurrent.Typical, part.MaxPower.Typical
+	if l.MaxCurrent != nil {
+		r.current = l.MaxCurrent.SI()
+	}
+	if l.MaxPower != nil {
+		r.power = l.MaxPower.SI()
 	}
 }

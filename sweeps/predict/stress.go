@@ -70,8 +70,8 @@ func (m *Model) stress(o *outcome, c conditions) []Stress {
 	}
 	name := string(m.board.Load.Kind)
 	out = append(out,
-		Stress{name, "mean current", o.wave.current(), m.o.MotorMaxCurrent, si.Ampere},
-		Stress{name, "heat in the winding", p.load.r * sq / o.wave.period(), m.o.MotorMaxPower, si.Watt})
+		Stress{name, "mean current", o.wave.current(), m.rated.load.current, si.Ampere},
+		Stress{name, "heat in the winding", p.load.r * sq / o.wave.period(), m.rated.load.power, si.Watt})
 	return out
 }
 
