@@ -240,6 +240,9 @@ func (a *analysis) pool(states ...*state) {
 		s.rounding(a.q)
 	}
 	a.resolve(states...)
+	for _, s := range states {
+		s.uRound = math.Hypot(s.uRound, a.printed)
+	}
 }
 
 func (a *analysis) instants() {

@@ -25,6 +25,9 @@ type Record struct {
 	PerCode float64 // V per code; may be negative
 	Volts   []float64
 
+	// Resolution is the last digit Volts were written with, V; 0: in full.
+	Resolution float64
+
 	Start    float64   // s, time of the first sample
 	Interval float64   // s between samples
 	Times    []float64 // s, one per sample; nil: evenly spaced by Start and Interval

@@ -16,6 +16,7 @@ type trace struct {
 	zero     float64 // V at code 0
 	clipLow  int     // codes at and beyond which the converter saturates
 	clipHigh int
+	printed  float64 // codes, standard uncertainty of one code's voltage as it was written
 	cell     float64 // s, sample interval; root mean square where uneven
 	flags    []Flag
 }
@@ -154,7 +155,11 @@ func (t *trace) quantise() error {
 		}
 		low, high = min(low, v), max(high, v)
 	}
-	t.volt = grid(t.Volts, low, high)
+	var unseen float64
+	if t.volt, unseen = grid(t.Volts, low, high); unseen > 0 {
+		t.flags = append(t.flags, Flag{FewCodes, fmt.Sprintf("so few different values that the converter's step does not show: about %.2g V was supposed", unseen)})
+	}
+	t.printed = math.Hypot(t.Resolution, unseen) / t.volt / math.Sqrt(12)
 	t.zero = low + 30000*t.volt
 	t.codes = make([]int16, len(t.Volts))
 	for i, v := range t.Volts {

@@ -47,3 +47,29 @@ func TestRecordBySample(t *testing.T) {
 		t.Errorf("%d samples; %g V at %g s", r.Len(), r.Volt(1), r.At(1))
 	}
 }
+
+// Without noise a capture in volts may hold two values only: a pulse train all the same.
+func TestTwoValues(t *testing.T) {
+	r := Record{Interval: 1e-5}
+	for i := range 560 {
+		r.Volts = append(r.Volts, 0.12+8.8*float64(b2i((i+70)%100 < 30)))
+	}
+	res := analyse(t, r, Options{})
+	is(t, res, TwoLevel, FewCodes)
+	agrees(t, res, "duty", 0.3)
+	agrees(t, res, "high_level", 8.92)
+	if len(quantity(t, res, "high_level").Flags) == 0 || len(quantity(t, res, "duty").Flags) > 0 {
+		t.Error("the levels carry the flag, the duty does not")
+	}
+}
+
+// The converter's step is found from values that are whole multiples of it, if no two are neighbours.
+func TestGrid(t *testing.T) {
+	var volts []float64
+	for i := range 200 {
+		volts = append(volts, 0.25*[]float64{0, 2, 5, 31, 34, 36, 0, 36}[i%8])
+	}
+	if step, unseen := grid(volts, 0, 9); unseen > 0 || math.Abs(step-0.25) > 1e-9 {
+		t.Errorf("step %g, unseen %g", step, unseen)
+	}
+}

@@ -315,3 +315,16 @@ func TestReadersErrorsArePassedOn(t *testing.T) {
 		t.Error(err)
 	}
 }
+
+// The last digit written limits what a level can be known to.
+func TestResolution(t *testing.T) {
+	for field, want := range map[string]float64{"8.92": 0.01, "8,9": 0.1, "-1.5e-3": 1e-4, "8.92E+01": 0.1, "12": 0, "3e2": 0, "1.5V": 0} {
+		if got := lastDigit([]byte(field)); math.Abs(got-want) > 1e-12 {
+			t.Errorf("%s: %g, want %g", field, got, want)
+		}
+	}
+	c := mustRead(t, "Time,CH1 (mV)\n"+rows(func(i int) string { return fmt.Sprintf("%.6f,%.1f", at(i), 1e3*volt(i)) })).Channels[0]
+	if math.Abs(c.Record.Resolution-1e-4) > 1e-12 {
+		t.Errorf("resolution %g V", c.Record.Resolution)
+	}
+}

@@ -149,7 +149,7 @@ func (t *table) channel(i, at int) (Channel, error) {
 			c.Unit = "A"
 		}
 	}
-	c.Record.Volts = t.values[i]
+	c.Record.Volts, c.Record.Resolution = t.values[i], t.digit[i]*factor
 	for k := range c.Record.Volts {
 		c.Record.Volts[k] *= factor
 	}

@@ -115,6 +115,33 @@ func leading(s string) (x float64, rest string) {
 	return 0, s
 }
 
+// lastDigit is the place value of a number's last digit: 0.01 of "8.92", 10 of "8.92e3"; 0 of a whole number.
+func lastDigit(field []byte) float64 {
+	decimals, exponent, point := 0, 0, false
+	for i, c := range field {
+		switch {
+		case c == '.' || c == ',':
+			point = true
+		case c == 'e' || c == 'E':
+			exponent, _ = strconv.Atoi(string(field[i+1:])) // a number, as it was read as one
+			if !point {
+				return 0
+			}
+			return math.Pow10(exponent - decimals)
+		case c < '0' || c > '9':
+			if i > 0 {
+				return 0
+			}
+		case point:
+			decimals++
+		}
+	}
+	if !point {
+		return 0
+	}
+	return math.Pow10(-decimals)
+}
+
 // clock reads a time of day, after a date perhaps, as seconds since midnight.
 func clock(s string) (float64, bool) {
 	if i := strings.LastIndexAny(s, " T"); i >= 0 {

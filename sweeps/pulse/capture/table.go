@@ -13,11 +13,12 @@ type table struct {
 	line   int // lines taken, from the first of samples
 	n      int // lines of samples
 	values [][]float64
-	ended  []int // line at which a column stopped giving values; 0: it has not
-	over   []int // overloads of each column
-	blank  int   // first line without samples after the table; 0: none
-	cut    bool  // the last line was cut short and left out
-	short  int   // line that had too few fields
+	ended  []int     // line at which a column stopped giving values; 0: it has not
+	over   []int     // overloads of each column
+	digit  []float64 // the coarsest last digit of each column
+	blank  int       // first line without samples after the table; 0: none
+	cut    bool      // the last line was cut short and left out
+	short  int       // line that had too few fields
 	fields [][]byte
 }
 
@@ -34,6 +35,7 @@ func (t *table) take(text []byte) error {
 	}
 	if t.values == nil {
 		t.values, t.ended, t.over = make([][]float64, len(t.cols)), make([]int, len(t.cols)), make([]int, len(t.cols))
+		t.digit = make([]float64, len(t.cols))
 	}
 	if t.short > 0 {
 		return &Error{Line: t.short, What: fmt.Sprintf("fewer than %d values", len(t.cols)), Do: "export again: the file is damaged"}
@@ -69,6 +71,9 @@ func (t *table) row(at int) error {
 			return &Error{Line: t.ended[i], What: fmt.Sprintf("no value in field %d, though later lines have one", c+1), Do: "export again without gaps"}
 		case ok:
 			t.values[i] = append(t.values[i], x)
+			if t.n < headLines {
+				t.digit[i] = max(t.digit[i], lastDigit(f))
+			}
 			if math.IsInf(x, 0) {
 				t.over[i]++
 			}
