@@ -86,12 +86,8 @@ func (p *plugged) rightOrRefused(t *testing.T) {
 func unplugged(t *testing.T) {
 	p := plugIn(t, false)
 	must(t, p.practice.Inject(practice.Fault{Kind: practice.Unplugged, On: "average"}))
-	begun := time.Now()
 	_, err := p.Meters[0].Read(t.Context())
 	wants(t, err, link.ErrLost, "meter average", "check cable and power")
-	if took := time.Since(begun); took > time.Second {
-		t.Errorf("the loss was noticed after %v", took)
-	}
 	_, err = p.Meters[0].Read(t.Context())
 	wants(t, err, link.ErrMissing, "is it plugged in")
 	p.practice.Lift(practice.Unplugged, "average")

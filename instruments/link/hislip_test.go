@@ -183,7 +183,7 @@ func dialHS(t *testing.T, a Address, timeout time.Duration) *Link {
 
 func TestHiSLIPQuery(t *testing.T) {
 	s := &hsServer{answer: echoes}
-	l := dialHS(t, hsServe(t, s), time.Second)
+	l := dialHS(t, hsServe(t, s), 5*time.Second)
 	for _, q := range []string{"*IDN?", "READ?", "FETC?"} {
 		if got, err := l.Query(t.Context(), q); err != nil || got != strings.ToLower(q) {
 			t.Errorf("%s: %q, %v", q, got, err)
@@ -214,7 +214,7 @@ func TestHiSLIPQuery(t *testing.T) {
 // since the instrument takes few bytes at a time.
 func TestHiSLIPParts(t *testing.T) {
 	s := &hsServer{most: hsHead + 10, answer: func(string) []string { return []string{"#15a\n", "b", "\nc"} }}
-	l := dialHS(t, hsServe(t, s), time.Second)
+	l := dialHS(t, hsServe(t, s), 5*time.Second)
 	turn, err := l.Acquire(t.Context())
 	if err != nil {
 		t.Fatal(err)
@@ -248,7 +248,7 @@ func TestHiSLIPLateReply(t *testing.T) {
 		return nil
 	}
 	s.onClear = func() { late() }
-	l := dialHS(t, hsServe(t, s), 100*time.Millisecond)
+	l := dialHS(t, hsServe(t, s), 400*time.Millisecond)
 	if _, err := l.Query(t.Context(), "READ?"); !errors.Is(err, ErrTimeout) {
 		t.Fatalf("got %v, want ErrTimeout", err)
 	}
@@ -283,7 +283,7 @@ func TestHiSLIPClearInALongReply(t *testing.T) {
 		}
 		return echoes(text)
 	}}
-	l := dialHS(t, hsServe(t, s), time.Second)
+	l := dialHS(t, hsServe(t, s), 5*time.Second)
 	if err := l.Send(t.Context(), "TRAC?"); err != nil {
 		t.Fatal(err)
 	}
@@ -321,7 +321,7 @@ func TestHiSLIPRefusals(t *testing.T) {
 
 func TestHiSLIPHungUpAndReopened(t *testing.T) {
 	s := &hsServer{answer: echoes}
-	l := dialHS(t, hsServe(t, s), time.Second)
+	l := dialHS(t, hsServe(t, s), 5*time.Second)
 	s.mu.Lock()
 	s.sync.Close()
 	s.mu.Unlock()

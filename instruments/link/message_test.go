@@ -176,7 +176,7 @@ func TestMessageLinksUnderSCPI(t *testing.T) {
 			if err != nil {
 				t.Fatal(err)
 			}
-			l, err := link.Open(t.Context(), a, link.Options{Dial: c.dial, Timeout: 200 * time.Millisecond})
+			l, err := link.Open(t.Context(), a, link.Options{Dial: c.dial, Timeout: 400 * time.Millisecond})
 			if err != nil {
 				t.Fatal(err)
 			}
@@ -209,7 +209,7 @@ func speaks(t *testing.T, c *scpi.Conn, u *usb488) {
 		t.Errorf("the error queue holds %v, %v; want -113 alone", faults, err)
 	}
 	u.mu.Lock()
-	u.late = 500 * time.Millisecond
+	u.late = time.Second
 	u.mu.Unlock()
 	if _, err := c.Query(ctx, "READ?"); !errors.Is(err, link.ErrTimeout) {
 		t.Errorf("late: %v", err)

@@ -104,7 +104,11 @@ func (c *tmcCalls) Close() error { return nil }
 // onUSB opens a link on a record of calls.
 func onUSB(t *testing.T, timeout time.Duration, text string) *Link {
 	t.Helper()
-	calls := record(t, text)
+	return onCalls(t, timeout, record(t, text))
+}
+
+func onCalls(t *testing.T, timeout time.Duration, calls *tmcCalls) *Link {
+	t.Helper()
 	a, err := Parse("usbtmc:///dev/usbtmc0")
 	if err != nil {
 		t.Fatal(err)
@@ -212,13 +216,18 @@ func TestUSBTMCTimeoutThenClear(t *testing.T) {
 // A line sent blind goes out while a reply is awaited, since waiting is done by
 // looking at the status byte and holds no read in the driver.
 func TestUSBTMCBlindWhileWaiting(t *testing.T) {
-	l := onUSB(t, 300*time.Millisecond, with488+`
+	calls := record(t, with488+`
 		w "READ?\n"
 		w "OUTP OFF\n"
 	`)
+	l := onCalls(t, 500*time.Millisecond, calls)
 	result := make(chan error, 1)
 	go func() { _, err := l.Query(t.Context(), "READ?"); result <- err }()
-	time.Sleep(3 * time.Millisecond)
+	for left := 2; left == 2; time.Sleep(time.Millisecond) { // until READ? is written
+		calls.mu.Lock()
+		left = len(calls.want)
+		calls.mu.Unlock()
+	}
 	if between, err := l.Blind(t.Context(), "OUTP OFF"); err != nil || !between {
 		t.Errorf("blind: in between %v, %v", between, err)
 	}
