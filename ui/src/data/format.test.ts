@@ -35,6 +35,7 @@ test("a number and its unit are not parted", () => {
 test("settings are written as on a bench", () => {
   expect([21560, 5500, 100300, 75, 1000, 470].map((x) => plain(ohms(x)))).toEqual(["21.6 k", "5.5 k", "100 k", "75 Ω", "1 k", "470 Ω"]);
   expect(plain(setting({ supply_voltage: 9, pot_resistance: 21560 }))).toBe("9 V, 21.6 k");
+  expect(plain(setting({ supply_voltage: 9, pot_resistance: 35156.25, pot_position: 90 / 256 }))).toBe("9 V, 35.2 %");
 });
 
 test("clock and calendar", () => {

@@ -54,9 +54,14 @@ export function ohms(x: number): string {
   return s.endsWith("kΩ") || s.endsWith("MΩ") ? s.slice(0, -1) : s;
 }
 
+/** Where the pot stands: its ohms, or with its wiper in the timing network the share of its track that charges, "35.2 %". */
+export function potAt(s: { pot_resistance: number; pot_position?: number }): string {
+  return s.pot_position ? `${Number((100 * s.pot_position).toPrecision(3))}${nbsp}%` : ohms(s.pot_resistance);
+}
+
 /** "9 V, 22 k" */
-export function setting(s: { supply_voltage: number; pot_resistance: number }): string {
-  return `${format(s.supply_voltage, "V", 3)}, ${ohms(s.pot_resistance)}`;
+export function setting(s: { supply_voltage: number; pot_resistance: number; pot_position?: number }): string {
+  return `${format(s.supply_voltage, "V", 3)}, ${potAt(s)}`;
 }
 
 /** Ties numbers to the units behind them in words that came from elsewhere. */

@@ -1,5 +1,5 @@
 // Sentences. Present for now, past for what happened; no exclamations.
-import { bound, clock, clockSeconds, count, duration, format, formatU, nbsp, ohms, setting } from "./format";
+import { bound, clock, clockSeconds, count, duration, format, formatU, nbsp, potAt, setting } from "./format";
 import { ended, flagged, type Flag, type Off, type Point, type Quantity, reading, type Run, type Status, type Vitals } from "./nouns";
 
 const titles: Record<Quantity, string> = {
@@ -158,7 +158,7 @@ export function pointWords(p: Point, sameSupply = false): string {
     if (!r || r.value === null) continue;
     said.push((q === "average_voltage" ? "" : named(q) + " ") + formatU(r.value, r.u, r.unit));
   }
-  return `${p.setpoint.recheck ? "Recheck at " : ""}${sameSupply ? ohms(p.setpoint.pot_resistance) : setting(p.setpoint)}${said.length ? ": " + said.join(", ") : ""}${flagged(p) ? ", flagged " : ". Good."}`;
+  return `${p.setpoint.recheck ? "Recheck at " : ""}${sameSupply ? potAt(p.setpoint) : setting(p.setpoint)}${said.length ? ": " + said.join(", ") : ""}${flagged(p) ? ", flagged " : ". Good."}`;
 }
 
 /** An instrument's own name: a meter's role goes without saying beside the others. */

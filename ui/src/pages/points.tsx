@@ -1,5 +1,5 @@
 // The points of a run as a table; on a phone each is an entry of a few lines.
-import { format, formatU, ohms } from "../data/format";
+import { format, formatU, potAt } from "../data/format";
 import { flagged, type Point, type Quantity, reading } from "../data/nouns";
 import { named } from "../data/words";
 import { Flags } from "../parts/flags";
@@ -21,7 +21,7 @@ function Row({ p, quantities }: { p: Point; quantities: readonly Quantity[] }) {
       <tr>
         <td class="r num">{s.index + 1}</td>
         <td>{format(s.supply_voltage, "V", 3)}</td>
-        <td>{ohms(s.pot_resistance)}</td>
+        <td>{potAt(s)}</td>
         <td>{s.recheck ? "recheck" : s.direction}</td>
         {quantities.map((q) => <td class="r" key={q} data-name={named(q)}>{value(p, q)}</td>)}
       </tr>

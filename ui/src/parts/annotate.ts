@@ -1,6 +1,6 @@
 // The words and small marks on a figure: which curve, which way, what is flagged,
 // where the run is now. Placed where they cover least. Pure.
-import { format, ohms, setting } from "../data/format";
+import { format, potAt, setting } from "../data/format";
 import type { Now } from "./figure";
 import type { Frame } from "./frame";
 import { type Box, labelWidth, Room, some, spread } from "./place";
@@ -149,7 +149,7 @@ function nowBracket(f: Frame, data: FigureData, now: Now, room: Room, out: Annot
     { d: strokes(x, y, Math.min(now.repeat, 12), now.repeats), mark: "tick" },
   );
   room.take({ x: x - w - 2, y: y - h - 2, w: 2 * w + 4, h: 2 * h + 4 });
-  const where = f.narrow ? `${now.word}: ${ohms(now.setpoint.pot_resistance)}` : `${now.word}: ${setting(now.setpoint)}`;
+  const where = f.narrow ? `${now.word}: ${potAt(now.setpoint)}` : `${now.word}: ${setting(now.setpoint)}`;
   const done = now.repeat > 0 && now.repeats > 0 ? `${now.repeat} of ${now.repeats}${f.narrow ? "" : " repeats"}` : "";
   const wide = Math.max(labelWidth(where) * 1.1, labelWidth(done));
   const boxes = [[-wide - 10, 18], [10, -46], [-wide - 10, 40], [12, 14], [-wide - 12, -50], [10, -64], [-wide - 10, 70]].map(([dx, dy]) => ({ x: x + dx!, y: y + dy!, w: wide, h: 2 * lineHeight + 2, right: dx! < 0 }));

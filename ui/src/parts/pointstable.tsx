@@ -1,6 +1,6 @@
 // The numbers behind a figure, for a screen reader and for whoever wants them.
 import { useState } from "preact/hooks";
-import { format, formatU, nbsp, ohms } from "../data/format";
+import { format, formatU, nbsp, potAt } from "../data/format";
 import { type Point, type Quantity, reading } from "../data/nouns";
 import { named } from "../data/words";
 
@@ -28,7 +28,7 @@ function Row({ p, quantity }: { p: Point; quantity: Quantity }) {
   return (
     <tr>
       <td>{format(p.setpoint.supply_voltage, "V", 3)}</td>
-      <td>{ohms(p.setpoint.pot_resistance)}</td>
+      <td>{potAt(p.setpoint)}</td>
       <td>{p.setpoint.recheck ? "recheck" : p.setpoint.direction}</td>
       <td class="r">{r && r.value !== null ? formatU(r.value, r.u, r.unit) : "no value"}</td>
       <td class="r">{pred ? format(pred.value, pred.unit, 4) : ""}</td>
