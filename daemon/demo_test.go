@@ -21,7 +21,7 @@ func TestDemoOnceRunsTheSampleToItsEnd(t *testing.T) {
 	if status != 0 {
 		t.Fatalf("status %d:\n%s", status, out)
 	}
-	for _, want := range []string{"practice bench at 60 times", "Switching off by software is no emergency stop", "48 of 48 points", "average voltage"} {
+	for _, want := range []string{"practice bench at 60 times", "Switching off by software is no emergency stop", "48 of 48 points", "average voltage", "Ambient not measured: 27\u00a0°C assumed."} {
 		if !strings.Contains(out, want) {
 			t.Errorf("%q is not printed", want)
 		}
@@ -85,7 +85,7 @@ func TestPracticeBenchByHand(t *testing.T) {
 	}
 	for _, tcp := range []bool{false, true} {
 		t.Run(fmt.Sprintf("tcp=%v", tcp), func(t *testing.T) {
-			state := filepath.Join(t.TempDir(), "bench")
+			state := fromHere(t, filepath.Join(t.TempDir(), "bench"))
 			args := []string{"demo", "--bench-only", "--pace", "20", "--state", state}
 			if tcp {
 				args = append(args, "--tcp")
@@ -99,6 +99,9 @@ func TestPracticeBenchByHand(t *testing.T) {
 					continue
 				}
 				found++
+				if path, serial := strings.CutPrefix(f[2], "serial://"); serial && !filepath.IsAbs(path) {
+					t.Errorf("%s is served at %s, which is no address: it lacks the whole path", f[1], f[2])
+				}
 				byHand(t, f[1], f[2])
 			}
 			if found < 4 {
@@ -110,6 +113,20 @@ func TestPracticeBenchByHand(t *testing.T) {
 			}
 		})
 	}
+}
+
+// fromHere is a path as somebody types it who stands in this folder.
+func fromHere(t *testing.T, path string) string {
+	t.Helper()
+	here, err := os.Getwd()
+	if err != nil {
+		t.Fatal(err)
+	}
+	path, err = filepath.Rel(here, path)
+	if err != nil {
+		t.Fatal(err)
+	}
+	return path
 }
 
 // byHand asks who is there, makes a mistake, and reads the error queue.

@@ -65,6 +65,8 @@ func wiringFor(plan, path string) (*instruments.Wiring, error) {
 
 func printRehearsal(cmd *cobra.Command, plan sweeps.Plan, board sweeps.Board, r app.Rehearsal) error {
 	say(cmd, "%s on %s %s: %d setpoints", plan.Name, board.Name, board.Revision, len(r.Setpoints))
+	_, ambient := app.Ambient(plan)
+	say(cmd, "%s", ambient)
 	if r.Seconds > 0 {
 		say(cmd, "about %s at the least, settling and measuring", time.Duration(r.Seconds*float64(time.Second)).Round(time.Second))
 	}

@@ -99,6 +99,9 @@ func (c *cli) showRun(cmd *cobra.Command, s *store.Store, id int64) error {
 func printRun(cmd *cobra.Command, run sweeps.Run, points []sweeps.Point) error {
 	say(cmd, "run %d: %s on %s %s, bench %s, begun %s", run.ID, run.Plan, run.Board, run.Revision, run.Bench, run.StartedAt.Local().Format(time.DateTime))
 	sayPace(cmd, run.Pace)
+	if ambient := app.AmbientOf(run); ambient != "" {
+		say(cmd, "%s", ambient)
+	}
 	say(cmd, "%s: %s; %d of %d points, %d flagged", run.State, run.Reason, run.Measured, run.Planned, run.Flagged)
 	say(cmd, "measured value(standard uncertainty on its last digits) [predicted 95 %% band]; * flagged\n")
 	return printPoints(cmd.OutOrStdout(), run, points)

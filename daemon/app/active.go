@@ -37,7 +37,7 @@ func (d *Daemon) Start(ctx context.Context, q web.StartRequest) (sweeps.Run, err
 	}
 	run := job.Run
 	run.BoardSerial, run.Operator, run.Note, run.State, run.StartedAt = q.BoardSerial, q.Operator, q.Note, sweeps.Preparing, d.clock.Now()
-	return d.begin(ctx, job, func() (sweeps.Run, error) { return d.store.CreateRun(ctx, run) }, "Started"+by(q.Operator)+"."+whoAttends(plan))
+	return d.begin(ctx, job, func() (sweeps.Run, error) { return d.store.CreateRun(ctx, run) }, "Started"+by(q.Operator)+"."+whoAttends(plan)+saidAmbient(plan))
 }
 
 func by(operator string) string {
@@ -57,7 +57,8 @@ func (d *Daemon) job(plan sweeps.Plan, board sweeps.Board, seed uint64) (runner.
 	if err != nil {
 		return runner.Options{}, web.Fail(web.Invalid, err)
 	}
-	p, err := newPredictor(board, w, seed)
+	ambient, _ := Ambient(plan)
+	p, err := newPredictor(board, w, ambient, seed)
 	if err != nil {
 		return runner.Options{}, web.Fail(web.Invalid, err)
 	}

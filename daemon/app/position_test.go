@@ -134,7 +134,7 @@ func TestRehearsalOfPositions(t *testing.T) {
 // A run's curves are drawn along ohms, and pass through the setpoints' own predictions.
 func TestCurvesOfAPositionRunAlongOhms(t *testing.T) {
 	_, board := wiperPlan(t, "0.5")
-	p, err := newPredictor(board, exampleWiring(t), 1)
+	p, err := newPredictor(board, exampleWiring(t), predict.Reference, 1)
 	if err != nil {
 		t.Fatal(err)
 	}

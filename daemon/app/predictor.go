@@ -15,16 +15,17 @@ import (
 // draws is how many boards a band is drawn from, one a curve.
 const draws = 1000
 
-// predictor predicts for a run: at the bench's burden, with the pot's tolerance, always the same boards.
+// predictor predicts for a run: at the bench's burden and the plan's ambient, with the pot's tolerance, always the same boards.
 type predictor struct {
 	model    *predict.Model
 	ensemble *predict.Ensemble
 	burden   float64 // Ω in the motor's loop
+	ambient  float64 // °C
 	track    float64 // Ω end to end of the bench's pot where its wiper stands in the network; 0: it doesn't
 }
 
-// newPredictor draws the boards once; the seed is the run's.
-func newPredictor(board sweeps.Board, w instruments.Wiring, seed uint64) (*predictor, error) {
+// newPredictor draws the boards once; ambient is in °C, the seed is the run's.
+func newPredictor(board sweeps.Board, w instruments.Wiring, ambient float64, seed uint64) (*predictor, error) {
 	o := predict.Options{}
 	if w.Pot != nil {
 		o.PotTolerance, o.WiperResistance = w.Pot.Tolerance, w.Pot.Wiper
@@ -40,7 +41,7 @@ func newPredictor(board sweeps.Board, w instruments.Wiring, seed uint64) (*predi
 	if err != nil {
 		return nil, err
 	}
-	p := &predictor{model: m, ensemble: m.Draw(draws, seed), burden: Burden(w)}
+	p := &predictor{model: m, ensemble: m.Draw(draws, seed), burden: Burden(w), ambient: ambient}
 	if board.Timing.Track.Pot {
 		p.track = w.Pot.EndToEnd
 	}
@@ -77,7 +78,7 @@ func (p *predictor) setting(supply, pot float64) predict.Setting {
 	if p.track > 0 {
 		pot /= p.track
 	}
-	return predict.Setting{Supply: supply, Pot: pot, Temperature: predict.Reference, Burden: p.burden}
+	return predict.Setting{Supply: supply, Pot: pot, Temperature: p.ambient, Burden: p.burden}
 }
 
 // At predicts at a measured supply voltage and the pot's ohms.

@@ -17,6 +17,7 @@ type Rehearsal struct {
 	Findings  []predict.Finding `json:"findings"`   // cautions; what refuses the plan is an error
 	Seconds   float64           `json:"seconds"`    // bench time it takes at the least
 	NotJudged []string          `json:"not_judged"` // what a missing bench file left open
+	Ambient   float64           `json:"ambient"`    // °C, what is predicted for
 }
 
 // Rehearsed is one setpoint with what is predicted there.
@@ -44,7 +45,8 @@ func Rehearse(plan sweeps.Plan, board sweeps.Board, w *instruments.Wiring) (Rehe
 	} else {
 		r.NotJudged = append(r.NotJudged, "no bench file: its limits, which instruments give the quantities, the pot's codes and tolerance, and two nodes on earth; name it with --bench")
 	}
-	p, err := newPredictor(board, bench, 1)
+	r.Ambient, _ = Ambient(plan)
+	p, err := newPredictor(board, bench, r.Ambient, 1)
 	if err != nil {
 		return Rehearsal{}, err
 	}

@@ -41,7 +41,7 @@ func (d *Daemon) Resume(ctx context.Context, id int64, operator string) (sweeps.
 		old.State = sweeps.Preparing
 		return old, err
 	}
-	return d.begin(ctx, job, open, fmt.Sprintf("Resumed%s at point %d of %d.", by(operator), len(job.Done)+1, len(job.Order))+whoAttends(plan))
+	return d.begin(ctx, job, open, fmt.Sprintf("Resumed%s at point %d of %d.", by(operator), len(job.Done)+1, len(job.Order))+whoAttends(plan)+saidAmbient(plan))
 }
 
 // sofar gives a resumed run its points and its time, and refuses it where the bench
