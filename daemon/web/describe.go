@@ -91,7 +91,7 @@ func describeStream(api huma.API) {
 		OperationID: "stream", Method: http.MethodGet, Path: streamPath, Summary: "The tail of the journal, over a websocket",
 		Description: "The watcher says Hello within 5 s; then come vitals, every entry after `after` in order, caught_up once, and whatever happens next.",
 		Parameters: []*huma.Param{{
-			Name: "after", In: "query", Description: "Entries after this seq; -1: from the start of the newest run.",
+			Name: "after", In: "query", Description: "Entries after this seq; -1: from the start of the newest run, and so for a seq that this journal has not reached: it is of another one.",
 			Schema: &huma.Schema{Type: huma.TypeInteger, Format: "int64", Minimum: new(float64(fromNewestRun)), Default: 0},
 		}},
 		Responses: map[string]*huma.Response{

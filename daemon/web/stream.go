@@ -66,19 +66,21 @@ func cursorOf(r *http.Request) (int64, error) {
 
 // feed is the whole of a watcher: a cursor. Read entries after n, send, repeat;
 // when there are none, wait for the bell. Vitals go between, only ever the
-// newest. It returns only with an error: errGone, the context's, or the journal's.
+// newest. A cursor beyond the tail is of another journal: the watcher gets the newest
+// run of this one, and knows it by seqs that lie before its own. It returns only with
+// an error: errGone, the context's, or the journal's.
 func (s *Server) feed(ctx context.Context, sock *socket, after int64) (err error) {
-	if after == fromNewestRun {
+	target, err := s.o.Store.Last(ctx)
+	if err != nil {
+		return err
+	}
+	if after == fromNewestRun || after > target {
 		if after, err = s.newestRun(ctx); err != nil {
 			return err
 		}
 	}
 	v := &vitalsLine{s: s, sock: sock}
 	if err := v.now(); err != nil {
-		return err
-	}
-	target, err := s.o.Store.Last(ctx)
-	if err != nil {
 		return err
 	}
 	caught := false

@@ -227,6 +227,24 @@ func TestFromTheNewestRun(t *testing.T) {
 	w.expectCaughtUp(5)
 }
 
+// A page that was open on another journal comes with a cursor this one has not reached:
+// it gets the newest run, whose seqs and caught_up tell it so, and not silence.
+func TestCursorOfAnotherJournal(t *testing.T) {
+	h := newHouse(t)
+	w := h.watch(5000)
+	w.expectCaughtUp(0)
+	first := h.newRun()
+	w.expect(1, 1)
+	h.append(sweeps.Entry{Run: first, Kind: sweeps.KindEnded, State: sweeps.Done})
+	second := h.newRun()
+	h.append(sweeps.Entry{Run: second, Kind: sweeps.KindPoint, Point: point(0)})
+	w = h.watch(5)
+	w.expect(3, 4)
+	w.expectCaughtUp(4)
+	w = h.watch(4) // the tail itself is no other journal's
+	w.expectCaughtUp(4)
+}
+
 // TestVitalsAtMostTwiceASecond: three of them, the first at once, take a second; each is newer.
 func TestVitalsAtMostTwiceASecond(t *testing.T) {
 	h := newHouse(t)

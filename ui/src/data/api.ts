@@ -2446,7 +2446,7 @@ export interface operations {
     stream: {
         parameters: {
             query?: {
-                /** @description Entries after this seq; -1: from the start of the newest run. */
+                /** @description Entries after this seq; -1: from the start of the newest run, and so for a seq that this journal has not reached: it is of another one. */
                 after?: number;
             };
             header?: never;

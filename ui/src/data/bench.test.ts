@@ -31,7 +31,7 @@ test.each([
   const played = playedBench({ status: async () => ({ started_at: born }) as Status, run: async () => ({ run: head, setpoints: [], curves: [] }) });
   played.heard.live();
   for (const e of entries) played.heard.entry(e);
-  played.heard.caughtUp();
+  played.heard.caughtUp(night.seq);
   await vi.advanceTimersByTimeAsync(0);
   expect([played.cursor(), played.restarts()]).toEqual([night.seq, 0]);
   born = "2026-12-01T03:00:00Z";
@@ -39,6 +39,22 @@ test.each([
   played.heard.live();
   await vi.advanceTimersByTimeAsync(0);
   expect([played.cursor(), played.restarts()]).toEqual([cursor, restarts]);
+});
+
+test.each([
+  ["starts with a run", entries.slice(0, 3), entries[2]!.seq],
+  ["is empty", [], -1],
+])("a journal that has not reached the page's cursor is another one, before any run was known: it %s", async (_, replayed, cursor) => {
+  const played = playedBench();
+  for (const e of entries) played.heard.entry({ ...e, seq: e.seq + 10_000 });
+  await vi.advanceTimersByTimeAsync(100);
+  expect(played.bench.run.value).toBeNull();
+  played.heard.caughtUp(played.cursor());
+  expect(played.cursor()).toBe(night.seq + 10_000);
+  for (const e of replayed) played.heard.entry(e);
+  played.heard.caughtUp(replayed.at(-1)?.seq ?? 0);
+  expect(played.cursor()).toBe(cursor);
+  expect(played.bench.night.value.log.length).toBe(replayed.length);
 });
 
 test("Outputs off asks nothing and says what came of it", async () => {

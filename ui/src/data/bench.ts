@@ -86,17 +86,24 @@ export function newBench(client: Client, token: string, open: OpenStream = openS
     } catch (e) {
       if (!(e instanceof Failure) || e.status !== 404) return;
     }
-    waiting = [];
-    night.value = noNight;
-    run.value = null;
+    forget();
     stream.restart();
   }
 
+  function forget() {
+    waiting = [];
+    night.value = noNight;
+    run.value = null;
+  }
+
+  const cursor = () => waiting[waiting.length - 1]?.seq ?? night.value.seq;
+
   const stream: Stream = open({
     token,
-    cursor: () => waiting[waiting.length - 1]?.seq ?? night.value.seq,
+    cursor,
     heard: {
       entry(e) {
+        if (e.seq <= cursor()) forget(); // one journal never goes back: this is another one
         waiting.push(e);
         timer ??= setTimeout(takeIn, gather);
       },
@@ -104,7 +111,8 @@ export function newBench(client: Client, token: string, open: OpenStream = openS
         vitals.value = v;
         if (outcome.value && over(outcome.value, v)) outcome.value = null;
       },
-      caughtUp() {
+      caughtUp(seq) {
+        if (seq < cursor()) forget();
         takeIn();
         caughtUp.value = true;
       },

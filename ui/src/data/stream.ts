@@ -12,8 +12,8 @@ export const stale = 15_000;
 export interface Heard {
   entry(e: Entry): void;
   vitals(v: Vitals): void;
-  /** The replay has reached the tail. */
-  caughtUp(): void;
+  /** The replay has reached the tail, whose seq this is. */
+  caughtUp(seq: number): void;
   /** The line was lost; `last` is when something was last heard, in ms of `now`. */
   lost(last: number): void;
   live(): void;
@@ -79,7 +79,7 @@ export function openStream(o: Options): Stream {
     }
     if (m.kind === "entry") o.heard.entry(m.entry.point ? { ...m.entry, point: lean(m.entry.point) } : m.entry);
     else if (m.kind === "vitals") o.heard.vitals(m.vitals);
-    else o.heard.caughtUp();
+    else o.heard.caughtUp(m.seq);
   }
 
   // Nothing was said for a while: ask anew without alarming anyone; the server greets a new line at once.

@@ -53,7 +53,7 @@ async function opened(path: string, more: { vitals?: Partial<Vitals>; token?: st
     played.heard.live();
     played.heard.vitals({ ...vitals, ...more.vitals });
     for (const e of entries) played.heard.entry(e);
-    played.heard.caughtUp();
+    played.heard.caughtUp(entries.at(-1)!.seq);
   });
   await settle();
   return played;
