@@ -27,7 +27,6 @@ type usb488 struct {
 	reply  []byte
 	late   time.Duration // of the next reply
 	due    time.Time
-	wait   time.Duration // the driver's time-out
 }
 
 func (u *usb488) Write(b []byte) (int, error) {
