@@ -107,9 +107,14 @@ func (p *PracticeBench) plan(o PracticeOptions) error {
 
 func (p *PracticeBench) serve(ctx context.Context, o PracticeOptions) error {
 	if o.Ports != "" {
-		if err := os.MkdirAll(o.Ports, 0o700); err != nil {
+		ports, err := filepath.Abs(o.Ports) // an address names the whole path
+		if err == nil {
+			err = os.MkdirAll(ports, 0o700)
+		}
+		if err != nil {
 			return errors.Join(err, p.Close())
 		}
+		o.Ports = ports
 	}
 	for _, i := range p.Instruments() {
 		open := i.ServePTY
