@@ -4,7 +4,6 @@ import (
 	"context"
 	"errors"
 	"log/slog"
-	"os"
 	"path/filepath"
 	"strings"
 
@@ -69,6 +68,11 @@ func (c *cli) runDemo(cmd *cobra.Command, o demoOptions) error {
 			return err
 		}
 	}
+	state, err := app.OpenState(dir) // before anything in it is touched: another daemon may be at work there
+	if err != nil {
+		return err
+	}
+	defer state.Close()
 	files, err := demoFiles(dir)
 	if err != nil {
 		return err
@@ -101,7 +105,7 @@ func (c *cli) runDemo(cmd *cobra.Command, o demoOptions) error {
 	if err != nil {
 		return err
 	}
-	return c.showRunning(cmd, dir, filepath.Join(files, example.Sample), file, clock, o, p)
+	return c.showRunning(cmd, state, filepath.Join(files, example.Sample), file, clock, o, p)
 }
 
 // read reads the scenario and adds the faults of the command line.
@@ -119,15 +123,6 @@ func (o demoOptions) read() (s app.Scenario, err error) {
 		s.Faults = append(s.Faults, f)
 	}
 	return s, nil
-}
-
-// demoFiles lays the example set into the demo's state folder, fresh each time: it is the program's own.
-func demoFiles(dir string) (string, error) {
-	files := filepath.Join(dir, "files")
-	if err := os.RemoveAll(files); err != nil {
-		return "", err
-	}
-	return files, example.Write(files)
 }
 
 // openPractice serves the practice bench and writes its bench file.
@@ -153,7 +148,7 @@ func openPractice(ctx context.Context, dir, files string, clock instruments.Cloc
 }
 
 // showRunning holds the practice bench, serves the page, and starts the sample run.
-func (c *cli) showRunning(cmd *cobra.Command, dir, plan string, file *bench.File, clock instruments.Clock, o demoOptions, p *app.PracticeBench) error {
+func (c *cli) showRunning(cmd *cobra.Command, state *app.State, plan string, file *bench.File, clock instruments.Clock, o demoOptions, p *app.PracticeBench) error {
 	ctx, end := context.WithCancelCause(cmd.Context())
 	defer end(nil)
 	level := slog.LevelInfo
@@ -163,7 +158,7 @@ func (c *cli) showRunning(cmd *cobra.Command, dir, plan string, file *bench.File
 	say(cmd, "\n%s\n", cautions)
 	result := make(chan error, 1)
 	err := app.Serve(ctx, c.last, app.Options{
-		State: dir, Bench: app.Given(file), Listen: o.listen, Version: version(), Clock: clock, Log: logger(cmd, level), Practice: p,
+		Held: state, Bench: app.Given(file), Listen: o.listen, Version: version(), Clock: clock, Log: logger(cmd, level), Practice: p,
 		Ready: func(d *app.Daemon, address string) {
 			say(cmd, "page, with the operator's token: %s", address)
 			run, err := d.Start(ctx, web.StartRequest{Plan: plan, BoardSerial: "0017", Operator: "demo"})

@@ -28,7 +28,8 @@ var Cautions = []string{
 
 // Options are what a daemon is started with.
 type Options struct {
-	State   string                      // folder
+	State   string                      // folder; not looked at where Held is given
+	Held    *State                      // the folder held by the caller, who lets it go after Serve; nil: Serve holds State
 	Bench   func() (*bench.File, error) // reads and checks the bench file, once the bench is known to be safe
 	Listen  string                      // loopback address, port 0 for any free one
 	Version string
@@ -114,10 +115,12 @@ func nearby(listen string) error {
 
 // open is the order of opening. Each step registers its undoing at once.
 func (d *Daemon) open(ctx context.Context, u *undo) (err error) {
-	if d.state, err = OpenState(d.o.State); err != nil {
-		return err
+	if d.state = d.o.Held; d.state == nil {
+		if d.state, err = OpenState(d.o.State); err != nil {
+			return err
+		}
+		u.add("the state folder", func(context.Context) error { return d.state.Close() })
 	}
-	u.add("the state folder", func(context.Context) error { return d.state.Close() })
 	if err := d.safeFirst(ctx); err != nil {
 		return err
 	}
