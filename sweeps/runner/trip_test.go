@@ -62,7 +62,7 @@ func TestEveryEnd(t *testing.T) {
 		{name: "outputs off", during: func(n *night) { n.must(n.run.Command(runner.CmdOff, "Ada")) }, state: sweeps.Stopped, reason: "outputs off, by Ada"},
 		{name: "at most", before: func(n *night) { n.options.Plan.AtMost = 30 * time.Second }, state: sweeps.Stopped, reason: "limit of 30s"},
 		{name: "safe by", before: func(n *night) { n.options.Plan.SafeBy, n.options.SafeBy = "07:00", n.clock.Now().Add(40*time.Second) },
-			state: sweeps.Stopped, reason: "safe by 07:00"},
+			state: sweeps.Stopped, reason: "the time to be safe by"},
 		{name: "journal", before: func(n *night) {
 			n.options.Journal = journal(func(ctx context.Context, e sweeps.Entry) (sweeps.Entry, error) {
 				if e.Kind == sweeps.KindPoint && e.Point.Setpoint.Index == 3 {
