@@ -6,6 +6,7 @@ import (
 	"math"
 	"os"
 	"path/filepath"
+	"slices"
 	"syscall"
 	"testing"
 
@@ -45,12 +46,15 @@ func TestBoardsAgreeWithPredict(t *testing.T) {
 	demo.until("#token=")
 	eventually(t, "a run", func() bool { return len(get[web.Boards](t, state, "/api/boards").Boards) == 1 })
 	of := get[web.Boards](t, state, "/api/boards").Boards[0]
-	file := filepath.Join(t.TempDir(), of.File)
+	dir := t.TempDir()
+	file := filepath.Join(dir, of.File)
 	for _, f := range get[web.RunDetail](t, state, fmt.Sprintf("/api/runs/%d", of.Runs[0])).Run.Files {
-		if f.SHA256 == of.Hash {
-			if err := os.WriteFile(file, []byte(f.Text), 0o600); err != nil {
-				t.Fatal(err)
-			}
+		name := f.Name
+		if f.Role == "bench" {
+			name = "bench.toml" // what its pot bears
+		}
+		if err := os.WriteFile(filepath.Join(dir, name), []byte(f.Text), 0o600); err != nil {
+			t.Fatal(err)
 		}
 	}
 	var w worst
@@ -65,6 +69,9 @@ func TestBoardsAgreeWithPredict(t *testing.T) {
 			t.Fatalf("predict: status %d, %v:\n%s", status, err, out)
 		}
 		agree(t, &w, page, command)
+		if !slices.ContainsFunc(command.Stress.Running, func(s predict.Stress) bool { return s.Part == "pot" && s.Rating == 2.5e-3 }) {
+			t.Errorf("the pot's rating is not known: %+v", command.Stress.Running)
+		}
 	}
 	t.Logf("largest relative difference %g", w.most)
 	demo.signal(syscall.SIGINT)

@@ -41,7 +41,7 @@ func (c *cli) predict() *cobra.Command {
 	f.BoolVar(&o.sensitivities, "sensitivities", false, "how much each part moves each quantity, in percent a percent")
 	f.BoolVar(&o.stress, "stress", false, "each part's load against its rating, running and with the rotor held")
 	f.StringVar(&o.sweep, "sweep", "", "a curve along the pot: pot_resistance=1k:100k:25:log (or lin; pot_position=0.05:0.95:19:lin)")
-	f.StringVar(&o.bench, "bench", "", "bench file whose pot stands in a wiper network (default: bench.toml beside the board)")
+	f.StringVar(&o.bench, "bench", "", "bench file whose pot stands in the timing network: what it bears, its track (default: bench.toml beside the board)")
 	cmd.RunE = func(cmd *cobra.Command, args []string) error { return c.runPredict(cmd, args[0], o) }
 	return cmd
 }
@@ -58,7 +58,7 @@ func (c *cli) runPredict(cmd *cobra.Command, path string, o predictOptions) erro
 	if err != nil {
 		return err
 	}
-	wiring, err := trackOf(board, o.bench)
+	wiring, err := potOf(board, o.bench)
 	if err != nil {
 		return err
 	}
@@ -89,13 +89,13 @@ func (c *cli) runPredict(cmd *cobra.Command, path string, o predictOptions) erro
 	return printPrediction(cmd, board, all[0], o)
 }
 
-// trackOf reads the bench file where a board needs its pot's track; nil where it doesn't, or none is there.
-func trackOf(board sweeps.Board, path string) (*instruments.Wiring, error) {
+// potOf reads the bench file of a board whose timing network the bench's pot stands in; nil where it doesn't, or none is there.
+func potOf(board sweeps.Board, path string) (*instruments.Wiring, error) {
 	switch {
-	case board.Timing.Track.Pot:
+	case board.Timing.UsesPot():
 		return wiringFor(board.Path, path)
 	case path != "":
-		return nil, usage(`predict: only a board with network = "wiper" and pot = "pot" needs the bench; leave --bench out`)
+		return nil, usage(`predict: only a board with the bench's pot in its timing network needs the bench; leave --bench out`)
 	}
 	return nil, nil
 }

@@ -81,6 +81,9 @@ func (d *Daemon) job(plan sweeps.Plan, board sweeps.Board, seed uint64) (runner.
 		Version: d.o.Version, Quantities: plan.Measure.Quantities, Instruments: d.identities(),
 		Files: []sweeps.File{file("bench", d.file.Path, d.file.Text), file("board", board.Path, board.Text), file("plan", plan.Path, plan.Text)},
 	}
+	for _, p := range board.Parts {
+		o.Run.Files = append(o.Run.Files, file(sweeps.RoleParts, p.Name, p.Text))
+	}
 	return o, nil
 }
 
@@ -89,7 +92,7 @@ func file(role, path, text string) sweeps.File {
 	return sweeps.File{Role: role, Name: filepath.Base(path), SHA256: hex.EncodeToString(sum[:]), Text: text}
 }
 
-// filesOf reads plan and board from a run's own copies.
+// filesOf reads plan, board and the board's parts from a run's own copies.
 func filesOf(run sweeps.Run) (sweeps.Plan, sweeps.Board, error) {
 	var planFile, boardFile sweeps.File
 	for _, f := range run.Files {
@@ -100,7 +103,7 @@ func filesOf(run sweeps.Run) (sweeps.Plan, sweeps.Board, error) {
 			boardFile = f
 		}
 	}
-	return sweeps.ParseFiles(planFile, boardFile)
+	return sweeps.ParseFiles(planFile, boardFile, sweeps.PartsOf(run.Files)...)
 }
 
 // begin opens the run in the journal and conducts it in a goroutine that end, Stop

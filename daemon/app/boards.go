@@ -121,7 +121,7 @@ func (b *boards) leaflet(ctx context.Context, of web.Board) (*leaflet, error) {
 	if i < 0 {
 		return nil, fmt.Errorf("run %d: its board file is gone", run.ID)
 	}
-	l, err := newLeaflet(run.Files[i], wiringOf(run), order)
+	l, err := newLeaflet(run.Files[i], sweeps.PartsOf(run.Files), wiringOf(run), order)
 	if err != nil {
 		return nil, web.Fail(web.Invalid, fmt.Errorf("run %d's copy of its board file: %w", run.ID, err))
 	}
@@ -161,8 +161,8 @@ type leaflet struct {
 // suppliesDrawn bounds how many curves are drawn: beyond, figures are full and computing is slow.
 const suppliesDrawn = 6
 
-func newLeaflet(file sweeps.File, w *instruments.Wiring, order []sweeps.Setpoint) (*leaflet, error) {
-	board, err := sweeps.ParseBoard(file)
+func newLeaflet(file sweeps.File, parts []sweeps.File, w *instruments.Wiring, order []sweeps.Setpoint) (*leaflet, error) {
+	board, err := sweeps.ParseBoard(file, parts...)
 	if err != nil {
 		return nil, err
 	}

@@ -214,7 +214,7 @@ func (c *countdown) Err() error {
 
 // What was finished when the asker went away is there for the next, and counted once.
 func TestFinishedCurvesAreKept(t *testing.T) {
-	l, err := newLeaflet(sweeps.File{Name: "board.toml", Text: example.Text(example.BoardPump)}, nil, visited(1e3, 82e3))
+	l, err := newLeaflet(sweeps.File{Name: "board.toml", Text: example.Text(example.BoardPump)}, nil, nil, visited(1e3, 82e3))
 	if err != nil {
 		t.Fatal(err)
 	}

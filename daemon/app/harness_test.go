@@ -24,12 +24,13 @@ func TestMain(m *testing.M) { goleak.VerifyTestMain(m) }
 // night is one run through the whole tool: practice bench on pseudo-terminals,
 // daemon, journal. What is not set is the example's.
 type night struct {
-	board string               // text of the board file
-	plan  string               // text of the plan file; its board is board.toml
-	bench func(string) string  // changes the example bench's text; nil: as it is
-	alter func(*circuit.Board) // changes the true board, unknown to the daemon; nil: not
-	seed  uint64               // of specimen and instruments; 0: nominal parts
-	pace  float64
+	board  string               // text of the board file
+	plan   string               // text of the plan file; its board is board.toml
+	beside map[string]string    // text of more files beside the board, by name
+	bench  func(string) string  // changes the example bench's text; nil: as it is
+	alter  func(*circuit.Board) // changes the true board, unknown to the daemon; nil: not
+	seed   uint64               // of specimen and instruments; 0: nominal parts
+	pace   float64
 }
 
 // run conducts the night and returns its run and points.
@@ -42,6 +43,9 @@ func (n night) run(t *testing.T) (sweeps.Run, []sweeps.Point) {
 			t.Fatal(err)
 		}
 		return path
+	}
+	for name, text := range n.beside {
+		write(name, text)
 	}
 	board, err := sweeps.ReadBoard(write("board.toml", n.board))
 	if err != nil {

@@ -53,13 +53,18 @@ func track(w instruments.PotWiring) si.TolResistance {
 	return si.TolResistance{Nominal: si.Ohms(w.EndToEnd), Tolerance: w.Tolerance}
 }
 
-// AloneOptions are those of a board predicted by itself: a pot given in ohms is exact, of
-// the bench only the pot counts whose wiper stands in the timing network. w may be nil.
-func AloneOptions(board sweeps.Board, w *instruments.Wiring) predict.Options {
-	if w == nil || w.Pot == nil || !board.Timing.Track.Pot {
-		return predict.Options{}
+// AloneOptions are those of a board predicted by itself: a pot given in ohms is exact. Of
+// the bench count what its pot bears, and its track where its wiper stands in the timing
+// network. w may be nil.
+func AloneOptions(board sweeps.Board, w *instruments.Wiring) (o predict.Options) {
+	if w == nil || w.Pot == nil || !board.Timing.UsesPot() {
+		return o
 	}
-	return predict.Options{Track: track(*w.Pot), WiperResistance: w.Pot.Wiper}
+	o.PotMaxCurrent, o.PotMaxVoltage = w.Pot.MaxCurrent, w.Pot.MaxTerminalVoltage
+	if board.Timing.Track.Pot {
+		o.Track, o.WiperResistance = track(*w.Pot), w.Pot.Wiper
+	}
+	return o
 }
 
 // Burden is what the current meters put in series with the motor, Ω.

@@ -1,9 +1,9 @@
 package predict
 
 import (
-	"bytes"
 	"errors"
 	"fmt"
+	"reflect"
 	"strings"
 
 	"nightbench/instruments/userfile"
@@ -18,34 +18,46 @@ func parseParts(name string, text []byte) (Catalogue, error) {
 	if err != nil {
 		return Catalogue{}, err
 	}
+	ask(f.Root().Optional(), reflect.TypeFor[Catalogue]())
+	if err := f.Err(); err != nil {
+		return Catalogue{}, err
+	}
 	var c Catalogue
-	if err := toml.NewDecoder(bytes.NewReader(text)).DisallowUnknownFields().Decode(&c); err != nil {
-		return Catalogue{}, mistakes(name, err)
+	if err := toml.Unmarshal(text, &c); err != nil {
+		return Catalogue{}, mistake(name, err)
 	}
 	c.check(f)
 	return c, f.Failed()
 }
 
-// mistakes gives the places of what the TOML library refused, which it keeps apart from its messages.
-func mistakes(name string, err error) error {
-	var unknown *toml.StrictMissingError
-	var bad *toml.DecodeError
-	switch {
-	case errors.As(err, &unknown):
-		var all userfile.Errors
-		for i := range unknown.Errors {
-			all = append(all, mistake(name, &unknown.Errors[i], "unknown key: no part has it"))
+// ask makes the keys of a part known to its table, from the fields of its type; what
+// is left over, or is no table where one has to be, is a mistake.
+func ask(t *userfile.Table, part reflect.Type) {
+	for i := range part.NumField() {
+		key, of := part.Field(i).Tag.Get("toml"), part.Field(i).Type
+		switch {
+		case of.Kind() == reflect.Struct:
+			ask(t.Table(key).Optional(), of)
+		case of.Kind() == reflect.Slice && of.Elem().Kind() == reflect.Struct:
+			for _, sub := range t.Tables(key) {
+				ask(sub.Optional(), of.Elem())
+			}
+		default:
+			t.Known(key)
 		}
-		return all
-	case errors.As(err, &bad):
-		return mistake(name, bad, `is of another kind than this key has: a figure is written like { typical = 1e-9, source = "data sheet" }, text in quotes, rows in brackets`)
 	}
-	return &userfile.Error{File: name, Want: err.Error(), Err: err}
 }
 
-func mistake(name string, e *toml.DecodeError, want string) *userfile.Error {
-	line, _ := e.Position()
-	return &userfile.Error{File: name, Line: line, Key: strings.Join(e.Key(), "."), Want: want, Err: e}
+// mistake gives the place of a value of another kind than its key has, which the TOML library keeps apart from its message.
+func mistake(name string, err error) error {
+	e := &userfile.Error{File: name, Want: err.Error(), Err: err}
+	var bad *toml.DecodeError
+	if errors.As(err, &bad) {
+		e.Line, _ = bad.Position()
+		e.Key = strings.Join(bad.Key(), ".")
+		e.Want = "is of another kind than this key has: numbers stand without quotes, text in quotes, rows in brackets"
+	}
+	return e
 }
 
 // twice refuses a part of a user's file that an earlier part of the user's has the name of, in this file or another.

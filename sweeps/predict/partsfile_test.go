@@ -48,8 +48,12 @@ func TestMistakesInOwnParts(t *testing.T) {
 		words     string
 	}{
 		{"[[diode]]\nname = \"x\"\nis = { typical = 1e-9, low = 1e-8 }\nn = { typical = 1 }", "diode[1].is", 3, "low 1e-08"},
-		{"[[diode]]\nname = \"x\"\ncolour = \"red\"", "diode.colour", 3, "unknown key"},
-		{"[[diode]]\nname = \"x\"\nis = \"much\"", "diode.is", 3, "typical ="},
+		{"[[diode]]\nname = \"x\"\ncolour = \"red\"", "diode[1].colour", 3, "unknown key (accepted here: "},
+		{"[[diode]]\nname = \"x\"\nis = { typcial = 1e-9 }\nn = { typical = 1 }", "diode[1].is.typcial", 3, "did you mean \"typical\"?"},
+		{"[diode]\nname = \"x\"", "diode", 1, "write it as [[diode]]"},
+		{"[[lamp]]\nname = \"x\"", "lamp", 1, "unknown"},
+		{"[[diode]]\nname = \"x\"\nis = \"much\"", "diode[1].is", 3, "one table"},
+		{"[[diode]]\nname = \"x\"\nis = { typical = \"much\" }", "diode.is", 3, "without quotes"},
 		{"[[diode]]\nname = \"x\"\nis = { typical = 1e-9, shape = \"bell\" }\nn = { typical = 1 }", "diode[1].is", 3, "triangular"},
 		{"[[timer]]\nname = \"x\"\nthreshold = { typical = 2 }", "timer[1].threshold", 3, "between 0 and 1"},
 		{"[[transistor]]\nname = \"x\"\nkind = \"tube\"", "transistor[1].kind", 3, "nmos"},

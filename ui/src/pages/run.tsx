@@ -86,7 +86,7 @@ function Identity({ run }: { run: Run }) {
           <tr><th scope="row">bench</th><td>{run.bench}</td></tr>
           {(run.instruments ?? []).map((t) => <tr key={t}><th scope="row">instrument</th><td>{t}</td></tr>)}
           <tr><th scope="row">program</th><td>{run.version}; seed {run.seed}; pace {run.pace}</td></tr>
-          {(run.files ?? []).map((f) => <tr key={f.role}><th scope="row">{named(f.role)} file</th><td>{f.name}<br /><span class="hash">SHA-256 {f.sha256}</span></td></tr>)}
+          {(run.files ?? []).map((f) => <tr key={`${f.role} ${f.name}`}><th scope="row">{named(f.role)} file</th><td>{f.name}<br /><span class="hash">SHA-256 {f.sha256}</span></td></tr>)}
         </tbody>
       </table>
     </>
