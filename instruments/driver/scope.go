@@ -14,7 +14,8 @@ import (
 // Scope takes single records.
 type Scope struct {
 	instrument
-	set instruments.ScopeSettings // in force; no channels before Configure
+	set  instruments.ScopeSettings // in force; no channels before Configure
+	turn int                       // which channel is read back before the next record
 }
 
 var _ instruments.Scope = (*Scope)(nil)
@@ -65,8 +66,11 @@ func (s *Scope) Configure(ctx context.Context, want instruments.ScopeSettings) (
 	if err := s.clean(ctx, "set-up"); err != nil {
 		return s.set, err
 	}
-	s.shaken.Store(false)
 	s.set = got
+	if err := s.same(ctx, got.Channels); err != nil { // what was set later may have moved what was set first
+		return s.set, fmt.Errorf("after all was set: %w", err)
+	}
+	s.shaken.Store(false)
 	return got, nil
 }
 
@@ -146,39 +150,6 @@ func (s *Scope) Capture(ctx context.Context) ([]instruments.Waveform, error) {
 		waves = append(waves, w)
 	}
 	return waves, nil
-}
-
-// verify reads back settings that a reset would change, after the connection
-// was out of step.
-func (s *Scope) verify(ctx context.Context) error {
-	first := s.set.Channels[0]
-	for _, want := range []struct {
-		name  string
-		value float64
-		unit  si.Unit
-	}{
-		{"duration", s.set.Duration, si.Second}, {"time_scale", s.set.Duration / s.wide(), si.Second}, {"points", float64(s.set.Points), si.One},
-		{"range_high", first.High, si.Volt}, {"vertical_scale", (first.High - first.Low) / s.high(), si.Volt},
-	} {
-		if !s.has(want.name) {
-			continue
-		}
-		l, err := s.line(want.name)
-		if err != nil {
-			return err
-		}
-		p := s.d.Put(0, first.Number)
-		found, err := s.measured(ctx, l, p)
-		if err != nil {
-			return err
-		}
-		if !l.Agrees(want.value, found) {
-			s.set = instruments.ScopeSettings{}
-			return &Error{Instrument: s.name, Command: p.Fill(l.Ask), Found: si.Format(found, want.unit), Err: ErrSettingsLost,
-				Try: "was it switched off and on? configure it again"}
-		}
-	}
-	return nil
 }
 
 // high and wide are the divisions of the screen; 1 where it has none.
