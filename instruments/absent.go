@@ -8,6 +8,9 @@ import (
 	"nightbench/instruments/si"
 )
 
+// ErrCannot means that an instrument, or the dialect it is spoken to in, has no such ability.
+var ErrCannot = errors.New("not in this dialect")
+
 // ErrAbsent means that the bench has no such instrument.
 var ErrAbsent = errors.New("not on this bench")
 

@@ -33,6 +33,8 @@ import (
 	"errors"
 	"fmt"
 	"strings"
+
+	"nightbench/instruments"
 )
 
 // Role is what an instrument is on a bench.
@@ -123,6 +125,6 @@ func (d *Dialect) HasChannels() bool {
 
 // The kinds of fault. Test for them with errors.Is.
 var (
-	ErrCannot  = errors.New("not in this dialect")
+	ErrCannot  = instruments.ErrCannot
 	ErrUnknown = errors.New("unknown dialect")
 )

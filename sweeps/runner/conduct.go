@@ -6,6 +6,7 @@ import (
 	"fmt"
 	"time"
 
+	"nightbench/instruments"
 	"nightbench/instruments/si"
 	"nightbench/sweeps"
 	"nightbench/sweeps/schedule"
@@ -108,8 +109,8 @@ func (r *Runner) prepare(ctx context.Context, at sweeps.Setpoint) error {
 		return errors.New("prepare: the supply's output was on already, and not by this run; it is being switched off: find out who feeds the board before starting again")
 	}
 	r.limit = 0 // somebody may have been at the panel: told and read back anew
-	if err := r.o.Bench.Supply.Protect(ctx, si.Volts(w.Supply.OverVoltage)); err != nil {
-		return fmt.Errorf("prepare: over-voltage: %w", err)
+	if err := r.protect(ctx, si.Volts(w.Supply.OverVoltage)); err != nil {
+		return err
 	}
 	if err := r.limitTo(ctx, r.currentLimit(at)); err != nil {
 		return fmt.Errorf("prepare: %w", err)
@@ -123,6 +124,22 @@ func (r *Runner) prepare(ctx context.Context, at sweeps.Setpoint) error {
 		return fmt.Errorf("prepare: %w", err)
 	}
 	return r.setUpMeasuring(ctx, at)
+}
+
+// protect sets the supply's own over-voltage level. A supply that can't be told one
+// is used only where somebody attends, and the log says so.
+func (r *Runner) protect(ctx context.Context, v si.Voltage) error {
+	err := r.o.Bench.Supply.Protect(ctx, v)
+	switch {
+	case err == nil:
+		return nil
+	case !errors.Is(err, instruments.ErrCannot):
+		return fmt.Errorf("prepare: over-voltage: %w", err)
+	case r.o.Plan.Attended == "":
+		return fmt.Errorf("prepare: this supply can't be told an over-voltage level, so somebody has to attend: set it at the front panel and add to [plan] who and until when, like attended = \"AK until 18:00\": %w", err)
+	}
+	r.say(fmt.Sprintf("This supply can't be told an over-voltage level: %s has to be set at its front panel by who attends.", v))
+	return nil
 }
 
 // energise makes "about to energise" durable, in the journal and in a file, and only then switches on.

@@ -7,6 +7,7 @@ import (
 	"testing"
 	"time"
 
+	"nightbench/instruments"
 	"nightbench/instruments/si"
 	"nightbench/sweeps"
 	"nightbench/sweeps/runner"
@@ -91,5 +92,32 @@ func TestJournalThatHeedsNoContextEndsTheRun(t *testing.T) {
 			t.Errorf("ended %+v", end)
 		}
 		time.Sleep(time.Minute) // the writers left behind come back
+	})
+}
+
+// bare is a supply that can't be told an over-voltage level.
+type bare struct{ instruments.Supply }
+
+func (bare) Protect(context.Context, si.Voltage) error { return instruments.ErrCannot }
+
+// A supply without an over-voltage level of its own is used only where somebody attends, and that is said.
+func TestSupplyWithoutProtectionNeedsSomebody(t *testing.T) {
+	inNight(t, short(""), func(n *night) {
+		n.options.Bench.Supply = bare{n.options.Bench.Supply}
+		end := n.conduct()
+		if end.State != sweeps.Failed || !strings.Contains(end.Reason, "attended =") {
+			t.Errorf("ended %+v", end)
+		}
+		if _, times := n.output(); times != 0 {
+			t.Errorf("the output was on %d times", times)
+		}
+	})
+	inNight(t, short(""), func(n *night) {
+		n.options.Bench.Supply = bare{n.options.Bench.Supply}
+		n.options.Plan.Attended = "Ada until 18:00"
+		n.safe(n.conduct(), sweeps.Done, "")
+		if !n.said(sweeps.KindLog, "has to be set at its front panel") {
+			t.Error("the log does not say that the level is missing")
+		}
 	})
 }
