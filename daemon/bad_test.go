@@ -7,6 +7,8 @@ import (
 	"regexp"
 	"strings"
 	"testing"
+
+	"nightbench/daemon/app"
 )
 
 // badFolder has files with one mistake each, named for it; which line and key is told is tested in sweeps.
@@ -16,7 +18,7 @@ const badFolder = "../testdata/bad"
 var wholeFile = map[string]bool{"empty.plan.toml": true}
 
 // TestBadFilesEndTheCommand gives every bad file to the command that reads its
-// kind: status 2, one message with file and line, nothing opened or left behind.
+// kind: status 2, one message with file and line, no port and no database opened.
 func TestBadFilesEndTheCommand(t *testing.T) {
 	entries, err := os.ReadDir(badFolder)
 	if err != nil {
@@ -41,11 +43,12 @@ func TestBadFilesEndTheCommand(t *testing.T) {
 			if wholeFile[e.Name()] {
 				place = regexp.QuoteMeta(path) + ": "
 			}
+			out = strings.TrimPrefix(out, cautions+"\n\n") // serve prints them first
 			if !regexp.MustCompile(`^nightbench: `+place+`\S`).MatchString(out) || strings.Contains(out, "\n") {
 				t.Errorf("want one line that begins with file and line, got:\n%s", out)
 			}
-			if _, err := os.Stat(state); err == nil {
-				t.Error("the state folder was made")
+			if _, err := os.Stat(app.Database(state)); err == nil {
+				t.Error("the database was opened")
 			}
 		})
 	}
