@@ -92,13 +92,18 @@ func Serve(ctx, last context.Context, o Options) (err error) {
 		defer cancel()
 		err = errors.Join(err, u.all(ctx))
 	}()
+	told := ctx
 	ctx, d.fail = context.WithCancelCause(ctx)
 	defer d.fail(nil)
 	if err := d.open(ctx, &u); err != nil {
 		return err
 	}
 	<-ctx.Done()
-	return d.end(context.Cause(ctx))
+	err = d.end(context.Cause(ctx))
+	if err == nil && told.Err() == nil {
+		err = context.Cause(ctx) // nobody told it to end
+	}
+	return err
 }
 
 // nearby refuses an address of the page that other computers could reach, before anything is opened.
