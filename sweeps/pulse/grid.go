@@ -5,6 +5,9 @@ import (
 	"slices"
 )
 
+// jitter is the share of the finest step below which two values differ by their rounding in a computer alone.
+const jitter = 1e-3
+
 // grid finds the voltage step of samples that came from a converter: few
 // distinct values, all near whole multiples of one step. Samples of many values get a
 // step finer than matters. So do those of too few values for the step to show; what it may
@@ -21,8 +24,11 @@ func grid(volts []float64, low, high float64) (step, unseen float64) {
 	}
 	closest := math.Inf(1)
 	for i := 1; i < len(values); i++ {
-		if d := values[i] - values[i-1]; d > fine {
+		d := values[i] - values[i-1]
+		if d > fine {
 			closest = min(closest, d)
+		} else if d > jitter*fine {
+			return fine, 0 // a grid finer than codes of 16 bits can count over this range: finer than matters
 		}
 	}
 	if math.IsInf(closest, 1) {
@@ -31,6 +37,8 @@ func grid(volts []float64, low, high float64) (step, unseen float64) {
 	step, found := commensurate(values, closest)
 	few := len(values) < 6 && step > (high-low)/100
 	switch {
+	case found && step < fine:
+		return fine, 0
 	case found && !few:
 		return step, 0
 	case !found && len(values) > len(volts)/4:

@@ -57,14 +57,11 @@ func TestCutoffIsFedWhileTheRunLasts(t *testing.T) {
 	inNight(t, short(""), func(n *night) {
 		c := &contact{}
 		n.options.Bench.Cutoff = c
-		ctx, cancel := context.WithCancelCause(n.Context())
-		var first []time.Time
-		go func() {
-			n.measured(2)
-			first, _, _ = c.seen()
-			cancel(&runner.Stop{Reason: "enough"})
-		}()
-		n.safe(n.conductIn(ctx), sweeps.Stopped, "enough")
+		done := n.begin()
+		n.measured(2)
+		first, _, _ := c.seen()
+		n.must(n.run.Command(runner.CmdStop, "Ada"))
+		n.safe(<-done, sweeps.Stopped, "stopped by Ada")
 		time.Sleep(10 * time.Second)
 		feeds, opens, after := c.seen()
 		if opens == 0 || after != 0 || len(first) < 3 {

@@ -6,7 +6,7 @@ import "math"
 // is W(exp x) with Lambert's W, without the overflow of exp. A resistor in
 // series with a diode is solved by it in closed form.
 //
-// Method: a guess by region, then two steps of the fourth-order iteration of
+// Method: a guess by region, then three steps of the fourth-order iteration of
 // Fritsch, Shafer and Crowley (CACM 16, 1973), as in Lawrence, Corless and
 // Jeffrey, ACM TOMS Algorithm 917, 2012. Relative error a few units in the last place.
 func Omega(x float64) float64 {
@@ -19,7 +19,7 @@ func Omega(x float64) float64 {
 		return x - math.Log(x)
 	}
 	w := omegaGuess(x)
-	for range 2 {
+	for range 3 {
 		r := x - w - math.Log(w)
 		t := (1 + w) * (1 + w + 2*r/3)
 		w *= 1 + r/(1+w)*(t-r/2)/(t-r)
