@@ -24,10 +24,8 @@ func TestSafeFirstWhateverElseIsBroken(t *testing.T) {
 		says   string
 	}{
 		"bench file": {func(t *testing.T, bench, _ string) { write(t, bench, "[bench\n") }, "127.0.0.1:0", "bench.toml:1"},
-		"database": {func(t *testing.T, _, state string) {
-			write(t, app.Database(state), "this is no database, "+strings.Repeat("no ", 4096))
-		}, "127.0.0.1:0", "nightbench.db"},
-		"address": {func(*testing.T, string, string) {}, "0.0.0.0:0", "only loopback"},
+		"database":   {spoilDatabase, "127.0.0.1:0", "nightbench.db"},
+		"address":    {func(*testing.T, string, string) {}, "0.0.0.0:0", "only loopback"},
 	} {
 		t.Run(name, func(t *testing.T) {
 			dir := t.TempDir()
@@ -40,9 +38,6 @@ func TestSafeFirstWhateverElseIsBroken(t *testing.T) {
 			eventually(t, "the output is on", func() bool { return on(t, benchState) })
 			daemon.signal(syscall.SIGKILL)
 			daemon.end()
-			for _, suffix := range []string{"-wal", "-shm"} {
-				os.Remove(app.Database(state) + suffix) // they belong to the database that is spoilt
-			}
 			c.spoil(t, bench, state)
 			out, status := once(t, "serve", bench, "--listen", c.listen, "--state", state)
 			if status == 0 || !strings.Contains(out, c.says) {
@@ -54,8 +49,23 @@ func TestSafeFirstWhateverElseIsBroken(t *testing.T) {
 			if !strings.Contains(out, "off, confirmed") {
 				t.Errorf("nobody said that off is confirmed:\n%s", out)
 			}
+			if name != "address" {
+				return
+			}
+			// The next start, with nothing broken, has it in the journal.
+			start(t, "serve", bench, "--listen", "127.0.0.1:0", "--state", state).until("operator's token")
+			if run := get[web.RunDetail](t, state, "/api/runs/1").Run; run.State != "interrupted" || !strings.Contains(run.Reason, "switched off at the next start, confirmed by supply") {
+				t.Errorf("the journal says %s: %s", run.State, run.Reason)
+			}
 		})
 	}
+}
+
+func spoilDatabase(t *testing.T, _, state string) {
+	for _, suffix := range []string{"-wal", "-shm"} {
+		os.Remove(app.Database(state) + suffix) // they would mend it
+	}
+	write(t, app.Database(state), "this is no database, "+strings.Repeat("no ", 4096))
 }
 
 func write(t *testing.T, path, text string) {

@@ -2,7 +2,11 @@ package app
 
 import (
 	"context"
+	"encoding/json"
+	"errors"
 	"fmt"
+	"os"
+	"path/filepath"
 	"strings"
 	"time"
 
@@ -27,7 +31,7 @@ func (d *Daemon) safeFirst(ctx context.Context) error {
 		if err == nil && off.Confirmed {
 			d.first = &off
 			d.o.Log.Info("off, confirmed", "by", off.By)
-			return removeDurably(energisedPath(d.state.Dir()))
+			return errors.Join(keepMadeSafe(d.state.Dir(), off), removeDurably(energisedPath(d.state.Dir())))
 		}
 		d.o.Log.Error("OFF IS NOT CONFIRMED: switch the supply off at its front panel and look that it is off. When it is, and this supply is gone for good, delete the record", "supply", e.Address, "record", energisedPath(d.state.Dir()), "words", off.Words, "err", err)
 		if err := clock.Wait(ctx, time.Second); err != nil {
@@ -57,6 +61,9 @@ func (d *Daemon) closeInterrupted(ctx context.Context) error {
 		return err
 	}
 	did := "its output was not on"
+	if d.first == nil {
+		d.first = madeSafe(d.state.Dir())
+	}
 	if d.first != nil {
 		did = "its output was switched off at the next start, confirmed by " + strings.Join(d.first.By, " and ")
 		if _, err := d.store.Append(ctx, sweeps.Entry{Run: run.ID, Kind: sweeps.KindOff, Words: "Off at the next start. " + d.first.Words, Off: d.first}); err != nil {
@@ -64,6 +71,31 @@ func (d *Daemon) closeInterrupted(ctx context.Context) error {
 		}
 	}
 	words := fmt.Sprintf("the daemon was ended in the middle of it; %s. %d of %d points are kept; resume goes on", did, run.Measured, run.Planned)
-	_, err = d.store.Append(ctx, sweeps.Entry{Run: run.ID, Kind: sweeps.KindEnded, State: sweeps.Interrupted, Words: words})
-	return err
+	if _, err = d.store.Append(ctx, sweeps.Entry{Run: run.ID, Kind: sweeps.KindEnded, State: sweeps.Interrupted, Words: words}); err != nil {
+		return err
+	}
+	return removeDurably(madeSafePath(d.state.Dir()))
+}
+
+// A start that made safe and then failed, on a file with a mistake perhaps, leaves
+// word of it for the journal that the next start can open.
+
+func madeSafePath(dir string) string { return filepath.Join(dir, "made-safe.json") }
+
+func keepMadeSafe(dir string, off sweeps.Off) error {
+	b, err := json.Marshal(off)
+	if err != nil {
+		return err
+	}
+	return writeDurably(madeSafePath(dir), append(b, '\n'))
+}
+
+// madeSafe is what an earlier start left word of; nil where there is none to be read.
+func madeSafe(dir string) *sweeps.Off {
+	b, err := os.ReadFile(madeSafePath(dir))
+	var off sweeps.Off
+	if err != nil || json.Unmarshal(b, &off) != nil {
+		return nil
+	}
+	return &off
 }
