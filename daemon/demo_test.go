@@ -16,13 +16,12 @@ import (
 )
 
 func TestDemoOnceRunsTheSampleToItsEnd(t *testing.T) {
-	t.Parallel()
 	state := filepath.Join(t.TempDir(), "state")
-	out, status := once(t, "demo", "--once", "--pace", "60", "--state", state)
+	out, status := once(t, "demo", "--once", "--seed", "0", "--pace", "30", "--state", state)
 	if status != 0 {
 		t.Fatalf("status %d:\n%s", status, out)
 	}
-	for _, want := range []string{"practice bench at 60 times", "Switching off by software is no emergency stop", "48 of 48 points", "average voltage", "Ambient not measured: 27\u00a0°C assumed."} {
+	for _, want := range []string{"practice bench at 30 times", "Switching off by software is no emergency stop", "48 of 48 points", "average voltage", "Ambient not measured: 27\u00a0°C assumed."} {
 		if !strings.Contains(out, want) {
 			t.Errorf("%q is not printed", want)
 		}
@@ -80,14 +79,13 @@ func sane(t *testing.T, points []sweeps.Point) {
 // TestPracticeBenchByHand talks to every practice instrument with a program that
 // knows nothing of this one: the daemon's way to the bench is a real port.
 func TestPracticeBenchByHand(t *testing.T) {
-	t.Parallel()
 	if _, err := exec.LookPath("socat"); err != nil {
 		t.Fatal("socat is missing: 'make setup' installs it")
 	}
 	for _, tcp := range []bool{false, true} {
 		t.Run(fmt.Sprintf("tcp=%v", tcp), func(t *testing.T) {
 			state := fromHere(t, filepath.Join(t.TempDir(), "bench"))
-			args := []string{"demo", "--bench-only", "--pace", "20", "--state", state}
+			args := []string{"demo", "--bench-only", "--seed", "0", "--pace", "20", "--state", state}
 			if tcp {
 				args = append(args, "--tcp")
 			}

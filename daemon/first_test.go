@@ -17,7 +17,6 @@ import (
 // what the next one is started with: the bench is made safe all the same, before the
 // mistake is told.
 func TestSafeFirstWhateverElseIsBroken(t *testing.T) {
-	t.Parallel()
 	for name, c := range map[string]struct {
 		spoil  func(t *testing.T, bench, state string)
 		listen string
@@ -30,7 +29,7 @@ func TestSafeFirstWhateverElseIsBroken(t *testing.T) {
 		t.Run(name, func(t *testing.T) {
 			dir := t.TempDir()
 			benchState, state := filepath.Join(dir, "bench"), filepath.Join(dir, "state")
-			start(t, "demo", "--bench-only", "--pace", "40", "--state", benchState).until("bench file:")
+			start(t, "demo", "--bench-only", "--seed", "0", "--pace", "20", "--state", benchState).until("bench file:")
 			bench := filepath.Join(benchState, "bench.toml")
 			daemon := start(t, "serve", bench, "--listen", "127.0.0.1:0", "--state", state)
 			daemon.until("operator's token")
@@ -88,10 +87,9 @@ func on(t *testing.T, benchState string) (is bool) {
 
 // TestOffWithoutARun switches off an output that somebody switched on at the panel.
 func TestOffWithoutARun(t *testing.T) {
-	t.Parallel()
 	dir := t.TempDir()
 	benchState, state := filepath.Join(dir, "bench"), filepath.Join(dir, "state")
-	p := start(t, "demo", "--bench-only", "--pace", "20", "--state", benchState)
+	p := start(t, "demo", "--bench-only", "--seed", "0", "--pace", "20", "--state", benchState)
 	p.until("bench file:")
 	supply := ""
 	for line := range strings.Lines(p.text()) {
