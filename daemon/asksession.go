@@ -29,7 +29,7 @@ const askHelp = `a line with ? is a query and its reply is shown, any other a co
   .clear      device clear            .identify  who answers
   .help       this                    .quit      the end (or Ctrl-D)`
 
-// line carries out one typed line; quit ends the talk. A failure that another
+// line carries out one typed line; quit ends the session. A failure that another
 // line may mend is shown; a lost link is an error.
 func (a *asking) line(ctx context.Context, text string) (quit bool, err error) {
 	text = strings.TrimSpace(text)
